@@ -1,0 +1,134 @@
+"""One case as frozen plain numbers in SI: what the march solves and the series answers.
+
+The equation for every shape is ``density r^m dw/dt = d/dr(r^m mu dw/dr) + r^m G`` with ``w`` the
+velocity (m = 0 plates; m = 1 pipe and axial annulus) or the angular speed (m = 3, G = 0, rotating annulus).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.drive.pieces import Drive, Pieces, merge_times
+
+LOWER, UPPER, PRESSURE = 0, 1, 2  # rows of Inputs: the two walls' speeds, the pressure drop per length
+
+
+@dataclass(frozen=True, eq=False)
+class Law:
+    """A viscosity law as data for compiled code: its code and parameters (Newtonian: 0, [viscosity])."""
+
+    code: int
+    parameters: tuple[float, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Wall:
+    """One end of the gap.
+
+    ``kind``: "moving" (speed prescribed, possibly 0), "shear_free", "axis" (a pipe's centre, no wall).
+    ``slip_length`` m.  ``area`` wetted area of one gap in m^2 or None where the sizes given do not tell.
+    ``radius`` m: 0 for plates; its lever arm in a rotating gap.
+    """
+
+    name: str
+    kind: str
+    slip_length: float = 0.0
+    area: float | None = None
+    radius: float = 0.0
+
+
+@dataclass(frozen=True, eq=False)
+class Inputs:
+    """All inputs on common pieces: ``starts`` (P,) s; ``poly`` (P, 3, 4); ``coeff``, ``rate`` (P, 3, K) complex.
+
+    Row order LOWER, UPPER, PRESSURE; ``before`` (3,).  Form and time as in ``drive.pieces.Pieces``.
+    """
+
+    starts: np.ndarray
+    poly: np.ndarray
+    coeff: np.ndarray
+    rate: np.ndarray
+    before: np.ndarray
+
+    def row(self, index: int) -> Pieces:
+        """One input as Pieces."""
+        return Pieces(
+            self.starts, self.poly[:, index], self.coeff[:, index], self.rate[:, index], float(self.before[index])
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """A linear start-up problem between two coaxial or parallel surfaces.
+
+    ``metric`` is m; ``inner``, ``outer`` (m) the ends' coordinates (plates: 0 and the height; pipe: 0 and the
+    radius).  ``speeds`` the two walls' Drives in m/s (rad/s where ``rotating``), ``gradient`` that of the
+    pressure drop per length, Pa/m.  ``start`` "rest" (all still and no pressure before t = 0, whatever the
+    drives say) or "steady" (the steady flow of the drives' values before t = 0).
+    ``duration`` s or None for "auto"; ``settle_within``, ``accuracy`` fractions.
+    ``section`` flow area of one gap in m^2 or None; ``count`` gaps in parallel.
+    """
+
+    shape: str
+    metric: int
+    inner: float
+    outer: float
+    density: float
+    law: Law
+    walls: tuple[Wall, Wall]
+    speeds: tuple[Drive, Drive]
+    gradient: Drive
+    start: str
+    duration: float | None
+    settle_within: float
+    accuracy: float
+    length: float | None = None
+    section: float | None = None
+    count: int = 1
+    profiles: int = 120
+    profile_times: tuple[float, ...] | None = None
+
+    @property
+    def rotating(self) -> bool:
+        """Whether speeds are angular."""
+        return self.metric == 3
+
+    @property
+    def gap(self) -> float:
+        """Distance between the ends, m."""
+        return self.outer - self.inner
+
+    @property
+    def viscosity(self) -> float:
+        """Dynamic viscosity of the Newtonian law, Pa s."""
+        return self.law.parameters[0]
+
+    @property
+    def diffusion_time(self) -> float:
+        """gap^2 / kinematic viscosity, s."""
+        return self.gap**2 * self.density / self.viscosity
+
+    @property
+    def drives(self) -> tuple[Drive, Drive, Drive]:
+        """Rows LOWER, UPPER, PRESSURE."""
+        return (*self.speeds, self.gradient)
+
+    def inputs(self, until: float) -> Inputs:
+        """The inputs over [0, until) on common pieces; with a start from rest nothing moves before t = 0."""
+        return join(self.drives, until, still=self.start == "rest")
+
+
+def join(drives: tuple[Drive, ...], until: float, still: bool) -> Inputs:
+    """Several drives on the union of their break times; ``still``: all were zero before t = 0."""
+    starts = merge_times([drive.breaks(until) for drive in drives])
+    rows = [drive.pieces(until, starts) for drive in drives]
+    most = max(row.coeff.shape[1] for row in rows)
+    coeff = np.zeros((len(starts), len(rows), most), complex)
+    rate = np.zeros_like(coeff)
+    for i, row in enumerate(rows):
+        coeff[:, i, : row.coeff.shape[1]] = row.coeff
+        rate[:, i, : row.rate.shape[1]] = row.rate
+    before = np.zeros(len(rows)) if still else np.array([drive.before for drive in drives], dtype=float)
+    return Inputs(starts, np.stack([row.poly for row in rows], axis=1), coeff, rate, before)
