@@ -1,0 +1,45 @@
+"""The one way this project compiles functions: cached on disk where that works, in memory where it does not."""
+
+from __future__ import annotations
+
+import functools
+import os
+import tempfile
+import warnings
+from collections.abc import Callable
+from typing import Any
+
+
+def _cache_folder() -> None:
+    """Give the compiler a folder it can write, unless the user has named one or the usual ones work."""
+    if os.environ.get("NUMBA_CACHE_DIR"):
+        return
+    here = os.path.join(os.path.dirname(os.path.abspath(__file__)), "__pycache__")
+    home = os.path.join(os.path.expanduser("~"), ".cache")
+    for folder in (here, home):
+        try:
+            os.makedirs(folder, exist_ok=True)
+            with tempfile.TemporaryFile(dir=folder):
+                pass
+        except OSError:
+            continue
+        return
+    os.environ["NUMBA_CACHE_DIR"] = os.path.join(tempfile.gettempdir(), f"transient-compiled-{os.getuid()}")
+
+
+_cache_folder()
+
+import numba  # noqa: E402  (the cache folder must be known before)
+
+
+def compiled(function: Callable[..., Any]) -> Callable[..., Any]:
+    """Compile for plain arrays, without the interpreter lock, cached on disk where a folder can be written."""
+    options = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "reassoc"}}
+    try:
+        return numba.njit(cache=True, **options)(function)
+    except RuntimeError:  # no place to keep the cache: compile in memory for this process
+        warnings.filterwarnings("default", category=numba.NumbaWarning)
+        return numba.njit(**options)(function)
+
+
+inlined = functools.partial(numba.njit, inline="always", error_model="numpy")
