@@ -1,0 +1,25 @@
+"""``transient check``: what a case file says, read but not solved."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from transient.cli.words import GOOD, Overrides, Version, changes, refusals, say
+
+
+def check(
+    case: Annotated[str, typer.Argument(metavar="CASE.toml", help="The case file to read.")],
+    overrides: Overrides = None,
+    version: Version = False,
+) -> int:
+    """Read a case without solving it: inputs as typed and in SI, derived numbers, cautions."""
+    from transient.case.derived import derived
+    from transient.case.read import read_case
+    from transient.cli.echo import echo
+
+    with refusals():
+        read = read_case(case, changes(overrides))
+        say(echo(read.title, read.inputs(), derived(read)))
+    return GOOD

@@ -1,0 +1,41 @@
+"""Where ``transient run`` writes: decided and tried before anything is solved."""
+
+from __future__ import annotations
+
+import tempfile
+from pathlib import Path
+
+from transient.cli.words import Stop
+
+
+def result_paths(cases: list[str], folder: Path) -> list[Path]:
+    """The result file of each case file, in order.  Raises Stop (status 2) where one could not be written."""
+    paths = [folder / f"{Path(case).stem}.h5" for case in cases]
+    _no_two_alike(cases, paths)
+    _writable(folder)
+    for path in paths:
+        if path.is_dir():
+            raise Stop(f"{path}: is a folder, so the result cannot be written there; move it, or name another with --out")
+    return paths
+
+
+def _no_two_alike(cases: list[str], paths: list[Path]) -> None:
+    first: dict[Path, str] = {}
+    for case, path in zip(cases, paths, strict=True):
+        if path in first:
+            raise Stop(f"{first[path]} and {case} would both write {path}; rename one, or run them one by one with --out")
+        first[path] = case
+
+
+def _writable(folder: Path) -> None:
+    """Try the folder, or the nearest one above it that exists, with a file that vanishes again."""
+    place = folder
+    while not place.exists() and place.parent != place:
+        place = place.parent
+    if not place.is_dir():
+        raise Stop(f"{folder}: results go into a folder, and {place} is a file; name another with --out")
+    try:
+        with tempfile.TemporaryFile(dir=place):
+            pass
+    except OSError as error:
+        raise Stop(f"{folder}: cannot be written ({error.strerror}); name another folder with --out") from None

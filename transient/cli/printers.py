@@ -1,0 +1,74 @@
+"""The three ways ``transient run`` reports a case: in words, as JSON, or not at all."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from transient.cli.progress import Bar
+from transient.cli.words import note, say
+
+if TYPE_CHECKING:
+    from transient.result.result import Result
+
+
+class Printer:
+    """Reports on cases beside a progress bar; ``outcome`` is "refused" or "failed"."""
+
+    def __init__(self, bar: Bar):
+        self.bar = bar
+
+    def begun(self, case: str) -> None:
+        """A case is under way."""
+        self.bar.begin(case)
+
+    def solved(self, result: Result, path: Path, seconds: float) -> None:
+        """A case was solved and written to ``path``."""
+        self.bar.end()
+
+    def stopped(self, case: str, outcome: str, message: str) -> None:
+        """A case was not solved: the message goes to standard error."""
+        self.bar.end()
+        with self.bar.aside():
+            note(message)
+
+
+class Quiet(Printer):
+    """Errors only."""
+
+
+class Json(Printer):
+    """One JSON object per case on standard output."""
+
+    def solved(self, result: Result, path: Path, seconds: float) -> None:
+        from transient.result.store import to_json
+
+        super().solved(result, path, seconds)
+        self._print(to_json(result.summary))
+
+    def stopped(self, case: str, outcome: str, message: str) -> None:
+        super().stopped(case, outcome, message)
+        self._print(json.dumps({"case": case, outcome: message}, ensure_ascii=False))
+
+    def _print(self, line: str) -> None:
+        with self.bar.aside():
+            say(line)
+
+
+class Words(Printer):
+    """The summary for people."""
+
+    def __init__(self, bar: Bar):
+        super().__init__(bar)
+        self.printed = False
+
+    def solved(self, result: Result, path: Path, seconds: float) -> None:
+        from transient.cli.summary import describe
+
+        super().solved(result, path, seconds)
+        with self.bar.aside():
+            if self.printed:
+                say("")
+            say(describe(result, path, seconds))
+        self.printed = True

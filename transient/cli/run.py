@@ -1,0 +1,64 @@
+"""``transient run``: solve case files, write a result file each, print what came out."""
+
+from __future__ import annotations
+
+import time
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+from transient.cli.outputs import result_paths
+from transient.cli.printers import Json, Printer, Quiet, Words
+from transient.cli.progress import announce_first_run, progress
+from transient.cli.words import FAILED, REFUSED, Overrides, Stop, Version, changes, one_line
+
+
+def run(
+    cases: Annotated[list[str], typer.Argument(metavar="CASE.toml ...", help="The case files to solve.")],
+    out: Annotated[Path, typer.Option("--out", metavar="DIR", help="Folder for the result files.")] = Path("outputs"),
+    as_json: Annotated[
+        bool, typer.Option("--json", help="Print exactly one JSON object per case, a line each, in SI.")
+    ] = False,
+    sheet: Annotated[bool, typer.Option("--sheet", help="Write the calculation sheet too (not in this version).")] = False,
+    quiet: Annotated[bool, typer.Option("--quiet", help="Print nothing but errors (and what --json asks for).")] = False,
+    overrides: Overrides = None,
+    version: Version = False,
+) -> int:
+    """Solve case files: write DIR/NAME.h5 for each NAME.toml and print settling time, peak wall stress and errors."""
+    if sheet:
+        raise Stop("--sheet: this version does not write calculation sheets; run without it")
+    wanted = changes(overrides)
+    paths = result_paths(cases, out)
+    with progress(len(cases), quiet) as bar:
+        printer = Json(bar) if as_json else Quiet(bar) if quiet else Words(bar)
+        if not quiet:
+            announce_first_run()
+        return max(_one(case, path, wanted, printer) for case, path in zip(cases, paths, strict=True))
+
+
+def _one(case: str, path: Path, wanted: list[tuple[str, str]], printer: Printer) -> int:
+    """Solve one case and write its file; the exit status of this case alone."""
+    from transient.answer import exit_status, run
+    from transient.case.read import CaseError, read_case
+    from transient.march import SolveError
+    from transient.result.result import ResultError
+    from transient.result.store import write
+
+    began = time.perf_counter()
+    printer.begun(case)
+    try:
+        result = run(read_case(case, wanted))
+        path.parent.mkdir(parents=True, exist_ok=True)
+        write(result, path)
+    except (CaseError, ResultError) as error:
+        printer.stopped(case, "refused", one_line(str(error)))
+        return REFUSED
+    except OSError as error:
+        printer.stopped(case, "refused", f"{path}: cannot be written ({error.strerror})")
+        return REFUSED
+    except SolveError as error:
+        printer.stopped(case, "failed", f"{case}: {one_line(str(error))}")
+        return FAILED
+    printer.solved(result, path, time.perf_counter() - began)
+    return exit_status(result)

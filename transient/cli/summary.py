@@ -1,0 +1,165 @@
+"""The summary for people: what a designer would read aloud, in ten seconds and 80 columns."""
+
+from __future__ import annotations
+
+import textwrap
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from transient.cli.numbers import columns, listed, percent, plain, stated
+
+if TYPE_CHECKING:
+    from transient.result.result import Result
+
+WIDTH = 80
+LABEL = 11
+
+VERDICTS = {
+    "good": "good",
+    "caution": "good, with a caution",
+    "outside": "outside what this model describes: do not rely on these numbers",
+    "failed": "a self-check failed: do not rely on these numbers",
+}
+
+
+def describe(result: Result, path: Path, seconds: float) -> str:
+    """The printed summary of a finished run, lines of at most 80 columns."""
+    summary = result.summary
+    speed_unit = result.variables["wall_speed"].units if "wall_speed" in result.variables else "m/s"
+    blocks = [
+        [result.title or path.stem],
+        _settling(summary["settling"]),
+        [*_walls(summary["walls"], speed_unit), *_remarks(summary)],
+        [*_flow(summary), *_hand_formula(summary)],
+        [*_trust(summary), *_entry("File", f"{path}   ({_effort(summary, seconds)})")],
+    ]
+    return "\n\n".join("\n".join(block) for block in blocks if block)
+
+
+def _entry(label: str, text: str) -> list[str]:
+    """A label and its text, wrapped and indented."""
+    return textwrap.wrap(
+        text, WIDTH, initial_indent=label.ljust(LABEL), subsequent_indent=" " * LABEL,
+        break_long_words=False, break_on_hyphens=False,
+    )
+
+
+def _settling(part: dict[str, Any]) -> list[str]:
+    within = percent(part["within"])
+    if part.get("time") is None:
+        reason = part.get("note") or "the drive ends in no steady or periodic state, or the run ends before it"
+        return _entry("Settled", f"not within {within} in this run: {reason}")
+    lines = _entry("Settled", f"after {stated(part['time'], part.get('error'), 's')}: velocity within {within} of its end state")
+    others = [("flow", part.get("flow")), *((f"stress on {w}", t) for w, t in (part.get("stress") or {}).items())]
+    told = [f"{name} {plain(at, 's')}" for name, at in others if at is not None]
+    return lines + (_entry("", "; ".join(told)) if told else [])
+
+
+def _walls(walls: dict[str, Any], speed_unit: str) -> list[str]:
+    rows = [["Wall", "largest stress", "at", "in the end", "speed then"]]
+    for name, wall in walls.items():
+        peak = "unbounded" if wall.get("unbounded") else _stated(wall.get("peak_stress"), wall.get("peak_stress_error"))
+        rows.append(
+            [
+                name,
+                peak,
+                _plain(wall.get("peak_time"), "s"),
+                _stated(wall.get("final_stress"), wall.get("final_stress_error")),
+                _plain(wall.get("final_speed"), speed_unit),
+            ]
+        )
+    for row in rows:
+        row[0] = row[0].ljust(LABEL - 3)
+    return list(columns(rows))
+
+
+def _stated(value: float | None, error: float | None) -> str:
+    return "-" if value is None else stated(value, error, "Pa")
+
+
+def _plain(value: float | None, unit: str) -> str:
+    return "-" if value is None else plain(value, unit)
+
+
+def _remarks(summary: dict[str, Any]) -> list[str]:
+    """What the wall table cannot hold: infinite starts, forces, overshoot."""
+    lines = []
+    for name, wall in summary["walls"].items():
+        if wall.get("unbounded"):
+            lines += _entry("", _unbounded(name, wall))
+            continue
+        parts = []
+        overshoot = wall.get("overshoot")
+        if overshoot is not None and overshoot > 0.01:
+            parts.append(f"{percent(overshoot)} above its final value")
+        for key, unit in (("peak_force", "N"), ("peak_torque", "N m")):
+            if wall.get(key):
+                parts.append(f"largest {key.removeprefix('peak_')} {plain(wall[key], unit)}")
+        if parts:
+            lines += _entry("", f"{name}: {'; '.join(parts)}")
+    return lines
+
+
+def _unbounded(name: str, wall: dict[str, Any]) -> str:
+    """The law of an infinite start, with one number to picture it."""
+    coefficient, exponent = wall["unbounded_coefficient"], wall.get("unbounded_exponent", 0.5)
+    at = plain(wall.get("peak_time") or 0.0, "s")
+    law = "K / sqrt(t)" if exponent == 0.5 else f"K / t^{exponent:.3g}"
+    example = plain(coefficient / 1e-3**exponent, "Pa")
+    return (
+        f"{name}: the speed jumps at {at}, where the stress is infinite. It falls as {law} with "
+        f"K = {coefficient:.4g} Pa s^{exponent:.3g}, t from the jump on: {example} after 1 ms"
+    )
+
+
+def _flow(summary: dict[str, Any]) -> list[str]:
+    flow = summary.get("flow") or {}
+    if flow.get("final_mean_velocity") is None:
+        return []
+    text = f"mean velocity {plain(flow['final_mean_velocity'], 'm/s')} in the end"
+    if flow.get("peak_mean_velocity") is not None:
+        text += f", largest {plain(flow['peak_mean_velocity'], 'm/s')}"
+    if flow.get("peak_flow_rate") is not None:
+        text += f"; largest flow rate {plain(flow['peak_flow_rate'], 'm^3/s')}"
+    if flow.get("volume_delivered") is not None:
+        text += f"; {plain(flow['volume_delivered'], 'm^3')} delivered in the run"
+    return _entry("Flow", text)
+
+
+def _hand_formula(summary: dict[str, Any]) -> list[str]:
+    part = summary.get("quasi_steady")
+    if not part:
+        return []
+    peaks = [f"{plain(peak, 'Pa')} on {wall}" for wall, peak in (part.get("peak_stress") or {}).items() if peak is not None]
+    verdict = "would have been enough" if part.get("enough") else "is not enough here"
+    text = f"(steady profile at every instant) {verdict}"
+    if peaks:
+        text += f"; it gives {listed(peaks)}"
+    if part.get("note"):
+        text += f". {part['note']}"
+    return _entry("By hand", text)
+
+
+def _trust(summary: dict[str, Any]) -> list[str]:
+    checks = summary.get("checks") or []
+    passed = sum(check["status"] == "pass" for check in checks)
+    numerics = summary.get("numerics") or {}
+    text = f"{VERDICTS.get(summary['verdict'], summary['verdict'])} ({passed} of {len(checks)} checks passed)"
+    if numerics.get("accuracy") is not None:
+        text += f"; accuracy asked {percent(numerics['accuracy'])}"
+        if numerics.get("reached") is not None:
+            text += f", reached {percent(numerics['reached'])}"
+    lines = _entry("Trust", text)
+    for check in sorted(checks, key=lambda check: check["status"] != "fail"):
+        if check["status"] != "pass":
+            word = "FAILED" if check["status"] == "fail" else "caution"
+            lines += _entry("", f"{word}: {check.get('note') or check['name']}")
+    return lines
+
+
+def _effort(summary: dict[str, Any], seconds: float) -> str:
+    numerics = summary.get("numerics") or {}
+    took = plain(seconds, "s")
+    if numerics.get("points") and numerics.get("steps"):
+        return f"{numerics['points']} points, {numerics['steps']} steps, {took}"
+    return took
