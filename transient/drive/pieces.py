@@ -8,16 +8,16 @@ so both see exactly the same drive.  Plain arrays only.
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from fractions import Fraction
+from math import factorial
 
 import numpy as np
 
-# Two break points closer than this, relative to the larger time, are one: 0.1 + 0.2 must meet 0.3.
-SAME_TIME = 1e-12
+from transient.drive.times import SAME_TIME, common_period, merge_times
+
 # A difference of value, slope, ... across a break below this share of the drive's own size is round-off.
 SAME_VALUE = 1e-11
-# Periods whose ratio is a fraction with larger terms than this are taken as having no common period.
-LARGEST_RATIO = 1000
+# So is one that bends the value, over the longer of the two pieces beside it, by less than this share of its size.
+SAME_BEND = 1e-14
 # More pieces than this in one run are refused rather than swallowed.
 MOST_PIECES = 2_000_000
 
@@ -42,6 +42,13 @@ def shift_cubic(poly: np.ndarray, x: np.ndarray) -> np.ndarray:
     for order in range(4):
         for degree in range(order, 4):
             out[..., order] += _BINOMIAL[order, degree] * poly[..., degree] * power[..., degree - order + 1]
+    return out
+
+
+def derive_cubic(poly: np.ndarray) -> np.ndarray:
+    """Coefficients of the derivatives of cubics (..., 4), lowest power first."""
+    out = np.zeros_like(poly)
+    out[..., :3] = poly[..., 1:] * np.array([1.0, 2.0, 3.0])
     return out
 
 
@@ -72,9 +79,7 @@ class Pieces:
         x = np.asarray(offset, dtype=float)
         poly = self.poly[piece]
         for _ in range(order):
-            poly = np.stack(
-                [poly[..., 1], 2 * poly[..., 2], 3 * poly[..., 3], np.zeros_like(poly[..., 0])], axis=-1
-            )
+            poly = derive_cubic(poly)
         out = poly[..., 0] + x * (poly[..., 1] + x * (poly[..., 2] + x * poly[..., 3]))
         if self.coeff.shape[1]:
             rate = self.rate[piece]
@@ -95,43 +100,72 @@ class Pieces:
         slack = SAME_TIME * np.maximum(np.abs(starts), starts[-1] * 1e-3)
         owner = np.clip(np.searchsorted(self.starts, starts + slack, side="right") - 1, 0, None)
         x = starts - self.starts[owner]
-        x = np.where(np.abs(x) <= slack, 0.0, x)
-        poly = shift_cubic(self.poly[owner], x)
+        return self._moved(starts, owner, np.where(np.abs(x) <= slack, 0.0, x))
+
+    def _moved(self, starts: np.ndarray, owner: np.ndarray, x: np.ndarray) -> Pieces:
+        """Pieces at ``starts`` that go on with piece ``owner`` from its local time ``x``; all (n,)."""
         rate = self.rate[owner]
         coeff = self.coeff[owner] * np.exp(rate * x[:, None])
-        return Pieces(starts, poly, coeff, rate, self.before)
+        return Pieces(starts, shift_cubic(self.poly[owner], x), coeff, rate, self.before)
 
     def jumps(self, order: int = 0) -> np.ndarray:
         """Change of the ``order``-th derivative at each start (P,); at t = 0 against ``before`` held constant.
 
-        Differences that are round-off of the terms they come from are exactly 0.
+        Differences that are round-off, of the terms or of the time at which they come, are exactly 0.
         """
         lengths = np.diff(self.starts)
-        right = self.at(np.arange(len(self.starts)), np.zeros(len(self.starts)), order)
-        left = np.empty_like(right)
-        left[0] = self.before if order == 0 else 0.0
-        left[1:] = self.at(np.arange(len(lengths)), lengths, order)
+        count = np.arange(len(self.starts))
+        right = self.at(count, np.zeros(len(count)), order)
+        left = np.concatenate([[self.before if order == 0 else 0.0], self.at(count[:-1], lengths, order)])
         jump = right - left
-        size = self.size(order)
-        reach = np.maximum(size, np.concatenate([[size[0]], size[:-1]]))
-        return np.where(np.abs(jump) <= SAME_VALUE * reach, 0.0, jump)
+        noise = SAME_VALUE * self._reach(order) + 4.0 * np.finfo(float).eps * self.starts * self._reach(order + 1)
+        if order and len(lengths):
+            beside = np.maximum(np.append(lengths, 0.0), np.append(0.0, lengths))
+            noise += factorial(order) * SAME_BEND * self._reach(0) / beside**order
+        return np.where(np.abs(jump) <= noise, 0.0, jump)
 
     def size(self, order: int = 0) -> np.ndarray:
-        """Bound of the terms of the ``order``-th derivative on each piece (P,), the last over its first unit.
+        """Bound of the terms of the ``order``-th derivative on each piece (P,); on the last, at its start.
 
         The size of the terms, not of their sum: what round-off is measured against.
         """
-        lengths = np.append(np.diff(self.starts), 0.0)
-        total = np.zeros(len(self.starts))
-        for degree in range(order, 4):
-            factor = np.prod(np.arange(degree, degree - order, -1)) if order else 1.0
-            total += factor * np.abs(self.poly[:, degree]) * lengths ** (degree - order)
+        slope = self.derivative(order)
+        lengths = np.append(np.diff(self.starts), 0.0)[:, None]
+        powers = lengths ** np.arange(4)
+        growth = np.exp(np.maximum(self.rate.real, 0.0) * lengths)
+        total = (np.abs(slope.poly) * powers).sum(axis=1) + (np.abs(slope.coeff) * growth).sum(axis=1)
+        return np.maximum(total, abs(slope.before))
+
+    def _reach(self, order: int) -> np.ndarray:
+        """The larger ``size`` of the two pieces that meet at each start (P,)."""
+        size = self.size(order)
+        return np.maximum(size, np.concatenate([size[:1], size[:-1]]))
+
+    def derivative(self, order: int = 1) -> Pieces:
+        """The ``order``-th derivative on the same pieces; jumps between them leave no trace in it."""
+        poly = self.poly
+        for _ in range(order):
+            poly = derive_cubic(poly)
+        return Pieces(self.starts, poly, self.coeff * self.rate**order, self.rate, 0.0 if order else self.before)
+
+    def integral(self, t: np.ndarray) -> np.ndarray:
+        """Integral from 0 to absolute times ``t`` (any shape), in closed form; negative before t = 0."""
+        t = np.asarray(t, dtype=float)
+        whole = self._within(np.arange(len(self.starts) - 1), np.diff(self.starts))
+        piece, offset = self.locate(np.maximum(t, 0.0))
+        out = np.append(0.0, np.cumsum(whole))[piece] + self._within(piece, offset)
+        return np.where(t < 0.0, self.before * t, out)
+
+    def _within(self, piece: np.ndarray, x: np.ndarray) -> np.ndarray:
+        """Integral over ``piece`` from its start to local time ``x``; equal shapes."""
+        poly = self.poly[piece]
+        out = x * (poly[..., 0] + x * (poly[..., 1] / 2 + x * (poly[..., 2] / 3 + x * poly[..., 3] / 4)))
         if self.coeff.shape[1]:
-            growth = np.exp(np.maximum(self.rate.real, 0.0) * lengths[:, None])
-            total += (np.abs(self.coeff) * np.abs(self.rate) ** order * growth).sum(axis=1)
-        if order == 0:
-            total = np.maximum(total, abs(self.before))
-        return total
+            turn = self.rate[piece] * x[..., None]
+            still = turn == 0.0
+            mean = np.where(still, 1.0, np.expm1(turn) / np.where(still, 1.0, turn))
+            out = out + (self.coeff[piece] * x[..., None] * mean).real.sum(axis=-1)
+        return out
 
 
 @dataclass(frozen=True, eq=False)
@@ -159,10 +193,17 @@ class Track:
                 "every",
             )
         cycle = np.arange(int(cycles))
-        out = (cycle[:, None] * self.every + own[None, :]).ravel()
+        out = (cycle[:, None] * self.every + own[None, :])[:, 1 if self._seamless() else 0 :].ravel()
+        out = out if out[:1] == 0.0 else np.append(0.0, out)
         if np.isfinite(self.times) and self.times * self.every <= until:
             out = np.append(out, self.times * self.every)
         return out[(out < until) | (out == 0.0)]
+
+    def _seamless(self) -> bool:
+        """Whether the cycle's end and its beginning are one and the same constant, so that no break lies between."""
+        own = self.pieces
+        ends = own.poly[[0, -1]]
+        return len(own.starts) > 1 and not (own.coeff[[0, -1]].any() or ends[:, 1:].any() or ends[0, 0] != ends[1, 0])
 
     def expand(self, starts: np.ndarray) -> Pieces:
         """This track as plain pieces beginning at ``starts`` (which include its own breaks)."""
@@ -176,13 +217,33 @@ class Track:
         own = self.pieces
         owner = np.clip(np.searchsorted(own.starts, local + slack, side="right") - 1, 0, None)
         x = local - own.starts[owner]
-        x = np.where(np.abs(x) <= slack, 0.0, x)
-        poly = shift_cubic(own.poly[owner], x)
-        rate = own.rate[owner]
-        coeff = own.coeff[owner] * np.exp(rate * x[:, None])
-        poly[over] = [self.after, 0.0, 0.0, 0.0]
-        coeff[over] = 0.0
-        return Pieces(starts, poly, coeff, rate, own.before)
+        out = own._moved(starts, owner, np.where(np.abs(x) <= slack, 0.0, x))
+        out.poly[over] = [self.after, 0.0, 0.0, 0.0]
+        out.coeff[over] = 0.0
+        return out
+
+    def derivative(self) -> Track:
+        """The rate of change between jumps, cycle by cycle."""
+        return Track(self.pieces.derivative(), self.every, self.times, 0.0)
+
+    def integral(self, t: np.ndarray) -> np.ndarray:
+        """Integral from 0 to absolute times ``t`` (any shape)."""
+        t = np.asarray(t, dtype=float)
+        if not np.isfinite(self.every):
+            return self.pieces.integral(t)
+        cycle = np.clip(np.floor(t / self.every), 0.0, self.times)
+        rest = t - cycle * self.every
+        part = np.where(cycle < self.times, self.pieces.integral(np.minimum(rest, self.every)), self.after * rest)
+        return cycle * self.pieces.integral(np.array(self.every)) + part
+
+    def seam(self) -> float:
+        """Change of value from the end of one cycle to the beginning of the next; round-off is exactly 0."""
+        last = len(self.pieces.starts) - 1
+        length = self.every - self.pieces.starts[last]
+        begin, end = self.pieces.at(np.array([0, last]), np.array([0.0, length]))
+        slope = np.abs(self.pieces.at(np.array([last]), np.array([length]), 1))[0]
+        noise = SAME_VALUE * self.pieces.size().max() + 4.0 * np.finfo(float).eps * self.every * slope
+        return 0.0 if abs(begin - end) <= noise else begin - end
 
 
 @dataclass(frozen=True, eq=False)
@@ -241,6 +302,43 @@ class Drive:
         drive = None if end.drive is None else end.drive.scaled(factor)
         return Drive(tracks, factor * self.before, Eventual(drive, end.period, end.since))
 
+    def integral(self, t: np.ndarray) -> np.ndarray:
+        """Integral from 0 to absolute times ``t`` (any shape), in closed form; negative before t = 0."""
+        t = np.asarray(t, dtype=float)
+        return sum((track.integral(t) for track in self.tracks), np.zeros_like(t))
+
+    def derivative(self) -> Drive:
+        """The rate of change, 0 before t = 0, with what it ends in.  Raises ``DriveError`` where the drive jumps."""
+        jump = self._first_jump()
+        if jump is not None:
+            raise DriveError(f"the value jumps at t = {jump:g} s, so that its rate of change is infinite there")
+        return self._rate()
+
+    def _rate(self) -> Drive:
+        """The rate of change between jumps."""
+        tracks = tuple(track.derivative() for track in self.tracks)
+        end = self.eventual
+        if end.drive is self:
+            return _itself(tracks, 0.0, end)
+        drive = None if end.drive is None else end.drive._rate()
+        return Drive(tracks, 0.0, Eventual(drive, end.period, end.since))
+
+    def _first_jump(self) -> float | None:
+        """Time of the first jump of the sum (within a repeat, of the repeat alone), or None."""
+        first = np.array([track.pieces.at(np.array([0]), np.zeros(1))[0] for track in self.tracks])
+        size = sum(track.pieces.size()[0] for track in self.tracks)
+        if abs(first.sum() - self.before) > SAME_VALUE * size:
+            return 0.0
+        found = []
+        single = Drive(tuple(track for track in self.tracks if not np.isfinite(track.every)))
+        pieces = single.pieces(np.inf)
+        found.extend(pieces.starts[1:][pieces.jumps()[1:] != 0.0][:1])
+        for track in self.tracks:
+            if np.isfinite(track.every):
+                found.extend(track.pieces.starts[1:][track.pieces.jumps()[1:] != 0.0][:1])
+                found.extend([track.every] if track.times > 1 and track.seam() != 0.0 else [])
+        return min(found, default=None)
+
     def minus(self, other: Drive) -> Drive:
         """The difference of two drives (its ``eventual`` is not worked out)."""
         return Drive(self.tracks + other.scaled(-1.0).tracks, self.before - other.before)
@@ -281,36 +379,3 @@ def total(drives: list[Drive]) -> Drive:
         return _itself(tracks, before, Eventual(None, period, since))
     regime = total([end.drive for end in ends])
     return Drive(tracks, before, Eventual(regime, period, since))
-
-
-def common_period(periods: list[float | None]) -> tuple[float | None, bool]:
-    """(smallest common period, whether there is one); constants (None) do not count."""
-    real = [p for p in periods if p is not None]
-    if not real:
-        return None, True
-    base = real[0]
-    multiple = Fraction(1)
-    for p in real[1:]:
-        ratio = Fraction(p / base).limit_denominator(LARGEST_RATIO)
-        if ratio.numerator > LARGEST_RATIO or ratio <= 0 or abs(float(ratio) - p / base) > 1e-9 * p / base:
-            return None, False
-        # lcm of two fractions in lowest terms
-        num = multiple.numerator * ratio.numerator // _gcd(multiple.numerator, ratio.numerator)
-        multiple = Fraction(num, _gcd(multiple.denominator, ratio.denominator))
-    return base * float(multiple), True
-
-
-def _gcd(a: int, b: int) -> int:
-    while b:
-        a, b = b, a % b
-    return a
-
-
-def merge_times(groups: list[np.ndarray]) -> np.ndarray:
-    """Sorted union of break times; those that differ by round-off only become one (the earliest given)."""
-    times = np.sort(np.concatenate(groups))
-    if len(times) == 0:
-        return times
-    scale = np.maximum(np.abs(times[1:]), times[-1] * 1e-3)
-    keep = np.concatenate([[True], np.diff(times) > SAME_TIME * scale])
-    return times[keep]
