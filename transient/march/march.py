@@ -1,0 +1,320 @@
+"""From a problem to histories: one adaptive march on a base level, then the same steps halved on twice the cells.
+
+Both levels share the base level's rows and nodes, so histories are extrapolated point by point (Richardson 1911):
+the finer level plus a third of its difference to the coarser one.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
+from transient.gap.system import System, assemble, steady
+from transient.march import kernel
+from transient.march.plan import Features, Resolution
+from transient.result.history import History
+
+CHUNK_ROWS = 4096
+PROFILE_BYTES = 16e6  # of the base level; longer runs keep every 2nd, 4th, ... profile
+MOST_STEPS = 20_000_000
+
+
+class SolveError(RuntimeError):
+    """The march stopped; the message says when, where and the likely cause in one sentence."""
+
+
+@dataclass(frozen=True, eq=False)
+class Trace:
+    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 6) as named in ``kernel``,
+    ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done."""
+
+    system: System
+    piece: np.ndarray
+    offset: np.ndarray
+    fields: np.ndarray
+    profile_row: np.ndarray
+    profiles: np.ndarray
+    profile_every: int
+    solves: int
+
+    @property
+    def steps(self) -> int:
+        """Steps recorded."""
+        return len(self.piece) - int(self.piece[-1] - self.piece[0]) - 1
+
+
+@dataclass(frozen=True, eq=False)
+class Plan:
+    """Ends of prescribed steps as offsets (S,), which of them end a piece, and how many make one recorded row."""
+
+    offset: np.ndarray
+    lands: np.ndarray
+    record_every: int
+
+
+NO_PLAN = Plan(np.empty(0), np.empty(0, bool), 1)
+
+
+@dataclass(frozen=True, eq=False)
+class State:
+    """Velocities and their rates at the unknowns (n,), just before the first piece."""
+
+    velocity: np.ndarray
+    rates: np.ndarray
+
+
+def initial_state(problem: Problem, system: System, inputs: Inputs) -> State:
+    """Fluid at rest, or in the steady state of the inputs' values before t = 0."""
+    nothing = np.zeros(system.unknowns)
+    if problem.start == "rest":
+        return State(nothing, nothing)
+    return State(steady(system, inputs.before[:2], float(inputs.before[PRESSURE])), nothing)
+
+
+def march(
+    problem: Problem,
+    inputs: Inputs,
+    until: float,
+    found: Features,
+    resolution: Resolution,
+    *,
+    plan: Plan = NO_PLAN,
+    profile_every: int = 1,
+    start: State | None = None,
+) -> Trace:
+    """March one problem over [0, until) on ``resolution``; with a ``plan`` by its steps, else adaptively.
+
+    Raises ``SolveError`` where a value stops being finite or the run asks for more steps than can be kept.
+    """
+    system = assemble(problem, resolution.cells, resolution.layers)
+    state = start if start is not None else initial_state(problem, system, inputs)
+    run = _Run(problem, system, inputs, until, found, resolution, plan, profile_every, state)
+    while run.status[0] != kernel.DONE:
+        run.advance()
+        if run.status[0] in (kernel.BROKEN, kernel.STALLED):
+            raise SolveError(run.complaint())
+        run.collect()
+    return run.trace()
+
+
+class _Run:
+    """The kernel's arrays for a batch of one, and the records taken from it chunk by chunk."""
+
+    def __init__(self, problem, system, inputs, until, found, resolution, plan, profile_every, start):
+        self.problem, self.system, self.inputs, self.until, self.plan = problem, system, inputs, until, plan
+        self.profile_every = profile_every
+        n = system.unknowns
+        self.jump = np.array([inputs.row(row).jumps(0) for row in (LOWER, UPPER, PRESSURE)]).T.copy()
+        self.velocity = start.velocity.copy()
+        self.rates = start.rates + system.volume * self.jump[0, PRESSURE] / system.storage
+        self.rates[0] += system.end_conductance[0] * self.jump[0, LOWER] / system.storage[0]
+        self.rates[-1] += system.end_conductance[1] * self.jump[0, UPPER] / system.storage[-1]
+        self.travel = np.zeros(n)
+        self.cursor = np.zeros((5, 1), np.int64)
+        self.state = np.zeros((3, 1))
+        self.state[1] = resolution.first_step[0]
+        self.status = np.zeros(1, np.int64)
+        weights = system.grid.mean_weight
+        self.weight = weights[system.first : system.first + n]
+        lever = np.array([problem.inner, problem.outer]) if problem.rotating else np.ones(2)
+        speed = found.speed / (lever.max() if problem.rotating else 1.0)
+        flux_scale = found.stress * system.grid.stress_radius
+        pieces = len(inputs.starts)
+        self.fixed = (
+            system.storage[:, None], system.conductance[:, None], system.volume[:, None],
+            system.end_conductance[:, None].copy(), np.ascontiguousarray(self.weight)[:, None],
+            inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
+            inputs.poly, inputs.coeff, inputs.rate, self.jump,
+            resolution.first_step, np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
+            plan.offset, plan.lands, plan.record_every,
+        )  # fmt: skip
+        rows = CHUNK_ROWS if len(plan.offset) == 0 else min(CHUNK_ROWS, len(plan.offset) + 2 * pieces + 8)
+        self.row_piece = np.empty((rows, 1), np.int64)
+        self.row_offset = np.empty((rows, 1))
+        self.rows = np.empty((rows, 1, kernel.FIELDS))
+        self.profile_row = np.empty((rows, 1), np.int64)
+        self.profiles = np.empty((rows, 1, 3, n))
+        self.kept: list[tuple[np.ndarray, ...]] = []
+        self.solves = 0
+        self._first_row()
+
+    def _first_row(self) -> None:
+        """The row at t = 0+: the state as the inputs' jumps leave it."""
+        self.row_piece[0], self.row_offset[0] = 0, 0.0
+        u, f = self.velocity, self.rates
+        self.rows[0, 0] = u[0], u[-1], f[0], f[-1], self.weight @ u, self.weight @ f
+        self.profile_row[0] = 0
+        self.profiles[0, 0] = u, f, self.travel
+        self.cursor[2] = self.cursor[3] = 1
+
+    def advance(self) -> None:
+        self.status[0] = kernel.RUNNING
+        self.solves += kernel.march(
+            *self.fixed, self.profile_every,
+            self.velocity[:, None], self.rates[:, None], self.travel[:, None], self.cursor, self.state,
+            self.row_piece, self.row_offset, self.rows, self.profile_row, self.profiles, self.status,
+        )  # fmt: skip
+
+    def collect(self) -> None:
+        """Move the records out; thin the profiles where they grow too many."""
+        rows, profiles = int(self.cursor[2, 0]), int(self.cursor[3, 0])
+        base = int(self.cursor[4, 0])
+        self.kept.append(
+            (
+                self.row_piece[:rows, 0].copy(),
+                self.row_offset[:rows, 0].copy(),
+                self.rows[:rows, 0].copy(),
+                self.profile_row[:profiles, 0] + base,
+                self.profiles[:profiles, 0].copy(),
+            )
+        )
+        self.cursor[4] += rows
+        self.cursor[2] = self.cursor[3] = 0
+        if base + rows > MOST_STEPS:
+            raise SolveError(
+                f"more than {MOST_STEPS:.0e} steps are needed and the run is at t = {self.time():.4g} s of "
+                f"{self.until:.4g} s; shorten the run or ask for a lower accuracy"
+            )
+        if len(self.plan.offset) == 0:
+            self._thin()
+
+    def _thin(self) -> None:
+        while sum(part[4].nbytes for part in self.kept) > PROFILE_BYTES:
+            self.profile_every *= 2
+            for i, part in enumerate(self.kept):
+                keep = part[3] % self.profile_every == 0
+                self.kept[i] = (*part[:3], part[3][keep], part[4][keep])
+
+    def time(self) -> float:
+        return float(self.inputs.starts[self.cursor[0, 0]] + self.state[0, 0])
+
+    def complaint(self) -> str:
+        what = (
+            "a velocity is no longer a finite number"
+            if self.status[0] == kernel.BROKEN
+            else "the step has shrunk to nothing"
+        )
+        bad = np.flatnonzero(~np.isfinite(self.velocity))
+        where = self.system.grid.radius[self.system.first + (bad[0] if len(bad) else 0)]
+        return (
+            f"the march stopped at t = {self.time():.6g} s near r = {where:.4g} m: {what}; "
+            "likely cause: inputs so large or so small that they leave the range of numbers"
+        )
+
+    def trace(self) -> Trace:
+        parts = [np.concatenate(column) for column in zip(*self.kept, strict=True)]
+        return Trace(self.system, *parts, self.profile_every, self.solves)
+
+
+def halved(trace: Trace, times: int = 1) -> Plan:
+    """The steps of ``trace`` (recorded at every step), each cut into 2^times equal parts."""
+    same = trace.piece[1:] == trace.piece[:-1]
+    low, high = trace.offset[:-1][same], trace.offset[1:][same]
+    parts = 2**times
+    share = np.arange(1, parts + 1) / parts
+    offset = low[:, None] + (high - low)[:, None] * share
+    offset[:, -1] = high
+    lands = np.zeros(offset.shape, bool)
+    last = np.flatnonzero(np.append(~same, True))  # rows that end a piece
+    position = np.cumsum(same) - 1  # step that ends in row i + 1
+    lands[position[last[last > 0] - 1], -1] = True
+    return Plan(offset.ravel(), lands.ravel(), parts)
+
+
+def finer(resolution: Resolution, times: int = 1) -> Resolution:
+    """The same layers with 2^times the cells."""
+    return replace(resolution, cells=resolution.cells * 2**times)
+
+
+def history(problem: Problem, inputs: Inputs, trace: Trace, every: int = 1) -> History:
+    """Rows in physical quantities; ``every``-th node of the trace's grid is kept."""
+    rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
+    value, slope, bend = (np.array([row.at(trace.piece, trace.offset, order) for row in rows]) for order in range(3))
+    system = trace.system
+    stress, stress_rate = _stresses(problem, inputs, trace, value, slope, bend)
+    weight = system.grid.mean_weight
+    ends = np.array([weight[0] if system.first else 0.0, weight[-1] if system.end_volume[1] > 0 else 0.0])
+    mean = trace.fields[:, kernel.MEAN] + ends @ value[:2]
+    mean_rate = trace.fields[:, kernel.MEAN_RATE] + ends @ slope[:2]
+    time = inputs.starts[trace.piece] + trace.offset
+    at = trace.profile_row
+    walls = value[:2].T, slope[:2].T, _wall_travel(time, value[:2].T, slope[:2].T)
+    profile, profile_rate, travel = (
+        system.nodes(trace.profiles[:, i], wall[at])[:, ::every] for i, wall in enumerate(walls)
+    )
+    return History(
+        time, trace.piece, trace.offset, stress, stress_rate, value[:2].T, slope[:2].T, mean, mean_rate,
+        value[PRESSURE], system.grid.radius[::every], at, profile, profile_rate, travel,
+    )  # fmt: skip
+
+
+def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) -> np.ndarray:
+    """Running integral (n, 2) of the walls' speeds, by the cubic through values and rates."""
+    h = np.diff(time)[:, None]
+    part = 0.5 * h * (speed[1:] + speed[:-1]) + h * h / 12.0 * (acceleration[:-1] - acceleration[1:])
+    return np.concatenate([np.zeros((1, 2)), np.cumsum(part, axis=0)])
+
+
+def _stresses(
+    problem: Problem, inputs: Inputs, trace: Trace, value: np.ndarray, slope: np.ndarray, bend: np.ndarray
+) -> tuple[np.ndarray, np.ndarray]:
+    """Wall stresses and their rates (rows, 2) from the balance of each wall's half cell.
+
+    Flux through the last face, plus what the half cell stores, less what the pressure gives it: exact in steady
+    flow.  After a break the half cell's storage jumps with the wall's acceleration although the stress does not:
+    the limit from the left is used on both sides, which is second order where the right one is first.
+    """
+    system = trace.system
+    fields = trace.fields
+    stress = np.zeros((len(trace.piece), 2))
+    rate = np.zeros_like(stress)
+    for end, sign, near, near_rate in (
+        (0, 1.0, kernel.FIRST, kernel.FIRST_RATE),
+        (1, 1.0, kernel.LAST, kernel.LAST_RATE),
+    ):
+        conductance, half = system.end_conductance[end], system.end_volume[end]
+        stored = problem.density * half
+        factor = sign / system.grid.stress_radius[end]
+        stress[:, end] = factor * (
+            conductance * (fields[:, near] - value[end]) + half * value[PRESSURE] - stored * slope[end]
+        )
+        rate[:, end] = factor * (
+            conductance * (fields[:, near_rate] - slope[end]) + half * slope[PRESSURE] - stored * bend[end]
+        )
+    _join_breaks(problem, inputs, trace, stress, rate)
+    return stress, rate
+
+
+def _join_breaks(problem: Problem, inputs: Inputs, trace: Trace, stress: np.ndarray, rate: np.ndarray) -> None:
+    """Right-hand limits at breaks: infinite where a no-slip wall's speed jumps, else the left-hand limit."""
+    system = trace.system
+    enters = np.flatnonzero(trace.offset == 0.0)
+    for end in (0, 1):
+        slips = system.end_volume[end] == 0.0
+        if slips:
+            continue
+        jumped = inputs.row(end).jumps(0)[trace.piece[enters]] != 0.0
+        left = np.where(enters > 0, stress[enters - 1, end], _before(problem, system, inputs)[end])
+        stress[enters, end] = np.where(jumped, np.nan, left)
+        rate[enters[jumped], end] = np.nan
+
+
+def _before(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
+    """Wall stresses (2,) just before t = 0."""
+    if problem.start == "rest":
+        return np.zeros(2)
+    gradient = float(inputs.before[PRESSURE])
+    near = steady(system, inputs.before[:2], gradient)[[0, -1]]
+    flux = system.end_conductance * (near - inputs.before[:2]) + system.end_volume * gradient
+    return flux / system.grid.stress_radius
+
+
+def extrapolate(coarse: History, fine: History) -> History:
+    """Point by point ``fine + (fine - coarse) / 3``; both have the same rows and nodes."""
+    mixed = {
+        name: getattr(fine, name) + (getattr(fine, name) - getattr(coarse, name)) / 3.0
+        for name in ("stress", "stress_rate", "mean", "mean_rate", "profile", "profile_rate", "travel")
+    }
+    return replace(fine, position=coarse.position, **mixed)

@@ -1,0 +1,172 @@
+"""How fine: grid, first steps and tolerances from the drive's features and the accuracy asked for.
+
+After a break of a wall's speed or of the pressure the wall stress grows like a power of sqrt(t):
+a change of acceleration ``a`` gives ``2 density a sqrt(nu t / pi)``, a jump of speed the infinite
+``sqrt(density viscosity / (pi t))`` (Stokes 1851; formulas from memory).  The first step and the first cell must be
+too small for that growth to matter at the stated accuracy; from there both grow geometrically, so their number
+follows the number of features and the logarithm of the scales, not the ratio of scales.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
+
+# Cells grow by this share of their distance from the wall, and the local error allowed per step, at accuracy 1e-3
+# and in proportion to its fourth root and its 3/4 power: with the extrapolation of two levels the error left is then
+# of the order of the accuracy.  Both from trials over all shapes and drives.
+GROWTH = 0.32
+TOLERANCE = 2.5e-3
+# Rows after a jump of speed start at this share of the shortest time that follows it.
+FIRST_ROW = 1e-6
+THINNEST = 1e-9  # of the gap: below this, round-off of the nodes' velocities would show in the stress
+FEWEST_CELLS = 12
+MOST_CELLS = 20_000
+
+
+@dataclass(frozen=True, eq=False)
+class Features:
+    """What the drive does to the two walls, in the units of the stress there.
+
+    ``jump``, ``kink``, ``bend`` (P, 2): changes at each piece's start of the wall's surface speed (m/s), of the
+    acceleration of wall against fluid (m/s^2), and of its rate (m/s^3).  ``stress`` (2,) Pa: a cautious (low) guess
+    of each wall's peak.  ``speed`` m/s: the largest speed about.  ``length`` (P,) s of the pieces.
+    ``fastest`` (3,) 1/s: the largest rate of the inputs' exponential terms.
+    """
+
+    jump: np.ndarray
+    kink: np.ndarray
+    bend: np.ndarray
+    stress: np.ndarray
+    speed: float
+    length: np.ndarray
+    fastest: np.ndarray
+
+
+@dataclass(frozen=True, eq=False)
+class Resolution:
+    """Numbers for one base level: cells, the walls' layers (share of the gap), step tolerance, first steps (P,) s."""
+
+    cells: int
+    layers: tuple[float, float]
+    tolerance: float
+    first_step: np.ndarray
+
+
+def features(problem: Problem, inputs: Inputs, until: float) -> Features:
+    """Read the inputs' breaks and sizes off their pieces."""
+    rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
+    lever = _levers(problem)
+    length = np.diff(np.append(inputs.starts, until))
+    jumps = np.array([[row.jumps(order) for order in range(3)] for row in rows])  # (3, 3, P)
+    jump = np.abs(jumps[:2, 0]).T * lever
+    kink = np.abs(jumps[:2, 1]).T * lever + np.abs(jumps[PRESSURE, 0])[:, None] / problem.density
+    bend = np.abs(jumps[:2, 2]).T * lever + np.abs(jumps[PRESSURE, 1])[:, None] / problem.density
+    for end, wall in enumerate(problem.walls):
+        if wall.kind != "moving":
+            jump[:, end] = kink[:, end] = bend[:, end] = 0.0
+    stress, speed = _sizes(problem, rows, lever, length, jump, kink)
+    fastest = np.array([np.abs(row.rate[np.abs(row.coeff) > 0]).max(initial=0.0) for row in rows])
+    return Features(jump, kink, bend, stress, speed, length, fastest)
+
+
+def _levers(problem: Problem) -> np.ndarray:
+    """What turns a wall's speed into its surface speed: the radius where speeds are angular."""
+    return np.array([problem.inner, problem.outer]) if problem.rotating else np.ones(2)
+
+
+def _sizes(
+    problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray, jump: np.ndarray, kink: np.ndarray
+) -> tuple[np.ndarray, float]:
+    """(guess of each wall's peak stress, largest speed): quasi-steady values sampled along the pieces, and the
+    growth after each break for as long as the piece or the diffusion lasts."""
+    nu = problem.viscosity / problem.density
+    diffusion = problem.diffusion_time
+    samples = [np.concatenate([row.at(np.arange(len(length)), share * length) for share in (0, 0.3, 0.7, 1)])
+               for row in rows]  # fmt: skip
+    low, high = samples[LOWER] * lever[0], samples[UPPER] * lever[1]
+    push = np.abs(samples[PRESSURE]).max(initial=0.0)
+    slip = np.abs(low - high).max(initial=0.0)
+    calm = problem.viscosity * slip / problem.gap + 0.25 * push * problem.gap
+    last = np.minimum(length, diffusion)[:, None]
+    grown = (2.0 * problem.density * kink * np.sqrt(nu * last / np.pi)).max(axis=0, initial=0.0)
+    fallen = (problem.density * jump * np.sqrt(nu / (np.pi * last))).max(axis=0, initial=0.0)
+    stress = np.maximum(np.maximum(grown, fallen), calm)
+    # a wall that the motion reaches late or never is judged beside the other one
+    stress = np.maximum(stress, 1e-6 * stress.max())
+    speed = max(np.abs(low).max(initial=0.0), np.abs(high).max(initial=0.0), push * problem.gap**2
+                / (8.0 * problem.viscosity) * min(1.0, 8.0 * length.sum() / diffusion))  # fmt: skip
+    speed = max(speed, np.abs(np.concatenate([[rows[0].before * lever[0]], [rows[1].before * lever[1]]])).max())
+    tiny = np.finfo(float).tiny
+    return np.where(stress > 0, stress, tiny), speed if speed > 0 else tiny
+
+
+def resolve(problem: Problem, found: Features, accuracy: float, refine: float = 1.0) -> Resolution:
+    """The base level for ``accuracy``; ``refine`` > 1 divides the expected error by its square."""
+    growth = GROWTH * (accuracy / 1e-3) ** 0.25 / refine**0.5
+    tolerance = TOLERANCE * (accuracy / 1e-3) ** 0.75 / refine**1.5
+    share = min(accuracy, 0.02) / refine
+    layers = tuple(_layer(problem, found, end, growth, share) for end in (0, 1))
+    along = np.log1p(1.0 / layers[0]) + np.log1p(1.0 / layers[1])
+    cells = int(np.clip(np.ceil(along / growth), FEWEST_CELLS, MOST_CELLS))
+    first = _first_steps(problem, found, growth, share, layers)
+    return Resolution(cells, layers, tolerance, first)
+
+
+def _layer(problem: Problem, found: Features, end: int, growth: float, share: float) -> float:
+    """Thickness of a wall's fine zone, as a share of the gap: first cell = growth x layer."""
+    nu = problem.viscosity / problem.density
+    gap = problem.gap
+    layer = 1.0
+    radius = (problem.inner, problem.outer)[end]
+    if problem.metric and problem.walls[end].kind != "axis":
+        layer = min(layer, 0.5 * radius / gap)
+    rate = max(found.fastest[end], found.fastest[PRESSURE])
+    if problem.walls[end].kind != "moving":
+        return float(max(layer, THINNEST))
+    if rate > 0.0:
+        layer = min(layer, 0.7 * np.sqrt(nu / rate) / gap)
+    cell = np.inf
+    kink = found.kink[:, end].max(initial=0.0)
+    if kink > 0.0:
+        cell = min(cell, share * found.stress[end] / (problem.density * kink))
+    bend = found.bend[:, end].max(initial=0.0)
+    if bend > 0.0:
+        cell = min(cell, (share * found.stress[end] * nu / (problem.density * bend)) ** (1.0 / 3.0))
+    shortest = _after_jumps(problem, found, end)
+    if shortest < np.inf:
+        cell = min(cell, growth * np.sqrt(nu * FIRST_ROW * shortest))
+    layer = min(layer, cell / gap / growth)
+    return float(max(layer, THINNEST / growth))
+
+
+def _after_jumps(problem: Problem, found: Features, end: int) -> float:
+    """The shortest time that follows a jump of the wall's speed, at most the diffusion time; inf without jumps."""
+    jumped = found.jump[:, end] > 0.0
+    if not jumped.any():
+        return np.inf
+    return float(min(found.length[jumped].min(), problem.diffusion_time))
+
+
+def _first_steps(
+    problem: Problem, found: Features, growth: float, share: float, layers: tuple[float, float]
+) -> np.ndarray:
+    """Longest first step of each piece (P,): what the break at its start adds to the stress is below the accuracy."""
+    nu = problem.viscosity / problem.density
+    first = np.full(len(found.length), np.inf)
+    for end in (0, 1):
+        allowed = share * found.stress[end]
+        cell = growth * layers[end] * problem.gap
+        with np.errstate(divide="ignore", over="ignore"):
+            rho = problem.density
+            kinked = (allowed / (rho * found.kink[:, end])) ** 2 / nu
+            bent = (allowed / (rho * found.bend[:, end] * np.sqrt(nu))) ** (2.0 / 3.0)
+            jumped = np.where(found.jump[:, end] > 0.0, 0.2 * cell**2 / nu, np.inf)
+        first = np.minimum(first, np.minimum(np.minimum(kinked, bent), jumped))
+    swiftest = found.fastest.max(initial=0.0)
+    if swiftest > 0.0:
+        first = np.minimum(first, 0.05 / swiftest)
+    return np.minimum(first, found.length / 4.0)
