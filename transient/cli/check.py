@@ -14,7 +14,10 @@ def check(
     overrides: Overrides = None,
     version: Version = False,
 ) -> int:
-    """Read a case without solving it: inputs as typed and in SI, derived numbers, cautions."""
+    """Read a case file without solving it.
+
+    Prints the inputs as typed and in SI, derived numbers such as the diffusion time, and cautions.
+    """
     from transient.case.derived import derived
     from transient.case.read import read_case
     from transient.cli.echo import echo

@@ -24,7 +24,10 @@ def figure(
     ] = None,
     version: Version = False,
 ) -> int:
-    """Draw a result: wall stress and drive over time, velocity profiles, flow.  Default: PNG beside the result."""
+    """Draw a result as PNG, SVG or PDF.
+
+    Wall stress and drive over time, velocity profiles, flow: by default each as a PNG beside the result.
+    """
     if out is not None and out.suffix.lower() not in FORMATS:
         raise Stop(f"--out {out}: a figure ends in .png, .svg or .pdf, such as {out.with_suffix('.png').name}")
     if out is not None and name is None:

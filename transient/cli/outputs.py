@@ -15,7 +15,7 @@ def result_paths(cases: list[str], folder: Path) -> list[Path]:
     _writable(folder)
     for path in paths:
         if path.is_dir():
-            raise Stop(f"{path}: is a folder, so the result cannot be written there; move it, or name another with --out")
+            raise Stop(f"{path}: is a folder where the result would go; name another folder with --out")
     return paths
 
 
@@ -23,7 +23,7 @@ def _no_two_alike(cases: list[str], paths: list[Path]) -> None:
     first: dict[Path, str] = {}
     for case, path in zip(cases, paths, strict=True):
         if path in first:
-            raise Stop(f"{first[path]} and {case} would both write {path}; rename one, or run them one by one with --out")
+            raise Stop(f"{first[path]} and {case} would both write {path}; run them apart, each with its own --out")
         first[path] = case
 
 

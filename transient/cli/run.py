@@ -15,17 +15,21 @@ from transient.cli.words import FAILED, REFUSED, Overrides, Stop, Version, chang
 
 
 def run(
-    cases: Annotated[list[str], typer.Argument(metavar="CASE.toml ...", help="The case files to solve.")],
+    cases: Annotated[list[str], typer.Argument(metavar="CASE.toml", help="The case files to solve.")],
     out: Annotated[Path, typer.Option("--out", metavar="DIR", help="Folder for the result files.")] = Path("outputs"),
     as_json: Annotated[
         bool, typer.Option("--json", help="Print exactly one JSON object per case, a line each, in SI.")
     ] = False,
-    sheet: Annotated[bool, typer.Option("--sheet", help="Write the calculation sheet too (not in this version).")] = False,
-    quiet: Annotated[bool, typer.Option("--quiet", help="Print nothing but errors (and what --json asks for).")] = False,
+    sheet: Annotated[bool, typer.Option("--sheet", hidden=True)] = False,
+    quiet: Annotated[bool, typer.Option("--quiet", help="Print only errors, and what --json asks for.")] = False,
     overrides: Overrides = None,
     version: Version = False,
 ) -> int:
-    """Solve case files: write DIR/NAME.h5 for each NAME.toml and print settling time, peak wall stress and errors."""
+    """Solve case files and print what came out.
+
+    Writes DIR/NAME.h5 for each NAME.toml (a former result of that name is replaced) and prints settling time, wall
+    stress, their errors and how far they can be trusted.  Each case is solved or refused on its own.
+    """
     if sheet:
         raise Stop("--sheet: this version does not write calculation sheets; run without it")
     wanted = changes(overrides)

@@ -8,7 +8,10 @@ from transient.cli.words import GOOD, Version, say
 
 
 def schema(version: Version = False) -> int:
-    """Print the JSON Schema of the case file; editors complete and check with it."""
+    """Print the JSON Schema of the case file.
+
+    Editors complete and check with it.
+    """
     from transient.case.schema import schema as case_schema
 
     say(json.dumps(case_schema(), indent=2, ensure_ascii=False))

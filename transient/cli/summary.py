@@ -49,7 +49,8 @@ def _settling(part: dict[str, Any]) -> list[str]:
     if part.get("time") is None:
         reason = part.get("note") or "the drive ends in no steady or periodic state, or the run ends before it"
         return _entry("Settled", f"not within {within} in this run: {reason}")
-    lines = _entry("Settled", f"after {stated(part['time'], part.get('error'), 's')}: velocity within {within} of its end state")
+    time = stated(part["time"], part.get("error"), "s")
+    lines = _entry("Settled", f"after {time}: velocity within {within} of its end state")
     others = [("flow", part.get("flow")), *((f"stress on {w}", t) for w, t in (part.get("stress") or {}).items())]
     told = [f"{name} {plain(at, 's')}" for name, at in others if at is not None]
     return lines + (_entry("", "; ".join(told)) if told else [])
@@ -130,13 +131,12 @@ def _hand_formula(summary: dict[str, Any]) -> list[str]:
     part = summary.get("quasi_steady")
     if not part:
         return []
-    peaks = [f"{plain(peak, 'Pa')} on {wall}" for wall, peak in (part.get("peak_stress") or {}).items() if peak is not None]
-    verdict = "would have been enough" if part.get("enough") else "is not enough here"
-    text = f"(steady profile at every instant) {verdict}"
-    if peaks:
-        text += f"; it gives {listed(peaks)}"
+    stresses = (part.get("peak_stress") or {}).items()
+    peaks = [f"{plain(peak, 'Pa')} on {wall}" for wall, peak in stresses if peak is not None]
+    text = f"{listed(peaks)} at most, as if the flow were steady at every instant. " if peaks else ""
+    text += "Enough here" if part.get("enough") else "Not enough here"
     if part.get("note"):
-        text += f". {part['note']}"
+        text += f": {part['note']}"
     return _entry("By hand", text)
 
 

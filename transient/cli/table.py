@@ -18,7 +18,10 @@ def table(
     ] = None,
     version: Version = False,
 ) -> int:
-    """Write all histories of a result (or all rows of a sweep) as CSV, in SI and to full precision."""
+    """Write the histories of a result as CSV.
+
+    One line per stored time, in SI and to full precision.
+    """
     from transient.result.store import read
     from transient.result.table import write_csv
 

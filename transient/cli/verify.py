@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from transient.cli.words import FAILED, GOOD, Version, program, say
+from transient.cli.words import FAILED, GOOD, Version, say
 
 if TYPE_CHECKING:
     from transient.trust.verification import Row
@@ -19,7 +19,10 @@ def verify(
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON object with all rows.")] = False,
     version: Version = False,
 ) -> int:
-    """Run the built-in verification set: the worst error of each row beside its limit."""
+    """Compare the solver with exact solutions.
+
+    Runs the built-in verification set and prints the worst error of each row beside its limit.
+    """
     from transient.trust.verification import verify as run_all
 
     began = time.perf_counter()
@@ -54,7 +57,8 @@ def _record(rows: list[Row], seconds: float, passed: bool) -> dict[str, object]:
     return {
         "passed": passed,
         "rows": [
-            {"name": r.name, "worst_error": r.worst, "limit": r.limit, "source": r.source, "passed": r.passed} for r in rows
+            {"name": r.name, "worst_error": r.worst, "limit": r.limit, "source": r.source, "passed": r.passed}
+            for r in rows
         ],
         "seconds": seconds,
         "versions": _versions(),
