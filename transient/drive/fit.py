@@ -104,7 +104,8 @@ def _jump(function: Function, left: float, right: float, until: float, tolerance
     A jump changes next to nothing on either side of it; anything else that steep cannot be fitted.
     """
     wide = 1000.0 * (right - left)
-    before, first, last, after = _sample(function, np.array([max(left - wide, 0.0), left, right, min(right + wide, until)]))
+    around = np.array([max(left - wide, 0.0), left, right, min(right + wide, until)])
+    before, first, last, after = _sample(function, around)
     if abs(first - before) + abs(after - last) > abs(last - first) / 2.0:
         raise _out_of_reach(tolerance, left)
     while (middle := (left + right) / 2.0) not in (left, right):
