@@ -18,7 +18,7 @@ class Check:
     """What was looked at and what came out.
 
     ``kind``: "validity" (does the model apply) or "numerics" (did the solver do its sums).
-    ``value`` and ``limit`` share a unit (SI); ``source`` says where the limit comes from; ``note`` is one plain sentence.
+    ``value`` and ``limit`` share a unit (SI); ``source`` says where the limit comes from; ``note`` is one sentence.
     """
 
     name: str

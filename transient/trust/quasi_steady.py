@@ -3,7 +3,7 @@
 Steady flow of every shape follows from one flux: ``r^m mu dw/dr = F(r) = F_inner - G (r^(m+1) - inner^(m+1))/(m+1)``.
 For plates this is the Couette-Poiseuille profile, for a pipe Hagen-Poiseuille, for annuli the profiles of
 Bird, Stewart & Lightfoot, Transport Phenomena (2.4 and 3.6; section numbers from memory).
-All differences of nearly equal radii are taken from the depth ``r - inner``, so that a nearly closed annulus keeps its digits.
+All differences of nearly equal radii are taken from the depth ``r - inner``: a nearly closed annulus keeps its digits.
 """
 
 from __future__ import annotations
@@ -161,7 +161,7 @@ def mean_weights(problem: Problem) -> tuple[np.ndarray, np.ndarray]:
 
 
 def quasi_steady_mean(problem: Problem, speeds: np.ndarray, gradient: np.ndarray) -> np.ndarray:
-    """Steady mean velocity (n,) in m/s for ``speeds`` (n, 2), ``gradient`` (n,); rotating: tangential, over the radius."""
+    """Steady mean velocity (n,) in m/s for ``speeds`` (n, 2), ``gradient`` (n,), as in ``mean_weights``."""
     speeds, gradient = _rows(speeds, gradient)
     depth, weight = mean_weights(problem)
     return _profiles(problem, speeds, gradient, depth) @ weight
@@ -212,7 +212,7 @@ def compare(problem: Problem, history: History, peaks: Mapping[str, float | None
 def _sentence(difference: Mapping[str, float | None]) -> str:
     infinite = [name for name, d in difference.items() if d is None]
     if infinite:
-        return f"a sudden start has no finite peak on the {' or '.join(infinite)} wall; the hand formula does not see it"
+        return f"a sudden start has no finite peak on the {' or '.join(infinite)} wall, which the hand formula misses"
     if not difference:
         return "no wall carries a stress"
     name, worst = max(difference.items(), key=lambda item: item[1] or 0.0)

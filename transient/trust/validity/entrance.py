@@ -9,7 +9,7 @@ from transient.result.history import History
 from transient.trust.check import Check, judge
 from transient.trust.validity.motion import film_height, pressed, relative_mean
 
-SOURCE = "entrance length: Durst et al., J. Fluids Eng. 127 (2005) 1154 (from memory); a tenth: common practice, no source"
+SOURCE = "Durst et al., J. Fluids Eng. 127 (2005) 1154 (from memory); caution at a tenth: common practice, no source"
 CAUTION, LIMIT = 0.1, 1.0
 
 

@@ -16,7 +16,7 @@ SOURCE = "sound at 1000 m/s in liquids (1000 to 1500) and 340 m/s in gases; a te
 
 
 def rise_time(problem: Problem, until: float) -> float | None:
-    """Time in which the pressure drop changes by its own size at its steepest, s; 0 with a jump, None if it is constant."""
+    """Swing of the pressure drop over its steepest rate, s; 0 with a jump, None where it is constant."""
     row = problem.inputs(until).row(PRESSURE)
     if np.any(row.jumps() != 0.0):
         return 0.0

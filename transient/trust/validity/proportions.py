@@ -7,7 +7,7 @@ from transient.result.history import History
 from transient.trust.check import Check, judge
 
 TENTH = "end regions about one gap long; a tenth: common practice, no source"
-SIDES = "side walls cost about 0.63 height/width of the flow (rectangular duct series, from memory); common practice, no source"
+SIDES = "side walls cost about 0.63 height/width of the flow (rectangular duct series, from memory)"
 MOLECULES = "liquid layers below a micrometre: common practice, no source"
 
 

@@ -1,0 +1,352 @@
+"""Do momentum and energy close, and do the stored stresses belong to the stored profiles?
+
+Everything here starts from stored rows and profiles and shares nothing with the solver's own balance: profiles are
+integrated as cubics through their nodes, histories as cubics through values and rates over the square root of the
+time since the last break (stresses behave like powers of that root, so the integrand is smooth even where the stress
+is infinite).  Functions on plain arrays; the wrappers at the end take a case.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.gap.problem import LOWER, PRESSURE, UPPER, Problem
+from transient.result.history import History
+from transient.trust.check import Check, judge
+from transient.trust.quasi_steady import lever, quasi_steady_stress, section_measure
+
+STENCIL = 5  # nodes of the one-sided difference
+ROUNDING = 64.0 * np.finfo(float).eps
+SOURCE = "the accuracy asked for"
+
+
+@dataclass(frozen=True, eq=False)
+class Forms:
+    """Integrals over the gap of cubics through N nodes, times r^m.
+
+    ``weight`` (N,): integral of w; ``mass``, ``stiffness`` (4, N): diagonals 0 to 3 (the upper ones doubled) of the
+    quadratic forms of w^2 and (dw/dr)^2.
+    """
+
+    weight: np.ndarray
+    mass: np.ndarray
+    stiffness: np.ndarray
+
+
+def _lagrange(nodes: np.ndarray, x: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Values and slopes (I, g, q) of the q Lagrange polynomials on ``nodes`` (I, q) at ``x`` (I, g)."""
+    q = nodes.shape[1]
+    value, slope = np.empty((*x.shape, q)), np.empty((*x.shape, q))
+    for j in range(q):
+        others = [k for k in range(q) if k != j]
+        factor = [(x - nodes[:, k, None]) / (nodes[:, j, None] - nodes[:, k, None]) for k in others]
+        value[..., j] = math.prod(factor)
+        slope[..., j] = sum(
+            math.prod(f for i, f in enumerate(factor) if i != left) / (nodes[:, j, None] - nodes[:, k, None])
+            for left, k in enumerate(others)
+        )
+    return value, slope
+
+
+def distinct(position: np.ndarray) -> np.ndarray:
+    """Indices of nodes (ends kept) that lie further apart than round-off of the coordinate."""
+    least = ROUNDING * float(np.abs(position).max())
+    keep = np.append(True, np.diff(position) > least)
+    if not keep[-1]:
+        keep[-1] = True
+        keep[np.flatnonzero(keep)[-2]] = False
+    keep[0] = True
+    return np.flatnonzero(keep)
+
+
+def forms(position: np.ndarray, metric: int) -> Forms:
+    """The integrals on nodes ``position`` (N >= 4,), which may be graded."""
+    n = len(position)
+    depth = position - position[0]
+    first = np.clip(np.arange(n - 1) - 1, 0, n - 4)
+    index = first[:, None] + np.arange(4)
+    x, weight = np.polynomial.legendre.leggauss(5)
+    step = np.diff(depth)[:, None]
+    at = depth[:-1, None] + 0.5 * step * (x + 1.0)
+    measure = 0.5 * step * weight * (position[0] + at) ** metric
+    # Scaled by the interval, so that products of small differences stay in range.
+    value, slope = _lagrange((depth[index] - depth[:-1, None]) / step, (at - depth[:-1, None]) / step)
+    slope = slope / step[..., None]
+    total = np.zeros(n)
+    np.add.at(total, index, (measure[..., None] * value).sum(axis=1))
+    mass, stiffness = np.zeros((4, n)), np.zeros((4, n))
+    for i in range(4):
+        for j in range(i, 4):
+            twice = 1.0 if i == j else 2.0
+            np.add.at(mass[j - i], index[:, i], twice * (measure * value[..., i] * value[..., j]).sum(axis=1))
+            np.add.at(stiffness[j - i], index[:, i], twice * (measure * slope[..., i] * slope[..., j]).sum(axis=1))
+    return Forms(total, mass, stiffness)
+
+
+def quadratic(diagonals: np.ndarray, a: np.ndarray, b: np.ndarray) -> np.ndarray:
+    """Symmetric quadratic form (k,) of profiles ``a`` and ``b`` (k, N) from its ``diagonals`` (4, N)."""
+    out = (a * b) @ diagonals[0]
+    for d in range(1, 4):
+        out = out + 0.5 * (a[:, :-d] * b[:, d:] + a[:, d:] * b[:, :-d]) @ diagonals[d, :-d]
+    return out
+
+
+def increments(piece: np.ndarray, offset: np.ndarray, value: np.ndarray, rate: np.ndarray) -> np.ndarray:
+    """Integral of a history over each interval between rows, (n - 1,); ``value``, ``rate`` (n,) and its time ``rate``.
+
+    Rows of different pieces share their time: 0.  A NaN at a piece's start is an infinite value ~ 1/sqrt(time).
+    """
+    s = np.sqrt(offset)
+    f = 2.0 * s * value
+    with np.errstate(invalid="ignore"):
+        df = 2.0 * value + np.where(offset > 0.0, 4.0 * offset * rate, 0.0)
+    h = np.diff(s)
+    inside = 0.5 * h * (f[:-1] + f[1:]) + h * h / 12.0 * (df[:-1] - df[1:])
+    after = h * f[1:] - 0.5 * h * h * df[1:]
+    out = np.where(np.isnan(value[:-1]), after, inside)
+    return np.where(piece[1:] == piece[:-1], out, 0.0)
+
+
+def running(parts: np.ndarray, rows: np.ndarray) -> np.ndarray:
+    """Running integral at ``rows`` (k,) from increments between all rows."""
+    return np.concatenate([[0.0], np.cumsum(parts)])[rows]
+
+
+def last_infinite(piece: np.ndarray, offset: np.ndarray, stress: np.ndarray) -> np.ndarray:
+    """Whether each row's piece begins with an infinite stress on some wall, (n,)."""
+    starts = np.unique(piece[(offset == 0.0) & np.isnan(stress).any(axis=1)])
+    return np.isin(piece, starts)
+
+
+def resolution_time(position: np.ndarray, kinematic: float, accuracy: float) -> np.ndarray:
+    """Time (2,) after a break until the layer at each wall is wide enough for ``STENCIL`` nodes to follow it.
+
+    On an error-function layer the one-sided difference errs by 6e-4 (span^2/(nu t))^2 of the local value (computed).
+    """
+    span = np.array([position[STENCIL - 1] - position[0], position[-1] - position[-STENCIL]])
+    return span**2 / kinematic * max(1.0, math.sqrt(6e-3 / accuracy))
+
+
+def wall_flux(position: np.ndarray, profile: np.ndarray, metric: int, end: int) -> np.ndarray:
+    """Flux r^m dw/dr (k,) at an end by a one-sided difference in the coordinate ``integral r^-m dr`` (exact in
+    steady wall-driven flow); ``profile`` (k, N)."""
+    if end == LOWER:
+        near, w = position[:STENCIL] - position[0], profile[:, :STENCIL]
+        wall = position[0]
+    else:
+        near, w = (position[-STENCIL:] - position[-1])[::-1], profile[:, : -STENCIL - 1 : -1]
+        wall = position[-1]
+    r = wall + near
+    along = {
+        0: lambda: near,
+        1: lambda: np.log1p(near / wall),
+        3: lambda: near * (r + wall) / (2.0 * (r * wall) ** 2),
+    }[metric]()
+    scale = along[-1]
+    _, slope = _lagrange((along / scale)[None, :], np.zeros((1, 1)))
+    return (w - w[:, :1]) @ slope[0, 0] / scale
+
+
+def wall_values_before(position: np.ndarray, profile: np.ndarray, infinite: np.ndarray) -> np.ndarray:
+    """Profiles whose wall value is the continuation of the liquid's where the wall has just jumped.
+
+    ``profile`` (k, N), ``infinite`` (k, 2); a layer of no thickness carries no momentum, yet a cubic sees some.
+    """
+    if not infinite.any():
+        return profile
+    out = profile.copy()
+    for end, nodes, wall in ((LOWER, slice(1, 4), 0), (UPPER, slice(-4, -1), -1)):
+        rows = np.flatnonzero(infinite[:, end])
+        if len(rows):
+            value, _ = _lagrange(position[None, nodes] - position[wall], np.zeros((1, 1)))
+            out[rows, wall] = out[rows, nodes] @ value[0, 0]
+    return out
+
+
+@dataclass(frozen=True)
+class Closure:
+    """``residual`` and ``resolution`` as shares of the gross amount that went in and out over the run.
+
+    ``resolution`` is how well the kept rows and profiles allow to judge.
+    """
+
+    residual: float
+    resolution: float
+
+
+@dataclass(frozen=True, eq=False)
+class _Kept:
+    """Profiles that can be judged: their rows (k,), profiles and rates (k, N), on distinct nodes ``position`` (N,)."""
+
+    row: np.ndarray
+    profile: np.ndarray
+    rate: np.ndarray
+    position: np.ndarray
+
+
+def _kept(problem: Problem, history: History) -> _Kept:
+    nodes = distinct(history.position)
+    position = history.position[nodes]
+    row, at = np.unique(history.profile_row, return_index=True)
+    wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy).max()
+    young = last_infinite(history.piece, history.offset, history.stress)[row] & (history.offset[row] < wait)
+    good = ~young | (history.offset[row] == 0.0)
+    row, at = row[good], at[good]
+    profile = wall_values_before(position, history.profile[at][:, nodes], np.isnan(history.stress[row]))
+    return _Kept(row, profile, history.profile_rate[at][:, nodes], position)
+
+
+def gradient_rate(problem: Problem, history: History) -> np.ndarray:
+    """Rate of the pressure drop per length (n,) at the rows, Pa/m/s."""
+    row = problem.inputs(float(history.time[-1])).row(PRESSURE)
+    return row.at(np.minimum(history.piece, len(row.starts) - 1), history.offset, 1)
+
+
+def momentum_balance(problem: Problem, history: History) -> Closure:
+    """Change of momentum of the stored profiles against the impulse of stored stresses and pressure.
+
+    Largest residual over the kept profiles, relative to the gross impulse of the run.
+    """
+    kept = _kept(problem, history)
+    momentum = problem.density * kept.profile @ forms(kept.position, problem.metric).weight
+    reach, section = lever(problem), section_measure(problem)
+    parts = [
+        -reach[end] * increments(history.piece, history.offset, history.stress[:, end], history.stress_rate[:, end])
+        for end in (LOWER, UPPER)
+    ]
+    parts.append(section * increments(history.piece, history.offset, history.gradient, gradient_rate(problem, history)))
+    gross = float(sum(np.abs(part).sum() for part in parts))
+    impulse = running(sum(parts), kept.row)
+    if gross == 0.0 or len(kept.row) == 0:
+        return Closure(0.0, 0.0)
+    residual = (momentum - momentum[0]) - (impulse - impulse[0])
+    # Round-off of the first momentum and of near-wall coordinates stays below this.
+    floor = ROUNDING * float(np.abs(momentum).max()) * (1.0 + problem.outer / problem.gap)
+    return Closure(float(np.abs(residual).max()) / gross, floor / gross)
+
+
+def _power(problem: Problem, history: History) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Increments between rows of the work of walls and pressure, of the loss by slip, and of gross work."""
+    reach, section = lever(problem), section_measure(problem)
+    piece, offset = history.piece, history.offset
+    parts, lost = [], np.zeros(len(piece) - 1)
+    for end, wall in enumerate(problem.walls):
+        if wall.kind != "moving":
+            continue
+        stress, stress_rate = history.stress[:, end], history.stress_rate[:, end]
+        speed, acceleration = history.speed[:, end], history.acceleration[:, end]
+        power_rate = stress_rate * speed + stress * acceleration
+        parts.append(-reach[end] * increments(piece, offset, stress * speed, power_rate))
+        if wall.slip_length > 0.0:
+            radius = (problem.inner, problem.outer)[end]
+            factor = wall.slip_length * reach[end] ** 2 / (problem.viscosity * radius**problem.metric)
+            lost = lost + factor * increments(piece, offset, stress**2, 2.0 * stress * stress_rate)
+    flow_rate = gradient_rate(problem, history) * history.mean + history.gradient * history.mean_rate
+    parts.append(section * increments(piece, offset, history.gradient * history.mean, flow_rate))
+    return sum(parts), lost, sum(np.abs(part) for part in parts)
+
+
+def energy_balance(problem: Problem, history: History) -> Closure:
+    """Work of walls and pressure against change of kinetic energy and dissipation, from the stored profiles.
+
+    Intervals between kept profiles that hide an infinite stress cannot be judged and are left out.
+    ``resolution`` compares the dissipation with that from every second profile.
+    """
+    kept = _kept(problem, history)
+    if len(kept.row) < 3:
+        return Closure(0.0, 0.0)
+    shapes = forms(kept.position, problem.metric)
+    kinetic = 0.5 * problem.density * quadratic(shapes.mass, kept.profile, kept.profile)
+    infinite = np.isnan(history.stress[kept.row]).any(axis=1)
+    heat = problem.viscosity * quadratic(shapes.stiffness, kept.profile, kept.profile)
+    heat = np.where(infinite, np.nan, heat)
+    heat_rate = 2.0 * problem.viscosity * quadratic(shapes.stiffness, kept.profile, kept.rate)
+    work, lost, gross = _power(problem, history)
+    net = running(work - lost, kept.row)
+    piece, offset = history.piece[kept.row], history.offset[kept.row]
+    warmed = np.concatenate([[0.0], np.cumsum(increments(piece, offset, heat, heat_rate))])
+    hidden = _hidden(history, kept.row)
+    residual = np.where(hidden, 0.0, np.diff(kinetic) - np.diff(net) + np.diff(warmed))
+    total = float(gross.sum())
+    if total == 0.0:
+        return Closure(0.0, 0.0)
+    half = np.arange(0, len(piece), 2)
+    coarse = increments(piece[half], offset[half], heat[half], heat_rate[half])
+    same = (piece[half][1:] == piece[half][:-1]) & ~np.isnan(coarse)
+    # Cubics on twice the spacing err 16 times as much.
+    off = np.where(same, np.abs(coarse - np.diff(warmed[half])), 0.0).sum() / 15.0
+    return Closure(float(np.abs(np.cumsum(residual)).max()) / total, float(off) / total)
+
+
+def _hidden(history: History, row: np.ndarray) -> np.ndarray:
+    """Intervals between kept profiles (k - 1,) across which a break passes without a profile on both its sides."""
+    piece, time = history.piece[row], history.time[row]
+    return (np.diff(piece) != 0) & (np.diff(time) > 0.0)
+
+
+def stress_difference(problem: Problem, history: History) -> Closure:
+    """Stored wall stresses against a one-sided difference of the stored profiles: the worst over kept rows and walls.
+
+    Relative to the wall's peak; where an infinite stress has been, to the local value (at least the hand formula's
+    peak).  Rows so soon after a break that the nodes cannot follow the layer are left out.
+    """
+    nodes = distinct(history.position)
+    position = history.position[nodes]
+    wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy)
+    hand = np.abs(quasi_steady_stress(problem, history.speed, history.gradient)).max(axis=0)
+    reach = lever(problem)
+    worst, rounding = 0.0, 0.0
+    for end, sign in ((LOWER, 1.0), (UPPER, -1.0)):
+        if problem.walls[end].kind != "moving":
+            continue
+        use = history.offset[history.profile_row] >= wait[end]
+        row = history.profile_row[use]
+        if len(row) == 0:
+            continue
+        flux = wall_flux(position, history.profile[use][:, nodes], problem.metric, end)
+        stress = sign * problem.viscosity * flux / reach[end]
+        stored = history.stress[row, end]
+        peak = np.nanmax(np.abs(history.stress[:, end]))
+        scale = np.full(len(row), peak)
+        if np.isnan(history.stress[:, end]).any():
+            scale = np.maximum(np.abs(stored), hand[end])
+        good = scale > 0.0
+        if good.any():
+            worst = max(worst, float((np.abs(stress - stored)[good] / scale[good]).max()))
+            first = abs(position[1] - position[0]) if end == LOWER else abs(position[-1] - position[-2])
+            noise = ROUNDING * np.abs(history.profile).max() * problem.viscosity / first / scale[good].min()
+            rounding = max(rounding, float(noise), ROUNDING * problem.outer / first)
+    return Closure(worst, rounding)
+
+
+def _check(name: str, closure: Closure, accuracy: float, said: str) -> Check:
+    limit = max(accuracy, closure.resolution)
+    status = judge(closure.residual, limit, limit)
+    note = f"{said} to {closure.residual:.1e}"
+    if closure.resolution > accuracy:
+        note += f"; what was kept allows to judge to {closure.resolution:.1e} only"
+    return Check(name, "numerics", status, closure.residual, limit, SOURCE, note)
+
+
+def momentum_check(problem: Problem, history: History) -> Check:
+    """Momentum balance as a check against the accuracy asked for."""
+    closure = momentum_balance(problem, history)
+    return _check("momentum balance", closure, problem.accuracy, "the momentum of the profiles closes with the impulse")
+
+
+def energy_check(problem: Problem, history: History) -> Check:
+    """Work-energy balance as a check against the accuracy asked for."""
+    closure = energy_balance(problem, history)
+    return _check("work and energy", closure, problem.accuracy, "work closes with kinetic energy and dissipation")
+
+
+def stress_check(problem: Problem, history: History) -> Check:
+    """Stored stresses against stored profiles as a check against the accuracy asked for."""
+    closure = stress_difference(problem, history)
+    return _check("stress against profile", closure, problem.accuracy, "stored stresses agree with the stored profiles")
+
+
+BALANCES = (momentum_check, energy_check, stress_check)
