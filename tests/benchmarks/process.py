@@ -14,13 +14,15 @@ import time
 from pathlib import Path
 
 HOUSE = Path(__file__).resolve().parents[2]
+# As on a user's machine, where compiled modules are kept.
+PLAIN = {name: value for name, value in os.environ.items() if name != "PYTHONDONTWRITEBYTECODE"}
 IMPORTS = "import numpy, scipy.special, numba, h5py, pint, pydantic, typer"
 
 
 def once(command: list[str]) -> tuple[float, float]:
     """Wall-clock seconds and peak memory (MB) of one process."""
     began = time.perf_counter()
-    process = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL, cwd=HOUSE)
+    process = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL, cwd=HOUSE, env=PLAIN)
     _, status, usage = os.wait4(process.pid, 0)
     seconds = time.perf_counter() - began
     if os.waitstatus_to_exitcode(status) not in (0, 1, 3):

@@ -107,3 +107,9 @@ def test_a_reader_that_has_seen_enough_ends_it_quietly():
     os.close(writing)
     assert ended.stderr == b""
     assert ended.returncode == -signal.SIGPIPE
+
+
+def test_a_terminal_without_the_signs_gets_them_spelled():
+    assert transient.cli.words._spelled("5 ± 1 cm³", "ascii") == "5 +- 1 cm^3"
+    assert transient.cli.words._spelled("5 ± 1 cm³", "utf-8") == "5 ± 1 cm³"
+    assert transient.cli.words._spelled("Prüfstand", "ascii") == "Pr?fstand"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -53,7 +54,16 @@ class Json(Printer):
 
     def _print(self, line: str) -> None:
         with self.bar.aside():
-            say(line)
+            say(line if _encodable(line) else json.dumps(json.loads(line)))
+
+
+def _encodable(line: str) -> bool:
+    """Whether standard output can carry the line as it is; else JSON's own escapes keep it lossless."""
+    try:
+        line.encode(sys.stdout.encoding or "utf-8")
+    except UnicodeEncodeError:
+        return False
+    return True
 
 
 class Words(Printer):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
+from pathlib import Path
 from typing import Any
 
 from transient.cli.words import note
@@ -66,7 +67,17 @@ def progress(total: int, quiet: bool) -> Iterator[Bar]:
 
 def announce_first_run() -> None:
     """Say why the first call after installation takes longer."""
-    from transient.compiled import cold
+    from transient.march import kernel
 
-    if cold():
-        note("first run: preparing the compiled solver, once, about 15 s")
+    if _compiled_before(kernel.march.stats.cache_path, Path(kernel.__file__)):
+        return
+    note("first run: preparing the compiled solver, once, about 10 s")
+
+
+def _compiled_before(folder: str | None, source: Path) -> bool:
+    """Whether the compiler's cache holds a kernel that is not older than its source."""
+    if folder is None:
+        return False
+    python = f"py{sys.version_info.major}{sys.version_info.minor}"
+    indexes = Path(folder).glob(f"{source.stem}.*{python}.nbi")
+    return any(index.stat().st_mtime >= source.stat().st_mtime for index in indexes)

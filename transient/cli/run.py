@@ -45,7 +45,7 @@ def _one(case: str, path: Path, wanted: list[tuple[str, str]], printer: Printer)
     """Solve one case and write its file; the exit status of this case alone."""
     from transient.answer import exit_status, run
     from transient.case.read import CaseError, read_case
-    from transient.march import SolveError
+    from transient.march.march import SolveError
     from transient.result.result import ResultError
     from transient.result.store import write
 

@@ -51,8 +51,10 @@ def _settling(part: dict[str, Any]) -> list[str]:
         return _entry("Settled", f"not within {within} in this run: {reason}")
     time = stated(part["time"], part.get("error"), "s")
     lines = _entry("Settled", f"after {time}: velocity within {within} of its end state")
-    others = [("flow", part.get("flow")), *((f"stress on {w}", t) for w, t in (part.get("stress") or {}).items())]
-    told = [f"{name} {plain(at, 's')}" for name, at in others if at is not None]
+    told = [] if part.get("flow") is None else [f"flow after {plain(part['flow'], 's')}"]
+    walls = [f"on {w} after {plain(at, 's')}" for w, at in (part.get("stress") or {}).items() if at is not None]
+    if walls:
+        told.append(f"wall stress {listed(walls)}")
     return lines + (_entry("", "; ".join(told)) if told else [])
 
 
@@ -83,22 +85,28 @@ def _plain(value: float | None, unit: str) -> str:
 
 
 def _remarks(summary: dict[str, Any]) -> list[str]:
-    """What the wall table cannot hold: infinite starts, forces, overshoot."""
-    lines = []
-    for name, wall in summary["walls"].items():
+    """What the wall table cannot hold: infinite starts, peaks far above the end, forces."""
+    walls = summary["walls"].items()
+    lines: list[str] = []
+    for name, wall in walls:
         if wall.get("unbounded"):
             lines += _entry("", _unbounded(name, wall))
-            continue
-        parts = []
-        overshoot = wall.get("overshoot")
-        if overshoot is not None and overshoot > 0.01:
-            parts.append(f"{percent(overshoot)} above its final value")
-        for key, unit in (("peak_force", "N"), ("peak_torque", "N m")):
-            if wall.get(key):
-                parts.append(f"largest {key.removeprefix('peak_')} {plain(wall[key], unit)}")
-        if parts:
-            lines += _entry("", f"{name}: {'; '.join(parts)}")
+    above = [f"{name}: {_times(wall):.3g} times the final value" for name, wall in walls if _times(wall) > 1.01]
+    if above:
+        lines += _entry("", "; ".join(above))
+    for key, unit in (("force", "N"), ("torque", "N m")):
+        peaks = [f"{plain(wall[f'peak_{key}'], unit)} on {name}" for name, wall in walls if wall.get(f"peak_{key}")]
+        if peaks:
+            lines += _entry("", f"largest {key} {listed(peaks)}")
     return lines
+
+
+def _times(wall: dict[str, Any]) -> float:
+    """Largest stress over the final one, 0 where there is nothing to compare."""
+    peak, final = wall.get("peak_stress"), wall.get("final_stress")
+    if peak is None or final is None or abs(final) <= 1e-3 * abs(peak):
+        return 0.0
+    return abs(peak / final)
 
 
 def _unbounded(name: str, wall: dict[str, Any]) -> str:

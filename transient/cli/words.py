@@ -11,6 +11,8 @@ import typer
 
 GOOD, FAILED, REFUSED, UNREACHED, INTERRUPTED = 0, 1, 2, 3, 130
 
+_SPELLINGS = {"±": "+-", "µ": "u", "²": "^2", "³": "^3", "·": " "}
+
 
 class Stop(Exception):
     """Ends a command with one line on standard error and an exit status."""
@@ -34,13 +36,21 @@ def refusals() -> Iterator[None]:
 
 def note(text: str) -> None:
     """One line on standard error."""
-    print(text, file=sys.stderr, flush=True)
+    print(_spelled(text, sys.stderr.encoding or "utf-8"), file=sys.stderr, flush=True)
 
 
 def say(text: str) -> None:
-    """Lines on standard output, as far as its encoding has the characters."""
-    encoding = sys.stdout.encoding or "utf-8"
-    print(text.encode(encoding, errors="replace").decode(encoding), flush=True)
+    """Lines on standard output; signs that its encoding lacks are spelled out."""
+    print(_spelled(text, sys.stdout.encoding or "utf-8"), flush=True)
+
+
+def _spelled(text: str, encoding: str) -> str:
+    for sign, spelling in _SPELLINGS.items():
+        try:
+            sign.encode(encoding)
+        except UnicodeEncodeError:
+            text = text.replace(sign, spelling)
+    return text.encode(encoding, errors="replace").decode(encoding)
 
 
 def one_line(text: str) -> str:
