@@ -1,4 +1,4 @@
-"""Random histories for property tests.  Times are whole 64ths of a second, so that breaks are exact in floating point."""
+"""Random histories for property tests.  Times are whole 64ths of a second: breaks are then exact floats."""
 
 from __future__ import annotations
 
