@@ -68,6 +68,13 @@ def test_round_off_makes_no_jump_where_parts_meet() -> None:
     assert kinks(drive, 9.0, 1) == pytest.approx([0.3, 0.6], rel=1e-12)
 
 
+def test_a_break_of_another_part_may_stand_for_that_of_a_fast_cycle() -> None:
+    # In a run of 10^4 cycles breaks 0.9e-11 of a cycle apart are one, and the earlier of them is kept.
+    fast = build["repeat"](part=build["step"](to=1.0, at=0.5e-6), every=1e-6)
+    pieces = total([fast, build["step"](to=10.0, at=5e-6 - 0.9e-17)]).pieces(1e-2)
+    assert pieces.value(np.array([4.75e-6, 5.25e-6, 5.75e-6])).tolist() == [1.0, 10.0, 11.0]
+
+
 def test_half_cosine_has_no_kink_at_its_ends() -> None:
     drive = build["smooth_ramp"](to=7.0, over=0.3, at=0.7)
     assert kinks(drive, 9.0, 1).tolist() == []
@@ -125,6 +132,14 @@ def test_more_pieces_than_a_run_can_hold_are_refused() -> None:
     drive = build["repeat"](part=build["step"](to=1.0, at=1e-7), every=2e-7)
     with pytest.raises(DriveError, match="shorten the run or lengthen the cycle"):
         drive.breaks(1e3)
+
+
+def test_close_times_are_one_but_a_crowd_of_them_is_not() -> None:
+    assert merge_times([np.array([0.0, 0.3]), np.array([0.1 + 0.2, 1.0])]).tolist() == [0.0, 0.3, 1.0]
+    crowd = 1.0 + 0.7e-12 * np.arange(10)
+    kept = merge_times([crowd])
+    assert np.diff(kept).min() > 1e-12
+    assert np.abs(crowd[:, None] - kept).min(axis=1).max() <= 1e-12
 
 
 @pytest.mark.parametrize(

@@ -6,7 +6,8 @@ import math
 
 import numpy as np
 
-from transient.drive.pieces import SAME_TIME, Drive, DriveError, Eventual, Pieces, Track, constant
+from transient.drive.pieces import Drive, DriveError, Eventual, Pieces, Track, constant
+from transient.drive.times import SAME_TIME
 
 
 def require_finite(**numbers: float) -> None:

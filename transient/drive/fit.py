@@ -8,7 +8,8 @@ from itertools import pairwise
 import numpy as np
 
 from transient.drive.assemble import held, require_finite, require_positive
-from transient.drive.pieces import SAME_TIME, Drive, DriveError, Pieces, Track
+from transient.drive.pieces import Drive, DriveError, Pieces, Track
+from transient.drive.times import SAME_TIME
 
 # Evenly spaced pieces to begin with: a pulse shorter than a fraction of one of them may be missed.
 FIRST_PIECES = 32
@@ -74,7 +75,10 @@ def _shortest(t: np.ndarray | float, until: float) -> np.ndarray:
 def _bisect(
     function: Function, edges: np.ndarray, tolerance: float
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
-    """(left, right, cubic (P, 4) on [0, 1], stuck) of pieces between ``edges``, within an eighth of the tolerance or stuck."""
+    """(left, right (P,), cubic (P, 4) on [0, 1], stuck (P,)) of pieces between ``edges``.
+
+    Each is within an eighth of the tolerance, or stuck: too short to halve.
+    """
     until = edges[-1]
     sections = [(a, b) for a, b in pairwise(edges) if b - a > _shortest(b, until)]
     grids = [np.linspace(a, b, 1 + max(1, round(FIRST_PIECES * (b - a) / until))) for a, b in sections]

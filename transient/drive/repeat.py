@@ -6,7 +6,8 @@ import numpy as np
 
 from transient.drive.assemble import held, require_positive
 from transient.drive.kind import Field, Kind
-from transient.drive.pieces import SAME_TIME, Drive, DriveError, Pieces, Track, constant, periodic
+from transient.drive.pieces import Drive, DriveError, Pieces, Track, constant, periodic
+from transient.drive.times import SAME_TIME
 
 
 def build(part: Drive, every: float, times: int | None = None) -> Drive:

@@ -8,7 +8,8 @@ import numpy as np
 
 from transient.drive.assemble import held
 from transient.drive.kind import Field, Kind
-from transient.drive.pieces import SAME_TIME, Drive, DriveError, Pieces, Track, constant
+from transient.drive.pieces import Drive, DriveError, Pieces, Track, constant
+from transient.drive.times import SAME_TIME
 
 # Rows that lie on the line between their neighbours within this share of the largest value are no breaks.
 ON_LINE = 4.0 * np.finfo(float).eps

@@ -13,14 +13,24 @@ SAME_TIME = 1e-12
 LARGEST_RATIO = 1000
 
 
+def slack(times: np.ndarray) -> np.ndarray:
+    """How far apart break times (n,) of one run, sorted, may lie and still be one."""
+    return SAME_TIME * np.maximum(times, times[-1] * 1e-3)
+
+
 def merge_times(groups: list[np.ndarray]) -> np.ndarray:
     """Sorted union of break times; those that differ by round-off only become one (the earliest given)."""
     times = np.sort(np.concatenate(groups))
     if len(times) == 0:
         return times
-    scale = np.maximum(np.abs(times[1:]), times[-1] * 1e-3)
-    keep = np.concatenate([[True], np.diff(times) > SAME_TIME * scale])
-    return times[keep]
+    near = slack(times)
+    keep = np.concatenate([[True], np.diff(times) > near[1:]])
+    while True:
+        # In a crowd of close times those that have drifted away from the one kept count again.
+        drifted = times - times[keep][np.cumsum(keep) - 1] > near
+        if not drifted.any():
+            return times[keep]
+        keep |= drifted & ~np.concatenate([[False], drifted[:-1]])
 
 
 def common_period(periods: list[float | None]) -> tuple[float | None, bool]:
