@@ -1,0 +1,160 @@
+"""Eigenvalues, eigenfunctions and weights of a gap at rest, for every shape and pair of wall conditions.
+
+Eigenfunctions are ``r^-nu C_nu(lambda r)`` with C a Bessel function of order nu = (m - 1)/2.  Written as
+amplitude and phase, ``phi = r^(-nu-1/2) Im[h_nu(lambda r) exp(i psi)]`` with h the reduced Hankel function, the
+characteristic equation of every case is "phase gained across the gap = n pi": increasing, so no root is missed.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from scipy.special import j0, j1
+
+from transient.series.basis import reduced_hankel
+from transient.series.gapshape import FREE, GapShape
+
+_STEPS = 60
+
+
+@dataclass(frozen=True, eq=False)
+class Modes:
+    """The first M modes: ``rate`` (M,) = lambda^2, ``root`` (M,) = lambda.
+
+    ``share`` (M, 3): projection of the unit steady flows (lower speed, upper speed, pressure drop) on each mode.
+    ``stress`` (M, 2): traction of each mode on the walls; ``mean`` (M,).
+    """
+
+    shape: GapShape
+    root: np.ndarray
+    rate: np.ndarray
+    share: np.ndarray
+    stress: np.ndarray
+    mean: np.ndarray
+    phase: np.ndarray
+
+    def velocity(self, y: np.ndarray) -> np.ndarray:
+        """Eigenfunctions (M, k) at ``y`` (k,) in gaps from the lower wall."""
+        shape, y = self.shape, np.asarray(y, dtype=float)
+        if shape.axis:
+            return j0(self.root[:, None] * y)
+        r = shape.a + y
+        turn = np.exp(1j * (self.root[:, None] * y - self.phase[:, None]))
+        if shape.metric == 0:
+            return turn.imag
+        # Near the axis of a very small inner cylinder the amplitude is large, but r is never 0 there.
+        return r ** (-shape.order - 0.5) * (reduced_hankel(shape.order, self.root[:, None] * r) * turn).imag
+
+
+@lru_cache(maxsize=256)
+def modes(shape: GapShape, count: int) -> Modes:
+    """The ``count`` slowest modes of a gap with at least one wall that holds the fluid back."""
+    root = roots(shape, count)
+    phase = _lower_phase(shape, root) if not shape.axis else np.zeros(count)
+    values, slopes, spins = _ends(shape, root, phase)
+    rate = root**2
+    weight = np.array([shape.a, shape.b]) ** shape.metric if shape.metric else np.ones(2)
+    flux = slopes * weight
+    norm = _norms(shape, rate, values, slopes)
+    push = flux[:, 0] - flux[:, 1]
+    share = np.stack([flux[:, 0], -flux[:, 1], push / rate], axis=1) / (rate * norm)[:, None]
+    if shape.lower == FREE or shape.axis:
+        share[:, 0] = 0.0
+    if shape.upper == FREE:
+        share[:, 1] = 0.0
+    if shape.metric == 3:
+        share[:, 2] = 0.0
+        mean = (spins[:, 0] - spins[:, 1]) / root
+    else:
+        mean = push / rate / shape.volume
+    stress = slopes * np.array([shape.levers[0], -shape.levers[1]])
+    return Modes(shape, root, rate, share, stress, mean, phase)
+
+
+def roots(shape: GapShape, count: int) -> np.ndarray:
+    """The ``count`` smallest positive roots (count,), to a few units of round-off."""
+    target = np.pi * (np.arange(1, count + 1) + _first(shape))
+    low, high = np.full(count, 1e-9), target + 2 * np.pi
+    low = np.maximum(low, target - 2.5 * np.pi)
+    x = np.maximum(target, 0.5)
+    for _ in range(_STEPS):
+        gap = _gain(shape, x) - target
+        low, high = np.where(gap < 0, x, low), np.where(gap >= 0, x, high)
+        step = 1e-6 * x
+        slope = (_gain(shape, x + step) - _gain(shape, x - step)) / (2 * step)
+        new = x - gap / slope
+        new = np.where((new > low) & (new < high), new, (low + high) / 2)
+        done = np.abs(new - x) <= 4e-16 * new
+        x = new
+        if done.all():
+            break
+    return x
+
+
+def _first(shape: GapShape) -> float:
+    """Offset of the phase targets: where the count of modes starts."""
+    return -0.25 if shape.axis else 0.0
+
+
+def _gain(shape: GapShape, root: np.ndarray) -> np.ndarray:
+    """Phase gained across the gap by a solution that meets the lower wall's condition, plus the upper wall's."""
+    gain = root + _upper_phase(shape, root)
+    return gain if shape.axis else gain - _lower_phase(shape, root)
+
+
+def _lower_phase(shape: GapShape, root: np.ndarray) -> np.ndarray:
+    return _end_phase(shape, root, shape.a, shape.lower, -1j)
+
+
+def _upper_phase(shape: GapShape, root: np.ndarray) -> np.ndarray:
+    return _end_phase(shape, root, shape.b, shape.upper, 1j)
+
+
+def _end_phase(shape: GapShape, root: np.ndarray, r: float, slip: float, turn: complex) -> np.ndarray:
+    """Argument of h_nu + turn slip lambda h_(nu+1): the wall's condition as a phase, continuous in lambda."""
+    value, next_value = _hankels(shape, root * r)
+    ratio = turn * next_value / value
+    if slip == FREE:
+        return np.angle(value) + np.angle(ratio)
+    return np.angle(value) + np.angle(1.0 + slip * root * ratio)
+
+
+def _hankels(shape: GapShape, z: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    if shape.metric == 0:
+        one = np.ones(z.shape, complex)
+        return one, one
+    return reduced_hankel(shape.order, z), reduced_hankel(shape.order + 1, z)
+
+
+def _ends(shape: GapShape, root: np.ndarray, phase: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Values, slopes and (rotating) C_0 of the eigenfunctions at both ends, each (M, 2)."""
+    if shape.axis:
+        zero = np.zeros_like(root)
+        return np.stack([zero + 1, j0(root)], 1), np.stack([zero, -root * j1(root)], 1), np.zeros((len(root), 2))
+    sign = np.where(np.arange(1, len(root) + 1) % 2, -1.0, 1.0)
+    turns = [np.exp(-1j * phase), sign * np.exp(-1j * _upper_phase(shape, root))]
+    values, slopes, spins = (np.zeros((len(root), 2)) for _ in range(3))
+    for end, (r, turn, slip) in enumerate(zip((shape.a, shape.b), turns, (shape.lower, shape.upper), strict=True)):
+        value, next_value = _hankels(shape, root * r)
+        power = r ** (-shape.order - 0.5) if shape.metric else 1.0
+        values[:, end] = power * (value * turn).imag
+        slopes[:, end] = root * power * (next_value * turn).real
+        if slip == FREE:
+            slopes[:, end] = 0.0
+        elif slip == 0.0:
+            values[:, end] = 0.0
+        if shape.metric == 3:
+            spins[:, end] = r**-0.5 * (reduced_hankel(0, root * r) * turn).real
+    return values, slopes, spins
+
+
+def _norms(shape: GapShape, rate: np.ndarray, values: np.ndarray, slopes: np.ndarray) -> np.ndarray:
+    """Integral of r^m phi^2: from d[r^(m+1) (phi'^2 + lambda^2 phi^2)], one integration by parts (own derivation)."""
+    ends = np.array([shape.a, shape.b])
+    m = shape.metric
+    energy = ends ** (m + 1) * (slopes**2 + rate[:, None] * values**2)
+    cross = (1 - m) * ends**m * values * slopes if m else values * slopes
+    total = energy - cross
+    return (total[:, 1] - total[:, 0]) / (2 * rate)

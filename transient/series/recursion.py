@@ -1,0 +1,110 @@
+"""Compiled: amplitude of every mode at every break, exactly, from piece to piece."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from transient.compiled import compiled, inlined
+
+
+@inlined
+def power_integrals(y, out):  # type: ignore[no-untyped-def]
+    """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0, without cancellation."""
+    if y > 1.0:
+        out[0] = -np.expm1(-y) / y
+        out[1] = (1.0 - out[0]) / y
+        out[2] = (1.0 - 2.0 * out[1]) / y
+    else:
+        damping = np.exp(-y)
+        for p in range(3):
+            term, total = 1.0, 0.0
+            for k in range(20):
+                total += term / (k + p + 1)
+                term *= y / (k + 1)
+            out[p] = damping * total
+
+
+@inlined
+def divided_exponential(d):  # type: ignore[no-untyped-def]
+    """(exp(d) - 1) / d for complex d."""
+    if abs(d) < 0.5:
+        term, total = 1.0 + 0.0j, 1.0 + 0.0j
+        for k in range(2, 18):
+            term *= d / k
+            total += term
+        return total
+    return (np.exp(d) - 1.0) / d
+
+
+@inlined
+def forced(rate, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
+    """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials."""
+    total = 0.0
+    if poly[1] != 0.0 or poly[2] != 0.0 or poly[3] != 0.0:
+        power_integrals(rate * x, scratch)
+        total = x * (poly[1] * scratch[0] + x * (2.0 * poly[2] * scratch[1] + x * 3.0 * poly[3] * scratch[2]))
+    for k in range(len(coeff)):
+        if coeff[k] != 0.0:
+            s = exponent[k]
+            d = (s + rate) * x
+            if d.real < 1.0:
+                answer = x * np.exp(-rate * x) * divided_exponential(d)
+            else:
+                answer = (np.exp(s * x) - np.exp(-rate * x)) / (s + rate)
+            total += (coeff[k] * s * answer).real
+    return total
+
+
+@inlined
+def input_value(poly, coeff, exponent, x, order):  # type: ignore[no-untyped-def]
+    """Value (order 0) or derivative of one input at local time x."""
+    if order == 0:
+        total = poly[0] + x * (poly[1] + x * (poly[2] + x * poly[3]))
+    elif order == 1:
+        total = poly[1] + x * (2.0 * poly[2] + x * 3.0 * poly[3])
+    elif order == 2:
+        total = 2.0 * poly[2] + x * 6.0 * poly[3]
+    else:
+        total = 6.0 * poly[3]
+    for k in range(len(coeff)):
+        if coeff[k] != 0.0:
+            total += (coeff[k] * exponent[k] ** order * np.exp(exponent[k] * x)).real
+    return total
+
+
+@compiled
+def fill_states(lengths, poly, coeff, exponent, before, rate, share, initial, left, ahead, after):  # type: ignore[no-untyped-def]
+    """Fill ``left`` (P, 3) inputs just before each break, ``ahead`` and ``after`` (P, M) amplitudes across it.
+
+    ``lengths`` (P - 1,); inputs ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K); ``before`` (3,);
+    ``rate`` (M,), ``share`` (M, 3), ``initial`` (M,) amplitudes just before the first break.
+    """
+    pieces, count = len(poly), len(rate)
+    scratch = np.zeros(3)
+    for i in range(3):
+        left[0, i] = before[i]
+    for n in range(count):
+        ahead[0, n] = initial[n]
+    for p in range(pieces):
+        for n in range(count):
+            after[p, n] = ahead[p, n]
+        for i in range(3):
+            jump = input_value(poly[p, i], coeff[p, i], exponent[p, i], 0.0, 0) - left[p, i]
+            if jump != 0.0:
+                for n in range(count):
+                    after[p, n] -= share[n, i] * jump
+        if p + 1 == pieces:
+            break
+        x = lengths[p]
+        for n in range(count):
+            ahead[p + 1, n] = after[p, n] * np.exp(-rate[n] * x)
+        for i in range(3):
+            left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
+            moving = poly[p, i, 1] != 0.0 or poly[p, i, 2] != 0.0 or poly[p, i, 3] != 0.0
+            for k in range(coeff.shape[2]):
+                moving = moving or coeff[p, i, k] != 0.0
+            if moving:
+                for n in range(count):
+                    if share[n, i] != 0.0:
+                        push = forced(rate[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch)
+                        ahead[p + 1, n] -= share[n, i] * push

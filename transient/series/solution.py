@@ -1,0 +1,103 @@
+"""The exact flow of one case: stresses, velocities and mean velocity at any instant, each with its own bound."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.gap.problem import Problem
+from transient.series.answers import Answer, mode_count, velocity_answer, wall_answer
+from transient.series.gapshape import GapShape, SeriesError, shape_of
+from transient.series.modes import modes
+from transient.series.timeline import States, Timeline, evaluate, states, timeline
+
+# Share of the sum of magnitudes of an answer's terms that its error stays below: contour, cut of the modes, round-off.
+TRUST = 2e-13
+
+
+@dataclass(frozen=True, eq=False)
+class Solution:
+    """An exact solution.  Instants are (piece, offset s) arrays (n,) of its own pieces, which begin at ``starts`` (P,) s.
+
+    (p, 0) is the limit from the right at break p, (p, length of p) that from the left at the next.
+    ``lead``: pieces before t = 0, which the callers' numbering does not see.
+    """
+
+    problem: Problem
+    shape: GapShape
+    line: Timeline
+    at: States
+    window: float
+    starts: np.ndarray
+    lead: int = 0
+
+    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(piece, offset) of absolute times ``t`` (n,) >= 0; at a break the later piece."""
+        t = np.asarray(t, dtype=float)
+        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
+        return piece, t - self.starts[piece]
+
+    def stress(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n, 2) stress on the lower and upper wall, Pa, and its bound (n, 2); infinite at a jump of a no-slip wall."""
+        value, bound = self._evaluate(wall_answer(self.shape, self.window, 0), piece, offset)
+        scale = self._stress_scale
+        return value[:, :2] * scale, bound[:, :2] * scale
+
+    def stress_rate(self, piece: np.ndarray, offset: np.ndarray) -> np.ndarray:
+        """(n, 2) time derivative of the stresses, Pa/s, from the right; meant for offsets > 0."""
+        value, _ = self._evaluate(wall_answer(self.shape, self.window, 1), piece, offset)
+        return value[:, :2] * self._stress_scale / self.problem.diffusion_time
+
+    def mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n,) mean velocity, m/s, and its bound: section average, or tangential speed over the radius."""
+        value, bound = self._evaluate(wall_answer(self.shape, self.window, 0), piece, offset)
+        scale = self.problem.gap if self.problem.rotating else 1.0
+        return value[:, 2] * scale, bound[:, 2] * scale
+
+    def velocity(self, piece: np.ndarray, offset: np.ndarray, r: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n, k) velocity (rotating gaps: angular) at coordinates ``r`` (k,) m, and its bound over the gap (n,)."""
+        y = np.clip((np.asarray(r, dtype=float) - self.problem.inner) / self.problem.gap, 0.0, 1.0)
+        value, bound = self._evaluate(velocity_answer(self.shape, self.window, y), piece, offset)
+        return value, bound.max(axis=1, initial=0.0)
+
+    def inputs(self, piece: np.ndarray, offset: np.ndarray) -> np.ndarray:
+        """(n, 3) lower speed, upper speed, pressure drop per length, Pa/m."""
+        p, x = self._instants(piece, offset)
+        power = x[:, None] ** np.arange(4.0)
+        value = (self.line.poly[p] * power[:, None, :]).sum(axis=2)
+        value += (self.line.coeff[p] * np.exp(self.line.exponent[p] * x[:, None, None])).real.sum(axis=2)
+        return value * [1.0, 1.0, self.problem.viscosity / self.problem.gap**2]
+
+    @property
+    def _stress_scale(self) -> float:
+        return self.problem.viscosity / (1.0 if self.problem.rotating else self.problem.gap)
+
+    def _instants(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        p = np.atleast_1d(np.asarray(piece, dtype=np.int64)) + self.lead
+        return p, np.atleast_1d(np.asarray(offset, dtype=float)) / self.problem.diffusion_time
+
+    def _evaluate(self, answer: Answer, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        value, size = evaluate(self.line, self.at, answer, *self._instants(piece, offset))
+        return value, TRUST * size
+
+
+def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution:
+    """The exact flow on [0, until).  Raises SeriesError where the case has no series solution.
+
+    ``tolerance`` is what the caller needs, relative to the largest terms; below 1e-12 it is refused.
+    """
+    if tolerance < 1e-12:
+        raise SeriesError(f"the series is summed in double precision; a tolerance of {tolerance:g} is out of its reach")
+    shape = shape_of(problem)
+    inputs = problem.inputs(until)
+    line = timeline(inputs, problem)
+    return assemble(problem, shape, line, inputs.starts)
+
+
+def assemble(problem, shape, line, starts, initial=None, lead=0):  # type: ignore[no-untyped-def]
+    """A Solution from dimensionless pieces; ``initial`` (a function of Modes) gives the amplitudes before them."""
+    window = line.window()
+    kept = modes(shape, mode_count(window))
+    start = None if initial is None else initial(kept)
+    return Solution(problem, shape, line, states(line, kept, start), window, starts, lead)
