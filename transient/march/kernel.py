@@ -50,11 +50,13 @@ def march(
     storage, conductance, volume, end_conductance, mean_weight,  # [n, L], [n-1, L], [n, L], [2, L], [n, L]
     piece_start, piece_first, piece_stop, until,  # times of all pieces (P,), each lane's range (L,), end (L,)
     poly, coeff, rate, jump,  # (P, 3, 4), (P, 3, K), (P, 3, K), jumps of the inputs at each piece's start (P, 3)
-    first_step, tolerance, velocity_scale, stress_scale,  # (P,) s; (L,); (L,); [2, L] as end flux
+    first_step, longest_step, calm_after,  # (P,) s: of each piece, and the offset from which steps may be longer
+    tolerance, velocity_scale, stress_scale,  # (L,); (L,); [2, L] as end flux
     plan, plan_lands,  # ends of prescribed steps as offsets (S,), whether each ends its piece; empty: adaptive
     record_every, profile_every,
     velocity, rates, travel,  # [n, L] state, updated
-    cursor, state,  # int64 [5, L]: piece, plan position, rows, profiles, rows before these; float64 [3, L]: offset, step, steps in piece
+    cursor,  # int64 [5, L]: piece, place in the plan, rows, profiles, rows handed over before these
+    state,  # [3, L]: offset, step, steps since the piece began
     row_piece, row_offset, rows, profile_row, profiles,  # records: (R, L), (R, L), (R, L, 6), (Q, L), (Q, L, 3, n)
     status,
 ):  # fmt: skip
@@ -98,6 +100,8 @@ def march(
                 stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
                 left = (stop - piece_start[piece]) - offset
                 wanted = state[1, l]
+                if offset < calm_after[piece]:
+                    wanted = min(wanted, longest_step[piece])
                 if wanted >= left:
                     wanted = left
                 elif 2.0 * wanted > left:

@@ -28,7 +28,8 @@ class SolveError(RuntimeError):
 @dataclass(frozen=True, eq=False)
 class Trace:
     """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 6) as named in ``kernel``,
-    ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done."""
+    ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done;
+    ``final`` (n,) velocities at the end."""
 
     system: System
     piece: np.ndarray
@@ -38,6 +39,7 @@ class Trace:
     profiles: np.ndarray
     profile_every: int
     solves: int
+    final: np.ndarray
 
     @property
     def steps(self) -> int:
@@ -127,7 +129,8 @@ class _Run:
             system.end_conductance[:, None].copy(), np.ascontiguousarray(self.weight)[:, None],
             inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
             inputs.poly, inputs.coeff, inputs.rate, self.jump,
-            resolution.first_step, np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
+            resolution.first_step, resolution.longest_step, resolution.calm_after,
+            np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
             plan.offset, plan.lands, plan.record_every,
         )  # fmt: skip
         rows = CHUNK_ROWS if len(plan.offset) == 0 else min(CHUNK_ROWS, len(plan.offset) + 2 * pieces + 8)
@@ -205,7 +208,7 @@ class _Run:
 
     def trace(self) -> Trace:
         parts = [np.concatenate(column) for column in zip(*self.kept, strict=True)]
-        return Trace(self.system, *parts, self.profile_every, self.solves)
+        return Trace(self.system, *parts, self.profile_every, self.solves, self.velocity)
 
 
 def halved(trace: Trace, times: int = 1) -> Plan:
@@ -219,7 +222,7 @@ def halved(trace: Trace, times: int = 1) -> Plan:
     lands = np.zeros(offset.shape, bool)
     last = np.flatnonzero(np.append(~same, True))  # rows that end a piece
     position = np.cumsum(same) - 1  # step that ends in row i + 1
-    lands[position[last[last > 0] - 1], -1] = True
+    lands[position[last - 1], -1] = True
     return Plan(offset.ravel(), lands.ravel(), parts)
 
 
@@ -228,12 +231,17 @@ def finer(resolution: Resolution, times: int = 1) -> Resolution:
     return replace(resolution, cells=resolution.cells * 2**times)
 
 
-def history(problem: Problem, inputs: Inputs, trace: Trace, every: int = 1) -> History:
-    """Rows in physical quantities; ``every``-th node of the trace's grid is kept."""
+def history(
+    problem: Problem, inputs: Inputs, trace: Trace, before: np.ndarray | None = None, every: int = 1
+) -> History:
+    """Rows in physical quantities; ``every``-th node of the trace's grid is kept.
+
+    ``before``: wall stresses just before the first row where its break must be told from a smooth start.
+    """
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
     value, slope, bend = (np.array([row.at(trace.piece, trace.offset, order) for row in rows]) for order in range(3))
     system = trace.system
-    stress, stress_rate = _stresses(problem, inputs, trace, value, slope, bend)
+    stress, stress_rate = _stresses(problem, trace, inputs, (value, slope, bend), before)
     weight = system.grid.mean_weight
     ends = np.array([weight[0] if system.first else 0.0, weight[-1] if system.end_volume[1] > 0 else 0.0])
     mean = trace.fields[:, kernel.MEAN] + ends @ value[:2]
@@ -258,7 +266,7 @@ def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) 
 
 
 def _stresses(
-    problem: Problem, inputs: Inputs, trace: Trace, value: np.ndarray, slope: np.ndarray, bend: np.ndarray
+    problem: Problem, trace: Trace, inputs: Inputs, values: tuple[np.ndarray, ...], before: np.ndarray | None
 ) -> tuple[np.ndarray, np.ndarray]:
     """Wall stresses and their rates (rows, 2) from the balance of each wall's half cell.
 
@@ -268,46 +276,49 @@ def _stresses(
     """
     system = trace.system
     fields = trace.fields
+    value, slope, bend = values
     stress = np.zeros((len(trace.piece), 2))
     rate = np.zeros_like(stress)
-    for end, sign, near, near_rate in (
-        (0, 1.0, kernel.FIRST, kernel.FIRST_RATE),
-        (1, 1.0, kernel.LAST, kernel.LAST_RATE),
-    ):
+    for end, near, near_rate in ((0, kernel.FIRST, kernel.FIRST_RATE), (1, kernel.LAST, kernel.LAST_RATE)):
         conductance, half = system.end_conductance[end], system.end_volume[end]
         stored = problem.density * half
-        factor = sign / system.grid.stress_radius[end]
+        factor = 1.0 / system.grid.stress_radius[end]
         stress[:, end] = factor * (
             conductance * (fields[:, near] - value[end]) + half * value[PRESSURE] - stored * slope[end]
         )
         rate[:, end] = factor * (
             conductance * (fields[:, near_rate] - slope[end]) + half * slope[PRESSURE] - stored * bend[end]
         )
-    _join_breaks(problem, inputs, trace, stress, rate)
+    _join_breaks(inputs, trace, stress, rate, before)
     return stress, rate
 
 
-def _join_breaks(problem: Problem, inputs: Inputs, trace: Trace, stress: np.ndarray, rate: np.ndarray) -> None:
+def _join_breaks(
+    inputs: Inputs, trace: Trace, stress: np.ndarray, rate: np.ndarray, before: np.ndarray | None
+) -> None:
     """Right-hand limits at breaks: infinite where a no-slip wall's speed jumps, else the left-hand limit."""
-    system = trace.system
     enters = np.flatnonzero(trace.offset == 0.0)
     for end in (0, 1):
-        slips = system.end_volume[end] == 0.0
-        if slips:
+        if trace.system.end_volume[end] == 0.0:
             continue
         jumped = inputs.row(end).jumps(0)[trace.piece[enters]] != 0.0
-        left = np.where(enters > 0, stress[enters - 1, end], _before(problem, system, inputs)[end])
+        first = stress[0, end] if before is None else before[end]
+        left = np.where(enters > 0, stress[enters - 1, end], first)
         stress[enters, end] = np.where(jumped, np.nan, left)
         rate[enters[jumped], end] = np.nan
 
 
-def _before(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
-    """Wall stresses (2,) just before t = 0."""
+def stress_before(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
+    """Wall stresses (2,) just before t = 0: none at rest, else those of the steady flow."""
     if problem.start == "rest":
         return np.zeros(2)
-    gradient = float(inputs.before[PRESSURE])
-    near = steady(system, inputs.before[:2], gradient)[[0, -1]]
-    flux = system.end_conductance * (near - inputs.before[:2]) + system.end_volume * gradient
+    speeds, gradient = inputs.before[:2], float(inputs.before[PRESSURE])
+    return steady_stress(system, steady(system, speeds, gradient), speeds, gradient)
+
+
+def steady_stress(system: System, velocity: np.ndarray, speeds: np.ndarray, gradient: float) -> np.ndarray:
+    """Wall stresses (2,) of a steady flow, from the flux at each wall."""
+    flux = system.end_conductance * (velocity[[0, -1]] - speeds) + system.end_volume * gradient
     return flux / system.grid.stress_radius
 
 

@@ -9,7 +9,7 @@ follows the number of features and the logarithm of the scales, not the ratio of
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -48,12 +48,31 @@ class Features:
 
 @dataclass(frozen=True, eq=False)
 class Resolution:
-    """Numbers for one base level: cells, the walls' layers (share of the gap), step tolerance, first steps (P,) s."""
+    """Numbers for one base level.
+
+    ``cells``, the walls' ``layers`` (share of the gap), step ``tolerance``; of each piece (P,) in s: its first step,
+    its longest step while the flow settles, and the offset from which longer ones may follow.
+    """
 
     cells: int
     layers: tuple[float, float]
     tolerance: float
     first_step: np.ndarray
+    longest_step: np.ndarray
+    calm_after: np.ndarray
+    growth: float
+
+
+def on_one_grid(resolutions: list[Resolution]) -> list[Resolution]:
+    """The same with one grid fine enough for all, so that states can pass from one march to another."""
+    layers = tuple(min(r.layers[end] for r in resolutions) for end in (0, 1))
+    cells = _cells(layers, min(r.growth for r in resolutions))
+    return [replace(r, layers=layers, cells=cells) for r in resolutions]
+
+
+def _cells(layers: tuple[float, ...], growth: float) -> int:
+    along = np.log1p(1.0 / layers[0]) + np.log1p(1.0 / layers[1])
+    return int(np.clip(np.ceil(along / growth), FEWEST_CELLS, MOST_CELLS))
 
 
 def features(problem: Problem, inputs: Inputs, until: float) -> Features:
@@ -104,16 +123,25 @@ def _sizes(
     return np.where(stress > 0, stress, tiny), speed if speed > 0 else tiny
 
 
-def resolve(problem: Problem, found: Features, accuracy: float, refine: float = 1.0) -> Resolution:
-    """The base level for ``accuracy``; ``refine`` > 1 divides the expected error by its square."""
+def resolve(
+    problem: Problem, found: Features, accuracy: float, slowest: float, least: float, refine: float = 1.0
+) -> Resolution:
+    """The base level for ``accuracy``; ``refine`` > 1 divides the expected error by its square.
+
+    ``slowest`` s: time constant with which the flow settles after the last break, followed until what is left is
+    the share ``least``.
+    """
     growth = GROWTH * (accuracy / 1e-3) ** 0.25 / refine**0.5
     tolerance = TOLERANCE * (accuracy / 1e-3) ** 0.75 / refine**1.5
     share = min(accuracy, 0.02) / refine
     layers = tuple(_layer(problem, found, end, growth, share) for end in (0, 1))
-    along = np.log1p(1.0 / layers[0]) + np.log1p(1.0 / layers[1])
-    cells = int(np.clip(np.ceil(along / growth), FEWEST_CELLS, MOST_CELLS))
+    cells = _cells(layers, growth)
     first = _first_steps(problem, found, growth, share, layers)
-    return Resolution(cells, layers, tolerance, first)
+    longest = np.full(len(first), np.inf)
+    calm = np.zeros(len(first))
+    longest[-1] = growth * slowest
+    calm[-1] = np.log(1.0 / least) * slowest
+    return Resolution(cells, layers, tolerance, first, longest, calm, growth)
 
 
 def _layer(problem: Problem, found: Features, end: int, growth: float, share: float) -> float:
@@ -132,7 +160,9 @@ def _layer(problem: Problem, found: Features, end: int, growth: float, share: fl
     cell = np.inf
     kink = found.kink[:, end].max(initial=0.0)
     if kink > 0.0:
-        cell = min(cell, share * found.stress[end] / (problem.density * kink))
+        grown = found.stress[end] / (problem.density * kink)  # the depth reached when the stress is at its guess
+        cell = min(cell, share * grown)
+        layer = min(layer, 0.5 * grown / gap)
     bend = found.bend[:, end].max(initial=0.0)
     if bend > 0.0:
         cell = min(cell, (share * found.stress[end] * nu / (problem.density * bend)) ** (1.0 / 3.0))

@@ -6,6 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from transient.result.curve import Curve
+
 
 @dataclass(frozen=True, eq=False)
 class History:
@@ -39,3 +41,74 @@ class History:
     profile: np.ndarray
     profile_rate: np.ndarray
     travel: np.ndarray
+
+    @property
+    def step(self) -> np.ndarray:
+        """Lengths of the intervals between rows (n-1,) s, exact also long after t = 0; 0 across a break."""
+        return np.where(self.piece[1:] == self.piece[:-1], np.diff(self.offset), 0.0)
+
+    def stress_curve(self, wall: int) -> Curve:
+        """The stress on one wall over time."""
+        return Curve(self.time, self.stress[:, wall], self.stress_rate[:, wall], self.step)
+
+    def speed_curve(self, wall: int) -> Curve:
+        """The speed of one wall over time."""
+        return Curve(self.time, self.speed[:, wall], self.acceleration[:, wall], self.step)
+
+    def mean_curve(self) -> Curve:
+        """The mean velocity over time."""
+        return Curve(self.time, self.mean, self.mean_rate, self.step)
+
+    def profile_step(self) -> np.ndarray:
+        """Lengths of the intervals between kept profiles (k-1,) s."""
+        piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
+        plain = np.diff(self.time[self.profile_row])
+        return np.where(piece[1:] == piece[:-1], np.diff(offset), plain)
+
+    def largest_curve(self) -> Curve:
+        """The largest |profile| over the gap as a curve over the kept profiles."""
+        value, rate = _largest(self.position, self.profile, self.profile_rate)
+        return Curve(self.time[self.profile_row], value, rate, self.profile_step())
+
+    def profiles_at(self, time: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """Velocity and travel (m, N) at absolute times (m,), by cubics between the kept profiles."""
+        kept = self.time[self.profile_row]
+        interval = np.clip(np.searchsorted(kept, time, side="right") - 1, 0, max(len(kept) - 2, 0))
+        step = self.profile_step()[interval][:, None]
+        safe = np.where(step > 0, step, 1.0)
+        share = np.clip(np.where(step > 0, (time - kept[interval])[:, None] / safe, 1.0), 0.0, 1.0)
+        low, high = interval, np.minimum(interval + 1, len(kept) - 1)
+
+        def between(value: np.ndarray, rate: np.ndarray) -> np.ndarray:
+            v0, v1, r0, r1 = value[low], value[high], rate[low] * step, rate[high] * step
+            rise = v1 - v0
+            bend, twist = 3.0 * rise - 2.0 * r0 - r1, r0 + r1 - 2.0 * rise
+            return v0 + share * (r0 + share * (bend + share * twist))
+
+        return between(self.profile, self.profile_rate), between(self.travel, self.profile)
+
+
+def _largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Largest magnitude over the gap of each profile (k,), between nodes too, and how it changes (k,)."""
+    rows = np.arange(len(profile))
+    magnitude = np.abs(profile)
+    at = magnitude.argmax(axis=1)
+    value = magnitude[rows, at]
+    change = np.sign(profile[rows, at]) * rate[rows, at]
+    inner = np.clip(at, 1, max(len(position) - 2, 1))
+    if len(position) < 3:
+        return value, change
+    x0, x1, x2 = position[inner - 1], position[inner], position[inner + 1]
+    sign = np.sign(profile[rows, inner])
+    y0, y1, y2 = (sign * profile[rows, inner + k] for k in (-1, 0, 1))
+    # vertex of the parabola through the largest node and its neighbours
+    left, right = (y1 - y0) / (x1 - x0), (y2 - y1) / (x2 - x1)
+    bend = (right - left) / (x2 - x0)
+    with np.errstate(all="ignore"):
+        vertex = 0.5 * (x0 + x1) - 0.5 * left / bend
+        top = y0 + (vertex - x0) * (left + bend * (vertex - x1))
+        better = (at == inner) & (bend < 0) & (vertex > x0) & (vertex < x2) & (top > value)
+        share = (vertex - x1) / np.where(vertex > x1, x2 - x1, x0 - x1)
+        side = np.where(vertex > x1, 1, -1)
+        mixed = sign * (rate[rows, inner] * (1 - share) + rate[rows, inner + side] * share)
+    return np.where(better, top, value), np.where(better, mixed, change)

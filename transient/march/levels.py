@@ -1,0 +1,174 @@
+"""One problem on a ladder of levels (cells and steps doubled each time), and what they extrapolate to."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from transient.gap.problem import PRESSURE, Inputs, Problem
+from transient.gap.system import steady
+from transient.march.march import (
+    NO_PLAN,
+    State,
+    Trace,
+    extrapolate,
+    finer,
+    halved,
+    history,
+    march,
+    steady_stress,
+    stress_before,
+)
+from transient.march.plan import Features, Resolution, features, on_one_grid, resolve
+from transient.march.regime import Outlook, deviation_inputs, periodic_inputs, periodic_state, rates_of
+from transient.result.history import History
+
+
+@dataclass(frozen=True, eq=False)
+class Answer:
+    """Histories that belong together: the flow, its deviation from what it ends in (or None), and one period of
+    that regime where it is periodic."""
+
+    flow: History
+    deviation: History | None
+    orbit: History | None
+    steady_velocity: np.ndarray | None
+    steady_mean: float
+    steady_stress: np.ndarray
+
+
+@dataclass(frozen=True, eq=False)
+class Ladder:
+    """``best`` the extrapolation of the two finest levels, ``next_best`` what it is compared with where there is
+    no series; cells and steps of the finest level, solves of all."""
+
+    best: Answer
+    next_best: Answer
+    inputs: Inputs
+    cells: int
+    steps: int
+    solves: int
+
+
+class _Climb:
+    """Marches of one kind (flow, period, deviation) level by level: the first adaptive, later ones by its steps."""
+
+    found: Features
+    resolution: Resolution
+
+    def __init__(self, problem: Problem, inputs: Inputs, until: float):
+        self.problem, self.inputs, self.until = problem, inputs, until
+        self.base: Trace | None = None
+        self.steps = self.solves = 0
+
+    def level(self, number: int, start: State | None = None) -> Trace:
+        """The trace of a level on the base level's rows."""
+        plan, every = NO_PLAN, 1
+        if number:
+            assert self.base is not None
+            plan, every = halved(self.base, number), self.base.profile_every
+        trace = march(
+            self.problem, self.inputs, self.until, self.found, finer(self.resolution, number),
+            plan=plan, profile_every=every, start=start,
+        )  # fmt: skip
+        if number == 0:
+            self.base = trace
+        self.steps = trace.steps * plan.record_every
+        self.solves += trace.solves
+        return trace
+
+def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, levels: int) -> Ladder:
+    """Solve on ``levels`` (2 or 3) levels.  Raises ``SolveError``."""
+    inputs = problem.inputs(ahead.until)
+    runs = [_Climb(problem, inputs, ahead.until)]
+    if ahead.kind == "periodic":
+        assert ahead.period is not None
+        once = periodic_inputs(ahead)
+        away = deviation_inputs(problem, ahead, ahead.until)
+        runs += [
+            _Climb(problem, once, ahead.period),
+            _Climb(problem, once, ahead.period),
+            _Climb(problem, away, ahead.until),
+        ]
+    _prepare(problem, runs, ahead, accuracy, refine)
+    flow = runs[0]
+    answers = []
+    for number in range(levels):
+        trace = flow.level(number)
+        main = history(problem, inputs, trace, stress_before(problem, trace.system, inputs), 2**number)
+        if ahead.kind == "periodic":
+            answers.append(_periodic_answer(problem, runs, number, trace, main))
+        elif ahead.kind == "steady":
+            answers.append(_steady_answer(ahead, trace, main, 2**number))
+        else:
+            answers.append(Answer(main, None, None, None, 0.0, np.zeros(2)))
+    best = _mix(answers[-2], answers[-1])
+    other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
+    cells = flow.resolution.cells * 2 ** (levels - 1)
+    return Ladder(best, other, inputs, cells, flow.steps, sum(run.solves for run in runs))
+
+
+def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:
+    """Features and resolutions of all marches of a problem: one grid, one measure of what is large."""
+    least = 0.1 * min(problem.settle_within, 0.001)
+    found = [features(problem, run.inputs, run.until) for run in runs]
+    stress = np.max([f.stress for f in found], axis=0)
+    speed = max(f.speed for f in found)
+    resolutions = []
+    for run, own in zip(runs, found, strict=True):
+        run.found = replace(own, stress=own.stress if run is runs[0] else stress, speed=speed)
+        resolutions.append(resolve(problem, run.found, accuracy, ahead.slowest, least, refine))
+    for run, resolution in zip(runs, on_one_grid(resolutions), strict=True):
+        run.resolution = resolution
+
+
+def _mix(coarse: Answer, fine: Answer) -> Answer:
+    def pair(name: str) -> History | None:
+        low, high = getattr(coarse, name), getattr(fine, name)
+        return None if low is None else extrapolate(low, high)
+
+    flow = pair("flow")
+    assert flow is not None
+    return replace(fine, flow=flow, deviation=pair("deviation"), orbit=pair("orbit"))
+
+
+def _steady_answer(ahead: Outlook, trace: Trace, main: History, every: int) -> Answer:
+    """The deviation from a steady end: the flow minus a state that is exact on this grid."""
+    assert ahead.drives is not None
+    system = trace.system
+    values = np.array([float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ahead.drives])
+    unknown = steady(system, values[:2], values[PRESSURE])
+    velocity = system.nodes(unknown, values[:2])
+    mean = float(system.grid.mean_weight @ velocity)
+    stress = steady_stress(system, unknown, values[:2], values[PRESSURE])
+    shown = velocity[::every]
+    deviation = replace(
+        main, stress=main.stress - stress, mean=main.mean - mean, profile=main.profile - shown,
+        speed=main.speed - values[:2], gradient=main.gradient - values[PRESSURE],
+    )  # fmt: skip
+    return Answer(main, deviation, None, shown, mean, stress)
+
+
+def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: Trace, main: History) -> Answer:
+    """The deviation from a periodic end, and one period of that end.
+
+    One period out of rest gives the periodic state (the rest is the gap's own modes); the difference to it is then
+    marched by itself: without forcing once the drive is periodic, so its cost does not grow with the periods.
+    """
+    _, first, around, away = runs
+    system, every = trace.system, 2**number
+    rest = np.zeros(system.unknowns)
+    after = first.level(number, State(rest, rates_of(system, rest, first.inputs)))
+    state = periodic_state(system, after.final, first.until)
+    orbit = around.level(number, State(state, rates_of(system, state, around.inputs)))
+    begin = trace.profiles[0, 0] - state
+    gone = away.level(number, State(begin, rates_of(system, begin, away.inputs)))
+    return Answer(
+        main,
+        history(problem, away.inputs, gone, None, every),
+        history(problem, around.inputs, orbit, None, every),
+        None,
+        0.0,
+        np.zeros(2),
+    )

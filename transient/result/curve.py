@@ -1,0 +1,147 @@
+"""A quantity over time as the cubic through values and rates: extremes, crossings, integrals between the rows."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+
+@dataclass(frozen=True, eq=False)
+class Curve:
+    """n rows: ``time`` (n,) s, ``value``, ``rate`` (n,); ``step`` (n-1,) lengths, 0 across a break.
+
+    Rows that are not finite, and the steps beside them, are left out of every answer.
+    """
+
+    time: np.ndarray
+    value: np.ndarray
+    rate: np.ndarray
+    step: np.ndarray
+
+    @cached_property
+    def cubic(self) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
+        """Coefficients in s = (t - time) / step of each interval, lowest power first, (n-1,) each."""
+        low, high = self.value[:-1], self.value[1:]
+        slope_low, slope_high = self.rate[:-1] * self.step, self.rate[1:] * self.step
+        rise = high - low
+        return low, slope_low, 3.0 * rise - 2.0 * slope_low - slope_high, slope_low + slope_high - 2.0 * rise
+
+    def at(self, interval: np.ndarray, share: np.ndarray) -> np.ndarray:
+        """Values at ``share`` of the given intervals."""
+        c0, c1, c2, c3 = (c[interval] for c in self.cubic)
+        return c0 + share * (c1 + share * (c2 + share * c3))
+
+    def sample(self, time: np.ndarray) -> np.ndarray:
+        """Values at absolute times (m,), clipped to the rows; a break gives its later side."""
+        time = np.clip(time, self.time[0], self.time[-1])
+        interval = np.clip(np.searchsorted(self.time, time, side="right") - 1, 0, len(self.step) - 1)
+        step = self.step[interval]
+        share = np.where(step > 0, (time - self.time[interval]) / np.where(step > 0, step, 1.0), 1.0)
+        return self.at(interval, np.clip(share, 0.0, 1.0))
+
+    @cached_property
+    def turning(self) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+        """(time, value, interval) of every extreme inside an interval."""
+        c0, c1, c2, c3 = self.cubic
+        # c1 + 2 c2 s + 3 c3 s^2 = 0, by the form that does not cancel
+        with np.errstate(all="ignore"):
+            root = np.sqrt(np.maximum(c2 * c2 - 3.0 * c1 * c3, 0.0))
+            real = c2 * c2 - 3.0 * c1 * c3 >= 0.0
+            q = -(c2 + np.where(c2 >= 0, root, -root))
+            pair = np.concatenate([q / (3.0 * c3), c1 / q])
+        interval = np.concatenate([np.arange(len(self.step))] * 2)
+        inside = np.concatenate([real, real]) & np.isfinite(pair) & (pair > 0.0) & (pair < 1.0)
+        inside &= (self.step > 0.0)[interval]
+        interval, share = interval[inside], pair[inside]
+        value = c0[interval] + share * (c1[interval] + share * (c2[interval] + share * c3[interval]))
+        keep = np.isfinite(value)
+        return (self.time[interval] + share * self.step[interval])[keep], value[keep], interval[keep]
+
+    def extreme(self, sign: float) -> tuple[float, float]:
+        """(value, its earliest time) where sign x value is largest; (nan, nan) without finite rows."""
+        time, value, _ = self.turning
+        finite = np.isfinite(self.value)
+        time = np.concatenate([self.time[finite], time])
+        value = np.concatenate([self.value[finite], value])
+        if len(value) == 0:
+            return np.nan, np.nan
+        best = (sign * value).max()
+        first = time[sign * value >= best].min()
+        return float(sign * best), float(first)
+
+    def magnitude(self) -> tuple[float, float]:
+        """(signed value, time) where |value| is largest; (nan, nan) without finite rows."""
+        high, low = self.extreme(1.0), self.extreme(-1.0)
+        return high if not abs(low[0]) > abs(high[0]) else low
+
+    def first_at(self, level: float, sign: float) -> float:
+        """Earliest time at which sign x value >= level; nan if never."""
+        time, value, interval = self.turning
+        tops = np.full(len(self.step), -np.inf)
+        np.maximum.at(tops, interval, sign * value)
+        with np.errstate(invalid="ignore"):
+            rows = np.where(np.isfinite(self.value), sign * self.value, -np.inf)
+            hit = np.flatnonzero((rows[1:] >= level) | (tops >= level))
+        if rows[0] >= level:
+            return float(self.time[0])
+        if len(hit) == 0:
+            return np.nan
+        i = int(hit[0])
+        if not np.isfinite(self.value[i]) or self.step[i] <= 0.0:
+            return float(self.time[i + 1])
+        peak = 1.0
+        inside = interval == i
+        if inside.any():
+            shares = (time[inside] - self.time[i]) / self.step[i]
+            above = sign * value[inside] >= level
+            if above.any():
+                peak = float(shares[above].min())
+        share = _bisect(lambda s: sign * float(self.at(i, s)) - level, 0.0, peak)
+        return float(self.time[i] + share * self.step[i])
+
+    def last_above(self, level: float) -> float:
+        """Time after which |value| stays at or below ``level``: 0 if always, nan if not by the end."""
+        magnitude = np.abs(self.value)
+        time, value, interval = self.turning
+        high = np.zeros(len(self.step))
+        np.maximum.at(high, interval, np.abs(value))
+        with np.errstate(invalid="ignore"):
+            rows = ~(magnitude <= level)  # a value that is not finite is above
+            over = rows[:-1] | (high > level)
+        if rows[-1]:
+            return np.nan
+        above = np.flatnonzero(over)
+        if len(above) == 0:
+            return 0.0
+        i = int(above[-1])
+        if self.step[i] <= 0.0 or not np.isfinite(self.value[i]):
+            return float(self.time[i + 1])
+        low = 0.0
+        if not magnitude[i] > level:
+            inside = (interval == i) & (np.abs(value) > level)
+            low = float(((time[inside] - self.time[i]) / self.step[i]).max())
+        share = _bisect(lambda s: level - abs(float(self.at(i, s))), low, 1.0)
+        return float(self.time[i] + share * self.step[i])
+
+    def integral(self) -> np.ndarray:
+        """Running integral at the rows (n,); steps beside values that are not finite count by their finite end."""
+        value = np.where(np.isfinite(self.value), self.value, 0.0)
+        rate = np.where(np.isfinite(self.rate), self.rate, 0.0)
+        h = self.step
+        part = 0.5 * h * (value[1:] + value[:-1]) + h * h / 12.0 * (rate[:-1] - rate[1:])
+        return np.concatenate([[0.0], np.cumsum(part)])
+
+
+def _bisect(rising, low: float, high: float) -> float:
+    """Where a function turns from negative to non-negative on [low, high]."""
+    for _ in range(60):
+        middle = 0.5 * (low + high)
+        if middle in (low, high):
+            break
+        if rising(middle) < 0.0:
+            low = middle
+        else:
+            high = middle
+    return high

@@ -1,0 +1,127 @@
+"""Settling times: the first time after which a quantity stays within a fraction of what it ends in."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from transient.result.curve import Curve
+from transient.result.run import ZERO, Run
+
+LEVELS = (0.10, 0.05, 0.01, 0.001)
+
+
+def settling(run: Run) -> dict[str, Any]:
+    """Times (s) by velocity profile, mean velocity and each wall's stress; null where not reached.
+
+    Relative to the steady value, over one period to the largest magnitude; where that is zero to the quantity's own
+    peak.  The error is the spread of the time when the deviation's own error is added and taken away.
+    """
+    within = run.settle_within
+    names = [wall.name for wall in run.walls]
+    if run.regime.deviation is None:
+        nothing = {"velocity": None, "flow": None, "stress": dict.fromkeys(names)}
+        levels = {label(level): dict(nothing) for level in LEVELS}
+        return {"reached": False, "time": None, "error": None, "within": within, **nothing,
+                "errors": dict(nothing), "regime": "none", "period": None, "levels": levels}  # fmt: skip
+    judges = _judges(run)
+    main = _times(judges, within, names)
+    spread = _spreads(judges, within, main, names)
+    return {
+        "reached": main["velocity"] is not None,
+        "time": main["velocity"],
+        "error": spread["velocity"],
+        "within": within,
+        **main,
+        "errors": spread,
+        "error_kind": run.errors.kind,
+        "regime": run.regime.kind,
+        "period": run.regime.period,
+        "levels": {label(level): _times(judges, level, names) for level in LEVELS},
+    }
+
+
+def label(level: float) -> str:
+    """"1 %" for 0.01."""
+    return f"{100 * level:g} %"
+
+
+class _Judge:
+    """One quantity's deviation as a curve, its error at the rows, and the size it is measured against."""
+
+    def __init__(self, curve: Curve, error: np.ndarray, size: float):
+        self.size = size
+        self.curve = curve
+        sign = np.sign(curve.value)
+        magnitude = np.abs(curve.value)
+        rate = sign * curve.rate
+        self.above = Curve(curve.time, magnitude + error, rate, curve.step)
+        self.below = Curve(curve.time, magnitude - error, rate, curve.step)
+
+    def time(self, level: float) -> float | None:
+        """Settling time within ``level``, None if not by the end or if there is nothing to measure against."""
+        if not 0.0 < self.size < np.inf:
+            return 0.0 if self.size == 0.0 else None
+        found = self.curve.last_above(level * self.size)
+        return None if np.isnan(found) else found
+
+    def spread(self, level: float, time: float | None) -> float | None:
+        """Bound of the time's error; to the end of the run where the error alone could decide."""
+        if time is None:
+            return None
+        if self.size == 0.0:
+            return 0.0
+        end = float(self.curve.time[-1])
+        late = self.above.last_above(level * self.size)
+        early = self.below.last_above(level * self.size)
+        late = end if np.isnan(late) else late
+        early = end if np.isnan(early) else early
+        return max(late - time, time - early, 4e-16 * time, 0.0)
+
+
+def _judges(run: Run) -> dict[str, Any]:
+    history, regime, errors = run.history, run.regime, run.errors
+    away = regime.deviation
+    assert away is not None
+    run_largest = float(np.abs(history.profile).max(initial=0.0))
+    velocity = regime.velocity if regime.velocity > ZERO * run_largest else run_largest
+    mean_peak = abs(history.mean_curve().magnitude()[0])
+    mean = regime.mean if regime.mean > ZERO * mean_peak else mean_peak
+    stress = {wall.name: _stress_judge(run, wall.end, wall.shear_free) for wall in run.walls}
+    return {
+        "velocity": _Judge(away.largest_curve(), errors.level_profile, velocity),
+        "flow": _Judge(away.mean_curve(), errors.level_mean, mean),
+        "stress": stress,
+    }
+
+
+def _stress_judge(run: Run, end: int, shear_free: bool) -> _Judge:
+    away = run.regime.deviation
+    assert away is not None
+    size = float(run.regime.stress[end])
+    peak = abs(run.history.stress_curve(end).magnitude()[0])
+    infinite = run.unbounded[end] > 0.0
+    others = np.abs(run.regime.stress[np.isfinite(run.regime.stress)]).max(initial=0.0)
+    compared = max(others, 0.0) if infinite else peak
+    if not size > ZERO * compared:
+        size = np.inf if infinite else peak
+    if shear_free:
+        size = np.inf
+    return _Judge(away.stress_curve(end), run.errors.level_stress[:, end], size)
+
+
+def _times(judges: dict[str, Any], level: float, names: list[str]) -> dict[str, Any]:
+    return {
+        "velocity": judges["velocity"].time(level),
+        "flow": judges["flow"].time(level),
+        "stress": {name: judges["stress"][name].time(level) for name in names},
+    }
+
+
+def _spreads(judges: dict[str, Any], level: float, times: dict[str, Any], names: list[str]) -> dict[str, Any]:
+    return {
+        "velocity": judges["velocity"].spread(level, times["velocity"]),
+        "flow": judges["flow"].spread(level, times["flow"]),
+        "stress": {name: judges["stress"][name].spread(level, times["stress"][name]) for name in names},
+    }
