@@ -4,10 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from pathlib import Path
 
 import pytest
 
 from transient.cli import main
+
+
+CASES = Path(__file__).resolve().parents[2] / "cases"
 
 
 @dataclass(frozen=True)
@@ -30,3 +34,11 @@ def call(capsys: pytest.CaptureFixture[str]) -> Callable[..., Said]:
         return Said(status, captured.out, captured.err)
 
     return once
+
+
+@pytest.fixture(scope="session")
+def finished(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The result file of the README's case, solved once for all tests that only read it."""
+    folder = tmp_path_factory.mktemp("finished")
+    assert main(["run", str(CASES / "flow_cell.toml"), "--quiet", "--out", str(folder)]) == 0
+    return folder / "flow_cell.h5"

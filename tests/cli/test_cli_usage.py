@@ -56,10 +56,6 @@ def test_a_command_of_another_version_is_refused_in_one_line(call, name):
             ["figure", "a.h5", "flow", "--out", "a.jpg"],
             "--out a.jpg: a figure ends in .png, .svg or .pdf, such as a.png\n",
         ),
-        (
-            ["figure", "a.h5", "--out", "a.png"],
-            "--out names one file, so say which figure goes there: transient figure RESULT.h5 NAME --out FILE\n",
-        ),
     ],
 )
 def test_usage_errors_are_one_line(call, arguments, message):

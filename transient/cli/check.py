@@ -18,11 +18,19 @@ def check(
 
     Prints the inputs as typed and in SI, derived numbers such as the diffusion time, and cautions.
     """
-    from transient.case.derived import derived
+    from transient.case.derived import derived, horizon
     from transient.case.read import read_case
-    from transient.cli.echo import echo
+    from transient.cli import echo
+    from transient.trust.preview import preview
 
     with refusals():
         read = read_case(case, changes(overrides))
-        say(echo(read.title, read.inputs(), derived(read)))
+    problem = read.problem()
+    blocks = (
+        [read.title],
+        echo.inputs(read.inputs()),
+        echo.derived(derived(read)),
+        echo.cautions(preview(problem, horizon(problem))),
+    )
+    say("\n\n".join("\n".join(block) for block in blocks))
     return GOOD
