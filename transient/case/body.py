@@ -100,7 +100,10 @@ def _curve(section: Section, name: str) -> Curve | None:
     for i in range(1, len(speeds)):
         if speeds[i] <= speeds[i - 1]:
             raise reading.source.fault(
-                (*table.path, "speeds", i), items_at(table, i), "is not above the one before", "rising speeds are needed"
+                (*table.path, "speeds", i),
+                items_at(table, i),
+                "is not above the one before",
+                "rising speeds are needed",
             )
     beyond = table.tree.get("beyond", "hold")
     if beyond not in _BEYOND:

@@ -15,7 +15,9 @@ from transient.units import typed
 def read_gap(reading: Reading) -> GapInput:
     """The gap; raises ``CaseError``."""
     if "gap" not in reading.tree:
-        raise reading.source.refuse(("gap",), 'is missing; a [gap] is needed, such as shape = "plates", height = "0.80 mm"')
+        raise reading.source.refuse(
+            ("gap",), 'is missing; a [gap] is needed, such as shape = "plates", height = "0.80 mm"'
+        )
     shape = _shape(reading)
     head = ("shape",) if shape.motion is None else ("shape", "motion")
     section = reading.section(("gap",), (*head, *(size.name for size in shape.sizes), "count"))
@@ -29,15 +31,19 @@ def read_gap(reading: Reading) -> GapInput:
         raise _contradiction(section, error) from None
     if not 0.0 <= ends.inner < ends.outer:
         raise reading.source.refuse(("gap",), "the gap is too narrow for its radii; a wider clearance is needed")
-    return GapInput(
-        shape, sizes, ends, count, shape.areas(ends, sizes), shape.section(ends, sizes), shape.radii(ends)
-    )
+    return GapInput(shape, sizes, ends, count, shape.areas(ends, sizes), shape.section(ends, sizes), shape.radii(ends))
 
 
 def size_key(size: Size) -> Key:
     """The key that reads one size of a shape."""
     return Key(
-        size.name, "quantity", size.doc, size.dimension, example=f'"{size.example}"', required=size.required, least="positive"
+        size.name,
+        "quantity",
+        size.doc,
+        size.dimension,
+        example=f'"{size.example}"',
+        required=size.required,
+        least="positive",
     )
 
 
@@ -58,7 +64,10 @@ def _shape(reading: Reading) -> Shape:
         raise reading.source.refuse(("gap", "shape"), f"is missing; a shape is needed, one of {listed}")
     if isinstance(word, str) and word in LATER_SHAPES:
         raise reading.source.fault(
-            ("gap", "shape"), word, f"({LATER_SHAPES[word]}) is not available in this version", f"one of {listed} is needed"
+            ("gap", "shape"),
+            word,
+            f"({LATER_SHAPES[word]}) is not available in this version",
+            f"one of {listed} is needed",
         )
     if not isinstance(word, str) or word not in words:
         raise reading.source.refuse(("gap", "shape"), f"{typed(word)} is no shape; {nearest(str(word), words)}")
@@ -70,7 +79,9 @@ def _shape(reading: Reading) -> Shape:
     if "motion" not in tree:
         raise reading.source.refuse(("gap", "motion"), f"is missing; {listed} is needed")
     if tree["motion"] not in motions:
-        raise reading.source.fault(("gap", "motion"), tree["motion"], "is no motion of this shape", f"{listed} is needed")
+        raise reading.source.fault(
+            ("gap", "motion"), tree["motion"], "is no motion of this shape", f"{listed} is needed"
+        )
     return found[motions.index(tree["motion"])]
 
 
@@ -85,7 +96,9 @@ def read_fluid(reading: Reading) -> FluidInput:
     if viscosity is not None and kinematic is not None:
         raise section.refuse("kinematic_viscosity", "is given beside viscosity; one of them is needed")
     if viscosity is None and kinematic is None:
-        raise section.refuse("viscosity", 'is missing; viscosity or kinematic_viscosity is needed, such as "1.002 mPa*s"')
+        raise section.refuse(
+            "viscosity", 'is missing; viscosity or kinematic_viscosity is needed, such as "1.002 mPa*s"'
+        )
     if viscosity is None:
         viscosity = kinematic * density
     return FluidInput(density, "constant", LAWS["constant"].parameters(viscosity=viscosity), viscosity)

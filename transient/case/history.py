@@ -44,8 +44,8 @@ def read_history(reading: Reading, path: Path, value: Any, dimension: str) -> Dr
     try:
         return kind.build(**given)
     except DriveError as error:
-        raise section.refuse(error.key.rstrip("_"), str(error)) if error.key else reading.source.refuse(
-            path, str(error)
+        raise (
+            section.refuse(error.key.rstrip("_"), str(error)) if error.key else reading.source.refuse(path, str(error))
         ) from None
 
 
@@ -56,7 +56,9 @@ def _kind(reading: Reading, path: Path, value: dict[str, Any]) -> Kind:
         raise reading.source.refuse((*path, "kind"), f"is missing; a history needs a kind, one of {known}")
     name = value["kind"]
     if not isinstance(name, str) or name not in KINDS:
-        raise reading.source.refuse((*path, "kind"), f"{typed(name)} is no kind of history; {nearest(str(name), names)}")
+        raise reading.source.refuse(
+            (*path, "kind"), f"{typed(name)} is no kind of history; {nearest(str(name), names)}"
+        )
     return KINDS[name]
 
 
@@ -74,7 +76,9 @@ def field_dimension(field: Field, dimension: str) -> str:
 
 def _missing(section: Section, field: Field, dimension: str) -> Exception:
     own = field_dimension(field, dimension)
-    need = f'{DIMENSIONS[own].words} is needed, such as "{DIMENSIONS[own].example}"' if own else field.doc + " is needed"
+    need = (
+        f'{DIMENSIONS[own].words} is needed, such as "{DIMENSIONS[own].example}"' if own else field.doc + " is needed"
+    )
     return section.refuse(field.name, f"is missing; {need}")
 
 
@@ -114,7 +118,9 @@ def _table_arguments(section: Section, dimension: str) -> dict[str, np.ndarray]:
 
 def _unit(section: Section, key: Key) -> Any:
     if key.name not in section:
-        raise section.refuse(key.name, f"is missing; {key.doc[0].lower()}{key.doc[1:]} is needed, such as {key.example}")
+        raise section.refuse(
+            key.name, f"is missing; {key.doc[0].lower()}{key.doc[1:]} is needed, such as {key.example}"
+        )
     return section.tree[key.name]
 
 
@@ -142,7 +148,9 @@ def _from_file(section: Section) -> tuple[np.ndarray, np.ndarray]:
 def _column(section: Section, key: Key) -> str | int:
     value = section.tree.get(key.name, key.default)
     if isinstance(value, bool) or not isinstance(value, str | int):
-        raise section.fault(key.name, "is no column", f"a header name or a number from 1 is needed, such as {key.example}")
+        raise section.fault(
+            key.name, "is no column", f"a header name or a number from 1 is needed, such as {key.example}"
+        )
     return value
 
 

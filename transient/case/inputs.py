@@ -10,7 +10,7 @@ from transient.gap.shapes import Ends, Shape
 
 @dataclass(frozen=True, eq=False)
 class GapInput:
-    """``sizes`` as given, m; ``areas`` wetted, of one gap, m^2, and ``section`` m^2, None where unknown; ``radii`` m."""
+    """``sizes`` as given, m; ``areas`` wetted, of one gap, and ``section``, m^2, None where unknown; ``radii`` m."""
 
     shape: Shape
     sizes: dict[str, float]
@@ -28,7 +28,7 @@ class GapInput:
 
 @dataclass(frozen=True)
 class FluidInput:
-    """``density`` kg/m^3; ``law`` a name in the registry of laws with its ``parameters`` in SI; ``viscosity`` Pa s."""
+    """``density`` kg/m^3; ``law`` a name in the registry of laws, its ``parameters`` in SI; ``viscosity`` Pa s."""
 
     density: float
     law: str
@@ -38,8 +38,10 @@ class FluidInput:
 
 @dataclass(frozen=True)
 class Curve:
-    """Load against the body's speed: ``speeds`` rising, m/s or rad/s; ``values`` N or N m; ``beyond`` the ends "hold" or
-    "refuse"."""
+    """Load against the body's speed: ``speeds`` rising, m/s or rad/s; ``values`` N or N m.
+
+    ``beyond`` the ends: "hold" or "refuse".
+    """
 
     speeds: tuple[float, ...]
     values: tuple[float, ...]
@@ -51,8 +53,8 @@ class BodyInput:
     """A body on a wall, in N, m, kg or (rotating) N m, rad, kg m^2.
 
     ``mass`` mass or inertia; ``load`` force or torque; ``incline`` rad; ``damping``, ``stiffness`` per speed and
-    displacement; ``dry_friction`` <= ``breakaway_friction``; ``initial_speed`` None where not given; ``area`` of one gap
-    (m^2), given or the wetted one; ``displaces`` m^2 or None.
+    displacement; ``dry_friction`` <= ``breakaway_friction``; ``initial_speed`` None where not given; ``area``
+    of one gap, m^2, given or the wetted one; ``displaces`` m^2 or None.
     """
 
     mass: float
@@ -71,7 +73,7 @@ class BodyInput:
 
 @dataclass(frozen=True, eq=False)
 class WallInput:
-    """One wall: at most one of ``speed`` (m/s or rad/s), ``displacement`` (m or rad), ``shear_free``, ``body``; none: fixed."""
+    """One wall: at most one of ``speed`` (m/s, rad/s), ``displacement`` (m, rad), ``shear_free``, ``body``."""
 
     name: str
     speed: Drive | None = None
@@ -94,7 +96,7 @@ class PressureInput:
 
 @dataclass(frozen=True)
 class RunInput:
-    """``duration`` s or None for "auto"; ``settle_within``, ``accuracy`` fractions; ``profile_times`` s, sorted, or None."""
+    """``duration`` s, None for "auto"; ``settle_within``, ``accuracy`` fractions; ``profile_times`` s, sorted."""
 
     duration: float | None
     settle_within: float

@@ -14,7 +14,8 @@ from typing import Any
 class Key:
     """One key.
 
-    ``kind``: "quantity", "history", "curve", "times" (a list of quantities), "table", "text", "flag", "whole", "choice".
+    ``kind``: "quantity", "history", "curve", "times" (a list of quantities), "table", "text", "flag", "whole" or
+    "choice".
     ``dimension`` of a quantity or history, ``turning`` that in a rotating gap where it differs.
     ``least``: "positive", "zero" (zero allowed) or "" (any sign); ``low``, ``high`` bound a whole number or fraction.
     ``words``: texts taken beside a quantity ("auto").

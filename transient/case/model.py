@@ -16,7 +16,7 @@ from transient.case.run import read_pressure, read_run, read_start
 from transient.case.source import CaseError, Source
 from transient.case.walls import read_walls
 from transient.case.write import to_toml
-from transient.drive.pieces import Drive, common_period, constant
+from transient.drive.pieces import Drive, DriveError, common_period, constant
 from transient.fluid import LAWS
 from transient.gap.problem import Law, Problem, Wall
 
@@ -120,6 +120,7 @@ class Case:
     def _refuse_endless(self, reading: Reading) -> None:
         """An automatic duration needs a drive that ends in something."""
         if self.run.duration is not None:
+            self._refuse_too_many_cycles(reading, self.run.duration)
             return
         ends = [drive.eventual for drive in self.drives()]
         if any(end.drive is None for end in ends) or not common_period([end.period for end in ends])[1]:
@@ -127,6 +128,14 @@ class Case:
                 ("run", "duration"),
                 '"auto" needs a drive that ends in a steady or periodic state; a time is needed, such as "2 s"',
             )
+
+    def _refuse_too_many_cycles(self, reading: Reading, duration: float) -> None:
+        """A run of millions of cycles would be solved for days."""
+        try:
+            for drive in self.drives():
+                drive.breaks(duration)
+        except DriveError as error:
+            raise reading.source.refuse(("run", "duration"), str(error)) from None
 
     def __eq__(self, other: object) -> bool:
         return isinstance(other, Case) and self._resolved == other._resolved

@@ -94,7 +94,8 @@ def _toml_fault(file: str, text: str, message: str) -> str:
         bare = value.split("#")[0].strip()
         if re.fullmatch(r"[+-]?\d+,\d+", bare):
             return f"{file}:{number}: {key}: {bare} has a decimal comma; a decimal point is needed"
-        return f'{file}:{number}: {key}: {bare} needs quotes; texts and quantities are written as in {key.split(".")[-1]} = "{bare}"'
+        example = f'{key.split(".")[-1]} = "{bare}"'
+        return f"{file}:{number}: {key}: {bare} needs quotes; write {example}"
     prefix = f"{key}: " if key else ""
     return f"{file}:{number}: {prefix}is not TOML: {words[:1].lower()}{words[1:]}"
 

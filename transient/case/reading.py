@@ -107,7 +107,9 @@ def _quantity(section: Section, key: Key, value: Any) -> float | str:
     dimension = key.measure(section.reading.rotating)
     out = si_value(section.reading, path, value, dimension, key.least, key.words)
     if key.low is not None and key.high is not None and not _inside(out, key.low, key.high):
-        raise section.fault(key.name, f"is not {_bounds(key)}", f"{DIMENSIONS[dimension].words} is needed, such as {key.example}")
+        raise section.fault(
+            key.name, f"is not {_bounds(key)}", f"{DIMENSIONS[dimension].words} is needed, such as {key.example}"
+        )
     return out
 
 

@@ -10,7 +10,7 @@ from transient.units import show
 
 
 def read_start(reading: Reading) -> str:
-    """"rest" or "steady"; raises ``CaseError``."""
+    """ "rest" or "steady"; raises ``CaseError``."""
     return reading.section(("start",), [START[0].name]).read(START[0])
 
 

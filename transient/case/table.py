@@ -42,7 +42,9 @@ def table_path(name: str, folder: FilePath | None) -> FilePath:
     if not plain.lower().endswith(".csv"):
         raise TableFault(f"{typed(name)} is no CSV file; {need}")
     if folder is None:
-        raise TableFault(f"{typed(name)} has no folder to be read from; give times and values, or read the case from a file")
+        raise TableFault(
+            f"{typed(name)} has no folder to be read from; give times and values, or read the case from a file"
+        )
     return folder / plain
 
 
@@ -52,9 +54,7 @@ def read_columns(path: FilePath, name: str, time_column: str | int, column: str 
     width = len(rows[0].cells)
     wanted = (time_column, column)
     header = rows[0].cells if _has_header(rows[0], wanted) else None
-    places = [
-        _place(one, header, width, key, name) for one, key in zip(wanted, ("time_column", "column"), strict=True)
-    ]
+    places = [_place(one, header, width, key, name) for one, key in zip(wanted, ("time_column", "column"), strict=True)]
     body = rows[1:] if header else rows
     if not body:
         raise TableFault(f"{name} holds no rows of numbers; times and values are needed")
@@ -62,7 +62,9 @@ def read_columns(path: FilePath, name: str, time_column: str | int, column: str 
     back = np.flatnonzero(np.diff(numbers[:, 0]) < 0)
     if len(back):
         row = body[back[0] + 1]
-        raise TableFault(f"{name} row {row.number}: the time goes back to {row.cells[places[0]].strip()}; rising times are needed")
+        raise TableFault(
+            f"{name} row {row.number}: the time goes back to {row.cells[places[0]].strip()}; rising times are needed"
+        )
     return numbers[:, 0], numbers[:, 1]
 
 
@@ -120,7 +122,9 @@ def _number(row: Row, place: int, width: int, name: str) -> float:
     if not row.cells:
         raise TableFault(f"{where} is empty; a table without gaps is needed")
     if len(row.cells) > width:
-        raise TableFault(f"{where} has {len(row.cells)} cells, the first row {width}; are there decimal commas? Points are needed")
+        raise TableFault(
+            f"{where} has {len(row.cells)} cells, the first row {width}; are there decimal commas? Points are needed"
+        )
     cell = row.cells[place].strip() if place < len(row.cells) else ""
     if not cell:
         raise TableFault(f"{where} has no value in column {place + 1}; a table without gaps is needed")

@@ -20,7 +20,7 @@ _LONGEST = 120
 # ITS-90 zero of the Celsius scale, and 0 degF, in kelvin: exact by definition.
 _OFFSET = {"K": Fraction(0), "degC": Fraction("273.15"), "degF": Fraction("459.67") * 5 / 9}
 _SPELLINGS = str.maketrans(
-    {"µ": "u", "μ": "u", "·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "−": "-", "º": "°"}  # noqa: RUF001
+    {"µ": "u", "μ": "u", "·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "−": "-", "º": "°"}
 )
 
 

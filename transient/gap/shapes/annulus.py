@@ -49,10 +49,14 @@ def annulus_ends(sizes: Sizes) -> Ends:
         raise ShapeError(given[2], f"is given beside {given[0]} and {given[1]}", _NEED)
     if len(given) < 2:
         missing = "inner_diameter" if not inner_key else "outer_diameter"
-        raise ShapeError(missing, "is missing", _NEED + ', such as inner_diameter = "20 mm", radial_clearance = "0.5 mm"')
+        raise ShapeError(
+            missing, "is missing", _NEED + ', such as inner_diameter = "20 mm", radial_clearance = "0.5 mm"'
+        )
     if not clear_key:
         if inner >= outer:
-            raise ShapeError(str(inner_key), "is not below the outer wall's", "an inner wall inside the outer one is needed")
+            raise ShapeError(
+                str(inner_key), "does not lie inside the outer wall", "a smaller inner or a larger outer wall is needed"
+            )
         return Ends(inner, outer, outer - inner)
     if not outer_key:
         return Ends(inner, inner + clear, clear)
