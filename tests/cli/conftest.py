@@ -10,7 +10,6 @@ import pytest
 
 from transient.cli import main
 
-
 CASES = Path(__file__).resolve().parents[2] / "cases"
 
 

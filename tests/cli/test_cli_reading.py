@@ -11,7 +11,8 @@ import pytest
 from transient.case.read import read_case
 
 CASES = Path(__file__).resolve().parents[2] / "cases"
-# Reynolds number, areas and diffusion time by hand: 0.3 x 0.8e-3 / (1.002e-3 / 998) = 239.04, 60 x 25 mm, 0.64e-6 / 1.004e-6.
+# Reynolds number, areas and diffusion time by hand: 0.3 x 0.8e-3 / (1.002e-3 / 998) = 239.04,
+# 60 x 25 mm, 0.64e-6 / 1.004e-6.
 CHECKED = """\
 Flow cell brought up to speed
 
@@ -32,7 +33,6 @@ run.accuracy            0.1 %         0.001
 Follows from it
 gap height                    0.8 mm         distance across which momentum diffuses
 kinematic viscosity           1.004 mm^2/s   viscosity / density
-dynamic viscosity             1.002 mPa*s    kinematic viscosity x density
 diffusion time                0.6374 s       gap^2 / kinematic viscosity
 wetted area, lower            15 cm^2        of one gap
 wetted area, upper            15 cm^2        of one gap

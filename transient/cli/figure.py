@@ -13,7 +13,7 @@ from transient.cli.words import GOOD, Stop, Version, note, refusals
 
 def figure(
     result: Annotated[Path, typer.Argument(metavar="RESULT.h5", help="A result file.")],
-    name: Annotated[str | None, typer.Argument(metavar="NAME", help="Which figure; without a name, the overview.")] = None,
+    name: Annotated[str | None, typer.Argument(metavar="NAME", help="Which figure; else the overview.")] = None,
     out: Annotated[Path | None, typer.Option("--out", metavar="FILE", help="Write here: PNG, SVG or PDF.")] = None,
     version: Version = False,
 ) -> int:
