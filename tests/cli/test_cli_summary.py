@@ -21,6 +21,8 @@ SUMMARY = {
         "time": 0.27143,
         "error": 2.3e-4,
         "within": 0.01,
+        "regime": "steady",
+        "period": None,
         "velocity": 0.27143,
         "flow": 0.2511,
         "stress": {"lower": 0.2712, "upper": 0.2534},
@@ -34,6 +36,7 @@ SUMMARY = {
             "final_stress": 0.37575,
             "final_stress_error": 1e-6,
             "final_speed": 0.0,
+            "overshoot": 0.0,
             "peak_force": 5.6e-4,
             "peak_torque": None,
         },
@@ -45,6 +48,7 @@ SUMMARY = {
             "final_stress": -0.37575,
             "final_stress_error": 1e-6,
             "final_speed": 0.3,
+            "overshoot": 2.5175,
             "peak_force": -1.98e-3,
             "peak_torque": None,
         },
@@ -67,15 +71,15 @@ SUMMARY = {
 PRINTED = """\
 Flow cell brought up to speed
 
-Settled    after 0.27143 ± 0.00023 s: velocity within 1 % of its end state
-           flow after 0.2511 s; wall stress on lower after 0.2712 s and on upper
-           after 0.2534 s
+Settled    after 271.43 ± 0.23 ms: velocity within 1 % of its steady state
+           flow after 251.1 ms; wall stress on lower after 271.2 ms and on upper
+           after 253.4 ms
 
-Wall       largest stress         at      in the end              speed then
-lower      0.37575 ± 0.00001 Pa   0.9 s   0.37575 ± 0.00001 Pa    0 m/s
-upper      -1.3217 ± 0.0002 Pa    50 ms   -0.37575 ± 0.00001 Pa   0.3 m/s
-           upper: 3.52 times the final value
-           largest force 0.56 mN on lower and -1.98 mN on upper
+Wall       largest stress         at       in the end              speed then
+lower      0.37575 ± 0.00001 Pa   900 ms   0.37575 ± 0.00001 Pa    0 m/s
+upper      -1.3217 ± 0.0002 Pa    50 ms    -0.37575 ± 0.00001 Pa   0.3 m/s
+           largest over final stress: 3.52 times on upper
+           largest force 560 µN on lower and -1.98 mN on upper
 
 Flow       mean velocity 0.15 m/s in the end, largest 0.15 m/s; largest flow
            rate 3 cm³/s; 2.5 cm³ delivered in the run
@@ -115,9 +119,18 @@ def test_an_unbounded_start_states_its_law_and_no_peak():
 
 
 def test_a_flow_that_does_not_settle_is_said_so():
-    nothing = {"time": None, "error": None, "velocity": None, "flow": None, "stress": {}}
-    settling = {"reached": False, "within": 0.02, **nothing}
-    assert "Settled    not within 2 % in this run" in printed(settling=settling)
+    nothing = {"time": None, "error": None, "velocity": None, "flow": None, "stress": {}, "period": None}
+    endless = {"reached": False, "within": 0.02, "regime": "none", **nothing}
+    short = {**endless, "regime": "steady"}
+    assert "not within 2 % in this run, since the drive ends in no steady or" in printed(settling=endless)
+    assert "not within 2 % in this run, since the run ends before that" in printed(settling=short)
+
+
+def test_a_periodic_end_names_its_period_and_no_overshoot():
+    text = printed(settling={**SUMMARY["settling"], "regime": "periodic", "period": 0.125})
+    assert "velocity within 1 % of its periodic state" in text
+    assert "(period 125 ms)" in text
+    assert "over final" not in text
 
 
 @pytest.mark.parametrize(
