@@ -65,16 +65,17 @@ def _summary(title, shape, walls, time, stress, speed, mean) -> dict:
             "peak_stress_error": float(1e-3 * abs(stress[top, i])) if finite.all() else None,
             "peak_time": float(time[top]) if finite.all() else float(time[~finite][0]),
             "unbounded": bool(not finite.all()),
+            "unbounded_coefficient": None if finite.all() else 0.3 * float(np.sqrt(VISCOSITY * DENSITY / np.pi)),
             "final_stress": float(stress[-1, i]),
             "final_speed": float(speed[-1, i]),
         }
     away = np.flatnonzero(np.abs(mean - mean[-1]) > 0.01 * abs(mean[-1]))
+    settled = float(time[min(away[-1] + 1, len(time) - 1)]) if len(away) else 0.0
     return {
         "title": title,
         "shape": shape,
         "verdict": "good",
-        "settling": {"reached": True, "time": float(time[min(away[-1] + 1, len(time) - 1)]) if len(away) else 0.0,
-                     "error": 1e-5, "within": 0.01},
+        "settling": {"reached": True, "time": settled, "error": 1e-5, "within": 0.01, "flow": settled},
         "walls": rows,
         "flow": {"peak_mean_velocity": float(np.abs(mean).max()), "final_mean_velocity": float(mean[-1])},
     }
@@ -117,11 +118,10 @@ def plates_ramp(height: float = 0.8e-3, speed: float = 0.3, over: float = 50e-3,
     mean = np.array([np.trapezoid(row, y) for row in ramped(height, over, t, y)[0]]) * speed / height
     stress = VISCOSITY * speed * np.stack([lower, -upper], axis=1)
     hand = VISCOSITY * np.stack([wall, -wall], axis=1) / height
-    reach = np.stack([np.full(len(t), np.nan), np.minimum(3.6 * np.sqrt(VISCOSITY / DENSITY * t), height)], axis=1)
     return assemble(
         "Flow cell brought up to speed", "plates", ["lower", "upper"], t, keep, y, stress,
         np.stack([0 * wall, wall], axis=1), mean, np.zeros_like(t), u * speed, [0.0, over],
-        quasi_steady_stress=hand, reach=reach, flow_rate=mean * height * 25e-3,
+        quasi_steady_stress=hand, reach=_reach(t, height, [False, True]), flow_rate=mean * height * 25e-3,
         wall_force=stress * 60e-3 * 25e-3, travel=_travel(keep, u * speed),
     )  # fmt: skip
 
@@ -153,6 +153,7 @@ def sudden_start(height: float = 0.8e-3, speed: float = 0.3) -> Result:
         "Plate set in motion at once", "plates", ["lower", "upper"], t, keep, y, stress,
         np.stack([0 * wall, wall], axis=1), mean, np.zeros_like(t), u * speed, [0.0],
         quasi_steady_stress=VISCOSITY * np.stack([wall, -wall], axis=1) / height,
+        reach=_reach(t, height, [False, True]),
     )  # fmt: skip
 
 
@@ -176,7 +177,7 @@ def pipe_step(radius: float = 6e-3, drop: float = 400.0, viscosity: float = 0.3,
     return assemble(
         "Cold oil line under a pressure step", "pipe", ["bore"], t, keep, r, stress[:, None],
         np.zeros((len(t), 1)), mean, np.full_like(t, drop), u, [0.0], flow_rate=mean * np.pi * radius**2,
-        quasi_steady_stress=np.full((len(t), 1), drop * radius / 2),
+        quasi_steady_stress=np.full((len(t), 1), drop * radius / 2), reach=_reach(t, radius, [True]),
     )  # fmt: skip
 
 
@@ -199,6 +200,7 @@ def oscillating(periods: int = 20, frequency: float = 5.0, height: float = 2e-3,
     return assemble(
         "Swinging plate under a film", "plates", ["lower", "upper"], t, keep, y, stress,
         np.stack([wall, 0 * wall], axis=1), mean, np.zeros_like(t), u, [0.0],
+        reach=_reach(t, height, [True, False]),
     )  # fmt: skip
 
 
@@ -217,7 +219,58 @@ def rotating_sleeve(inner: float = 20e-3, outer: float = 22e-3, speed: float = 2
         "Sleeve spun up in water", "rotating annulus", ["inner", "outer"], t, keep, inner + y, stress,
         np.stack([0 * wall, wall], axis=1), mean, np.zeros_like(t), u * speed * outer, [0.0, over],
         quasi_steady_stress=VISCOSITY * outer * np.stack([wall, -wall], axis=1) / gap,
+        reach=_reach(t, gap, [False, True]),
     )  # fmt: skip
+
+
+def pressed_plates(height: float = 1e-3, drop: float = 20.0, until: float = 2.0) -> Result:
+    """A pressure drop between fixed plates: both walls carry the same stress (series as for Szymanski, in a slot)."""
+    half = height / 2
+    odd = 2 * np.arange(400) + 1
+    t = np.concatenate([[0.0], np.geomspace(1e-6, until, 500)])
+    keep = np.linspace(0.0, until, 120)
+    y = np.linspace(0, height, 101)
+    rate = odd**2 * np.pi**2 / 4 * VISCOSITY / DENSITY / half**2
+    scale = drop * half**2 / VISCOSITY
+    modes = (-1.0) ** (odd // 2) / odd[:, None].T ** 3 * np.cos(np.outer((y - half) / half, odd * np.pi / 2))
+    u = scale / 2 * (1 - ((y - half) / half) ** 2) - scale * 16 / np.pi**3 * np.exp(-np.outer(keep, rate)) @ modes.T
+    u[0] = 0.0
+    mean = scale / 3 * (1 - 96 / np.pi**4 * (np.exp(-np.outer(t, rate)) / odd**4).sum(axis=1))
+    stress = drop * half * (1 - 8 / np.pi**2 * (np.exp(-np.outer(t, rate)) / odd**2).sum(axis=1))
+    mean[0] = stress[0] = 0.0
+    return assemble(
+        "Slot under a pressure drop", "plates", ["lower", "upper"], t, keep, y, np.stack([stress, stress], axis=1),
+        np.zeros((len(t), 2)), mean, np.full_like(t, drop), u, [0.0], reach=_reach(t, height / 2, [True, True]),
+    )  # fmt: skip
+
+
+def duty_cycle(cycles: int = 8) -> Result:
+    """The upper wall brought up and stopped again and again (superposed ramps): many breaks, ends at rest."""
+    height, speed, over, every = 0.8e-3, 0.3, 0.1, 2.0
+    t = np.unique(np.concatenate([np.linspace(0, cycles * every, 1601)]))
+    keep = np.linspace(0, cycles * every, 121)
+    y = np.linspace(0, height, 101)
+    breaks = [k * every + part for k in range(cycles) for part in (0.0, over, 1.0, 1.0 + over)]
+    u, velocity, lower, upper, wall = (0.0,) * 5
+    for k in range(2 * cycles):
+        sign = 1 - 2 * (k % 2)
+        late, late_kept = np.maximum(t - k * 1.0, 0.0), np.maximum(keep - k * 1.0, 0.0)
+        profile, low, high = ramped(height, over, late, y)
+        u, lower, upper = u + sign * profile, lower + sign * low, upper + sign * high
+        velocity = velocity + sign * ramped(height, over, late_kept, y)[0]
+        wall = wall + sign * np.minimum(late / over, 1.0)
+    return assemble(
+        "Carriage that starts and stops", "plates", ["lower", "upper"], t, keep, y,
+        VISCOSITY * speed * np.stack([lower, -upper], axis=1), speed * np.stack([0 * wall, wall], axis=1),
+        speed * np.trapezoid(u, y) / height, np.zeros_like(t), speed * velocity, breaks,
+        reach=_reach(t, height, [False, True]),
+    )  # fmt: skip
+
+
+def _reach(t: np.ndarray, most: float, moving: list[bool]) -> np.ndarray:
+    """1 % depth of Stokes' first problem, 3.643 sqrt(nu t), from each moving wall; NaN from the others."""
+    depth = np.minimum(3.643 * np.sqrt(VISCOSITY / DENSITY * t), most)
+    return np.stack([depth if on else np.full(len(t), np.nan) for on in moving], axis=1)
 
 
 def sweep() -> Result:
@@ -244,5 +297,7 @@ MADE: dict[str, Callable[[], Result]] = {
     "pipe_step": lru_cache(pipe_step),
     "rotating_sleeve": lru_cache(rotating_sleeve),
     "oscillating": lru_cache(oscillating),
+    "pressed_plates": lru_cache(pressed_plates),
+    "duty_cycle": lru_cache(duty_cycle),
     "film_over_long_run": lru_cache(film_over_long_run),
 }
