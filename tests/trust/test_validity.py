@@ -184,7 +184,7 @@ def test_a_turning_outer_cylinder_is_stable_but_not_when_it_stops():
 
 
 def test_stokes_layer():
-    # U sqrt(2 nu/omega)/nu: turbulence from 500 (Vittori & Verzicco 1998), disturbed from 85 (Blondeaux & Vittori 2021).
+    # U sqrt(2 nu/omega)/nu: turbulence from 500 (Vittori & Verzicco 1998), disturbed at 85 (Blondeaux & Vittori 2021).
     period = 0.02
     layer = np.sqrt(2e-6 * period / (2 * np.pi))
     for reynolds, status in ((80.0, "pass"), (90.0, "caution"), (490.0, "caution"), (510.0, "fail")):
