@@ -26,7 +26,7 @@ from transient.result.history import History
 
 
 @dataclass(frozen=True, eq=False)
-class Answer:
+class Histories:
     """Histories that belong together: the flow, its deviation from what it ends in (or None), and one period of
     that regime where it is periodic."""
 
@@ -43,8 +43,8 @@ class Ladder:
     """``best`` the extrapolation of the two finest levels, ``next_best`` what it is compared with where there is
     no series; cells and steps of the finest level, solves of all."""
 
-    best: Answer
-    next_best: Answer
+    best: Histories
+    next_best: Histories
     inputs: Inputs
     cells: int
     steps: int
@@ -102,7 +102,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
         elif ahead.kind == "steady":
             answers.append(_steady_answer(ahead, trace, main, 2**number))
         else:
-            answers.append(Answer(main, None, None, None, 0.0, np.zeros(2)))
+            answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
     best = _mix(answers[-2], answers[-1])
     other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
@@ -123,7 +123,7 @@ def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: flo
         run.resolution = resolution
 
 
-def _mix(coarse: Answer, fine: Answer) -> Answer:
+def _mix(coarse: Histories, fine: Histories) -> Histories:
     def pair(name: str) -> History | None:
         low, high = getattr(coarse, name), getattr(fine, name)
         return None if low is None else extrapolate(low, high)
@@ -133,7 +133,7 @@ def _mix(coarse: Answer, fine: Answer) -> Answer:
     return replace(fine, flow=flow, deviation=pair("deviation"), orbit=pair("orbit"))
 
 
-def _steady_answer(ahead: Outlook, trace: Trace, main: History, every: int) -> Answer:
+def _steady_answer(ahead: Outlook, trace: Trace, main: History, every: int) -> Histories:
     """The deviation from a steady end: the flow minus a state that is exact on this grid."""
     assert ahead.drives is not None
     system = trace.system
@@ -147,10 +147,10 @@ def _steady_answer(ahead: Outlook, trace: Trace, main: History, every: int) -> A
         main, stress=main.stress - stress, mean=main.mean - mean, profile=main.profile - shown,
         speed=main.speed - values[:2], gradient=main.gradient - values[PRESSURE],
     )  # fmt: skip
-    return Answer(main, deviation, None, shown, mean, stress)
+    return Histories(main, deviation, None, shown, mean, stress)
 
 
-def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: Trace, main: History) -> Answer:
+def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: Trace, main: History) -> Histories:
     """The deviation from a periodic end, and one period of that end.
 
     One period out of rest gives the periodic state (the rest is the gap's own modes); the difference to it is then
@@ -164,7 +164,7 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     orbit = around.level(number, State(state, rates_of(system, state, around.inputs)))
     begin = trace.profiles[0, 0] - state
     gone = away.level(number, State(begin, rates_of(system, begin, away.inputs)))
-    return Answer(
+    return Histories(
         main,
         history(problem, away.inputs, gone, None, every),
         history(problem, around.inputs, orbit, None, every),

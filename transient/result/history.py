@@ -8,6 +8,9 @@ import numpy as np
 
 from transient.result.curve import Curve
 
+STENCIL = 5
+LOOK = np.linspace(0.0, 1.0, 33)  # where between the neighbours of the largest node its polynomial is looked at
+
 
 @dataclass(frozen=True, eq=False)
 class History:
@@ -67,7 +70,7 @@ class History:
 
     def largest_curve(self) -> Curve:
         """The largest |profile| over the gap as a curve over the kept profiles."""
-        value, rate = _largest(self.position, self.profile, self.profile_rate)
+        value, rate = largest(self.position, self.profile, self.profile_rate)
         return Curve(self.time[self.profile_row], value, rate, self.profile_step())
 
     def profiles_at(self, time: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -88,27 +91,38 @@ class History:
         return between(self.profile, self.profile_rate), between(self.travel, self.profile)
 
 
-def _largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Largest magnitude over the gap of each profile (k,), between nodes too, and how it changes (k,)."""
+def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Largest magnitude over the gap of each profile (k,), between nodes too, and how it changes (k,).
+
+    Around the largest node the profile is the polynomial through it and its four neighbours.
+    """
     rows = np.arange(len(profile))
-    magnitude = np.abs(profile)
-    at = magnitude.argmax(axis=1)
-    value = magnitude[rows, at]
-    change = np.sign(profile[rows, at]) * rate[rows, at]
-    inner = np.clip(at, 1, max(len(position) - 2, 1))
-    if len(position) < 3:
-        return value, change
-    x0, x1, x2 = position[inner - 1], position[inner], position[inner + 1]
-    sign = np.sign(profile[rows, inner])
-    y0, y1, y2 = (sign * profile[rows, inner + k] for k in (-1, 0, 1))
-    # vertex of the parabola through the largest node and its neighbours
-    left, right = (y1 - y0) / (x1 - x0), (y2 - y1) / (x2 - x1)
-    bend = (right - left) / (x2 - x0)
+    at = np.abs(profile).argmax(axis=1)
+    sign = np.where(profile[rows, at] < 0.0, -1.0, 1.0)
+    nodes = len(position)
+    if nodes < STENCIL:
+        return np.abs(profile[rows, at]), sign * rate[rows, at]
+    window = np.clip(at - STENCIL // 2, 0, nodes - STENCIL)[:, None] + np.arange(STENCIL)
+    x = position[window] - position[at][:, None]
+    low, high = position[np.maximum(at - 1, 0)] - position[at], position[np.minimum(at + 1, nodes - 1)] - position[at]
+    where = low[:, None] + (high - low)[:, None] * LOOK
+    basis = _lagrange(x, where)
+    height = sign[:, None] * np.einsum("kgq,kq->kg", basis, profile[rows[:, None], window])
+    best = height.argmax(axis=1)
+    inner = np.clip(best, 1, len(LOOK) - 2)
+    before, middle, after = (height[rows, inner + k] for k in (-1, 0, 1))
+    bend = before - 2.0 * middle + after
     with np.errstate(all="ignore"):
-        vertex = 0.5 * (x0 + x1) - 0.5 * left / bend
-        top = y0 + (vertex - x0) * (left + bend * (vertex - x1))
-        better = (at == inner) & (bend < 0) & (vertex > x0) & (vertex < x2) & (top > value)
-        share = (vertex - x1) / np.where(vertex > x1, x2 - x1, x0 - x1)
-        side = np.where(vertex > x1, 1, -1)
-        mixed = sign * (rate[rows, inner] * (1 - share) + rate[rows, inner + side] * share)
-    return np.where(better, top, value), np.where(better, mixed, change)
+        top = np.where((best == inner) & (bend < 0), middle - (after - before) ** 2 / (8.0 * bend), height[rows, best])
+    change = sign * np.einsum("kq,kq->k", basis[rows, best], rate[rows[:, None], window])
+    return np.maximum(top, np.abs(profile[rows, at])), change
+
+
+def _lagrange(nodes: np.ndarray, x: np.ndarray) -> np.ndarray:
+    """Values (k, g, q) at ``x`` (k, g) of the Lagrange polynomials on ``nodes`` (k, q)."""
+    out = np.ones((*x.shape, nodes.shape[1]))
+    for i in range(nodes.shape[1]):
+        for j in range(nodes.shape[1]):
+            if i != j:
+                out[..., i] *= (x - nodes[:, j, None]) / (nodes[:, i] - nodes[:, j])[:, None]
+    return out

@@ -1,0 +1,87 @@
+"""A ladder's answer gathered for the headline numbers: regime, walls, infinite stresses, free motion."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from transient.gap.problem import PRESSURE, Inputs, Problem
+from transient.march.levels import Histories, Ladder
+from transient.march.regime import Outlook
+from transient.result.history import History
+from transient.result.run import Errors, Regime, Run, WallFacts
+
+
+def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> Run:
+    """Everything that headline numbers are made from."""
+    best = ladder.best
+    unbounded, when = infinite_stress(problem, ladder.inputs, ahead.until)
+    return Run(
+        best.flow,
+        _regime(ahead, best),
+        errors,
+        tuple(
+            WallFacts(wall.name, end, wall.area, wall.radius, wall.kind == "shear_free")
+            for end, wall in enumerate(problem.walls)
+            if wall.kind != "axis"
+        ),
+        problem.rotating,
+        problem.count,
+        problem.section,
+        problem.settle_within,
+        problem.viscosity,
+        unbounded,
+        when,
+        _free_motion(problem, ladder.inputs, best.flow),
+    )
+
+
+def _regime(ahead: Outlook, best: Histories) -> Regime:
+    if ahead.kind == "steady":
+        assert best.steady_velocity is not None
+        largest = float(np.abs(best.steady_velocity).max())
+        return Regime("steady", None, best.deviation, largest, abs(best.steady_mean), np.abs(best.steady_stress))
+    if ahead.kind == "periodic":
+        assert best.orbit is not None
+        orbit = best.orbit
+        stress = np.array(
+            [
+                np.inf if np.isnan(orbit.stress[:, end]).any() else abs(orbit.stress_curve(end).magnitude()[0])
+                for end in (0, 1)
+            ]
+        )
+        velocity = orbit.largest_curve().extreme(1.0)[0]
+        mean = abs(orbit.mean_curve().magnitude()[0])
+        return Regime("periodic", ahead.period, best.deviation, velocity, mean, stress)
+    return Regime("none", None, None, 0.0, 0.0, np.zeros(2))
+
+
+def infinite_stress(problem: Problem, inputs: Inputs, until: float) -> tuple[np.ndarray, np.ndarray]:
+    """(coefficient K of |stress| ~ K / sqrt(t - t_jump), its time) per wall (2,): that of the largest jump, 0 without.
+
+    K = sqrt(density viscosity / pi) x jump of the surface speed (Stokes 1851; from memory): so soon after a jump
+    every gap is a half space.
+    """
+    factor = np.sqrt(problem.density * problem.viscosity / np.pi)
+    lever = (problem.inner, problem.outer) if problem.rotating else (1.0, 1.0)
+    coefficient, when = np.zeros(2), np.zeros(2)
+    for end, wall in enumerate(problem.walls):
+        if wall.kind != "moving" or wall.slip_length > 0.0:
+            continue
+        jump = np.abs(inputs.row(end).jumps(0)) * lever[end]
+        largest = int(jump.argmax())
+        coefficient[end] = factor * jump[largest]
+        when[end] = inputs.starts[largest] if jump[largest] > 0.0 else 0.0
+    return coefficient, when
+
+
+def _free_motion(problem: Problem, inputs: Inputs, flow: History) -> np.ndarray:
+    """What the pressure alone would have added to the velocity since t = 0, at the kept profiles (k,)."""
+    if problem.rotating:
+        return np.zeros(len(flow.profile_row))
+    row = inputs.row(PRESSURE)
+    before = float(inputs.before[PRESSURE])
+    rate = (flow.gradient - before) / problem.density
+    change = row.at(flow.piece, flow.offset, 1) / problem.density
+    h = flow.step
+    part = 0.5 * h * (rate[1:] + rate[:-1]) + h * h / 12.0 * (change[:-1] - change[1:])
+    return np.concatenate([[0.0], np.cumsum(part)])[flow.profile_row]

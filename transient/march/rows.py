@@ -1,0 +1,161 @@
+"""Which rows a result keeps: dense enough that straight lines between them are within the accuracy."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs
+from transient.result.curve import Curve
+from transient.result.history import History
+
+STRAIGHT = 0.35  # share of the accuracy that a straight line may be off
+LEADING = 0.6  # share of the local stress's accuracy that rows after an infinite stress must have
+MOST_ROWS = 1_000_000
+MOST_PARTS = 4096
+
+
+@dataclass(frozen=True, eq=False)
+class Rows:
+    """Histories as stored: ``time`` (n,) s rising; ``stress``, ``speed`` (n, 2); ``mean``, ``gradient`` (n,)."""
+
+    time: np.ndarray
+    stress: np.ndarray
+    speed: np.ndarray
+    mean: np.ndarray
+    gradient: np.ndarray
+
+
+def stored(history: History, inputs: Inputs, accuracy: float, stress_error: np.ndarray) -> Rows:
+    """Rows of ``history``, filled in where a straight line would be off, without those that are not needed.
+
+    A finite jump of an input is two rows at neighbouring times, an infinite stress one row of NaN.  Rows so soon
+    after an infinite stress that their error (``stress_error`` (n, 2)) exceeds the local accuracy are left out.
+    """
+    keep = _trusted(history, accuracy, stress_error)
+    pairs = np.flatnonzero(keep)
+    low, high = pairs[:-1], pairs[1:]
+    same = history.piece[low] == history.piece[high]
+    low, high = low[same], high[same]
+    parts = _parts(history, inputs, accuracy, low, high)
+    inner = np.repeat(np.arange(len(low)), parts - 1)
+    number = np.arange(len(inner)) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
+    share = number / parts[inner]
+    piece = history.piece[low][inner]
+    step = history.offset[high] - history.offset[low]
+    offset = history.offset[low][inner] + share * step[inner]
+
+    def fill(value: np.ndarray, rate: np.ndarray) -> np.ndarray:
+        joined = Curve(np.zeros(2 * len(low)), _weave(value, low, high), _weave(rate, low, high), _gaps(step))
+        return np.concatenate([value[pairs], joined.at(2 * inner, share)])
+
+    stress = np.stack([fill(history.stress[:, end], history.stress_rate[:, end]) for end in (0, 1)], axis=1)
+    mean = fill(history.mean, history.mean_rate)
+    pieces = np.concatenate([history.piece[pairs], piece])
+    offsets = np.concatenate([history.offset[pairs], offset])
+    order = np.lexsort((offsets, pieces))
+    pieces, offsets, stress, mean = pieces[order], offsets[order], stress[order], mean[order]
+    speed = np.stack([inputs.row(end).at(pieces, offsets) for end in (LOWER, UPPER)], axis=1)
+    gradient = inputs.row(PRESSURE).at(pieces, offsets)
+    time = inputs.starts[pieces] + offsets
+    return _part_jumps(Rows(time, stress, speed, mean, gradient), pieces)
+
+
+def _weave(value: np.ndarray, low: np.ndarray, high: np.ndarray) -> np.ndarray:
+    """Both ends of each interval one after the other."""
+    return np.stack([value[low], value[high]], axis=1).ravel()
+
+
+def _gaps(step: np.ndarray) -> np.ndarray:
+    return np.stack([step, np.zeros_like(step)], axis=1).ravel()[:-1]
+
+
+def _trusted(history: History, accuracy: float, error: np.ndarray) -> np.ndarray:
+    """Rows to keep (n,): all but those that directly follow an infinite stress and are not yet accurate."""
+    keep = np.ones(len(history.time), bool)
+    for end in (0, 1):
+        bad = error[:, end] > LEADING * accuracy * np.abs(history.stress[:, end])
+        for start in np.flatnonzero(np.isnan(history.stress[:, end])):
+            i = start + 1
+            while i < len(bad) - 1 and history.piece[i] == history.piece[start] and bad[i]:
+                if i + 1 < len(bad) and history.piece[i + 1] != history.piece[start]:
+                    break  # the row at the next break stays
+                keep[i] = False
+                i += 1
+    return keep
+
+
+def _parts(history: History, inputs: Inputs, accuracy: float, low: np.ndarray, high: np.ndarray) -> np.ndarray:
+    """Into how many parts each kept interval is cut (m,)."""
+    step = history.offset[high] - history.offset[low]
+    need = np.zeros(len(low))
+    columns = [
+        *((history.stress[:, end], history.stress_rate[:, end]) for end in (0, 1)),
+        (history.mean, history.mean_rate),
+    ]
+    for value, rate in columns:
+        size = np.nanmax(np.abs(value), initial=0.0)
+        scale = np.full(len(low), size)
+        if np.isnan(value).any():
+            scale = np.maximum(np.abs(value[low]), np.abs(value[high]))
+            scale = np.where(np.isfinite(scale), scale, np.inf)
+            floor = np.nanmedian(np.abs(value)) * 1e-2
+            scale = np.maximum(scale, floor)
+        rise = value[high] - value[low]
+        first, last = rate[low] * step, rate[high] * step
+        start = 2.0 * (3.0 * rise - 2.0 * first - last)
+        end = start + 6.0 * (first + last - 2.0 * rise)
+        with np.errstate(all="ignore"):
+            bend = np.maximum(np.abs(start), np.abs(end)) / 8.0 / (STRAIGHT * accuracy * scale)
+        need = np.maximum(need, np.where(np.isfinite(bend), bend, 0.0))
+    for index in (LOWER, UPPER, PRESSURE):
+        row = inputs.row(index)
+        size = np.abs(row.at(history.piece, history.offset)).max(initial=0.0)
+        if size == 0.0:
+            continue
+        for share in (0.0, 0.5, 1.0):
+            bend = np.abs(row.at(history.piece[low], history.offset[low] + share * step, 2)) * step**2 / 8.0
+            need = np.maximum(need, bend / (STRAIGHT * accuracy * size))
+    parts = np.clip(np.ceil(np.sqrt(need)), 1, MOST_PARTS)
+    if parts.sum() > MOST_ROWS:
+        parts = np.maximum(np.floor(parts * (MOST_ROWS / parts.sum())), 1)
+    return parts.astype(int)
+
+
+def _part_jumps(rows: Rows, piece: np.ndarray) -> Rows:
+    """Make times rise: breaks without a jump become one row, the others two at neighbouring times."""
+    time = rows.time.copy()
+    enters = np.flatnonzero(piece[1:] != piece[:-1])  # last row of its piece
+    values = np.concatenate(
+        [rows.stress, rows.speed, rows.gradient[:, None]], axis=1
+    )
+    left, right = values[enters], values[enters + 1]
+    with np.errstate(invalid="ignore"):
+        size = np.nanmax(np.abs(values), axis=0, initial=0.0)
+        jumps = (np.abs(right - left) > 1e-9 * size).any(axis=1) | (np.isnan(right) & ~np.isnan(left)).any(axis=1)
+    time[enters] = time[enters + 1]
+    time[enters[jumps]] = np.nextafter(time[enters[jumps] + 1], -np.inf)
+    keep = np.ones(len(time), bool)
+    keep[enters[~jumps]] = False
+    index = np.flatnonzero(keep)
+    highest = np.maximum.accumulate(time[index])
+    rising = np.append(True, time[index][1:] > highest[:-1])
+    # a row lost to the resolution of the time axis must not be the one that says a stress was infinite
+    index = index[rising | np.isnan(rows.stress[index]).any(axis=1)]
+    index = index[np.append(True, np.diff(time[index]) > 0)]
+    return Rows(time[index], rows.stress[index], rows.speed[index], rows.mean[index], rows.gradient[index])
+
+
+def profile_times(history: History, count: int) -> np.ndarray:
+    """``count`` instants (at most) at which the profile has changed by equal amounts, ends included."""
+    kept = history.time[history.profile_row]
+    change = np.abs(np.diff(history.profile, axis=0)).max(axis=1)
+    moved = np.concatenate([[0.0], np.cumsum(change)])
+    span = kept[-1] - kept[0]
+    measure = moved / moved[-1] if moved[-1] > 0 else np.zeros_like(moved)
+    measure = 0.85 * measure + 0.15 * (kept - kept[0]) / span
+    rising = np.append(True, np.diff(measure) > 0)
+    wanted = np.interp(np.linspace(0.0, measure[-1], count), measure[rising], kept[rising])
+    wanted[0], wanted[-1] = kept[0], kept[-1]
+    return np.unique(wanted)

@@ -1,0 +1,107 @@
+"""Has the accuracy been met?  Each headline number's error beside what the case allows for it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from transient.result.run import Run
+
+# A stress that is this share of the other wall's is judged beside that one: what no motion reaches in the run has no
+# relative accuracy of its own.
+HARDLY = 1e-6
+HISTORY_SHARE = 0.6  # of the accuracy, for stored rows: straight lines between them use the rest
+FINAL_SHARE = 0.01  # a final stress is relative to at least this share of the wall's peak
+GRAZE = 8.0  # a settling error so much larger than slope and error explain is the band's, not the solver's
+
+
+@dataclass(frozen=True)
+class Demand:
+    """One number: its stated ``error`` and what is ``allowed``; ``grazes``: finer steps would not help."""
+
+    name: str
+    error: float
+    allowed: float
+    grazes: bool = False
+
+    @property
+    def ratio(self) -> float:
+        """Error over allowance (0/0 counts as met)."""
+        return 0.0 if self.error == 0.0 else self.error / self.allowed if self.allowed > 0.0 else np.inf
+
+
+def demands(run: Run, summary: dict[str, Any], accuracy: float, steady_stress: np.ndarray | None) -> list[Demand]:
+    """Every headline number that carries an error, and the stored histories."""
+    return [
+        *_stresses(run, summary, accuracy, steady_stress),
+        *_means(run, accuracy),
+        *_settlings(run, summary["settling"], accuracy),
+    ]
+
+
+def unmet(wanted: list[Demand]) -> list[Demand]:
+    """Those that miss and could be met by a finer solve, worst first."""
+    return sorted((d for d in wanted if d.ratio > 1.0 and not d.grazes), key=lambda d: -d.ratio)
+
+
+def _stresses(
+    run: Run, summary: dict[str, Any], accuracy: float, steady_stress: np.ndarray | None
+) -> Iterator[Demand]:
+    peaks = {wall.name: _peak(run, wall.end) for wall in run.walls}
+    largest = max(peaks.values(), default=0.0)
+    for wall in run.walls:
+        if wall.shear_free:
+            continue
+        said = summary["walls"][wall.name]
+        peak = max(peaks[wall.name], HARDLY * largest)
+        if not said["unbounded"]:
+            yield Demand(f"{wall.name} peak stress", said["peak_stress_error"] or 0.0, accuracy * peak)
+            worst = float(run.errors.stress[:, wall.end].max(initial=0.0))
+            yield Demand(f"{wall.name} stress history", worst, HISTORY_SHARE * accuracy * peak)
+        final = abs(said["final_stress"])
+        calm = steady_stress is not None and abs(steady_stress[wall.end]) > 1e-6 * peak
+        size = max(final, FINAL_SHARE * peak) if calm else max(final, peak)
+        yield Demand(f"{wall.name} final stress", said["final_stress_error"], accuracy * max(size, HARDLY * largest))
+
+
+def _peak(run: Run, end: int) -> float:
+    """Largest |stress| of the rows that are finite and, after an infinite stress, no longer near it."""
+    stress = np.abs(run.history.stress[:, end])
+    if run.unbounded[end] == 0.0:
+        return float(np.nanmax(stress, initial=0.0))
+    late = run.history.time > run.unbounded_time[end]
+    return float(np.nanmedian(stress[late])) if late.any() else 0.0
+
+
+def _means(run: Run, accuracy: float) -> Iterator[Demand]:
+    largest = float(np.abs(run.history.mean).max(initial=0.0))
+    worst = float(run.errors.mean.max(initial=0.0))
+    yield Demand("mean velocity history", worst, HISTORY_SHARE * accuracy * largest)
+    yield Demand("peak mean velocity", run.errors.mean_peak, accuracy * largest)
+
+
+def _settlings(run: Run, said: dict[str, Any], accuracy: float) -> Iterator[Demand]:
+    spread = said["errors"]
+    pairs = [("settling time", said["velocity"], spread["velocity"]), ("flow settling", said["flow"], spread["flow"])]
+    pairs += [(f"{name} stress settling", said["stress"][name], spread["stress"][name]) for name in said["stress"]]
+    for name, time, error in pairs:
+        if time is None or error is None:
+            continue
+        yield Demand(name, error, accuracy * time, _grazes(run, name, time, error, said["within"]))
+
+
+def _grazes(run: Run, name: str, time: float, error: float, within: float) -> bool:
+    """Whether the deviation runs along the settling band, so that any error moves the time far."""
+    away = run.regime.deviation
+    if away is None or error <= 0.0 or "stress" in name:
+        return False
+    curve = away.largest_curve() if name == "settling time" else away.mean_curve()
+    errors = run.errors.level_profile if name == "settling time" else run.errors.level_mean
+    i = int(np.clip(np.searchsorted(curve.time, time), 1, len(curve.time) - 1))
+    drop = abs(abs(curve.value[i]) - abs(curve.value[i - 1]))
+    steep = drop / max(curve.time[i] - curve.time[i - 1], 1e-300)
+    local = float(errors[max(i - 2, 0) : i + 2].max(initial=0.0))
+    return bool(error > GRAZE * local / steep) if steep > 0.0 else True
