@@ -11,6 +11,10 @@ if TYPE_CHECKING:
     from transient.result.result import Result
 
 
+# Below this share of the wall's peak a stress counts as zero.
+ZERO = 1e-6
+
+
 def plain(result: Result) -> str:
     """Heading, the headline numbers, and the sizes of the dimensions."""
     lines = [heading(result), *(f"  {label}: {text}" for label, text in rows(result))]
@@ -67,7 +71,9 @@ def _wall(part: dict[str, Any], speed_unit: str) -> str:
     if part.get("peak_time") is not None:
         peak += f" at {quantity(part['peak_time'], 's')}"
     if part.get("final_stress") is not None:
-        peak += f", final {quantity(part['final_stress'], 'Pa')}"
+        final = part["final_stress"]
+        # What is left of the decay in a run that ends at rest is zero to everyone.
+        peak += f", final {quantity(0.0 if abs(final) < ZERO * abs(part.get('peak_stress') or 0.0) else final, 'Pa')}"
     if part.get("final_speed") is not None:
         peak += f" at {quantity(part['final_speed'], speed_unit)}"
     return peak

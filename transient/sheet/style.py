@@ -21,6 +21,7 @@ WIDTH, PAGE = 6.5, 9.4
 # Inks told apart by lightness as well as by hue, each with a stroke of its own.
 INK = ("#16406b", "#c4601d", "#2b8a78", "#7b3f80")
 STROKE: tuple[Any, ...] = ("-", (0, (5, 1.8)), (0, (7, 1.6, 1.4, 1.6)), (0, (1.4, 1.4)))
+MINUS = "\N{MINUS SIGN}"
 SOFT, FAINT, WALL = "#5c6670", "#c9ced3", "#8d969e"
 
 _SETTINGS = {
@@ -79,7 +80,7 @@ def rows(figure: Figure, heights: list[float], top: float, bottom: float = 0.48)
 
 def told(value: float, unit: str, digits: int = 4) -> str:
     """A quantity as figures print it: with the minus sign of the axes."""
-    return quantity(value, unit, digits).replace("-", "\N{MINUS SIGN}")
+    return quantity(value, unit, digits).replace("-", MINUS)
 
 
 def name_axis(axes: Axes, words: str, unit: str) -> None:
