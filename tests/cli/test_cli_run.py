@@ -165,6 +165,24 @@ def test_a_march_that_stops_says_why_and_writes_nothing(call, tmp_path, monkeypa
     assert list(tmp_path.iterdir()) == []
 
 
+def test_an_error_of_the_program_itself_spares_the_other_cases(call, tmp_path, monkeypatch):
+    import transient.answer
+
+    solve = transient.answer.run
+
+    def broken_once(case: object) -> object:
+        monkeypatch.setattr(transient.answer, "run", solve)
+        raise ZeroDivisionError("planted")
+
+    monkeypatch.delenv("TRANSIENT_DEBUG", raising=False)
+    monkeypatch.setattr(transient.answer, "run", broken_once)
+    said = call("run", CELL, CASES / "cold_oil_line.toml", "--quiet", "--out", tmp_path)
+    assert said.status == 1
+    assert said.err.startswith(f"{CELL}: transient met an error of its own (ZeroDivisionError: planted)")
+    assert said.err.count("\n") == 1
+    assert [path.name for path in tmp_path.iterdir()] == ["cold_oil_line.h5"]
+
+
 @pytest.mark.parametrize("status", [1, 3])
 def test_the_status_is_the_highest_of_all_cases(call, tmp_path, monkeypatch, status):
     import transient.answer

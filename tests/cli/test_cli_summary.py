@@ -66,6 +66,7 @@ SUMMARY = {
         "note": "the hand formula misses the peak on the upper wall by 71.6 %",
     },
     "checks": [PASSED] * 8,
+    "accuracy": {"asked": 0.001, "met": True, "worst": None, "reached": 0.001},
     "numerics": {"points": 128, "steps": 240, "seconds": 0.011},
 }
 PRINTED = """\
@@ -87,15 +88,15 @@ By hand    0.3757 Pa on lower and -0.3757 Pa on upper at most, as if the flow
            were steady at every instant. Not enough here: the hand formula
            misses the peak on the upper wall by 71.6 %
 
-Trust      good (8 of 8 checks passed)
-File       outputs/flow_cell.h5   (128 points, 240 steps, 12.3 ms)"""
+Trust      good (8 of 8 checks passed); every number within the 0.1 % asked for
+File       outputs/flow_cell.h5   (128 points, 240 steps, 11 ms)"""
 
 
 def printed(speed_unit: str = "m/s", **changes: object) -> str:
     """The summary with some of its parts replaced, as printed."""
     summary = {**copy.deepcopy(SUMMARY), **changes}
     variables = {"wall_speed": Variable(("time", "wall"), np.zeros((1, 2)), speed_unit, "speed of the wall")}
-    return describe(Result(variables, summary, ""), Path("outputs/flow_cell.h5"), 0.0123)
+    return describe(Result(variables, summary, ""), Path("outputs/flow_cell.h5"))
 
 
 def test_printed_to_the_letter():
@@ -146,6 +147,11 @@ def test_cautions_and_failures_are_sentences(verdict, status, words):
     text = " ".join(printed(verdict=verdict, checks=checks).split())
     for word in words:
         assert word in text
+
+
+def test_an_accuracy_that_was_not_reached_is_said():
+    text = " ".join(printed(accuracy={"asked": 1e-4, "met": False, "worst": "settling", "reached": 3.2e-4}).split())
+    assert "accuracy asked 0.01 %, reached 0.032 % (settling)" in text
 
 
 def test_a_turning_wall_reads_in_turns_per_minute_and_torque():

@@ -5,7 +5,6 @@ Rooms are imported inside the commands, so that each command pays only for what 
 
 from __future__ import annotations
 
-import os
 import signal
 
 import typer
@@ -17,7 +16,7 @@ from transient.cli.schema import schema
 from transient.cli.table import table
 from transient.cli.template import template
 from transient.cli.verify import verify
-from transient.cli.words import FAILED, INTERRUPTED, REFUSED, Stop, Version, note, one_line
+from transient.cli.words import FAILED, INTERRUPTED, REFUSED, Stop, Version, note, one_line, own_error
 
 COMMANDS = (run, check, table, figure, template, schema, verify)
 
@@ -55,14 +54,7 @@ def main(arguments: list[str] | None = None) -> int:
         if hasattr(error, "format_message"):
             note(_usage(error.format_message()))
             return REFUSED
-        if os.environ.get("TRANSIENT_DEBUG"):
-            raise
-        note(
-            one_line(
-                f"transient met an error of its own ({type(error).__name__}: {error}); please report it "
-                "together with the case file (TRANSIENT_DEBUG=1 shows where it happened)"
-            )
-        )
+        note(own_error(error))
         return FAILED
 
 

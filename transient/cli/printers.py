@@ -24,7 +24,7 @@ class Printer:
         """A case is under way."""
         self.bar.begin(case)
 
-    def solved(self, result: Result, path: Path, seconds: float) -> None:
+    def solved(self, result: Result, path: Path) -> None:
         """A case was solved and written to ``path``."""
         self.bar.end()
 
@@ -42,10 +42,10 @@ class Quiet(Printer):
 class Json(Printer):
     """One JSON object per case on standard output."""
 
-    def solved(self, result: Result, path: Path, seconds: float) -> None:
+    def solved(self, result: Result, path: Path) -> None:
         from transient.result.store import to_json
 
-        super().solved(result, path, seconds)
+        super().solved(result, path)
         self._print(to_json(result.summary))
 
     def stopped(self, case: str, outcome: str, message: str) -> None:
@@ -73,12 +73,12 @@ class Words(Printer):
         super().__init__(bar)
         self.printed = False
 
-    def solved(self, result: Result, path: Path, seconds: float) -> None:
+    def solved(self, result: Result, path: Path) -> None:
         from transient.cli.summary import describe
 
-        super().solved(result, path, seconds)
+        super().solved(result, path)
         with self.bar.aside():
             if self.printed:
                 say("")
-            say(describe(result, path, seconds))
+            say(describe(result, path))
         self.printed = True

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import time
 from pathlib import Path
 from typing import Annotated
 
@@ -11,7 +10,7 @@ import typer
 from transient.cli.outputs import result_paths
 from transient.cli.printers import Json, Printer, Quiet, Words
 from transient.cli.progress import announce_first_run, progress
-from transient.cli.words import FAILED, REFUSED, Overrides, Stop, Version, changes, one_line
+from transient.cli.words import FAILED, REFUSED, Overrides, Stop, Version, changes, one_line, own_error
 
 
 def run(
@@ -49,7 +48,6 @@ def _one(case: str, path: Path, wanted: list[tuple[str, str]], printer: Printer)
     from transient.result.result import ResultError
     from transient.result.store import write
 
-    began = time.perf_counter()
     printer.begun(case)
     try:
         result = run(read_case(case, wanted))
@@ -64,5 +62,8 @@ def _one(case: str, path: Path, wanted: list[tuple[str, str]], printer: Printer)
     except SolveError as error:
         printer.stopped(case, "failed", f"{case}: {one_line(str(error))}")
         return FAILED
-    printer.solved(result, path, time.perf_counter() - began)
+    except Exception as error:  # the other cases of this call shall not suffer from it
+        printer.stopped(case, "failed", f"{case}: {own_error(error)}")
+        return FAILED
+    printer.solved(result, path)
     return exit_status(result)

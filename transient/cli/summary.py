@@ -22,7 +22,7 @@ VERDICTS = {
 }
 
 
-def describe(result: Result, path: Path, seconds: float) -> str:
+def describe(result: Result, path: Path) -> str:
     """The printed summary of a finished run, lines of at most 80 columns."""
     summary = result.summary
     speed_unit = result.variables["wall_speed"].units if "wall_speed" in result.variables else "m/s"
@@ -31,7 +31,7 @@ def describe(result: Result, path: Path, seconds: float) -> str:
         _settling(summary["settling"]),
         [*_walls(summary["walls"], speed_unit), *_remarks(summary)],
         [*_flow(summary), *_hand_formula(summary)],
-        [*_trust(summary), *_entry("File", f"{path}   ({_effort(summary, seconds)})")],
+        [*_trust(summary), *_entry("File", f"{path}   ({_effort(summary)})")],
     ]
     return "\n\n".join("\n".join(block) for block in blocks if block)
 
@@ -156,12 +156,8 @@ def _hand_formula(summary: dict[str, Any]) -> list[str]:
 def _trust(summary: dict[str, Any]) -> list[str]:
     checks = summary.get("checks") or []
     passed = sum(check["status"] == "pass" for check in checks)
-    numerics = summary.get("numerics") or {}
     text = f"{VERDICTS.get(summary['verdict'], summary['verdict'])} ({passed} of {len(checks)} checks passed)"
-    if numerics.get("accuracy") is not None:
-        text += f"; accuracy asked {percent(numerics['accuracy'])}"
-        if numerics.get("reached") is not None:
-            text += f", reached {percent(numerics['reached'])}"
+    text += _accuracy(summary.get("accuracy") or {})
     lines = _entry("Trust", text)
     for check in sorted(checks, key=lambda check: check["status"] != "fail"):
         if check["status"] != "pass":
@@ -170,9 +166,14 @@ def _trust(summary: dict[str, Any]) -> list[str]:
     return lines
 
 
-def _effort(summary: dict[str, Any], seconds: float) -> str:
-    numerics = summary.get("numerics") or {}
-    took = plain(seconds, "s")
-    if numerics.get("points") and numerics.get("steps"):
-        return f"{numerics['points']} points, {numerics['steps']} steps, {took}"
-    return took
+def _accuracy(part: dict[str, Any]) -> str:
+    if part.get("asked") is None:
+        return ""
+    if part.get("met"):
+        return f"; every number within the {percent(part['asked'])} asked for"
+    return f"; accuracy asked {percent(part['asked'])}, reached {percent(part['reached'])} ({part['worst']})"
+
+
+def _effort(summary: dict[str, Any]) -> str:
+    part = summary["numerics"]
+    return f"{part['points']} points, {part['steps']} steps, {plain(part['seconds'], 's')}"

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -56,6 +57,16 @@ def _spelled(text: str, encoding: str) -> str:
 def one_line(text: str) -> str:
     """A message without line breaks and runs of blanks."""
     return " ".join(text.split())
+
+
+def own_error(error: Exception) -> str:
+    """What is said about an error that is the program's own fault; with TRANSIENT_DEBUG set it is raised instead."""
+    if os.environ.get("TRANSIENT_DEBUG"):
+        raise error
+    return one_line(
+        f"transient met an error of its own ({type(error).__name__}: {error}); please report it together with the "
+        "case file (TRANSIENT_DEBUG=1 shows where it happened)"
+    )
 
 
 def program() -> str:
