@@ -177,27 +177,27 @@ class Closure:
     resolution: float
 
 
-@dataclass(frozen=True, eq=False)
-class _Kept:
-    """Profiles that can be judged: their rows (k,), profiles and rates (k, N), on distinct nodes ``position`` (N,)."""
+def judged(problem: Problem, history: History) -> History:
+    """The rows and profiles that balances are drawn up from.
 
-    row: np.ndarray
-    profile: np.ndarray
-    rate: np.ndarray
-    position: np.ndarray
-
-
-def _kept(problem: Problem, history: History) -> _Kept:
+    Rows so soon after an infinite stress that the nodes cannot follow its layer are left out: what went in until then
+    follows from the law ~ 1/sqrt(time) of the rows after them.  Nodes closer than round-off are left out too.
+    """
     nodes = distinct(history.position)
     position = history.position[nodes]
-    row, at = np.unique(history.profile_row, return_index=True)
     wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy)
-    infinite = after_infinite(history.piece, history.offset, history.stress)[row]
-    young = (infinite & (history.offset[row, None] < wait)).any(axis=1)
-    good = ~young | (history.offset[row] == 0.0)
-    row, at = row[good], at[good]
-    profile = wall_values_before(position, history.profile[at][:, nodes], np.isnan(history.stress[row]))
-    return _Kept(row, profile, history.profile_rate[at][:, nodes], position)
+    infinite = after_infinite(history.piece, history.offset, history.stress)
+    young = (infinite & (history.offset[:, None] < wait)).any(axis=1) & (history.offset > 0.0)
+    row, at = np.unique(history.profile_row, return_index=True)
+    at = at[~young[row]]
+    number = np.cumsum(~young) - 1
+    columns = ("time", "piece", "offset", "stress", "stress_rate", "speed", "acceleration", "mean", "mean_rate")
+    rows = {name: getattr(history, name)[~young] for name in (*columns, "gradient")}
+    profiles = {name: getattr(history, name)[at][:, nodes] for name in ("profile", "profile_rate", "travel")}
+    profile_row = number[history.profile_row[at]]
+    unknown = np.isnan(rows["stress"][profile_row])
+    profiles["profile"] = wall_values_before(position, profiles["profile"], unknown)
+    return History(**rows, **profiles, position=position, profile_row=profile_row)
 
 
 def gradient_rate(problem: Problem, history: History) -> np.ndarray:
@@ -211,8 +211,8 @@ def momentum_balance(problem: Problem, history: History) -> Closure:
 
     Largest residual over the kept profiles, relative to the gross impulse of the run.
     """
-    kept = _kept(problem, history)
-    momentum = problem.density * kept.profile @ forms(kept.position, problem.metric).weight
+    history = judged(problem, history)
+    momentum = problem.density * history.profile @ forms(history.position, problem.metric).weight
     reach, section = lever(problem), section_measure(problem)
     parts = [
         -reach[end] * increments(history.piece, history.offset, history.stress[:, end], history.stress_rate[:, end])
@@ -220,8 +220,8 @@ def momentum_balance(problem: Problem, history: History) -> Closure:
     ]
     parts.append(section * increments(history.piece, history.offset, history.gradient, gradient_rate(problem, history)))
     gross = float(sum(np.abs(part).sum() for part in parts))
-    impulse = running(sum(parts), kept.row)
-    if gross == 0.0 or len(kept.row) == 0:
+    impulse = running(sum(parts), history.profile_row)
+    if gross == 0.0 or len(momentum) == 0:
         return Closure(0.0, 0.0)
     residual = (momentum - momentum[0]) - (impulse - impulse[0])
     # Round-off of the first momentum and of near-wall coordinates stays below this.
@@ -257,20 +257,20 @@ def energy_balance(problem: Problem, history: History) -> Closure:
     Intervals between kept profiles that hide an infinite stress cannot be judged and are left out.
     ``resolution`` compares the dissipation with that from every second profile.
     """
-    kept = _kept(problem, history)
-    if len(kept.row) < 3:
+    history = judged(problem, history)
+    row, w = history.profile_row, history.profile
+    if len(row) < 3:
         return Closure(0.0, 0.0)
-    shapes = forms(kept.position, problem.metric)
-    kinetic = 0.5 * problem.density * quadratic(shapes.mass, kept.profile, kept.profile)
-    infinite = np.isnan(history.stress[kept.row]).any(axis=1)
-    heat = problem.viscosity * quadratic(shapes.stiffness, kept.profile, kept.profile)
-    heat = np.where(infinite, np.nan, heat)
-    heat_rate = 2.0 * problem.viscosity * quadratic(shapes.stiffness, kept.profile, kept.rate)
+    shapes = forms(history.position, problem.metric)
+    kinetic = 0.5 * problem.density * quadratic(shapes.mass, w, w)
+    infinite = np.isnan(history.stress[row]).any(axis=1)
+    heat = np.where(infinite, np.nan, problem.viscosity * quadratic(shapes.stiffness, w, w))
+    heat_rate = 2.0 * problem.viscosity * quadratic(shapes.stiffness, w, history.profile_rate)
     work, lost, gross = _power(problem, history)
-    net = running(work - lost, kept.row)
-    piece, offset = history.piece[kept.row], history.offset[kept.row]
+    net = running(work - lost, row)
+    piece, offset = history.piece[row], history.offset[row]
     warmed = np.concatenate([[0.0], np.cumsum(increments(piece, offset, heat, heat_rate))])
-    hidden = _hidden(history, kept.row)
+    hidden = _hidden(history, row)
     residual = np.where(hidden, 0.0, np.diff(kinetic) - np.diff(net) + np.diff(warmed))
     # A flow that only dies away takes no work: what it loses is the measure then.
     total = max(float(gross.sum()), float(np.abs(kinetic - kinetic[0]).max()))
