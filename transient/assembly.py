@@ -8,7 +8,7 @@ import numpy as np
 
 from transient.case.model import Case
 from transient.gap.problem import Problem
-from transient.march.rows import Rows, profile_times, stored
+from transient.march.rows import Rows, between, denser, profile_times, stored
 from transient.result.headline.motion import reach
 from transient.result.result import Result, Variable
 from transient.result.run import Run
@@ -166,14 +166,17 @@ def _profiles(problem: Problem, run: Run, solved: Solved, rows: Rows, columns: l
     else:
         at = profile_times(history, problem.profiles)
     velocity, travel = history.profiles_at(at)
-    lever = history.position if problem.rotating else np.ones(len(history.position))
+    infinite = history.time[np.isnan(history.stress).any(axis=1)]
+    parts, position = denser(problem, solved.ladder.layers, len(history.position) - 1)
+    velocity, travel = (between(field, parts, np.isin(at, infinite)) for field in (velocity, travel))
+    lever = position if problem.rotating else np.ones(len(position))
     depth = reach(run)
     kept = history.time[history.profile_row]
     breaks = np.unique(solved.ladder.inputs.starts)
     return {
         "profile_time": Variable(("profile_time",), at, "s", "time of the velocity profiles"),
         "position": Variable(
-            ("position",), history.position, "m", "radius" if problem.metric else "distance from the lower wall"
+            ("position",), position, "m", "radius" if problem.metric else "distance from the lower wall"
         ),
         "velocity": Variable(
             ("profile_time", "position"), velocity * lever, "m/s",

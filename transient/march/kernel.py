@@ -21,8 +21,8 @@ ALPHA = GAMMA / 2.0  # the matrix is storage - ALPHA step A in both stages
 SHARE = np.sqrt(2.0) / 4.0  # weight of the first two rates in the step
 ERROR = (SHARE - (1.0 - SHARE) / 3.0, SHARE - (3.0 * SHARE + 1.0) / 3.0, ALPHA - ALPHA / 3.0)
 
-# what a recorded row holds: the unknowns next to the walls, their rates, and the mean of the unknowns
-FIRST, LAST, FIRST_RATE, LAST_RATE, MEAN, MEAN_RATE, FIELDS = 0, 1, 2, 3, 4, 5, 6
+# what a recorded row holds: the unknowns next to the walls, and the mean of the unknowns with its rate
+FIRST, LAST, MEAN, MEAN_RATE, FIELDS = 0, 1, 2, 3, 4
 RUNNING, DONE, FULL, STALLED, BROKEN = 0, 1, 2, 3, 4
 
 GROW_MOST, SHRINK_MOST, AIM = 2.0, 0.2, 0.85
@@ -57,7 +57,7 @@ def march(
     velocity, rates, travel,  # [n, L] state, updated
     cursor,  # int64 [5, L]: piece, place in the plan, rows, profiles, rows handed over before these
     state,  # [3, L]: offset, step, steps since the piece began
-    row_piece, row_offset, rows, profile_row, profiles,  # records: (R, L), (R, L), (R, L, 6), (Q, L), (Q, L, 3, n)
+    row_piece, row_offset, rows, profile_row, profiles,  # records: (R, L), (R, L), (R, L, 4), (Q, L), (Q, L, 3, n)
     status,
 ):  # fmt: skip
     """March every lane from its state to its end, or until its records are full (status FULL: call again).
@@ -315,10 +315,8 @@ def _record(
     row_offset[at, l] = offset
     rows[at, l, 0] = velocity[0, l]
     rows[at, l, 1] = velocity[n - 1, l]
-    rows[at, l, 2] = rates[0, l]
-    rows[at, l, 3] = rates[n - 1, l]
-    rows[at, l, 4] = mean
-    rows[at, l, 5] = mean_rate
+    rows[at, l, 2] = mean
+    rows[at, l, 3] = mean_rate
     if (cursor[4, l] + at) % profile_every == 0:
         to = cursor[3, l]
         profile_row[to, l] = at

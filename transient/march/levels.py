@@ -46,6 +46,7 @@ class Ladder:
     best: Histories
     next_best: Histories
     inputs: Inputs
+    layers: tuple[float, float]
     cells: int
     steps: int
     solves: int
@@ -106,7 +107,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     best = _mix(answers[-2], answers[-1])
     other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
-    return Ladder(best, other, inputs, cells, flow.steps, sum(run.solves for run in runs))
+    return Ladder(best, other, inputs, flow.resolution.layers, cells, flow.steps, sum(run.solves for run in runs))
 
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:

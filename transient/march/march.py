@@ -14,6 +14,7 @@ from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
 from transient.gap.system import System, assemble, steady
 from transient.march import kernel
 from transient.march.plan import Features, Resolution
+from transient.march.rates import stress_rates
 from transient.result.history import History
 
 CHUNK_ROWS = 4096
@@ -27,7 +28,7 @@ class SolveError(RuntimeError):
 
 @dataclass(frozen=True, eq=False)
 class Trace:
-    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 6) as named in ``kernel``,
+    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 4) as named in ``kernel``,
     ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done;
     ``final`` (n,) velocities at the end."""
 
@@ -147,7 +148,7 @@ class _Run:
         """The row at t = 0+: the state as the inputs' jumps leave it."""
         self.row_piece[0], self.row_offset[0] = 0, 0.0
         u, f = self.velocity, self.rates
-        self.rows[0, 0] = u[0], u[-1], f[0], f[-1], self.weight @ u, self.weight @ f
+        self.rows[0, 0] = u[0], u[-1], self.weight @ u, self.weight @ f
         self.profile_row[0] = 0
         self.profiles[0, 0] = u, f, self.travel
         self.cursor[2] = self.cursor[3] = 1
@@ -239,9 +240,10 @@ def history(
     ``before``: wall stresses just before the first row where its break must be told from a smooth start.
     """
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
-    value, slope, bend = (np.array([row.at(trace.piece, trace.offset, order) for row in rows]) for order in range(3))
+    value, slope = (np.array([row.at(trace.piece, trace.offset, order) for row in rows]) for order in range(2))
     system = trace.system
-    stress, stress_rate = _stresses(problem, trace, inputs, (value, slope, bend), before)
+    stress = _stresses(problem, trace, inputs, (value, slope), before)
+    stress_rate = stress_rates(trace.piece, trace.offset, stress)
     weight = system.grid.mean_weight
     ends = np.array([weight[0] if system.first else 0.0, weight[-1] if system.end_volume[1] > 0 else 0.0])
     mean = trace.fields[:, kernel.MEAN] + ends @ value[:2]
@@ -267,35 +269,25 @@ def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) 
 
 def _stresses(
     problem: Problem, trace: Trace, inputs: Inputs, values: tuple[np.ndarray, ...], before: np.ndarray | None
-) -> tuple[np.ndarray, np.ndarray]:
-    """Wall stresses and their rates (rows, 2) from the balance of each wall's half cell.
+) -> np.ndarray:
+    """Wall stresses (rows, 2) from the balance of each wall's half cell.
 
     Flux through the last face, plus what the half cell stores, less what the pressure gives it: exact in steady
     flow.  After a break the half cell's storage jumps with the wall's acceleration although the stress does not:
     the limit from the left is used on both sides, which is second order where the right one is first.
     """
     system = trace.system
-    fields = trace.fields
-    value, slope, bend = values
+    value, slope = values
     stress = np.zeros((len(trace.piece), 2))
-    rate = np.zeros_like(stress)
-    for end, near, near_rate in ((0, kernel.FIRST, kernel.FIRST_RATE), (1, kernel.LAST, kernel.LAST_RATE)):
+    for end, near in ((0, kernel.FIRST), (1, kernel.LAST)):
         conductance, half = system.end_conductance[end], system.end_volume[end]
-        stored = problem.density * half
-        factor = 1.0 / system.grid.stress_radius[end]
-        stress[:, end] = factor * (
-            conductance * (fields[:, near] - value[end]) + half * value[PRESSURE] - stored * slope[end]
-        )
-        rate[:, end] = factor * (
-            conductance * (fields[:, near_rate] - slope[end]) + half * slope[PRESSURE] - stored * bend[end]
-        )
-    _join_breaks(inputs, trace, stress, rate, before)
-    return stress, rate
+        balance = conductance * (trace.fields[:, near] - value[end]) + half * value[PRESSURE]
+        stress[:, end] = (balance - problem.density * half * slope[end]) / system.grid.stress_radius[end]
+    _join_breaks(inputs, trace, stress, before)
+    return stress
 
 
-def _join_breaks(
-    inputs: Inputs, trace: Trace, stress: np.ndarray, rate: np.ndarray, before: np.ndarray | None
-) -> None:
+def _join_breaks(inputs: Inputs, trace: Trace, stress: np.ndarray, before: np.ndarray | None) -> None:
     """Right-hand limits at breaks: infinite where a no-slip wall's speed jumps, else the left-hand limit."""
     enters = np.flatnonzero(trace.offset == 0.0)
     for end in (0, 1):
@@ -305,7 +297,6 @@ def _join_breaks(
         first = stress[0, end] if before is None else before[end]
         left = np.where(enters > 0, stress[enters - 1, end], first)
         stress[enters, end] = np.where(jumped, np.nan, left)
-        rate[enters[jumped], end] = np.nan
 
 
 def stress_before(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
@@ -326,6 +317,7 @@ def extrapolate(coarse: History, fine: History) -> History:
     """Point by point ``fine + (fine - coarse) / 3``; both have the same rows and nodes."""
     mixed = {
         name: getattr(fine, name) + (getattr(fine, name) - getattr(coarse, name)) / 3.0
-        for name in ("stress", "stress_rate", "mean", "mean_rate", "profile", "profile_rate", "travel")
+        for name in ("stress", "mean", "mean_rate", "profile", "profile_rate", "travel")
     }
+    mixed["stress_rate"] = stress_rates(fine.piece, fine.offset, mixed["stress"])
     return replace(fine, position=coarse.position, **mixed)

@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs
+from transient.gap.grid import spacing
+from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
 from transient.result.curve import Curve
 from transient.result.history import History
 
@@ -14,6 +15,7 @@ STRAIGHT = 0.35  # share of the accuracy that a straight line may be off
 LEADING = 0.6  # share of the local stress's accuracy that rows after an infinite stress must have
 MOST_ROWS = 1_000_000
 MOST_PARTS = 4096
+SMOOTH = 80  # intervals across the gap of a stored profile, at least
 
 
 @dataclass(frozen=True, eq=False)
@@ -145,6 +147,43 @@ def _part_jumps(rows: Rows, piece: np.ndarray) -> Rows:
     index = index[rising | np.isnan(rows.stress[index]).any(axis=1)]
     index = index[np.append(True, np.diff(time[index]) > 0)]
     return Rows(time[index], rows.stress[index], rows.speed[index], rows.mean[index], rows.gradient[index])
+
+
+def denser(problem: Problem, layers: tuple[float, float], cells: int) -> tuple[int, np.ndarray]:
+    """(parts, coordinates (cells x parts + 1,)): each interval of a grid cut so that a drawn profile looks smooth."""
+    parts = 1
+    while cells * parts < SMOOTH:
+        parts *= 2
+    low, high = spacing(cells * parts, *layers)
+    return parts, np.where(low < 0.5, problem.inner + problem.gap * low, problem.outer - problem.gap * high)
+
+
+def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray:
+    """Profiles (k, N) with ``parts`` - 1 values added in each interval, (k, (N-1) x parts + 1).
+
+    The grid is smooth in the node's number, so a polynomial in that number through six neighbours serves; it is kept
+    within the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
+    are joined linearly.
+    """
+    if parts == 1:
+        return profile
+    nodes = profile.shape[1]
+    at = np.arange((nodes - 1) * parts + 1) / parts
+    low = np.minimum(at.astype(int), nodes - 2)
+    points = min(6, nodes)
+    start = np.clip(low - points // 2 + 1, 0, nodes - points)
+    window = start[:, None] + np.arange(points)
+    weight = np.ones((len(at), points))
+    for i in range(points):
+        for j in range(points):
+            if i != j:
+                weight[:, i] *= (at - window[:, j]) / (i - j)
+    out = np.einsum("gq,kgq->kg", weight, profile[:, window])
+    near = np.stack([profile[:, np.clip(low + k, 0, nodes - 1)] for k in (-1, 0, 1, 2)])
+    out = np.clip(out, near.min(axis=0), near.max(axis=0))
+    share = at - low
+    line = profile[:, low] * (1.0 - share) + profile[:, low + 1] * share
+    return np.where(straight[:, None], line, out)
 
 
 def profile_times(history: History, count: int) -> np.ndarray:
