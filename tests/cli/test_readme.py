@@ -54,6 +54,21 @@ def test_the_case_shown_is_the_case_that_runs():
     assert shown == loads((HOUSE / "cases" / "flow_cell.toml").read_text(encoding="utf-8"))
 
 
+def test_the_output_shown_is_what_is_printed(call, tmp_path):
+    shown = fenced(section("What you get"))[0].split()
+    printed = call("run", HOUSE / "cases" / "flow_cell.toml", "--out", tmp_path).out.split()
+    shown, printed = shown[: shown.index("File")], printed[: printed.index("File")]
+    assert len(shown) == len(printed)
+    for here, there in zip(shown, printed, strict=True):
+        try:
+            number = float(here)
+        except ValueError:
+            assert here == there
+            continue
+        # The last digit of a stated error may differ from one processor to the next.
+        assert float(there) == pytest.approx(number, rel=1e-3) or shown[shown.index(here) - 1] == "±"
+
+
 def checkout(folder: Path, command: str) -> Path:
     """A small repository whose README has ``command`` as its test command."""
     readme = f"# A thing\n\n## Run the tests\n\n```sh\n{command}\n```\n\n```sh\nexit 7\n```\n"

@@ -71,7 +71,7 @@ def announce_first_run() -> None:
 
     if _compiled_before(kernel.march.stats.cache_path, Path(kernel.__file__)):
         return
-    note("first run: preparing the compiled solver, once, about 10 s")
+    note("first run: preparing the compiled solver, once, about 15 s")
 
 
 def _compiled_before(folder: str | None, source: Path) -> bool:

@@ -1,0 +1,88 @@
+"""Whole processes: what a compile cache shared by several, or one that cannot be written, does to a run."""
+
+from __future__ import annotations
+
+import json
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+from transient.cli.progress import _compiled_before
+
+HOUSE = Path(__file__).resolve().parents[2]
+# A small kernel, compiled as the solver's is: the solver itself would take too long for a test of the cache.
+KERNEL = """
+import numpy as np
+from transient.compiled import compiled
+
+@compiled
+def total(values):
+    out = 0.0
+    for i in range(len(values)):
+        out += values[i]
+    return out
+
+print(total(np.arange(10.0)))
+"""
+
+
+def started(folder: Path, cache: Path, *command: str) -> subprocess.Popen[str]:
+    """A process whose compile cache is ``cache``."""
+    environment = {**os.environ, "NUMBA_CACHE_DIR": str(cache), "PYTHONPATH": str(folder)}
+    return subprocess.Popen(
+        [sys.executable, *command],
+        env=environment,
+        cwd=HOUSE,
+        text=True,
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+    )
+
+
+def test_processes_that_fill_one_compile_cache_at_once_do_not_harm_each_other(tmp_path):
+    (tmp_path / "small.py").write_text(KERNEL, encoding="utf-8")
+    cache = tmp_path / "cache"
+    for _ in range(2):
+        processes = [started(tmp_path, cache, "-c", "import small") for _ in range(2)]
+        for process in processes:
+            out, err = process.communicate(timeout=120)
+            assert (process.returncode, out, err) == (0, "45.0\n", "")
+    assert len(list(cache.rglob("*.nbi"))) == 1
+
+
+def test_a_compile_cache_that_cannot_be_written_does_no_harm(tmp_path):
+    (tmp_path / "small.py").write_text(KERNEL, encoding="utf-8")
+    (tmp_path / "cache").write_text("a file, no folder", encoding="utf-8")
+    process = started(tmp_path, tmp_path / "cache" / "deeper", "-c", "import small")
+    out, err = process.communicate(timeout=120)
+    assert (process.returncode, out) == (0, "45.0\n")
+    assert "Traceback" not in err
+
+
+def test_two_runs_at_once_both_succeed(tmp_path):
+    command = ("-m", "transient", "run", "cases/flow_cell.toml", "--json", "--out")
+    processes = [
+        subprocess.Popen(
+            [sys.executable, *command, str(tmp_path / "same")], cwd=HOUSE, text=True, stdout=subprocess.PIPE
+        )
+        for _ in range(2)
+    ]
+    said = [json.loads(process.communicate(timeout=300)[0]) for process in processes]
+    assert [process.returncode for process in processes] == [0, 0]
+    for part in ("settling", "walls", "flow"):
+        assert said[0][part] == said[1][part]
+    assert [path.name for path in (tmp_path / "same").iterdir()] == ["flow_cell.h5"]
+
+
+def test_the_first_run_is_told_by_the_cache(tmp_path):
+    source = tmp_path / "kernel.py"
+    source.write_text("", encoding="utf-8")
+    assert not _compiled_before(None, source)
+    assert not _compiled_before(str(tmp_path), source)
+    index = tmp_path / f"kernel.march-1.py{sys.version_info.major}{sys.version_info.minor}.nbi"
+    index.write_text("", encoding="utf-8")
+    os.utime(index, (2e9, 2e9))
+    assert _compiled_before(str(tmp_path), source)
+    os.utime(index, (1e9, 1e9))
+    assert not _compiled_before(str(tmp_path), source)
