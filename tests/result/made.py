@@ -244,6 +244,20 @@ def pressed_plates(height: float = 1e-3, drop: float = 20.0, until: float = 2.0)
     )  # fmt: skip
 
 
+def both_drives() -> Result:
+    """A wall that moves and a pressure drop at once (linear superposition of the two runs): part flows backwards."""
+    pressed, ramp = pressed_plates(height=0.8e-3, drop=-6000.0, until=1.0), plates_ramp()
+    time, keep = ramp.time, ramp.profile_time
+    at = np.searchsorted(pressed.profile_time, keep).clip(0, len(pressed.profile_time) - 1)
+    stress = np.stack([np.interp(time, pressed.time, pressed.wall_stress[:, i]) for i in (0, 1)], axis=1)
+    return assemble(
+        "Reversing rig", "plates", ["lower", "upper"], time, keep, ramp.position, ramp.wall_stress + stress,
+        ramp.wall_speed, ramp.mean_velocity + np.interp(time, pressed.time, pressed.mean_velocity),
+        np.full_like(time, -6000.0), ramp.velocity + pressed.velocity[at], [0.0, 50e-3],
+        flow_rate=ramp.flow_rate, reach=ramp.reach,
+    )  # fmt: skip
+
+
 def duty_cycle(cycles: int = 8) -> Result:
     """The upper wall brought up and stopped again and again (superposed ramps): many breaks, ends at rest."""
     height, speed, over, every = 0.8e-3, 0.3, 0.1, 2.0
@@ -298,6 +312,7 @@ MADE: dict[str, Callable[[], Result]] = {
     "rotating_sleeve": lru_cache(rotating_sleeve),
     "oscillating": lru_cache(oscillating),
     "pressed_plates": lru_cache(pressed_plates),
+    "both_drives": lru_cache(both_drives),
     "duty_cycle": lru_cache(duty_cycle),
     "film_over_long_run": lru_cache(film_over_long_run),
 }

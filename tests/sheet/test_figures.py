@@ -18,7 +18,7 @@ from transient.result.result import Result, ResultError, Variable
 from transient.sheet import figures
 from transient.sheet.figures import FIGURES, draw, save
 from transient.sheet.labels import spread
-from transient.sheet.profiles import instants, time_labels
+from transient.sheet.profiles import between, instants, time_labels
 from transient.sheet.span import span
 
 
@@ -140,6 +140,13 @@ def test_equal_stresses_on_both_walls_are_one_curve():
     assert "both walls" in texts(figure)
 
 
+def test_a_largest_value_that_is_the_final_one_has_no_time():
+    figure = draw(made("plates_ramp"), "stress")
+    assert "0.3757 Pa, no overshoot" in texts(figure)
+    (mark,) = marked(figure, "peak lower")
+    assert mark.get_xdata() == [1.0]
+
+
 def test_a_peak_lost_on_the_axis_is_not_marked():
     figure = draw(made("oscillating"), "stress")
     assert len(marked(figure, "peak lower")) == 1
@@ -149,7 +156,7 @@ def test_a_peak_lost_on_the_axis_is_not_marked():
 def test_only_what_drives_is_shown_as_drive():
     assert [a.get_ylabel().split("\n")[0] for a in draw(made("pressed_plates"), "stress").axes] == [
         "wall stress [mPa]",
-        "pressure drop",
+        "pressure",
     ]
     assert [a.get_ylabel().split("\n")[0] for a in draw(made("rotating_sleeve"), "stress").axes][1:] == ["wall speed"]
 
@@ -186,11 +193,25 @@ def test_profiles_are_labelled_at_the_curve_with_their_times():
     for curve in curves:
         time = float(curve.get_gid().split()[1])
         row = int(np.argmin(np.abs(result.profile_time - time)))
-        np.testing.assert_allclose(curve.get_xdata(), 1e3 * result.velocity[row], atol=1e-12)
+        drawn = dict(zip(curve.get_ydata(), curve.get_xdata(), strict=True))
+        stored = [drawn[1e3 * y] for y in result.position]
+        np.testing.assert_allclose(stored, 1e3 * result.velocity[row], atol=1e-12)
     assert "300 ms" in texts(figure)
     assert sum(text.endswith("ms") for text in texts(figure)) == len(curves)
     assert "axis" in texts(figure)
     assert figure.axes[0].get_xlabel() == "velocity [mm/s]   (positive: along +x)"
+
+
+def test_between_stored_points_the_curve_is_smooth_and_level_at_an_axis():
+    radius = np.linspace(0.0, 1.0, 13)
+    fine = np.linspace(0.0, 1.0, 101)
+    drawn = between(radius, 1 - radius**2, fine, mirrored=True)
+    assert np.abs(drawn - (1 - fine**2)).max() < 2e-3
+    assert abs(drawn[1] - drawn[0]) < 2e-4
+    layer = np.where(radius > 0.95, 1.0, 0.0)
+    steep = between(radius, layer, fine, mirrored=False)
+    assert steep.min() >= 0.0
+    assert steep.max() <= 1.0
 
 
 def test_the_picture_of_a_swinging_flow_is_its_last_cycle():

@@ -79,6 +79,8 @@ def profiles_panel(axes: Axes, result: Result) -> None:
     """Velocity to the right, position upwards between the walls."""
     chosen = instants(result.velocity, result.position)
     y = result.position
+    # Between the stored points the profile is smooth; drawn straight, it would seem to have corners.
+    fine = np.union1d(y, np.linspace(y[0], y[-1], 201))
     shown = result.velocity[chosen]
     low, high = margins(*extent(shown, np.zeros(1)), 0.05)
     speed = scale(max(abs(low), abs(high)), "m/s")
@@ -88,13 +90,13 @@ def profiles_panel(axes: Axes, result: Result) -> None:
     axes.axvline(0.0, color=FAINT, lw=0.8, zorder=0)
     board = Board(axes)
     for row, velocity in zip(chosen, shown, strict=True):
-        x = velocity * speed.factor
+        x = between(y, velocity, fine, mirrored=_has_axis(result)) * speed.factor
         last = row == chosen[-1]
         axes.plot(
-            x, y * across.factor, color=_shade(row, chosen), lw=2.0 if last else 1.2,
+            x, fine * across.factor, color=_shade(row, chosen), lw=2.0 if last else 1.2,
             gid=f"profile {float(result.profile_time[row])!r}",
         )  # fmt: skip
-        board.add_curve(x, y * across.factor)
+        board.add_curve(x, fine * across.factor)
     for i, (row, label) in enumerate(zip(chosen, time_labels(result.profile_time[chosen]), strict=True)):
         board.on_curve(i, label, color=_shade(row, chosen))
     axes.set_xlabel(f"velocity [{speed.unit}]   (positive: {_positive(result)})")
@@ -121,6 +123,24 @@ def _shade(row: int, chosen: np.ndarray) -> tuple[float, float, float]:
     return tuple(float(v) for v in tone)
 
 
+def between(y: np.ndarray, velocity: np.ndarray, fine: np.ndarray, mirrored: bool) -> np.ndarray:
+    """Velocity (n,) at positions ``fine`` from that at ``y`` (N,), without overshoot at a steep wall layer.
+
+    Modified Akima interpolation (Akima 1970).  ``mirrored``: the profile goes on beyond y[0] as in a mirror.
+    """
+    from scipy.interpolate import Akima1DInterpolator
+
+    if mirrored:
+        y = np.concatenate([2 * y[0] - y[:0:-1], y])
+        velocity = np.concatenate([velocity[:0:-1], velocity])
+    return Akima1DInterpolator(y, velocity, method="makima")(fine)
+
+
+def _has_axis(result: Result) -> bool:
+    """Whether the gap ends in a pipe's axis, where there is no wall."""
+    return "wall" in result.variables and len(result.variables["wall"].data) == 1
+
+
 def _walls(axes: Axes, result: Result, factor: float) -> None:
     """Hatched strips where walls are; a centre line where a pipe's axis is."""
     y0, y1 = float(result.position[0]) * factor, float(result.position[-1]) * factor
@@ -128,7 +148,7 @@ def _walls(axes: Axes, result: Result, factor: float) -> None:
     axes.set_ylim(y0 - 1.15 * thick, y1 + 1.15 * thick)
     names = [str(name) for name in result.variables["wall"].data] if "wall" in result.variables else []
     ends = [(y1, y1 + thick, names[-1] if names else "")]
-    if len(names) == 1:
+    if _has_axis(result):
         axes.axhline(y0, color=SOFT, lw=0.8, ls=(0, (10, 3, 2, 3)), zorder=0)
         place = axes.get_yaxis_transform()
         axes.text(0.98, y0, "axis", transform=place, ha="right", va="top", size=7.5, color=SOFT)

@@ -22,6 +22,8 @@ QUASI = "Dotted: quasi-steady hand formula."
 # An unbounded stress is shown up to this many times its median, or this many times what it exceeds 5 % of the time.
 # A peak below this share of the axis lies on the zero line for the eye.
 WORTH_MARKING = 0.02
+# A peak no further than this from the final value is the final value.
+SAME_AS_FINAL = 1e-3
 _MEDIANS, _RARES = 4.0, 1.5
 
 
@@ -116,13 +118,17 @@ def _mark_peak(board: Board, result: Result, shared: Span, column: int, label: s
     when, peak = wall.get("peak_time"), wall.get("peak_stress")
     if when is None or peak is None:
         when, peak = float(result.time[top]), float(data[top])
+    text = f"{told(peak, 'Pa')} at {told(when, 's')}"
+    if abs(peak - data[finite[-1]]) <= SAME_AS_FINAL * abs(peak):
+        # The largest value of an approach from below has no time of its own.
+        when, text = result.time[-1], f"{told(peak, 'Pa')}, no overshoot"
     x, y = shared.place(when), peak * board.factor
     low, high = board.axes.get_ylim()
     if abs(y) < WORTH_MARKING * (high - low):
         return
     ink = INK[column]
     board.axes.plot(x, y, "o", mfc="white", mec=ink, mew=1.3, ms=5.5, zorder=5, clip_on=False, gid=f"peak {name}")
-    board.beside(x, y, f"{told(peak, 'Pa')} at {told(when, 's')}", color=ink)
+    board.beside(x, y, text, color=ink)
 
 
 def _mark_unbounded(board: Board, result: Result, shared: Span, column: int, label: str) -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from contextlib import contextmanager
+from textwrap import wrap
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -18,6 +19,9 @@ if TYPE_CHECKING:
 # Text width of an A4 page with usual margins, and a page filled, in inches.
 WIDTH, PAGE = 6.5, 9.4
 
+# Mean width of a letter of an axis label, inches.
+_LETTER = 0.068
+
 # Inks told apart by lightness as well as by hue, each with a stroke of its own.
 INK = ("#16406b", "#c4601d", "#2b8a78", "#7b3f80")
 STROKE: tuple[Any, ...] = ("-", (0, (5, 1.8)), (0, (7, 1.6, 1.4, 1.6)), (0, (1.4, 1.4)))
@@ -27,7 +31,7 @@ SOFT, FAINT, WALL = "#5c6670", "#c9ced3", "#8d969e"
 _SETTINGS = {
     "font.size": 8.5,
     "axes.titlesize": 9,
-    "axes.labelsize": 8.5,
+    "axes.labelsize": 8,
     "axes.spines.top": False,
     "axes.spines.right": False,
     "axes.edgecolor": SOFT,
@@ -72,7 +76,7 @@ def rows(figure: Figure, heights: list[float], top: float, bottom: float = 0.48)
     """Axes below each other with the given heights (shares); ``top`` and ``bottom`` margins in inches."""
     total = figure.get_figheight()
     grid = figure.add_gridspec(
-        len(heights), 1, height_ratios=heights, left=0.86 / WIDTH, right=1 - 0.82 / WIDTH,
+        len(heights), 1, height_ratios=heights, left=0.98 / WIDTH, right=1 - 0.82 / WIDTH,
         top=1 - top / total, bottom=bottom / total, hspace=0.14,
     )  # fmt: skip
     return [figure.add_subplot(grid[i]) for i in range(len(heights))]
@@ -84,16 +88,10 @@ def told(value: float, unit: str, digits: int = 4) -> str:
 
 
 def name_axis(axes: Axes, words: str, unit: str) -> None:
-    """Label of the vertical axis, on one line where the axes are tall enough for it."""
+    """Label of the vertical axis, in as many lines as the height of the axes asks for."""
     tall = axes.get_position().height * axes.figure.get_figheight()
-    label = f"{words} [{unit}]" if unit else words
-    axes.set_ylabel(label if 0.078 * len(label) <= tall else _broken(label))
-
-
-def _broken(label: str) -> str:
-    """In two lines, the unit on the second."""
-    head, mark, unit = label.partition(" [")
-    return f"{head}\n[{unit}" if mark else label
+    letters = max(int(tall / _LETTER), 8)
+    axes.set_ylabel("\n".join(wrap(f"{words} [{unit}]", letters, break_long_words=False)))
 
 
 def need(result: Result, figure: str, *names: str) -> None:
