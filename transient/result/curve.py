@@ -76,6 +76,10 @@ class Curve:
         high, low = self.extreme(1.0), self.extreme(-1.0)
         return high if not abs(low[0]) > abs(high[0]) else low
 
+    def _interval(self, i: int, sign: float) -> tuple[float, ...]:
+        """Coefficients of one interval times ``sign``, as plain floats."""
+        return tuple(sign * float(c[i]) for c in self.cubic)
+
     def first_at(self, level: float, sign: float) -> float:
         """Earliest time at which sign x value >= level; nan if never."""
         time, value, interval = self.turning
@@ -98,7 +102,7 @@ class Curve:
             above = sign * value[inside] >= level
             if above.any():
                 peak = float(shares[above].min())
-        share = _bisect(lambda s: sign * float(self.at(i, s)) - level, 0.0, peak)
+        share = _crossing(self._interval(i, sign), level, 0.0, peak)
         return float(self.time[i] + share * self.step[i])
 
     def last_above(self, level: float) -> float:
@@ -122,7 +126,8 @@ class Curve:
         if not magnitude[i] > level:
             inside = (interval == i) & (np.abs(value) > level)
             low = float(((time[inside] - self.time[i]) / self.step[i]).max())
-        share = _bisect(lambda s: level - abs(float(self.at(i, s))), low, 1.0)
+        side = 1.0 if float(self.at(i, low)) >= 0.0 else -1.0
+        share = _crossing(self._interval(i, -side), -level, low, 1.0)
         return float(self.time[i] + share * self.step[i])
 
     def integral(self) -> np.ndarray:
@@ -134,13 +139,15 @@ class Curve:
         return np.concatenate([[0.0], np.cumsum(part)])
 
 
-def _bisect(rising, low: float, high: float) -> float:
-    """Where a function turns from negative to non-negative on [low, high]."""
+def _crossing(cubic: tuple[float, ...], level: float, low: float, high: float) -> float:
+    """Where a cubic in s rises through ``level`` on [low, high], by bisection to the last digit."""
+    c0, c1, c2, c3 = cubic
+    c0 -= level
     for _ in range(60):
         middle = 0.5 * (low + high)
         if middle in (low, high):
             break
-        if rising(middle) < 0.0:
+        if c0 + middle * (c1 + middle * (c2 + middle * c3)) < 0.0:
             low = middle
         else:
             high = middle
