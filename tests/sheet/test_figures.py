@@ -261,9 +261,13 @@ def test_reach_is_drawn_from_its_own_wall():
     drawn = np.isfinite(lower.get_xdata())
     np.testing.assert_allclose(lower.get_ydata()[drawn] + upper.get_ydata()[drawn], 1.0)
     assert {"from lower", "from upper"} <= set(texts(figure))
-    still = Variable(("time", "wall"), np.full((len(result.time), 2), np.nan), "m", "reach")
-    with pytest.raises(ResultError, match="no motion spreads"):
-        draw(changed(result, reach=still), "reach")
+    one = np.column_stack([np.zeros(len(result.time)), result.reach[:, 1]])
+    figure = draw(changed(result, reach=Variable(("time", "wall"), one, "m", "reach")), "reach")
+    assert marked(figure, "reach lower") == []
+    for nothing in (0.0, np.nan):
+        still = Variable(("time", "wall"), np.full((len(result.time), 2), nothing), "m", "reach")
+        with pytest.raises(ResultError, match="no motion spreads"):
+            draw(changed(result, reach=still), "reach")
 
 
 def test_overview_holds_the_numbers_and_the_panels():

@@ -25,7 +25,7 @@ def reach(result: Result) -> Figure:
     """
     need(result, "reach", "time", "wall", "position", "reach")
     depth = result.reach
-    moving = [i for i in range(depth.shape[1]) if np.isfinite(depth[:, i]).any()]
+    moving = [i for i in range(depth.shape[1]) if np.nanmax(depth[:, i], initial=0.0) > 0.0]
     if not moving:
         raise ResultError("figure reach: no motion spreads from a wall in this run")
     inner, outer = float(result.position[0]), float(result.position[-1])
