@@ -120,6 +120,20 @@ def test_a_part_that_ends_with_the_cycle_leaves_no_sliver() -> None:
     assert drive.pieces(9.0).value(np.array([5.0])) == pytest.approx([1.0])
 
 
+def test_a_jump_at_the_end_of_the_cycle_belongs_to_none() -> None:
+    part = build["step"](to=1.0, at=0.3)
+    drive = build["repeat"](part=part, every=0.1 + 0.2, times=2)
+    assert not drive.pieces(9.0).value(np.linspace(0.0, 9.0, 91)).any()
+
+
+def test_a_restart_near_the_end_of_a_smooth_piece_makes_no_kink() -> None:
+    # Slope and its terms: 0 is left of terms of order 1, next to a piece whose own slope is tiny.
+    smooth = build["table"](times=[0.0, 1.0, 2.0, 3.0], values=[0.0, 0.0, 1.0, 1.0], interpolation="smooth")
+    own = smooth.pieces(9.0)
+    again = own.restart(merge_times([own.starts, 2.0 - np.geomspace(1e-7, 0.7, 40)]))
+    assert not again.jumps(1)[1:].any()
+
+
 def test_repeats_of_repeats() -> None:
     inner = build["repeat"](part=build["step"](to=1.0, at=0.125), every=0.25, times=2)
     drive = build["repeat"](part=inner, every=1.0)

@@ -40,7 +40,9 @@ def fit(function: Function, until: float, tolerance: float, before: float = 0.0)
         if not stuck.any():
             break
         found = [_jump(function, a, b, until, tolerance) for a, b in zip(left[stuck], right[stuck], strict=True)]
-        edges = np.unique(np.concatenate([edges, found]))
+        known, edges = len(edges), np.unique(np.concatenate([edges, found]))
+        if len(edges) == known:
+            raise _out_of_reach(tolerance, found[0])
         if len(edges) > MOST_JUMPS:
             raise DriveError(f"the function jumps more than {MOST_JUMPS} times", "tolerance")
     left[0] = 0.0
