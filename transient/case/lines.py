@@ -2,12 +2,19 @@
 
 from __future__ import annotations
 
+import tomllib
+
 Path = tuple[str | int, ...]
 
 
 def find_lines(text: str) -> dict[Path, int]:
     """Line number (from 1) of every table, key and list item, by its path in the parsed tree (items from 0)."""
     return _Scanner(text).run()
+
+
+def _plain(quoted: str) -> str:
+    """The name that a quoted key stands for."""
+    return quoted[1:-1] if quoted[0] == "'" or "\\" not in quoted else tomllib.loads(f"name = {quoted}")["name"]
 
 
 class _Scanner:
@@ -78,7 +85,7 @@ class _Scanner:
             self._skip_spaces()
             sign = self.text[self.at]
             if sign in "\"'":
-                names.append(self._string()[1:-1])
+                names.append(_plain(self._string()))
             else:
                 start = self.at
                 while self.at < len(self.text) and (self.text[self.at].isalnum() or self.text[self.at] in "-_"):

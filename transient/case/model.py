@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import copy
 from collections.abc import Mapping
 from pathlib import Path as FilePath
 from typing import Any
@@ -65,8 +64,8 @@ class Case:
         wanted = as_changes({**(changes or {}), **more})
         # Rows already read need no second reading, unless the change is about the file they came from.
         about_tables = any(path[-1] in ("file", "column", "time_column", "kind") for path, _ in wanted)
-        tree, paths = put(self.tree if about_tables else self._resolved, wanted)
-        return Case(tree, Source(self.source.file, self.source.folder, "", frozenset(paths)))
+        tree, _ = put(self.tree if about_tables else self._resolved, wanted)
+        return Case(tree, Source(self.source.file, self.source.folder))
 
     def problem(self) -> Problem:
         """The case as plain numbers for the march and the series."""
@@ -144,7 +143,7 @@ class Case:
         return hash(self.text())
 
     def __reduce__(self) -> tuple[Any, ...]:
-        return Case, (copy.deepcopy(self._resolved), Source(self.source.file))
+        return Case, (self._resolved, Source(self.source.file))
 
     def __repr__(self) -> str:
         return f"Case({self.title!r}, {self.gap.shape.name})"

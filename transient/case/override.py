@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import copy
 import tomllib
 from collections.abc import Iterable, Mapping
 from typing import Any
 
 from transient.case.lines import Path
 from transient.case.source import CaseError
+from transient.case.tree import copied
 from transient.units import typed
 
 
@@ -32,7 +32,7 @@ def parse_value(text: str) -> Any:
 
 def put(tree: dict[str, Any], changes: Iterable[tuple[Path, Any]]) -> tuple[dict[str, Any], list[Path]]:
     """(a copy of ``tree`` with keys set, their paths with list items as numbers); raises ``CaseError``."""
-    out = copy.deepcopy(dict(tree))
+    out = copied(tree)
     paths = [_put(out, path, value) for path, value in changes]
     return out, paths
 
@@ -47,7 +47,7 @@ def _put(tree: dict[str, Any], path: Path, value: Any) -> Path:
         elif not isinstance(here, dict):
             raise CaseError(f"{'.'.join(map(str, done))} is {typed(here)}, which has no keys", ".".join(map(str, path)))
         if last:
-            here[part] = copy.deepcopy(value)
+            here[part] = copied(value)
         elif isinstance(here, dict):
             here.setdefault(part, {})
         here = here[part]

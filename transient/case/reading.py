@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import copy
 from collections.abc import Iterable
 from typing import Any, NamedTuple
 
@@ -10,6 +9,7 @@ from transient.case.keys import Key
 from transient.case.later import later
 from transient.case.lines import Path
 from transient.case.source import CaseError, Source, dotted, nearest
+from transient.case.tree import copied
 from transient.units import DIMENSIONS, QuantityError, quantity, si_unit, typed
 
 
@@ -28,7 +28,7 @@ class Reading:
     def __init__(self, tree: dict[str, Any], source: Source):
         self.tree = tree
         self.source = source
-        self.resolved: dict[str, Any] = copy.deepcopy(tree)
+        self.resolved: dict[str, Any] = copied(tree)
         self.inputs: list[Input] = []
         self.not_yet: list[tuple[Path, str]] = []
         self.rotating = False

@@ -50,18 +50,21 @@ class Source:
     def where(self, path: Path) -> str:
         """The beginning of a message about ``path``: "file:line: key", as far as these are known."""
         key = dotted(path)
-        for end in range(len(path), 0, -1):
-            if path[:end] in self.overridden:
-                option = f"--set {dotted(path[:end])}"
-                parts = [self.file, option if end == len(path) else f"{option}: {key}"]
-                return ": ".join(part for part in parts if part)
-        if path not in self.lines:
-            cause = next((one for one in self.overridden if one[: len(path)] == path), None)
-            if cause is not None:
-                return ": ".join(part for part in (self.file, f"--set {dotted(cause)}", key) if part)
+        cause = self._cause(path)
+        if cause is not None:
+            # Named as the option does where that is another key: a whole table that was set, or a table it brought.
+            option = f"--set {dotted(cause)}"
+            return ": ".join(part for part in (self.file, option, "" if cause == path else key) if part)
         line = next((self.lines[path[:end]] for end in range(len(path), 0, -1) if path[:end] in self.lines), None)
         place = f"{self.file}:{line}" if line and self.file else self.file
         return ": ".join(part for part in (place, key) if part)
+
+    def _cause(self, path: Path) -> Path | None:
+        """The key set by an option that ``path`` lies in, or that brought it about."""
+        above = next((path[:end] for end in range(len(path), 0, -1) if path[:end] in self.overridden), None)
+        if above is not None or path in self.lines:
+            return above
+        return next((one for one in sorted(self.overridden, key=str) if one[: len(path)] == path), None)
 
     def refuse(self, path: Path, message: str) -> CaseError:
         """A refusal about ``path``; to be raised by the caller."""

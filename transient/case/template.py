@@ -120,5 +120,5 @@ def _histories() -> str:
     ]
     for kind in KINDS.values():
         keys = ", ".join(field.name if field.required else f"({field.name})" for field in kind.fields)
-        lines.append(f"#   {kind.name:<12} {kind.doc}; {keys}")
+        lines += [f"#   {kind.name}: {keys}", f"#       {kind.doc}"]
     return "\n".join([*lines, "# Keys in ( ) may be left out.", ""])

@@ -19,9 +19,7 @@ _NOT_FINITE = re.compile(r"[+-]?(?:nan|inf|infinity)\b", re.IGNORECASE)
 _LONGEST = 120
 # ITS-90 zero of the Celsius scale, and 0 degF, in kelvin: exact by definition.
 _OFFSET = {"K": Fraction(0), "degC": Fraction("273.15"), "degF": Fraction("459.67") * 5 / 9}
-_SPELLINGS = str.maketrans(
-    {"µ": "u", "μ": "u", "·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "−": "-", "º": "°"}
-)
+_SPELLINGS = str.maketrans({"µ": "u", "μ": "u", "·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "−": "-", "º": "°"})
 
 
 class QuantityError(ValueError):
@@ -39,7 +37,7 @@ def typed(value: Any) -> str:
     if isinstance(value, dict):
         return "a table"
     if isinstance(value, list | tuple):
-        return "a list"
+        return "a list" if value else "an empty list"
     if isinstance(value, int | float | np.number):
         return repr(float(value)) if isinstance(value, np.number) else repr(value)
     text = " ".join(str(value).split())
