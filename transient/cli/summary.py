@@ -131,8 +131,9 @@ def _flow(summary: dict[str, Any]) -> list[str]:
     if flow.get("final_mean_velocity") is None:
         return []
     text = f"mean velocity {plain(flow['final_mean_velocity'], 'm/s')} in the end"
-    if flow.get("peak_mean_velocity") is not None:
-        text += f", largest {plain(flow['peak_mean_velocity'], 'm/s')}"
+    largest = plain(flow["peak_mean_velocity"], "m/s")
+    if largest not in text:
+        text += f", largest {largest}"
     if flow.get("peak_flow_rate") is not None:
         text += f"; largest flow rate {plain(flow['peak_flow_rate'], 'm^3/s')}"
     if flow.get("volume_delivered") is not None:
@@ -170,7 +171,7 @@ def _accuracy(part: dict[str, Any]) -> str:
     if part.get("asked") is None:
         return ""
     if part.get("met"):
-        return f"; every number within the {percent(part['asked'])} asked for"
+        return f"; all numbers within the {percent(part['asked'])} asked"
     return f"; accuracy asked {percent(part['asked'])}, reached {percent(part['reached'])} ({part['worst']})"
 
 
