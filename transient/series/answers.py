@@ -7,6 +7,7 @@ from functools import lru_cache
 
 import numpy as np
 
+from transient.series.early import EarlyTable, early_table
 from transient.series.gapshape import GapShape
 from transient.series.modes import Modes, modes
 from transient.series.steady import steady_flow
@@ -36,18 +37,26 @@ class Answer:
     taylor: np.ndarray
     radius: float
     sudden: np.ndarray
-    tables: dict[int, np.ndarray] = field(default_factory=dict)
+    contours: dict[int, np.ndarray] = field(default_factory=dict)
+    tables: dict[tuple[int, int], EarlyTable] = field(default_factory=dict)
 
     def transfer(self, s: np.ndarray) -> np.ndarray:
         """(S, 3, Q) at complex ``s`` (S,)."""
         out = wall_transfer(self.shape, s) if self.y is None else velocity_transfer(self.shape, s, self.y)
         return out * s[:, None, None] if self.order else out
 
-    def table(self, level: int) -> np.ndarray:
+    def contour(self, level: int) -> np.ndarray:
         """(NODES, 3, Q): the transfer function on the contour for ages window/2^(level+1) .. window/2^level."""
-        if level not in self.tables:
-            self.tables[level] = self.transfer(NODE / smallest_age(self.window, level))
-        return self.tables[level]
+        if level not in self.contours:
+            self.contours[level] = self.transfer(NODE / smallest_age(self.window, level))
+        return self.contours[level]
+
+    def table(self, level: int, orders: int) -> EarlyTable:
+        """Answers to a unit pulse and to unit jumps of value, slope ... (``orders`` in all) at the level's ages."""
+        if (level, orders) not in self.tables:
+            age = smallest_age(self.window, level)
+            self.tables[level, orders] = early_table(self.contour(level), age, orders)
+        return self.tables[level, orders]
 
     def steady_response(self, rates: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """((R, 3, Q) output per exp(rate t), less what the kept modes answer; (R, 3, Q) the whole transfer function).

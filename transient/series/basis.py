@@ -37,7 +37,7 @@ def reduced_hankel(order: float, z: np.ndarray) -> np.ndarray:
     """
     z = np.asarray(z, dtype=float)
     if order == -0.5 or order == 0.5:
-        return np.ones(z.shape, complex) * (1.0 if order < 0 else 1.0)
+        return np.ones(z.shape, complex)
     out = np.empty(z.shape, complex)
     far = z >= LARGE
     out[far] = _expansion(order, 1j / z[far])

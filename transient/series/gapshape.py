@@ -57,11 +57,16 @@ class GapShape:
         """Factors of the wall gradients in the wall stresses: r in a rotating gap, else 1."""
         return (self.a, self.b) if self.metric == 3 else (1.0, 1.0)
 
+    @property
+    def grips(self) -> np.ndarray:
+        """(2,) 1 where a wall can pull on the fluid, 0 at a shear-free end and at an axis."""
+        return np.array([float(self.lower != FREE and not self.axis), float(self.upper != FREE)])
+
 
 def shape_of(problem: Problem) -> GapShape:
     """The dimensionless gap of a problem.  Raises SeriesError where viscosity is not constant or a wall unknown."""
     if problem.law.code != 0:
-        raise SeriesError("the viscosity depends on the shear rate, and only a constant viscosity has a series solution")
+        raise SeriesError("the viscosity depends on the shear rate: only a constant one has a series solution")
     gap = problem.gap
     slips = []
     for wall in problem.walls:

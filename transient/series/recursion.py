@@ -4,18 +4,18 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.compiled import compiled, inlined
+from transient.compiled import compiled
 
 
-@inlined
-def power_integrals(y, out):  # type: ignore[no-untyped-def]
-    """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0, without cancellation."""
+@compiled
+def power_integrals(y, loss, out):  # type: ignore[no-untyped-def]
+    """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0; ``loss`` = 1 - exp(-y)."""
     if y > 1.0:
-        out[0] = -np.expm1(-y) / y
+        out[0] = loss / y
         out[1] = (1.0 - out[0]) / y
         out[2] = (1.0 - 2.0 * out[1]) / y
     else:
-        damping = np.exp(-y)
+        damping = 1.0 - loss
         for p in range(3):
             term, total = 1.0, 0.0
             for k in range(20):
@@ -24,7 +24,7 @@ def power_integrals(y, out):  # type: ignore[no-untyped-def]
             out[p] = damping * total
 
 
-@inlined
+@compiled
 def divided_exponential(d):  # type: ignore[no-untyped-def]
     """(exp(d) - 1) / d for complex d."""
     if abs(d) < 0.5:
@@ -36,26 +36,48 @@ def divided_exponential(d):  # type: ignore[no-untyped-def]
     return (np.exp(d) - 1.0) / d
 
 
-@inlined
-def forced(rate, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
-    """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials."""
+@compiled
+def forced(rate, loss, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
+    """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials.
+
+    ``loss`` = 1 - exp(-rate x).
+    """
     total = 0.0
-    if poly[1] != 0.0 or poly[2] != 0.0 or poly[3] != 0.0:
-        power_integrals(rate * x, scratch)
+    if poly[2] != 0.0 or poly[3] != 0.0:
+        power_integrals(rate * x, loss, scratch)
         total = x * (poly[1] * scratch[0] + x * (2.0 * poly[2] * scratch[1] + x * 3.0 * poly[3] * scratch[2]))
+    elif poly[1] != 0.0:
+        total = poly[1] * loss / rate
     for k in range(len(coeff)):
         if coeff[k] != 0.0:
             s = exponent[k]
             d = (s + rate) * x
             if d.real < 1.0:
-                answer = x * np.exp(-rate * x) * divided_exponential(d)
+                answer = x * (1.0 - loss) * divided_exponential(d)
             else:
-                answer = (np.exp(s * x) - np.exp(-rate * x)) / (s + rate)
+                answer = (np.exp(s * x) - (1.0 - loss)) / (s + rate)
             total += (coeff[k] * s * answer).real
     return total
 
 
-@inlined
+@compiled
+def moving(poly, coeff):  # type: ignore[no-untyped-def]
+    """Whether an input changes within its piece."""
+    if poly[1] != 0.0 or poly[2] != 0.0 or poly[3] != 0.0:
+        return True
+    found = False
+    for k in range(len(coeff)):
+        found = found or coeff[k] != 0.0
+    return found
+
+
+@compiled
+def decay_loss(y):  # type: ignore[no-untyped-def]
+    """1 - exp(-y), y >= 0."""
+    return -np.expm1(-y) if y < 40.0 else 1.0
+
+
+@compiled
 def input_value(poly, coeff, exponent, x, order):  # type: ignore[no-untyped-def]
     """Value (order 0) or derivative of one input at local time x."""
     if order == 0:
@@ -80,7 +102,7 @@ def fill_states(lengths, poly, coeff, exponent, before, rate, share, initial, le
     ``rate`` (M,), ``share`` (M, 3), ``initial`` (M,) amplitudes just before the first break.
     """
     pieces, count = len(poly), len(rate)
-    scratch = np.zeros(3)
+    scratch, losses = np.zeros(3), np.zeros(count)
     for i in range(3):
         left[0, i] = before[i]
     for n in range(count):
@@ -97,14 +119,11 @@ def fill_states(lengths, poly, coeff, exponent, before, rate, share, initial, le
             break
         x = lengths[p]
         for n in range(count):
-            ahead[p + 1, n] = after[p, n] * np.exp(-rate[n] * x)
+            losses[n] = decay_loss(rate[n] * x)
+            ahead[p + 1, n] = after[p, n] * (1.0 - losses[n])
         for i in range(3):
             left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
-            moving = poly[p, i, 1] != 0.0 or poly[p, i, 2] != 0.0 or poly[p, i, 3] != 0.0
-            for k in range(coeff.shape[2]):
-                moving = moving or coeff[p, i, k] != 0.0
-            if moving:
+            if moving(poly[p, i], coeff[p, i]):
                 for n in range(count):
-                    if share[n, i] != 0.0:
-                        push = forced(rate[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch)
-                        ahead[p + 1, n] -= share[n, i] * push
+                    push = forced(rate[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch)
+                    ahead[p + 1, n] -= share[n, i] * push

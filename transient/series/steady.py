@@ -39,7 +39,7 @@ class SteadyFlow:
         """(3, 2): traction on the lower and upper wall."""
         slopes = _profiles(self.shape, np.array([0.0, 1.0]))[1]
         gradient = self.weights[:, 1:] @ slopes
-        return gradient * np.array([self.shape.levers[0], -self.shape.levers[1]])
+        return gradient * np.array([self.shape.levers[0], -self.shape.levers[1]]) * self.shape.grips
 
     def mean(self) -> np.ndarray:
         """(3,) section average; in a rotating gap of the tangential speed over the radius."""
@@ -54,13 +54,14 @@ def steady_flow(shape: GapShape) -> SteadyFlow:
     (value, slope) = _profiles(shape, np.array([0.0, 1.0]))
     terms = np.array([[1.0, 1.0], *value])  # constant, q, P at both ends
     slopes = np.array([[0.0, 0.0], *slope])
-    rows = np.array([_condition(shape.lower, terms[:, 0], -slopes[:, 0]), _condition(shape.upper, terms[:, 1], slopes[:, 1])])
+    low = _condition(shape.lower, terms[:, 0], -slopes[:, 0])
+    high = _condition(shape.upper, terms[:, 1], slopes[:, 1])
+    rows = np.array([low, high])
     if shape.axis:
         rows[0] = [0.0, 1.0, 0.0]
     weights = np.zeros((3, 3))
     for i, right in enumerate(np.eye(3)):
-        speeds = np.array([0.0 if shape.lower == FREE or shape.axis else right[0], 0.0 if shape.upper == FREE else right[1]])
-        weights[i, :2] = np.linalg.solve(rows[:, :2], speeds - right[2] * rows[:, 2])
+        weights[i, :2] = np.linalg.solve(rows[:, :2], shape.grips * right[:2] - right[2] * rows[:, 2])
         weights[i, 2] = right[2]
     if shape.metric == 3:
         weights[2] = 0.0

@@ -7,26 +7,25 @@ from dataclasses import dataclass
 import numpy as np
 
 from transient.gap.problem import Inputs, Problem
-from transient.series.answers import Answer
-from transient.series.evaluation import add_young, base_piece, fill_old, young_levels
+from transient.series.answers import Answer, mode_count
+from transient.series.early import ALL, CUBIC
+from transient.series.evaluation import base_piece, fill_old, young_levels
 from transient.series.modes import Modes
 from transient.series.recursion import fill_states
 from transient.series.transfer import NODE, WEIGHT
+from transient.series.young import add_young
 
 # Ages beyond which the modes alone answer a break: few modes where pieces are long, many where they are dense.
 WINDOWS = (5e-3, 1e-3, 2e-4, 4e-5, 8e-6, 1.6e-6)
-# Pieces younger than the window that an instant should meet at most, on average.
-_CROWD = 12.0
+# Measured costs in ns of a mode across a break, a mode at an instant, a young break at an instant.
+_STATE, _MODE, _BREAK = 80.0, 50.0, 400.0
 # Instants evaluated at once: what their contour rows need stays small.
 _CHUNK = 4096
 
 
 @dataclass(frozen=True, eq=False)
 class Timeline:
-    """Inputs in diffusion times: ``starts`` (P,), ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K), ``before`` (3,).
-
-    ``initial`` amplitudes just before the first break, by eigenvalue: a function of the modes, or None for zero.
-    """
+    """Inputs in diffusion times: ``starts`` (P,), ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K)."""
 
     starts: np.ndarray
     poly: np.ndarray
@@ -40,14 +39,16 @@ class Timeline:
         return np.diff(self.starts)
 
     def window(self) -> float:
-        """The longest window in which no more than a handful of breaks are young."""
-        if len(self.starts) < 2 * _CROWD:
-            return WINDOWS[0]
+        """Age up to which breaks are answered one by one: what costs least, few modes or few young breaks."""
+        pieces = len(self.starts)
+        instants = max(pieces, 500)
+        best, cheapest = WINDOWS[0], np.inf
         for window in WINDOWS:
-            inside = np.arange(len(self.starts)) - np.searchsorted(self.starts, self.starts - window)
-            if inside.mean() <= _CROWD:
-                return window
-        return WINDOWS[-1]
+            young = (np.arange(pieces) - np.searchsorted(self.starts, self.starts - window)).mean()
+            cost = mode_count(window) * (pieces * _STATE + instants * _MODE) + instants * young * _BREAK
+            if cost < cheapest:
+                best, cheapest = window, cost
+        return best
 
 
 def timeline(inputs: Inputs, problem: Problem) -> Timeline:
@@ -109,14 +110,15 @@ def _evaluate(line, at, answer, piece, offset, exponentials, out, size):  # type
     if (base == piece).all():
         return
     levels = young_levels(line.starts, piece, offset, base, answer.window)
-    used = np.unique(levels[levels >= 0])
-    row = np.full(int(used[-1]) + 1 if len(used) else 1, -1)
+    used = np.unique(np.maximum(levels, 0))
+    row = np.full(int(used[-1]) + 1, -1)
     row[used] = np.arange(len(used))
-    tables = np.stack([answer.table(int(level)) for level in used]) if len(used) else np.zeros(
-        (0, len(NODE), 3, out.shape[1]), complex
-    )
+    orders = ALL if line.coeff.any() else CUBIC
+    tables = [answer.table(int(level), orders) for level in used]
+    series, reach = np.stack([t.series for t in tables]), np.stack([t.reach for t in tables])
+    contours = np.stack([answer.contour(int(level)) for level in used])
     smallest = np.ldexp(answer.window, -1 - used)
     add_young(
-        *drive, piece, offset, base, levels, row, tables, smallest, NODE, WEIGHT, whole, index, answer.sudden, out,
-        size,
+        *drive, piece, offset, base, levels, row, series, reach, contours, smallest, NODE, WEIGHT, whole, index,
+        answer.sudden, out, size,
     )

@@ -26,11 +26,12 @@ WALLS = 3  # outputs of wall_transfer: stress on the lower wall, on the upper wa
 def wall_transfer(shape: GapShape, s: np.ndarray) -> np.ndarray:
     """(S, 3, 3): inputs by [lower stress, upper stress, mean velocity] at complex ``s`` (S,) off the negative axis."""
     ends = np.array([0.0, 1.0])
-    q, down, up, parts = _solve(shape, s, ends)
+    down, up, parts = _solve(shape, s, ends)
     slopes = _combine(parts, down[1], up[1])
     out = np.empty((len(s), 3, 3), complex)
     out[:, :, 0] = shape.levers[0] * slopes[:, :, 0]
     out[:, :, 1] = -shape.levers[1] * slopes[:, :, 1]
+    out[:, :, :2] *= shape.grips
     if shape.metric == 3:
         spins = _combine(parts, down[2], up[2])
         out[:, :, 2] = spins[:, :, 1] - spins[:, :, 0]
@@ -44,7 +45,7 @@ def wall_transfer(shape: GapShape, s: np.ndarray) -> np.ndarray:
 
 def velocity_transfer(shape: GapShape, s: np.ndarray, y: np.ndarray) -> np.ndarray:
     """(S, 3, k): inputs by velocities at ``y`` (k,)."""
-    _, down, up, parts = _solve(shape, s, y)
+    down, up, parts = _solve(shape, s, y)
     out = _combine(parts, down[0], up[0])
     if shape.metric != 3:
         out[:, 2] += 1.0 / s[:, None]
@@ -56,7 +57,7 @@ def _combine(parts: np.ndarray, down: np.ndarray, up: np.ndarray) -> np.ndarray:
 
 
 def _solve(shape: GapShape, s: np.ndarray, y: np.ndarray):  # type: ignore[no-untyped-def]
-    """q, both solutions at ``y``, and their amounts (S, 3, 2) for each unit input."""
+    """Both solutions at ``y``, and their amounts (S, 3, 2) for each unit input."""
     q = np.sqrt(s)
     ends = np.array([0.0, 1.0])
     up_ends = growing(shape, q, ends)
@@ -78,7 +79,7 @@ def _solve(shape: GapShape, s: np.ndarray, y: np.ndarray):  # type: ignore[no-un
         parts[:, :, 1] = (right[:, :, 1] * low[0][:, None] - right[:, :, 0] * high[0][:, None]) / determinant
     up = growing(shape, q, y)
     down = tuple(np.zeros_like(f) for f in up) if shape.axis else decaying(shape, q, y)
-    return q, down, up, parts
+    return down, up, parts
 
 
 def _condition(slip: float, value: np.ndarray, outward: np.ndarray) -> np.ndarray:
