@@ -90,7 +90,8 @@ def test_an_interrupt_ends_with_130(call, monkeypatch):
         raise KeyboardInterrupt
 
     monkeypatch.setattr(transient.cli.words, "say", interrupted)
-    assert call("--version").status == 130
+    said = call("--version")
+    assert (said.status, said.out, said.err) == (130, "", "interrupted\n")
 
 
 @pytest.mark.skipif(not hasattr(signal, "SIGPIPE"), reason="this system has no such signal")

@@ -43,7 +43,10 @@ def main(arguments: list[str] | None = None) -> int:
         # A reader that has seen enough (`| head`) ends the program quietly, as with any console tool.
         signal.signal(signal.SIGPIPE, signal.SIG_DFL)
     try:
-        return app(args=arguments, prog_name="transient", standalone_mode=False) or 0
+        status = app(args=arguments, prog_name="transient", standalone_mode=False) or 0
+        if status == INTERRUPTED:  # the newer versions of typer catch the interrupt themselves
+            note("interrupted")
+        return status
     except Stop as stop:
         note(one_line(str(stop)))
         return stop.status
