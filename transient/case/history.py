@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from typing import Any
 
 import numpy as np
@@ -18,6 +17,7 @@ from transient.drive.pieces import Drive, DriveError, constant
 from transient.units import DIMENSIONS, QuantityError, convert, rate_of, typed
 
 MOST_REPEATS = 10**9
+_LARGEST = float(np.finfo(float).max)
 
 
 def read_history(reading: Reading, path: Path, value: Any, dimension: str) -> Drive:
@@ -183,7 +183,7 @@ def _numbers(section: Section, name: str) -> np.ndarray:
     if not isinstance(value, list | tuple) or not value:
         raise section.fault(name, "is no list of numbers", "a list is needed, such as [0, 0.5, 1]")
     for i, item in enumerate(value):
-        if isinstance(item, bool) or not isinstance(item, int | float | np.number) or not math.isfinite(item):
+        if isinstance(item, bool) or not isinstance(item, int | float | np.number) or not abs(item) <= _LARGEST:
             raise section.reading.source.fault(
                 (*section.path, name, i), item, "is no finite number", "plain numbers are needed, with their unit in "
                 + ("time_unit" if name == "times" else "unit"),

@@ -18,6 +18,7 @@ from transient.case.write import to_toml
 from transient.drive.pieces import Drive, DriveError, common_period, constant
 from transient.fluid import LAWS
 from transient.gap.problem import Law, Problem, Wall
+from transient.units import typed
 
 TABLES = ("title", "gap", "fluid", "wall", "pressure", "start", "run")
 
@@ -30,6 +31,8 @@ class Case:
     """
 
     def __init__(self, tree: Mapping[str, Any], source: Source | None = None):
+        if not isinstance(tree, Mapping):
+            raise CaseError(f"{typed(tree)} is no case; a dict with the keys of a case file is needed")
         reading = Reading(dict(tree), source or Source())
         self.source = reading.source
         self.tree = reading.tree

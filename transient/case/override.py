@@ -24,7 +24,7 @@ def parse_value(text: str) -> Any:
     """A value as TOML reads it, else the text itself."""
     try:
         tree = tomllib.loads(f"value = {text}")
-    except (tomllib.TOMLDecodeError, RecursionError):
+    except (ValueError, RecursionError):
         return text
     # A line break in the text could smuggle further keys in.
     return tree["value"] if set(tree) == {"value"} else text

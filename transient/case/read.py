@@ -72,6 +72,8 @@ def _parse(file: str, text: str) -> dict[str, Any]:
         tree = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise CaseError(_toml_fault(file, text, str(error))) from None
+    except ValueError:  # the interpreter's limit on the length of whole numbers
+        raise CaseError(f"{file}: holds a number that is too long") from None
     if not tree:
         raise CaseError(f'{file}: is empty; "transient template plates" prints a case file to start from')
     return tree

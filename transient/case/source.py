@@ -17,7 +17,8 @@ class CaseError(ValueError):
     """A case that is refused; the message is one line for the user."""
 
     def __init__(self, message: str, key: str = ""):
-        super().__init__(message)
+        # Names and values come from the file: line breaks and control signs in them must not reach a terminal.
+        super().__init__("".join(sign if sign.isprintable() else " " for sign in message))
         self.key = key
 
 

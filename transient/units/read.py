@@ -17,6 +17,7 @@ _NUMBER = re.compile(r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,3}(?!\d))?")
 _COMMA = re.compile(r"[+-]?\d+,\d+")
 _NOT_FINITE = re.compile(r"[+-]?(?:nan|inf|infinity)\b", re.IGNORECASE)
 _LONGEST = 120
+_LARGEST = 1.7976931348623157e308
 # ITS-90 zero of the Celsius scale, and 0 degF, in kelvin: exact by definition.
 _OFFSET = {"K": Fraction(0), "degC": Fraction("273.15"), "degF": Fraction("459.67") * 5 / 9}
 _SPELLINGS = str.maketrans({"µ": "u", "μ": "u", "·": "*", "⋅": "*", "×": "*", "²": "^2", "³": "^3", "−": "-", "º": "°"})
@@ -38,8 +39,8 @@ def typed(value: Any) -> str:
         return "a table"
     if isinstance(value, list | tuple):
         return "a list" if value else "an empty list"
-    if isinstance(value, int | float | np.number):
-        return repr(float(value)) if isinstance(value, np.number) else repr(value)
+    if isinstance(value, int | float):
+        return repr(value) if isinstance(value, float) or abs(value) < 10**30 else "a number without end"
     text = " ".join(str(value).split())
     return f'"{text}"' if len(text) <= 60 else f'"{text[:57]}..."'
 
@@ -111,16 +112,16 @@ def _split(value: Any, dimension: Dimension) -> tuple[str, str]:
     def refuse(fault: str, number: str | None = None) -> QuantityError:
         return QuantityError(given, fault, need, _example(dimension, number))
 
-    if isinstance(value, bool | dict | list | tuple) or value is None:
+    if isinstance(value, bool) or not isinstance(value, str | int | float):
         raise refuse("is no quantity")
-    if isinstance(value, int | float | np.number):
-        if not math.isfinite(value):
+    if isinstance(value, int | float):
+        if not abs(value) <= _LARGEST:
             raise refuse("is not a finite number")
-        text = repr(value) if isinstance(value, int | float) else repr(float(value))
+        text = repr(value)
         if dimension.name == "fraction":
             return text, ""
         raise refuse("has no unit", text)
-    text = str(value).strip().translate(_SPELLINGS)
+    text = value.strip().translate(_SPELLINGS)
     if not text:
         raise refuse("is empty")
     if _NOT_FINITE.match(text):
@@ -167,10 +168,11 @@ def quantity(value: Any, dimension: str) -> float:
     ``dimension`` is a name in ``DIMENSIONS``.  A fraction may be "1 %" or a bare number; everything else needs a unit.
     Temperatures are absolute (degC and degF are offset); temperature differences are not.
     """
-    if isinstance(value, str | int | float) and not isinstance(value, bool):
-        return _quantity(value, dimension)
-    _split(value, DIMENSIONS[dimension])
-    return _quantity(float(value), dimension)
+    if isinstance(value, np.number):
+        value = float(value)
+    if isinstance(value, bool) or not isinstance(value, str | int | float):
+        _split(value, DIMENSIONS[dimension])
+    return _quantity(value, dimension)
 
 
 def convert(values: np.ndarray, unit: Any, dimension: str) -> np.ndarray:
