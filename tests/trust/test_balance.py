@@ -34,6 +34,7 @@ def test_exact_histories_close(name):
     assert balance.momentum_balance(case, history).residual < 3e-6
     assert balance.energy_balance(case, history).residual < 1e-5
     assert balance.stress_difference(case, history).residual < 1e-5
+    assert balance.flow_difference(case, history).residual < 3e-6
     assert all(check(case, history).status == "pass" for check in balance.BALANCES)
 
 
@@ -56,6 +57,12 @@ def test_a_wrong_profile_is_caught(name):
     assert balance.momentum_check(case, wrong).status == "fail"
     assert balance.energy_check(case, wrong).status == "fail"
     assert balance.stress_check(case, wrong).status == "fail"
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_a_wrong_mean_velocity_is_caught(name):
+    case, history = made(name)
+    assert balance.flow_check(case, replace(history, mean=1.002 * history.mean)).status == "fail"
 
 
 def test_a_sign_error_of_one_wall_is_caught():
@@ -87,6 +94,30 @@ def test_few_profiles_widen_the_limit_of_the_energy_check_and_say_so():
     assert balance.momentum_balance(case, sparse).residual < 3e-6
 
 
+def test_few_nodes_widen_the_limit_of_the_stress_check_and_say_so():
+    # cos(10 y) on eleven even nodes: a difference over seven of them cannot be exact, and must know it.
+    y = np.linspace(0.0, 1.0, 11)
+    case = closed.problem(outer=1.0, accuracy=1e-3)
+    time, piece, offset = closed.rows([0.0], 1e6, 1e3)
+    profile = np.tile(np.cos(10 * y), (len(time), 1))
+    stress = np.tile([0.0, closed.VISCOSITY * 10 * np.sin(10.0)], (len(time), 1))
+    nothing = np.zeros_like(time)
+    history = closed.made(case, time, piece, offset, stress, 0 * stress, profile, 0 * profile, y, nothing)
+    check = balance.stress_check(case, history)
+    assert check.value > 1e-3
+    assert check.status == "pass"
+    assert "allows to judge" in check.note
+
+
+def test_a_run_too_short_to_judge_says_so():
+    case, history = closed.couette_ramp(n=31)
+    first = replace(history, profile_row=history.profile_row[:1], profile=history.profile[:1],
+                    profile_rate=history.profile_rate[:1], travel=history.travel[:1])  # fmt: skip
+    for check in balance.BALANCES:
+        assert "too short" in check(case, first).note
+        assert check(case, first).as_dict()["limit"] is None
+
+
 def test_slip_takes_its_share_of_the_work():
     # Steady Couette flow with slip (Navier): stress mu U/(h + b), part b/(h + b) of the work is lost at the wall.
     h, b, speed = 1e-3, 2e-4, 0.3
@@ -111,7 +142,7 @@ def test_nothing_moves():
     nothing, position = np.zeros((len(time), 2)), 1e-3 * closed.graded(21, 1e-2)
     still = np.zeros((len(time), 21))
     history = closed.made(case, time, piece, offset, nothing, nothing, still, still, position, nothing[:, 0])
-    assert [check(case, history).value for check in balance.BALANCES] == [0.0, 0.0, 0.0]
+    assert [check(case, history).value for check in balance.BALANCES] == [0.0] * 4
 
 
 @pytest.mark.parametrize("metric", [0, 1, 3])
