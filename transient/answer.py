@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 import time
-from dataclasses import dataclass, replace
-from typing import Any
+from dataclasses import replace
 
 import numpy as np
 
-from transient.assembly import result_of
+from transient.assembly import Solved, result_of
 from transient.case.model import Case
 from transient.gap.problem import Problem
 from transient.march.facts import run_of
@@ -17,9 +16,9 @@ from transient.march.march import SolveError
 from transient.march.regime import Outlook, outlook
 from transient.result.headline import headlines
 from transient.result.result import Result
-from transient.result.run import Errors, Run
+from transient.result.run import Errors
 from transient.series.gapshape import SeriesError
-from transient.trust.demand import Demand, demands, unmet
+from transient.trust.demand import demands, unmet
 from transient.trust.exact import compare
 from transient.trust.refine import estimate
 
@@ -28,17 +27,6 @@ MOST_ATTEMPTS = 6
 AIM = 0.5
 FINEST = 4000.0  # refinement over the first guess beyond which no attempt is made
 MOST_WORK = 4e9  # cells x steps of the finest level of an attempt
-
-
-@dataclass(frozen=True, eq=False)
-class Solved:
-    """What an attempt came to."""
-
-    ahead: Outlook
-    ladder: Ladder
-    run: Run
-    parts: dict[str, Any]
-    wanted: list[Demand]
 
 
 def run(case: Case, judge: str = "series") -> Result:

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from transient.case.model import Case
 from transient.gap.problem import Problem
+from transient.march.levels import Ladder
+from transient.march.regime import Outlook
 from transient.march.rows import Rows, between, denser, profile_times, stored
 from transient.result.headline.motion import reach
 from transient.result.result import Result, Variable
@@ -18,8 +21,16 @@ from transient.trust.demand import Demand, unmet
 from transient.trust.quasi_steady import compare, quasi_steady_stress
 from transient.trust.validity import validity_checks
 
-if TYPE_CHECKING:
-    from transient.answer import Solved
+
+@dataclass(frozen=True, eq=False)
+class Solved:
+    """What an attempt came to."""
+
+    ahead: Outlook
+    ladder: Ladder
+    run: Run
+    parts: dict[str, Any]
+    wanted: list[Demand]
 
 
 def result_of(case: Case, problem: Problem, solved: Solved, seconds: float) -> Result:

@@ -131,7 +131,7 @@ def _mean_weights(
     out[:-1] += lower
     out[1:] += upper
     out += _curvature_weights(curve, conductance, volume)
-    return out / measure.sum()
+    return out / (step.sum() if metric == 3 else measure.sum())
 
 
 def _curvature_weights(curve: np.ndarray, conductance: np.ndarray, volume: np.ndarray) -> np.ndarray:
