@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from scipy.integrate import quad
 
-from transient.trust import balance
+from transient.trust import balance, nodes
 
 CASES = {
     "plates, ramp": closed.couette_ramp,
@@ -152,7 +152,7 @@ def test_forms_against_adaptive_quadrature(metric):
     for n in (21, 41):
         r = 1.0 + closed.graded(n, 2e-2)
         w = np.exp(3 * (r - 2))[None]
-        forms = balance.forms(r, metric)
+        forms = nodes.forms(r, metric)
         exact = [
             quad(lambda x: x**metric * np.exp(3 * (x - 2)), 1, 2)[0],
             quad(lambda x: x**metric * np.exp(6 * (x - 2)), 1, 2)[0],
@@ -160,8 +160,8 @@ def test_forms_against_adaptive_quadrature(metric):
         ]
         found = [
             float((w @ forms.weight)[0]),
-            float(balance.quadratic(forms.mass, w, w)[0]),
-            float(balance.quadratic(forms.stiffness, w, w)[0]),
+            float(nodes.quadratic(forms.mass, w, w)[0]),
+            float(nodes.quadratic(forms.stiffness, w, w)[0]),
         ]
         errors.append(np.abs(np.array(found) - exact))
     assert (errors[1] < 2e-5).all()
@@ -172,7 +172,7 @@ def test_forms_against_adaptive_quadrature(metric):
 @pytest.mark.parametrize("end", [0, 1])
 def test_wall_flux_of_a_known_profile(metric, end):
     r = 1.0 + closed.graded(81, 2e-3)
-    found = balance.wall_flux(r, np.cos(3 * r)[None], metric, end)[0]
+    found = nodes.wall_flux(r, np.cos(3 * r)[None], metric, end)[0]
     at = r[0] if end == 0 else r[-1]
     assert found == pytest.approx(-3 * np.sin(3 * at) * at**metric, rel=2e-6)
 
@@ -180,5 +180,5 @@ def test_wall_flux_of_a_known_profile(metric, end):
 def test_wall_flux_is_exact_for_steady_flow_between_cylinders():
     # w = r^-2 is steady between rotating cylinders: r^3 w' = -2 on any nodes.
     r = np.array([1.0, 1.3, 1.5, 1.9, 2.4, 3.0])
-    assert balance.wall_flux(r, r[None] ** -2.0, 3, 0)[0] == pytest.approx(-2.0, rel=1e-12)
-    assert balance.wall_flux(r, np.log(r)[None], 1, 1)[0] == pytest.approx(1.0, rel=1e-12)
+    assert nodes.wall_flux(r, r[None] ** -2.0, 3, 0)[0] == pytest.approx(-2.0, rel=1e-12)
+    assert nodes.wall_flux(r, np.log(r)[None], 1, 1)[0] == pytest.approx(1.0, rel=1e-12)
