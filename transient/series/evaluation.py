@@ -58,7 +58,7 @@ def young_levels(starts, piece, offset, base, window):  # type: ignore[no-untype
 
 @compiled
 def fill_old(
-    starts, lengths, poly, coeff, exponent, left, ahead, after, piece, offset, base, rate, share, weight, slow, rest,
+    starts, lengths, poly, coeff, exponent, left, ahead, after, reach_ahead, reach_after, piece, offset, base, rate, share, weight, slow, rest,
     rest_index, out, size,
 ):  # type: ignore[no-untyped-def]
     """Fill ``out`` and ``size`` (n, Q) with the answer to the base of each instant and the size of its terms."""
@@ -83,7 +83,7 @@ def fill_old(
         for n in range(count):
             loss = decay_loss(rate[n] * age)
             amplitude = (ahead[k, n] if held else after[k, n]) * (1.0 - loss)
-            reach = abs(amplitude)
+            reach = (reach_ahead[k, n] if held else reach_after[k, n]) * (1.0 - loss)
             for c in range(active):
                 i = which[c]
                 push = share[n, i] * forced(rate[n], loss, poly[k, i], coeff[k, i], exponent[k, i], age, scratch)

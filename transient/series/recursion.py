@@ -95,35 +95,43 @@ def input_value(poly, coeff, exponent, x, order):  # type: ignore[no-untyped-def
 
 
 @compiled
-def fill_states(lengths, poly, coeff, exponent, before, rate, share, initial, left, ahead, after):  # type: ignore[no-untyped-def]
+def fill_states(
+    lengths, poly, coeff, exponent, before, rate, share, initial, worst, left, ahead, after, reach_ahead, reach_after
+):  # type: ignore[no-untyped-def]
     """Fill ``left`` (P, 3) inputs just before each break, ``ahead`` and ``after`` (P, M) amplitudes across it.
 
+    ``reach_...`` are the same with every term's magnitude: what their round-off is measured by.
     ``lengths`` (P - 1,); inputs ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K); ``before`` (3,);
-    ``rate`` (M,), ``share`` (M, 3), ``initial`` (M,) amplitudes just before the first break.
+    ``rate`` (M,), ``share`` (M, 3), ``initial``, ``worst`` (M,) amplitudes just before the first break and their reach.
     """
     pieces, count = len(poly), len(rate)
     scratch, losses = np.zeros(3), np.zeros(count)
     for i in range(3):
         left[0, i] = before[i]
     for n in range(count):
-        ahead[0, n] = initial[n]
+        ahead[0, n], reach_ahead[0, n] = initial[n], worst[n]
     for p in range(pieces):
         for n in range(count):
-            after[p, n] = ahead[p, n]
+            after[p, n], reach_after[p, n] = ahead[p, n], reach_ahead[p, n]
         for i in range(3):
             jump = input_value(poly[p, i], coeff[p, i], exponent[p, i], 0.0, 0) - left[p, i]
             if jump != 0.0:
                 for n in range(count):
                     after[p, n] -= share[n, i] * jump
+                    reach_after[p, n] += abs(share[n, i] * jump)
         if p + 1 == pieces:
             break
         x = lengths[p]
         for n in range(count):
             losses[n] = decay_loss(rate[n] * x)
             ahead[p + 1, n] = after[p, n] * (1.0 - losses[n])
+            reach_ahead[p + 1, n] = reach_after[p, n] * (1.0 - losses[n])
         for i in range(3):
             left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
             if moving(poly[p, i], coeff[p, i]):
                 for n in range(count):
-                    push = forced(rate[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch)
-                    ahead[p + 1, n] -= share[n, i] * push
+                    push = share[n, i] * forced(
+                        rate[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch
+                    )
+                    ahead[p + 1, n] -= push
+                    reach_ahead[p + 1, n] += abs(push)

@@ -95,12 +95,5 @@ def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution:
     shape = shape_of(problem)
     inputs = problem.inputs(until)
     line = timeline(inputs, problem)
-    return assemble(problem, shape, line, inputs.starts)
-
-
-def assemble(problem, shape, line, starts, initial=None, lead=0):  # type: ignore[no-untyped-def]
-    """A Solution from dimensionless pieces; ``initial`` (a function of Modes) gives the amplitudes before them."""
     window = line.window()
-    kept = modes(shape, mode_count(window))
-    start = None if initial is None else initial(kept)
-    return Solution(problem, shape, line, states(line, kept, start), window, starts, lead)
+    return Solution(problem, shape, line, states(line, modes(shape, mode_count(window))), window, inputs.starts)

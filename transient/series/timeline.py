@@ -65,21 +65,31 @@ def timeline(inputs: Inputs, problem: Problem) -> Timeline:
 
 @dataclass(frozen=True, eq=False)
 class States:
-    """Inputs just before each break ``left`` (P, 3); amplitudes ``ahead`` and ``after`` (P, M) across it."""
+    """Inputs just before each break ``left`` (P, 3); amplitudes ``ahead`` and ``after`` (P, M) across it.
+
+    ``reach_ahead``, ``reach_after``: the magnitudes of all terms these are the sums of.
+    """
 
     left: np.ndarray
     ahead: np.ndarray
     after: np.ndarray
+    reach_ahead: np.ndarray
+    reach_after: np.ndarray
 
 
-def states(line: Timeline, kept: Modes, initial: np.ndarray | None = None) -> States:
-    """Every mode's amplitude at every break, from ``initial`` (M,) (default: the steady flow of ``before``)."""
+def states(
+    line: Timeline, kept: Modes, initial: np.ndarray | None = None, worst: np.ndarray | None = None
+) -> States:
+    """Every mode's amplitude at every break, from ``initial`` (M,) (default: the steady flow of ``before``).
+
+    ``worst`` (M,): the magnitudes that ``initial`` is the sum of.
+    """
     pieces, count = len(line.starts), len(kept.rate)
-    out = States(np.empty((pieces, 3)), np.empty((pieces, count)), np.empty((pieces, count)))
+    out = States(np.empty((pieces, 3)), *(np.empty((pieces, count)) for _ in range(4)))
     start = np.zeros(count) if initial is None else initial
     fill_states(
         line.lengths, line.poly, line.coeff, line.exponent, line.before, kept.rate, kept.share, start,
-        out.left, out.ahead, out.after,
+        np.abs(start) if worst is None else worst, out.left, out.ahead, out.after, out.reach_ahead, out.reach_after,
     )
     return out
 
@@ -104,8 +114,8 @@ def _evaluate(line, at, answer, piece, offset, exponentials, out, size):  # type
     base = base_piece(line.starts, piece, offset, answer.window)
     kept = answer.modes
     fill_old(
-        *drive, at.ahead, at.after, piece, offset, base, kept.rate, kept.share, answer.weight, answer.slow, rest,
-        index, out, size,
+        *drive, at.ahead, at.after, at.reach_ahead, at.reach_after, piece, offset, base, kept.rate, kept.share,
+        answer.weight, answer.slow, rest, index, out, size,
     )
     if (base == piece).all():
         return
