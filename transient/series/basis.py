@@ -48,6 +48,13 @@ def reduced_hankel(order: float, z: np.ndarray) -> np.ndarray:
     return out
 
 
+def hankel_slopes(order: float, z: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The reduced Hankel function and its first two derivatives by z, for z > LARGE."""
+    terms = _hankel_coefficients(order) * 1j ** np.arange(_TERMS) * z[:, None] ** -np.arange(float(_TERMS))
+    k = np.arange(_TERMS)
+    return terms.sum(axis=1), -(terms * k).sum(axis=1) / z, (terms * k * (k + 1)).sum(axis=1) / z**2
+
+
 def scaled_k(order: float, z: np.ndarray, expand: bool | np.ndarray) -> np.ndarray:
     """K_nu(z) exp(z) for Re z > 0; where ``expand`` by Hankel's expansion (A&S 9.7.2)."""
     return _scaled(order, z, expand, _general_k, 1.0, np.sqrt(np.pi / 2))

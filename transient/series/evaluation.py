@@ -58,8 +58,8 @@ def young_levels(starts, piece, offset, base, window):  # type: ignore[no-untype
 
 @compiled
 def fill_old(
-    starts, lengths, poly, coeff, exponent, left, ahead, after, reach_ahead, reach_after, piece, offset, base, rate, share, weight, slow, rest,
-    rest_index, out, size,
+    starts, lengths, poly, coeff, exponent, left, ahead, after, reach_ahead, reach_after, piece, offset, base, rate,
+    share, weight, slow, rest, rest_index, out, size,
 ):  # type: ignore[no-untyped-def]
     """Fill ``out`` and ``size`` (n, Q) with the answer to the base of each instant and the size of its terms."""
     count, outputs = weight.shape

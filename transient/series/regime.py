@@ -92,6 +92,7 @@ def deviation(problem: Problem, until: float) -> Solution:
 
 
 def _need(problem: Problem) -> Regime:
+    steady_flow(shape_of(problem))
     end = regime(problem)
     if end is None:
         raise SeriesError("the drive ends in neither a steady nor a periodic state")

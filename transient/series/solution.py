@@ -11,10 +11,11 @@ from transient.series.answers import Answer, mode_count, velocity_answer, wall_a
 from transient.series.gapshape import GapShape, SeriesError, shape_of
 from transient.series.modes import modes
 from transient.series.timeline import States, Timeline, evaluate, states, timeline
+from transient.series.uniform import UniformFlow
 
 # Share of the sum of magnitudes of an answer's terms that its error stays below: contour, cut of the modes, round-off.
-TRUST = 2e-13
-ROUNDING = 1e-15
+TRUST = 1e-13
+ROUNDING = 2e-16
 
 
 @dataclass(frozen=True, eq=False)
@@ -85,7 +86,7 @@ class Solution:
         return value, trust * (size + 1e-10 * size.max(axis=1, keepdims=True))
 
 
-def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution:
+def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution | UniformFlow:
     """The exact flow on [0, until).  Raises SeriesError where the case has no series solution.
 
     ``tolerance`` is what the caller needs, relative to the largest terms; below 1e-12 it is refused.
@@ -94,6 +95,8 @@ def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution:
         raise SeriesError(f"the series is summed in double precision; a tolerance of {tolerance:g} is out of its reach")
     shape = shape_of(problem)
     inputs = problem.inputs(until)
+    if shape.unrestrained:
+        return UniformFlow.of(problem, inputs)
     line = timeline(inputs, problem)
     window = line.window()
     return Solution(problem, shape, line, states(line, modes(shape, mode_count(window))), window, inputs.starts)

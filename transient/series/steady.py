@@ -98,9 +98,12 @@ def _means(shape: GapShape) -> np.ndarray:
     x = 1.0 / a
     rest = float(log_rest(x))
     if shape.metric == 1:
-        narrow = a * (0.5 - x * x / 4 + shape.b**2 * rest / 2)
-        moment = narrow if a > 4 else a * (shape.b**2 / 2 * np.log1p(x) - (2 * a + 1) / 4)
-        drop = -((2 * a + 1) ** 2) / 16 + a / 2 * moment
+        if a > 4:
+            moment = a * (0.5 - x * x / 4 + shape.b**2 * rest / 2)
+            drop = -a / 4 - 3 / 16 + (a * shape.b) ** 2 * rest / 4
+        else:
+            moment = a * (shape.b**2 / 2 * np.log1p(x) - (2 * a + 1) / 4)
+            drop = -((2 * a + 1) ** 2) / 16 + a / 2 * moment
         return np.array([1.0, moment / shape.volume, drop / shape.volume])
     spin = 1.0 - a * a * rest if a > 4 else a + 0.5 - a * a * np.log1p(x)
     return np.array([shape.volume, a / 2 * spin, 0.0])
