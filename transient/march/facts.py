@@ -5,10 +5,13 @@ from __future__ import annotations
 import numpy as np
 
 from transient.gap.problem import PRESSURE, Inputs, Problem
-from transient.march.levels import Histories, Ladder
+from transient.gap.system import assemble, steady
+from transient.march.levels import Ladder
 from transient.march.regime import Outlook
-from transient.result.history import History
+from transient.result.history import History, largest
 from transient.result.run import Errors, Regime, Run, WallFacts
+
+DENSE = 8  # times the nodes of the finest level, where the largest steady velocity is looked for
 
 
 def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> Run:
@@ -17,7 +20,7 @@ def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> 
     unbounded, when = infinite_stress(problem, ladder.inputs, ahead.until)
     return Run(
         best.flow,
-        _regime(ahead, best),
+        _regime(problem, ahead, ladder),
         errors,
         tuple(
             WallFacts(wall.name, end, wall.area, wall.radius, wall.kind == "shear_free")
@@ -35,11 +38,11 @@ def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> 
     )
 
 
-def _regime(ahead: Outlook, best: Histories) -> Regime:
+def _regime(problem: Problem, ahead: Outlook, ladder: Ladder) -> Regime:
+    best = ladder.best
     if ahead.kind == "steady":
-        assert best.steady_velocity is not None
-        largest = float(np.abs(best.steady_velocity).max())
-        return Regime("steady", None, best.deviation, largest, abs(best.steady_mean), np.abs(best.steady_stress))
+        size = _largest_steady(problem, ahead, ladder)
+        return Regime("steady", None, best.deviation, size, abs(best.steady_mean), np.abs(best.steady_stress))
     if ahead.kind == "periodic":
         assert best.orbit is not None
         orbit = best.orbit
@@ -55,6 +58,16 @@ def _regime(ahead: Outlook, best: Histories) -> Regime:
     return Regime("none", None, None, 0.0, 0.0, np.zeros(2))
 
 
+def _largest_steady(problem: Problem, ahead: Outlook, ladder: Ladder) -> float:
+    """Largest |w| over the gap of the steady end: a steady state is exact on any grid, so one denser than the
+    march's tells what lies between its nodes."""
+    assert ahead.drives is not None
+    values = np.array([float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ahead.drives])
+    system = assemble(problem, DENSE * ladder.cells, ladder.layers)
+    profile = system.nodes(steady(system, values[:2], values[PRESSURE]), values[:2])[None, :]
+    return float(largest(system.grid.radius, profile, np.zeros_like(profile))[0][0])
+
+
 def infinite_stress(problem: Problem, inputs: Inputs, until: float) -> tuple[np.ndarray, np.ndarray]:
     """(coefficient K of |stress| ~ K / sqrt(t - t_jump), its time) per wall (2,): that of the largest jump, 0 without.
 
@@ -68,9 +81,9 @@ def infinite_stress(problem: Problem, inputs: Inputs, until: float) -> tuple[np.
         if wall.kind != "moving" or wall.slip_length > 0.0:
             continue
         jump = np.abs(inputs.row(end).jumps(0)) * lever[end]
-        largest = int(jump.argmax())
-        coefficient[end] = factor * jump[largest]
-        when[end] = inputs.starts[largest] if jump[largest] > 0.0 else 0.0
+        worst = int(jump.argmax())
+        coefficient[end] = factor * jump[worst]
+        when[end] = inputs.starts[worst] if jump[worst] > 0.0 else 0.0
     return coefficient, when
 
 

@@ -122,10 +122,8 @@ class Curve:
         i = int(above[-1])
         if self.step[i] <= 0.0 or not np.isfinite(self.value[i]):
             return float(self.time[i + 1])
-        low = 0.0
-        if not magnitude[i] > level:
-            inside = (interval == i) & (np.abs(value) > level)
-            low = float(((time[inside] - self.time[i]) / self.step[i]).max())
+        inside = (interval == i) & (np.abs(value) > level)
+        low = float(((time[inside] - self.time[i]) / self.step[i]).max(initial=0.0))
         side = 1.0 if float(self.at(i, low)) >= 0.0 else -1.0
         share = _crossing(self._interval(i, -side), -level, low, 1.0)
         return float(self.time[i] + share * self.step[i])

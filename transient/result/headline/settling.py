@@ -84,7 +84,7 @@ def _judges(run: Run) -> dict[str, Any]:
     history, regime, errors = run.history, run.regime, run.errors
     away = regime.deviation
     assert away is not None
-    run_largest = float(np.abs(history.profile).max(initial=0.0))
+    run_largest = history.largest_curve().magnitude()[0]
     velocity = regime.velocity if regime.velocity > ZERO * run_largest else run_largest
     mean_peak = abs(history.mean_curve().magnitude()[0])
     mean = regime.mean if regime.mean > ZERO * mean_peak else mean_peak
