@@ -58,8 +58,8 @@ def young_levels(starts, piece, offset, base, window):  # type: ignore[no-untype
 
 @compiled
 def fill_old(
-    starts, lengths, poly, coeff, exponent, left, ahead, after, reach_ahead, reach_after, piece, offset, base, rate,
-    share, weight, slow, rest, rest_index, out, size,
+    starts, lengths, poly, coeff, exponent, left, jump, ahead, reach, piece, offset, base, rate, share,
+    weight, slow, rest, rest_index, out, size,
 ):  # type: ignore[no-untyped-def]
     """Fill ``out`` and ``size`` (n, Q) with the answer to the base of each instant and the size of its terms."""
     count, outputs = weight.shape
@@ -82,17 +82,22 @@ def fill_old(
                 active += 1
         for n in range(count):
             loss = decay_loss(rate[n] * age)
-            amplitude = (ahead[k, n] if held else after[k, n]) * (1.0 - loss)
-            reach = (reach_ahead[k, n] if held else reach_after[k, n]) * (1.0 - loss)
+            amplitude, most = ahead[k, n], reach[k, n] * 1.0
+            if not held:
+                for i in range(3):
+                    amplitude -= share[n, i] * jump[k, i]
+                    most += abs(share[n, i] * jump[k, i])
+            amplitude *= 1.0 - loss
+            most *= 1.0 - loss
             for c in range(active):
                 i = which[c]
                 push = share[n, i] * forced(rate[n], loss, poly[k, i], coeff[k, i], exponent[k, i], age, scratch)
                 amplitude -= push
-                reach += abs(push)
-            if reach != 0.0:
+                most += abs(push)
+            if most != 0.0:
                 for q in range(outputs):
                     out[e, q] += weight[n, q] * amplitude
-                    size[e, q] += abs(weight[n, q]) * reach
+                    size[e, q] += abs(weight[n, q]) * most
         for i in range(3):
             if held:
                 for q in range(outputs):

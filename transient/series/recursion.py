@@ -96,36 +96,43 @@ def input_value(poly, coeff, exponent, x, order):  # type: ignore[no-untyped-def
 
 @compiled
 def fill_states(
-    lengths, poly, coeff, exponent, before, rate, share, initial, worst, left, ahead, after, reach_ahead, reach_after
+    lengths, poly, coeff, exponent, before, rate, share, initial, worst, left, jump, ahead, reach
 ):  # type: ignore[no-untyped-def]
-    """Fill ``left`` (P, 3) inputs just before each break, ``ahead`` and ``after`` (P, M) amplitudes across it.
+    """Fill inputs just before each break ``left`` (P, 3), their ``jump`` (P, 3), amplitudes before it ``ahead`` (P, M).
 
-    ``reach_...`` are the same with every term's magnitude: what their round-off is measured by.
+    ``reach`` (P, M): ``ahead`` with every term's magnitude, what its round-off is measured by.
     ``lengths`` (P - 1,); inputs ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K); ``before`` (3,);
     ``rate`` (M,), ``share`` (M, 3), ``initial``, ``worst`` (M,) amplitudes just before the first break and their reach.
     """
     pieces, count = len(poly), len(rate)
     scratch, losses = np.zeros(3), np.zeros(count)
+    now, most = np.zeros(count), np.zeros(count)
+    known, elapsed = -1.0, 0.0
     for i in range(3):
         left[0, i] = before[i]
     for n in range(count):
-        ahead[0, n], reach_ahead[0, n] = initial[n], worst[n]
+        ahead[0, n], reach[0, n] = initial[n], worst[n]
+        now[n], most[n] = initial[n], worst[n]
     for p in range(pieces):
-        for n in range(count):
-            after[p, n], reach_after[p, n] = ahead[p, n], reach_ahead[p, n]
         for i in range(3):
-            jump = input_value(poly[p, i], coeff[p, i], exponent[p, i], 0.0, 0) - left[p, i]
-            if jump != 0.0:
+            jump[p, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], 0.0, 0) - left[p, i]
+            if jump[p, i] != 0.0:
                 for n in range(count):
-                    after[p, n] -= share[n, i] * jump
-                    reach_after[p, n] += abs(share[n, i] * jump)
+                    step = share[n, i] * jump[p, i]
+                    now[n] -= step
+                    most[n] += abs(step)
         if p + 1 == pieces:
             break
         x = lengths[p]
+        elapsed += x
+        # Equal steps of a table differ by the round-off of their times: one set of exponentials serves them.
+        if abs(x - known) > 4e-16 * elapsed:
+            known = x
+            for n in range(count):
+                losses[n] = decay_loss(rate[n] * x)
         for n in range(count):
-            losses[n] = decay_loss(rate[n] * x)
-            ahead[p + 1, n] = after[p, n] * (1.0 - losses[n])
-            reach_ahead[p + 1, n] = reach_after[p, n] * (1.0 - losses[n])
+            now[n] *= 1.0 - losses[n]
+            most[n] *= 1.0 - losses[n]
         for i in range(3):
             left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
             if moving(poly[p, i], coeff[p, i]):
@@ -133,5 +140,7 @@ def fill_states(
                     push = share[n, i] * forced(
                         rate[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch
                     )
-                    ahead[p + 1, n] -= push
-                    reach_ahead[p + 1, n] += abs(push)
+                    now[n] -= push
+                    most[n] += abs(push)
+        for n in range(count):
+            ahead[p + 1, n], reach[p + 1, n] = now[n], most[n]

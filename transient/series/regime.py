@@ -201,4 +201,4 @@ def _periodic_amplitudes(problem: Problem, cycle: Inputs, period: float, last: n
     once = _concatenate(Inputs(cycle.starts, cycle.poly, cycle.coeff, cycle.rate, last), again)
     gained = states(timeline(once, problem), kept)
     forgotten = -np.expm1(-kept.rate * period / problem.diffusion_time)
-    return gained.ahead[-1] / forgotten, gained.reach_ahead[-1] / forgotten
+    return gained.ahead[-1] / forgotten, gained.reach[-1] / forgotten

@@ -10,15 +10,18 @@ from transient.gap.problem import Inputs, Problem
 from transient.series.answers import Answer, mode_count
 from transient.series.early import ALL, CUBIC
 from transient.series.evaluation import base_piece, fill_old, young_levels
+from transient.series.gapshape import SeriesError
 from transient.series.modes import Modes
 from transient.series.recursion import fill_states
 from transient.series.transfer import NODE, WEIGHT
 from transient.series.young import add_young
 
 # Ages beyond which the modes alone answer a break: few modes where pieces are long, many where they are dense.
-WINDOWS = (5e-3, 1e-3, 2e-4, 4e-5, 8e-6, 1.6e-6)
+WINDOWS = (5e-3, 1e-3, 2e-4, 4e-5, 8e-6)
 # Measured costs in ns of a mode across a break, a mode at an instant, a young break at an instant.
-_STATE, _MODE, _BREAK = 80.0, 50.0, 400.0
+_STATE, _MODE, _BREAK = 20.0, 40.0, 300.0
+# Amplitudes kept for one case: 12 bytes each.
+MOST_STATES = 60_000_000
 # Instants evaluated at once: what their contour rows need stays small.
 _CHUNK = 4096
 
@@ -46,7 +49,7 @@ class Timeline:
         for window in WINDOWS:
             young = (np.arange(pieces) - np.searchsorted(self.starts, self.starts - window)).mean()
             cost = mode_count(window) * (pieces * _STATE + instants * _MODE) + instants * young * _BREAK
-            if cost < cheapest:
+            if cost < cheapest and pieces * mode_count(window) <= MOST_STATES / 4:
                 best, cheapest = window, cost
         return best
 
@@ -65,16 +68,15 @@ def timeline(inputs: Inputs, problem: Problem) -> Timeline:
 
 @dataclass(frozen=True, eq=False)
 class States:
-    """Inputs just before each break ``left`` (P, 3); amplitudes ``ahead`` and ``after`` (P, M) across it.
+    """Inputs just before each break ``left`` (P, 3) and their ``jump``; amplitudes just before it ``ahead`` (P, M).
 
-    ``reach_ahead``, ``reach_after``: the magnitudes of all terms these are the sums of.
+    ``reach`` (P, M): the magnitudes of all terms that ``ahead`` is the sum of.
     """
 
     left: np.ndarray
+    jump: np.ndarray
     ahead: np.ndarray
-    after: np.ndarray
-    reach_ahead: np.ndarray
-    reach_after: np.ndarray
+    reach: np.ndarray
 
 
 def states(
@@ -82,14 +84,18 @@ def states(
 ) -> States:
     """Every mode's amplitude at every break, from ``initial`` (M,) (default: the steady flow of ``before``).
 
-    ``worst`` (M,): the magnitudes that ``initial`` is the sum of.
+    ``worst`` (M,): the magnitudes that ``initial`` is the sum of.  Raises SeriesError for more breaks than fit.
     """
     pieces, count = len(line.starts), len(kept.rate)
-    out = States(np.empty((pieces, 3)), *(np.empty((pieces, count)) for _ in range(4)))
+    if pieces * count > MOST_STATES:
+        raise SeriesError(f"the drive has {pieces} breaks, more than the series follows at once")
+    out = States(
+        np.empty((pieces, 3)), np.empty((pieces, 3)), np.empty((pieces, count)), np.empty((pieces, count), np.float32)
+    )
     start = np.zeros(count) if initial is None else initial
     fill_states(
         line.lengths, line.poly, line.coeff, line.exponent, line.before, kept.rate, kept.share, start,
-        np.abs(start) if worst is None else worst, out.left, out.ahead, out.after, out.reach_ahead, out.reach_after,
+        np.abs(start) if worst is None else worst, out.left, out.jump, out.ahead, out.reach,
     )
     return out
 
@@ -114,8 +120,8 @@ def _evaluate(line, at, answer, piece, offset, exponentials, out, size):  # type
     base = base_piece(line.starts, piece, offset, answer.window)
     kept = answer.modes
     fill_old(
-        *drive, at.ahead, at.after, at.reach_ahead, at.reach_after, piece, offset, base, kept.rate, kept.share,
-        answer.weight, answer.slow, rest, index, out, size,
+        *drive, at.jump, at.ahead, at.reach, piece, offset, base, kept.rate, kept.share, answer.weight, answer.slow,
+        rest, index, out, size,
     )
     if (base == piece).all():
         return
