@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import functools
 import os
 import tempfile
 import warnings
@@ -24,22 +23,26 @@ def _cache_folder() -> None:
         except OSError:
             continue
         return
-    os.environ["NUMBA_CACHE_DIR"] = os.path.join(tempfile.gettempdir(), f"transient-compiled-{os.getuid()}")
+    user = getattr(os, "getuid", int)()
+    os.environ["NUMBA_CACHE_DIR"] = os.path.join(tempfile.gettempdir(), f"transient-compiled-{user}")
 
 
 _cache_folder()
 
 import numba  # noqa: E402  (the cache folder must be known before)
 
+OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "reassoc"}}
+
 
 def compiled(function: Callable[..., Any]) -> Callable[..., Any]:
     """Compile for plain arrays, without the interpreter lock, cached on disk where a folder can be written."""
-    options = {"nogil": True, "error_model": "numpy", "fastmath": {"contract", "reassoc"}}
     try:
-        return numba.njit(cache=True, **options)(function)
+        return numba.njit(cache=True, **OPTIONS)(function)
     except RuntimeError:  # no place to keep the cache: compile in memory for this process
         warnings.filterwarnings("default", category=numba.NumbaWarning)
-        return numba.njit(**options)(function)
+        return numba.njit(**OPTIONS)(function)
 
 
-inlined = functools.partial(numba.njit, inline="always", error_model="numpy")
+# For functions that compiled ones call: left to the compiler back end to merge, since merging by hand (numba's own
+# inlining) makes compilation several times longer.
+part = numba.njit(**OPTIONS)

@@ -24,10 +24,41 @@ class Law:
 
 
 @dataclass(frozen=True, eq=False)
+class Body:
+    """A body that carries a wall, in N, m, kg or (rotating) N m, rad, kg m^2; all gaps act on the one body.
+
+    ``mass``; ``load`` the Drive of all outside forces, weight on an incline included; ``damping`` per speed,
+    ``stiffness`` per displacement; ``curve`` (speeds, values) of a speed-dependent drive, empty without,
+    ``held_beyond`` its ends; ``sliding`` <= ``breakaway`` dry friction; ``initial_speed`` None where not given;
+    ``grip`` what a wall stress (Pa) of every gap adds up to on the body (area x count, x radius);
+    ``displaced`` area that the moving wall pushes, m^2 (0 without).
+    """
+
+    mass: float
+    load: Drive
+    grip: float
+    damping: float = 0.0
+    stiffness: float = 0.0
+    curve: tuple[tuple[float, ...], tuple[float, ...]] = ((), ())
+    held_beyond: bool = True
+    sliding: float = 0.0
+    breakaway: float = 0.0
+    initial_speed: float | None = None
+    initial_displacement: float = 0.0
+    displaced: float = 0.0
+
+    @property
+    def linear(self) -> bool:
+        """Whether its force is linear in speed and displacement."""
+        return not self.curve[0] and self.breakaway == 0.0
+
+
+@dataclass(frozen=True, eq=False)
 class Wall:
     """One end of the gap.
 
-    ``kind``: "moving" (speed prescribed, possibly 0), "shear_free", "axis" (a pipe's centre, no wall).
+    ``kind``: "moving" (speed prescribed, possibly 0, or that of its ``body``), "shear_free", "axis" (a pipe's
+    centre, no wall).
     ``slip_length`` m.  ``area`` wetted area of one gap in m^2 or None where the sizes given do not tell.
     ``radius`` m: 0 for plates; its lever arm in a rotating gap.
     """
@@ -37,13 +68,15 @@ class Wall:
     slip_length: float = 0.0
     area: float | None = None
     radius: float = 0.0
+    body: Body | None = None
 
 
 @dataclass(frozen=True, eq=False)
 class Inputs:
     """All inputs on common pieces: ``starts`` (P,) s; ``poly`` (P, 3, 4); ``coeff``, ``rate`` (P, 3, K) complex.
 
-    Row order LOWER, UPPER, PRESSURE; ``before`` (3,).  Form and time as in ``drive.pieces.Pieces``.
+    Row order LOWER, UPPER, PRESSURE; ``before`` (3,).  The row of a wall with a body is its load; that of the
+    pressure is the mean velocity where the flow is prescribed.  Form and time as in ``drive.pieces.Pieces``.
     """
 
     starts: np.ndarray
@@ -65,7 +98,7 @@ class Problem:
 
     ``metric`` is m; ``inner``, ``outer`` (m) the ends' coordinates (plates: 0 and the height; pipe: 0 and the
     radius).  ``speeds`` the two walls' Drives in m/s (rad/s where ``rotating``), ``gradient`` that of the
-    pressure drop per length, Pa/m.  ``start`` "rest" (all still and no pressure before t = 0, whatever the
+    pressure drop per length, Pa/m; ``flow`` that of a prescribed mean velocity instead, m/s.  ``start`` "rest" (all still and no pressure before t = 0, whatever the
     drives say) or "steady" (the steady flow of the drives' values before t = 0).
     ``duration`` s or None for "auto"; ``settle_within``, ``accuracy`` fractions.
     ``section`` flow area of one gap in m^2 or None; ``count`` gaps in parallel.
@@ -89,6 +122,17 @@ class Problem:
     count: int = 1
     profiles: int = 120
     profile_times: tuple[float, ...] | None = None
+    flow: Drive | None = None
+
+    @property
+    def closed(self) -> bool:
+        """Whether a body or a prescribed flow closes the steps."""
+        return self.flow is not None or any(wall.body is not None for wall in self.walls)
+
+    @property
+    def linear(self) -> bool:
+        """Whether superposition holds, and with it an exact solution."""
+        return all(wall.body is None or wall.body.linear for wall in self.walls)
 
     @property
     def rotating(self) -> bool:
@@ -113,7 +157,11 @@ class Problem:
     @property
     def drives(self) -> tuple[Drive, Drive, Drive]:
         """Rows LOWER, UPPER, PRESSURE."""
-        return (*self.speeds, self.gradient)
+        low, high = (
+            wall.body.load if wall.body is not None else speed
+            for wall, speed in zip(self.walls, self.speeds, strict=True)
+        )
+        return (low, high, self.gradient if self.flow is None else self.flow)
 
     def inputs(self, until: float) -> Inputs:
         """The inputs over [0, until) on common pieces; with a start from rest nothing moves before t = 0."""

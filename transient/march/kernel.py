@@ -14,22 +14,50 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.compiled import compiled, inlined
+from transient.compiled import compiled, part
+from transient.march.closure import (
+    BACKWARD,
+    BREAKAWAY,
+    CURVE_FIRST,
+    CURVE_STOP,
+    FORWARD,
+    FREE,
+    GRIP,
+    KIND,
+    MASS,
+    PLACE,
+    PRESCRIBED,
+    RATE,
+    REFUSE,
+    SPEED,
+    STIFFNESS,
+    STUCK,
+    assemble_three,
+    begin,
+    close_stage,
+    curve_load,
+    impulse,
+    net_load,
+    solve_three,
+)
 
 GAMMA = 2.0 - np.sqrt(2.0)
 ALPHA = GAMMA / 2.0  # the matrix is storage - ALPHA step A in both stages
 SHARE = np.sqrt(2.0) / 4.0  # weight of the first two rates in the step
 ERROR = (SHARE - (1.0 - SHARE) / 3.0, SHARE - (3.0 * SHARE + 1.0) / 3.0, ALPHA - ALPHA / 3.0)
 
-# what a recorded row holds: the unknowns next to the walls, and the mean of the unknowns with its rate
-FIRST, LAST, MEAN, MEAN_RATE, FIELDS = 0, 1, 2, 3, 4
-RUNNING, DONE, FULL, STALLED, BROKEN = 0, 1, 2, 3, 4
+# what a recorded row holds: the unknowns next to the walls, the mean of the unknowns with its rate, the walls' motion
+# (speed, rate, place of the lower and of the upper) and the pressure drop per length
+FIRST, LAST, MEAN, MEAN_RATE, WALLS, DROP, FIELDS = 0, 1, 2, 3, 4, 10, 11
+RUNNING, DONE, FULL, STALLED, BROKEN, BEYOND = 0, 1, 2, 3, 4, 5
+LANDS, EVENT = 1, 2  # marks of recorded rows: ends a piece of the drive; a body stops or breaks away here
 
 GROW_MOST, SHRINK_MOST, AIM = 2.0, 0.2, 0.85
+EVENT_SHARE = 0.01  # of the step tolerance: how exactly a stop or a breaking away is located
 KEEP_ABOVE = 1.15  # a step that could grow by less keeps its length, and with it the factors
 
 
-@inlined
+@part
 def _input(poly, coeff, rate, piece, row, x, out):
     """Value, first and second derivative of one input at local time ``x`` into ``out`` (3,)."""
     c0, c1, c2, c3 = poly[piece, row, 0], poly[piece, row, 1], poly[piece, row, 2], poly[piece, row, 3]
@@ -45,204 +73,364 @@ def _input(poly, coeff, rate, piece, row, x, out):
     out[0], out[1], out[2] = value, slope, curve
 
 
-@compiled
-def march(
-    storage, conductance, volume, end_conductance, mean_weight,  # [n, L], [n-1, L], [n, L], [2, L], [n, L]
-    piece_start, piece_first, piece_stop, until,  # times of all pieces (P,), each lane's range (L,), end (L,)
-    poly, coeff, rate, jump,  # (P, 3, 4), (P, 3, K), (P, 3, K), jumps of the inputs at each piece's start (P, 3)
-    first_step, longest_step, calm_after,  # (P,) s: of each piece, and the offset from which steps may be longer
-    tolerance, velocity_scale, stress_scale,  # (L,); (L,); [2, L] as end flux
-    plan, plan_lands,  # ends of prescribed steps as offsets (S,), whether each ends its piece; empty: adaptive
-    record_every, profile_every,
-    velocity, rates, travel,  # [n, L] state, updated
-    cursor,  # int64 [5, L]: piece, place in the plan, rows, profiles, rows handed over before these
-    state,  # [3, L]: offset, step, steps since the piece began
-    row_piece, row_offset, rows, profile_row, profiles,  # records: (R, L), (R, L), (R, L, 4), (Q, L), (Q, L, 3, n)
-    status,
-):  # fmt: skip
-    """March every lane from its state to its end, or until its records are full (status FULL: call again).
+def _march_of(closed: bool):
+    """The march with bodies and prescribed flow (``closed``) or without: one source, and a user without bodies need
+    not wait for their part to be compiled."""
 
-    Returns the number of solves.  ``status`` (L,) holds RUNNING (start), then DONE, FULL, STALLED (the step
-    vanished) or BROKEN (a value is no longer finite).
-    """
-    n, lanes = storage.shape
-    adaptive = plan.shape[0] == 0
-    pivot = np.empty((n, lanes))
-    lower = np.empty((n, lanes))
-    base = np.empty((n, lanes))
-    middle = np.empty((n, lanes))
-    middle_rate = np.empty((n, lanes))
-    end = np.empty((n, lanes))
-    end_rate = np.empty((n, lanes))
-    error = np.empty((n, lanes))
-    step = np.empty(lanes)
-    scaled = np.empty(lanes)
-    factored = np.zeros(lanes)
-    middle_in = np.zeros((3, lanes))
-    end_in = np.zeros((3, lanes))
-    values = np.empty(3)
-    solves = 0
-    rows_most = rows.shape[0]
-    profiles_most = profiles.shape[0]
+    def march(
+        storage, conductance, volume, end_conductance, mean_weight, end_weight,
+        # [n, L], [n-1, L], [n, L], [2, L], [n, L], [2, L]
+        link, flow, curve_speed, curve_value, event_step,  # [2, L, LINKS], (L,), (V,), (V,), (L,): see ``closure``
+        piece_start, piece_first, piece_stop, until,  # times of all pieces (P,), each lane's range (L,), end (L,)
+        poly, coeff, rate, jump,  # (P, 3, 4), (P, 3, K), (P, 3, K), jumps of the inputs at each piece's start (P, 3)
+        first_step, longest_step, calm_after,  # (P,) s: of each piece, and the offset from which steps may be longer
+        tolerance, velocity_scale, stress_scale,  # (L,); (L,); [2, L] as end flux
+        plan, plan_lands,  # ends of prescribed steps as offsets (S,), whether each ends its piece; empty: adaptive
+        record_every, profile_every,
+        velocity, rates, travel, wall, gradient, mode,  # state, updated: [n, L] thrice, [3, 2, L], (L,), int64 [2, L]
+        cursor,  # int64 [5, L]: piece, place in the plan, rows, profiles, rows handed over before these
+        state,  # [3, L]: offset, step, steps since the piece began
+        row_piece, row_offset, rows, row_mark,  # records: (R, L), (R, L), (R, L, FIELDS), (R, L)
+        profile_row, profiles,  # (Q, L), (Q, L, 3, n)
+        status,
+    ):  # fmt: skip
+        """March every lane from its state to its end, or until its records are full (status FULL: call again).
 
-    while True:
-        running = 0
-        # --- the step of each lane, and its inputs there
-        for l in range(lanes):
-            if status[l] != RUNNING:
-                step[l] = 0.0
-                scaled[l] = 0.0
-                continue
-            running += 1
-            piece = cursor[0, l]
-            offset = state[0, l]
-            if adaptive:
-                stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
-                left = (stop - piece_start[piece]) - offset
-                wanted = state[1, l]
-                if offset < calm_after[piece]:
-                    wanted = min(wanted, longest_step[piece])
-                if wanted >= left:
-                    wanted = left
-                elif 2.0 * wanted > left:
-                    wanted = 0.5 * left
-                step[l] = wanted
-            else:
-                step[l] = plan[cursor[1, l]] - offset
-            scaled[l] = ALPHA * step[l]
-            for row in range(3):
-                _input(poly, coeff, rate, piece, row, offset + GAMMA * step[l], values)
-                middle_in[row, l] = values[0]
-                _input(poly, coeff, rate, piece, row, offset + step[l], values)
-                end_in[row, l] = values[0]
-        if running == 0:
-            return solves
+        Returns the number of solves.  ``status`` (L,) holds RUNNING (start), then DONE, FULL, STALLED (the step
+        vanished), BROKEN (a value is no longer finite) or BEYOND (a body's speed left its curve).
+        """
+        n, lanes = storage.shape
+        adaptive = plan.shape[0] == 0
+        pivot = np.empty((n, lanes))
+        lower = np.empty((n, lanes))
+        base = np.empty((n, lanes))
+        middle = np.empty((n, lanes))
+        middle_rate = np.empty((n, lanes))
+        end = np.empty((n, lanes))
+        end_rate = np.empty((n, lanes))
+        error = np.empty((n, lanes))
+        step = np.empty(lanes)
+        scaled = np.empty(lanes)
+        factored = np.zeros(lanes)
+        middle_in = np.zeros((3, lanes))
+        end_in = np.zeros((3, lanes))
+        end_slope = np.zeros((3, lanes))
+        values = np.empty(3)
+        # responses to a unit of either wall's speed and of the pressure, and what they do beside the walls and in the mean
+        units = np.zeros((3, n if closed else 1, lanes))
+        response = np.zeros((3, 3, lanes))  # [beside the lower wall, beside the upper, mean; cause; lane]
+        wall_base = np.zeros((2, lanes))
+        place_base = np.zeros((2, lanes))
+        wall_middle = np.zeros((3, 2, lanes))
+        wall_end = np.zeros((3, 2, lanes))
+        wall_error = np.zeros((2, lanes))
+        given_middle = np.zeros((3, lanes))
+        given_end = np.zeros((3, lanes))
+        net_before = np.zeros((2, lanes))
+        gradient_middle = np.zeros(lanes)
+        gradient_end = np.zeros(lanes)
+        matrix = np.zeros((3, 3))
+        right = np.zeros(3)
+        change = np.zeros(3)
+        guess = np.zeros(3)
+        near = np.zeros(2)
+        place = np.zeros(2)
+        load = np.zeros(2)
+        slope = np.zeros(2)
+        solves = 0
+        rows_most = rows.shape[0]
+        profiles_most = profiles.shape[0]
 
-        # --- factors, kept while no lane changes its step
-        same = True
-        for l in range(lanes):
-            same = same and scaled[l] == factored[l]
-        if not same:
+        while True:
+            running = 0
+            # --- the step of each lane, and its inputs there
             for l in range(lanes):
-                factored[l] = scaled[l]
-                diagonal = storage[0, l] + scaled[l] * end_conductance[0, l]
-                if n > 1:
-                    diagonal += scaled[l] * conductance[0, l]
+                if status[l] != RUNNING:
+                    step[l] = 0.0
+                    scaled[l] = 0.0
+                    continue
+                running += 1
+                piece = cursor[0, l]
+                offset = state[0, l]
+                if adaptive:
+                    stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
+                    left = (stop - piece_start[piece]) - offset
+                    wanted = state[1, l]
+                    if offset < calm_after[piece]:
+                        wanted = min(wanted, longest_step[piece])
+                    if wanted >= left:
+                        wanted = left
+                    elif 2.0 * wanted > left:
+                        wanted = 0.5 * left
+                    step[l] = wanted
                 else:
-                    diagonal += scaled[l] * end_conductance[1, l]
-                pivot[0, l] = 1.0 / diagonal
-                lower[0, l] = 0.0
-            for i in range(1, n):
-                for l in range(lanes):
-                    below = scaled[l] * conductance[i - 1, l]
-                    above = scaled[l] * (conductance[i, l] if i + 1 < n else end_conductance[1, l])
-                    factor = below * pivot[i - 1, l]
-                    lower[i, l] = factor
-                    pivot[i, l] = 1.0 / (storage[i, l] + below + above - factor * below)
+                    step[l] = plan[cursor[1, l]] - offset
+                scaled[l] = ALPHA * step[l]
+                for row in range(3):
+                    _input(poly, coeff, rate, piece, row, offset + GAMMA * step[l], values)
+                    middle_in[row, l] = values[0]
+                    _input(poly, coeff, rate, piece, row, offset + step[l], values)
+                    end_in[row, l] = values[0]
+                    end_slope[row, l] = values[1]
+            if running == 0:
+                return solves
 
-        # --- the two stages
-        for i in range(n):
+            # --- factors, kept while no lane changes its step
+            same = True
             for l in range(lanes):
-                base[i, l] = velocity[i, l] + scaled[l] * rates[i, l]
-        _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, middle_in, middle_rate)
-        for i in range(n):
-            for l in range(lanes):
-                middle[i, l] = base[i, l] + scaled[l] * middle_rate[i, l]
-                base[i, l] = velocity[i, l] + SHARE * step[l] * (rates[i, l] + middle_rate[i, l])
-        _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, end_in, end_rate)
-        for i in range(n):
-            for l in range(lanes):
-                end[i, l] = base[i, l] + scaled[l] * end_rate[i, l]
-        solves += 2
-        if adaptive:
-            for i in range(n):
+                same = same and scaled[l] == factored[l]
+            if not same:
                 for l in range(lanes):
-                    error[i, l] = (storage[i, l] * step[l]) * (
-                        ERROR[0] * rates[i, l] + ERROR[1] * middle_rate[i, l] + ERROR[2] * end_rate[i, l]
+                    factored[l] = scaled[l]
+                    diagonal = storage[0, l] + scaled[l] * end_conductance[0, l]
+                    if n > 1:
+                        diagonal += scaled[l] * conductance[0, l]
+                    else:
+                        diagonal += scaled[l] * end_conductance[1, l]
+                    pivot[0, l] = 1.0 / diagonal
+                    lower[0, l] = 0.0
+                for i in range(1, n):
+                    for l in range(lanes):
+                        below = scaled[l] * conductance[i - 1, l]
+                        above = scaled[l] * (conductance[i, l] if i + 1 < n else end_conductance[1, l])
+                        factor = below * pivot[i - 1, l]
+                        lower[i, l] = factor
+                        pivot[i, l] = 1.0 / (storage[i, l] + below + above - factor * below)
+                if closed:
+                    _unit_responses(
+                        conductance, volume, end_conductance, mean_weight, scaled, pivot, lower, units, response
                     )
-            _substitute(conductance, scaled, pivot, lower, error)
-            solves += 1
+                    solves += 3
 
-        # --- judge, accept, record
-        for l in range(lanes):
-            if status[l] != RUNNING:
-                continue
-            flux_low = end_conductance[0, l] * (end[0, l] - end_in[0, l])
-            flux_high = end_conductance[1, l] * (end[n - 1, l] - end_in[1, l])
-            if not (np.isfinite(flux_low) and np.isfinite(flux_high) and np.isfinite(end[n // 2, l])):
-                status[l] = BROKEN
-                continue
-            piece = cursor[0, l]
-            if adaptive:
-                worst = 0.0
-                for i in range(n):
-                    worst = max(worst, abs(error[i, l]))
-                worst /= velocity_scale[l]
-                local = max(stress_scale[0, l], abs(flux_low))
-                worst = max(worst, end_conductance[0, l] * abs(error[0, l]) / local)
-                local = max(stress_scale[1, l], abs(flux_high))
-                worst = max(worst, end_conductance[1, l] * abs(error[n - 1, l]) / local)
-                ratio = AIM * (tolerance[l] / max(worst, 1e-300)) ** (1.0 / 3.0)
-                if worst > tolerance[l] and step[l] > 1e-3 * first_step[piece]:
-                    shorter = step[l] * max(SHRINK_MOST, min(ratio, 0.9))
-                    state[1, l] = shorter
-                    if shorter < 1e-250:
-                        status[l] = STALLED
-                    continue
-                if ratio >= KEEP_ABOVE or ratio < 1.0:
-                    grown = step[l] * max(SHRINK_MOST, min(ratio, GROW_MOST))
-                else:
-                    grown = step[l]
-                # a step cut short to land on a break says nothing against the longer one before it
-                if step[l] < state[1, l] and ratio >= 1.0:
-                    grown = max(grown, state[1, l])
-                state[1, l] = grown
-                stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
-                length = stop - piece_start[piece]
-                landed = step[l] >= length - state[0, l] or state[0, l] + step[l] >= length
-                state[0, l] = length if landed else state[0, l] + step[l]
-            else:
-                state[0, l] = plan[cursor[1, l]]
-                landed = plan_lands[cursor[1, l]]
-                cursor[1, l] += 1
-            state[2, l] += 1.0
-            mean = 0.0
-            mean_rate = 0.0
+            # --- the two stages
             for i in range(n):
-                travel[i, l] += (
-                    SHARE * step[l] * (velocity[i, l] + middle[i, l]) + scaled[l] * end[i, l]
-                )
-                velocity[i, l] = end[i, l]
-                rates[i, l] = end_rate[i, l]
-                mean += mean_weight[i, l] * end[i, l]
-                mean_rate += mean_weight[i, l] * end_rate[i, l]
-            if landed or state[2, l] % record_every == 0.0:
-                _record(
-                    l, piece, state[0, l], mean, mean_rate, profile_every, velocity, rates, travel,
-                    cursor, row_piece, row_offset, rows, profile_row, profiles,
-                )  # fmt: skip
-            if landed:
-                state[2, l] = 0.0
-                if piece + 1 >= piece_stop[l]:
-                    status[l] = DONE
+                for l in range(lanes):
+                    base[i, l] = velocity[i, l] + scaled[l] * rates[i, l]
+            if closed:
+                for l in range(lanes):
+                    for e in range(2):
+                        wall_base[e, l] = wall[SPEED, e, l] + scaled[l] * wall[RATE, e, l]
+                        place_base[e, l] = wall[PLACE, e, l] + scaled[l] * wall[SPEED, e, l]
+                _guess(link, flow, wall_base, gradient, middle_in, given_middle)
+            _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, middle_in, middle_rate)
+            if closed:
+                for l in range(lanes):
+                    if status[l] == RUNNING:
+                        _close(
+                            l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+                            curve_speed, curve_value, middle_in, given_middle, base, middle_rate, wall_base, place_base, wall_middle,
+                            gradient_middle, guess, place, near, matrix, right, change, load, slope,
+                        )  # fmt: skip
+            for i in range(n):
+                for l in range(lanes):
+                    middle[i, l] = base[i, l] + scaled[l] * middle_rate[i, l]
+                    base[i, l] = velocity[i, l] + SHARE * step[l] * (rates[i, l] + middle_rate[i, l])
+            if closed:
+                for l in range(lanes):
+                    for e in range(2):
+                        part = SHARE * step[l]
+                        wall_base[e, l] = wall[SPEED, e, l] + part * (wall[RATE, e, l] + wall_middle[RATE, e, l])
+                        place_base[e, l] = wall[PLACE, e, l] + part * (wall[SPEED, e, l] + wall_middle[SPEED, e, l])
+                _guess(link, flow, wall_base, gradient_middle, end_in, given_end)
+            _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, end_in, end_rate)
+            if closed:
+                for l in range(lanes):
+                    if status[l] == RUNNING:
+                        _close(
+                            l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+                            curve_speed, curve_value, end_in, given_end, base, end_rate, wall_base, place_base, wall_end,
+                            gradient_end, guess, place, near, matrix, right, change, load, slope,
+                        )  # fmt: skip
+            for i in range(n):
+                for l in range(lanes):
+                    end[i, l] = base[i, l] + scaled[l] * end_rate[i, l]
+            solves += 2
+            if adaptive:
+                for i in range(n):
+                    for l in range(lanes):
+                        error[i, l] = (storage[i, l] * step[l]) * (
+                            ERROR[0] * rates[i, l] + ERROR[1] * middle_rate[i, l] + ERROR[2] * end_rate[i, l]
+                        )
+                _substitute(conductance, scaled, pivot, lower, error)
+                solves += 1
+                if closed:
+                    for l in range(lanes):
+                        if status[l] == RUNNING:
+                            _close_error(
+                                l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+                                curve_speed, curve_value, step, wall, wall_middle, wall_end, error, wall_error,
+                                matrix, right, change, load, slope,
+                            )  # fmt: skip
+
+            # --- judge, accept, record
+            for l in range(lanes):
+                if status[l] != RUNNING:
                     continue
-                piece += 1
-                cursor[0, l] = piece
-                state[0, l] = 0.0
-                _enter(l, piece, storage, volume, end_conductance, jump, rates, n)
-                state[1, l] = min(first_step[piece], state[1, l])
+                if closed:
+                    speed_low = wall_end[SPEED, 0, l]
+                    speed_high = wall_end[SPEED, 1, l]
+                else:
+                    speed_low = end_in[0, l]
+                    speed_high = end_in[1, l]
+                flux_low = end_conductance[0, l] * (end[0, l] - speed_low)
+                flux_high = end_conductance[1, l] * (end[n - 1, l] - speed_high)
+                if not (np.isfinite(flux_low) and np.isfinite(flux_high) and np.isfinite(end[n // 2, l])):
+                    status[l] = BROKEN
+                    continue
+                piece = cursor[0, l]
+                if adaptive:
+                    worst = 0.0
+                    for i in range(n):
+                        worst = max(worst, abs(error[i, l]))
+                    for e in range(2):
+                        worst = max(worst, abs(wall_error[e, l]))
+                    worst /= velocity_scale[l]
+                    local = max(stress_scale[0, l], abs(flux_low))
+                    worst = max(worst, end_conductance[0, l] * abs(error[0, l] - wall_error[0, l]) / local)
+                    local = max(stress_scale[1, l], abs(flux_high))
+                    worst = max(worst, end_conductance[1, l] * abs(error[n - 1, l] - wall_error[1, l]) / local)
+                    ratio = AIM * (tolerance[l] / max(worst, 1e-300)) ** (1.0 / 3.0)
+                    if worst > tolerance[l] and step[l] > 1e-3 * first_step[piece]:
+                        shorter = step[l] * max(SHRINK_MOST, min(ratio, 0.9))
+                        state[1, l] = shorter
+                        if shorter < 1e-250:
+                            status[l] = STALLED
+                        continue
+                    if closed:
+                        shorter = _until_event(
+                            l, link, mode, end_conductance, curve_speed, curve_value, given_end, end, wall, wall_end,
+                            gradient_end, net_before, step[l], tolerance[l], velocity_scale[l], load,
+                        )  # fmt: skip
+                        if shorter > 0.0:
+                            state[1, l] = shorter
+                            continue
+                    if ratio >= KEEP_ABOVE or ratio < 1.0:
+                        grown = step[l] * max(SHRINK_MOST, min(ratio, GROW_MOST))
+                    else:
+                        grown = step[l]
+                    # a step cut short to land on a break says nothing against the longer one before it
+                    if step[l] < state[1, l] and ratio >= 1.0:
+                        grown = max(grown, state[1, l])
+                    state[1, l] = grown
+                    stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
+                    length = stop - piece_start[piece]
+                    landed = step[l] >= length - state[0, l] or state[0, l] + step[l] >= length
+                    state[0, l] = length if landed else state[0, l] + step[l]
+                else:
+                    state[0, l] = plan[cursor[1, l]]
+                    landed = plan_lands[cursor[1, l]]
+                    cursor[1, l] += 1
+                state[2, l] += 1.0
+                mean = 0.0
                 mean_rate = 0.0
                 for i in range(n):
+                    travel[i, l] += (
+                        SHARE * step[l] * (velocity[i, l] + middle[i, l]) + scaled[l] * end[i, l]
+                    )
+                    velocity[i, l] = end[i, l]
+                    rates[i, l] = end_rate[i, l]
+                    mean += mean_weight[i, l] * end[i, l]
+                    mean_rate += mean_weight[i, l] * end_rate[i, l]
+                event = False
+                mark = 0
+                if closed:
+                    event = _advance_walls(
+                        l, link, mode, end_conductance, curve_speed, curve_value, given_end, end_slope, velocity, wall,
+                        wall_end, gradient, gradient_end, net_before, load,
+                    )  # fmt: skip
+                    if _left_curve(l, link, curve_speed, wall):
+                        status[l] = BEYOND
+                        continue
+                else:
+                    for e in range(2):
+                        wall[SPEED, e, l] = end_in[e, l]
+                        wall[RATE, e, l] = end_slope[e, l]
+                    gradient[l] = end_in[2, l]
+                if landed:
+                    mark = LANDS
+                elif event:
+                    mark = EVENT
+                if landed or event or state[2, l] % record_every == 0.0:
+                    _record(
+                        l, piece, state[0, l], mean, mean_rate, profile_every, velocity, rates, travel, wall, gradient,
+                        cursor, row_piece, row_offset, rows, row_mark, profile_row, profiles, mark,
+                    )  # fmt: skip
+                if not (landed or event):
+                    if cursor[2, l] + 2 > rows_most or cursor[3, l] + 2 > profiles_most:
+                        status[l] = FULL
+                    continue
+                state[2, l] = 0.0
+                if landed and piece + 1 >= piece_stop[l]:
+                    status[l] = DONE
+                    continue
+                longest = event_step[l]
+                if landed:
+                    piece += 1
+                    cursor[0, l] = piece
+                    state[0, l] = 0.0
+                    longest = first_step[piece]
+                    if event:
+                        longest = min(longest, event_step[l])
+                if closed:
+                    for row in range(3):
+                        _input(poly, coeff, rate, piece, row, state[0, l], values)
+                        end_in[row, l] = values[0]
+                        end_slope[row, l] = values[1]
+                    if landed:
+                        impulse(
+                            l, link, mode, flow, storage, volume, end_weight, mean_weight, jump[piece, 2], velocity, wall
+                        )
+                    begin(
+                        l, link, mode, flow, storage, conductance, volume, end_conductance, end_weight, mean_weight,
+                        curve_speed, curve_value, end_in, end_slope, velocity, rates, wall, gradient, load,
+                    )  # fmt: skip
+                else:
+                    _enter(l, piece, storage, volume, end_conductance, jump, rates, n)
+                    for row in range(3):
+                        _input(poly, coeff, rate, piece, row, 0.0, values)
+                        if row < 2:
+                            wall[SPEED, row, l] = values[0]
+                            wall[RATE, row, l] = values[1]
+                        else:
+                            gradient[l] = values[0]
+                state[1, l] = min(longest, state[1, l])
+                mean = 0.0
+                mean_rate = 0.0
+                for i in range(n):
+                    mean += mean_weight[i, l] * velocity[i, l]
                     mean_rate += mean_weight[i, l] * rates[i, l]
+                mark = 0
                 _record(
-                    l, piece, 0.0, mean, mean_rate, profile_every, velocity, rates, travel,
-                    cursor, row_piece, row_offset, rows, profile_row, profiles,
+                    l, piece, state[0, l], mean, mean_rate, profile_every, velocity, rates, travel, wall, gradient,
+                    cursor, row_piece, row_offset, rows, row_mark, profile_row, profiles, mark,
                 )  # fmt: skip
-            if cursor[2, l] + 2 > rows_most or cursor[3, l] + 2 > profiles_most:
-                status[l] = FULL
+                if cursor[2, l] + 2 > rows_most or cursor[3, l] + 2 > profiles_most:
+                    status[l] = FULL
+
+    return compiled(march)
 
 
-@inlined
+march_open = _march_of(False)
+march_closed = _march_of(True)
+
+
+@compiled
+def enter(
+    storage, conductance, volume, end_conductance, mean_weight, end_weight,
+    link, flow, curve_speed, curve_value, step_of_flow, inputs, input_slopes, velocity, rates, wall, gradient, mode,
+):  # fmt: skip
+    """Rates, friction's modes and pressure just after t = 0; ``inputs``, ``input_slopes`` [3, L] there,
+    ``step_of_flow`` (L,) a sudden change of the prescribed mean velocity."""
+    load = np.zeros(2)
+    for l in range(velocity.shape[1]):
+        impulse(l, link, mode, flow, storage, volume, end_weight, mean_weight, step_of_flow[l], velocity, wall)
+        begin(
+            l, link, mode, flow, storage, conductance, volume, end_conductance, end_weight, mean_weight,
+            curve_speed, curve_value, inputs, input_slopes, velocity, rates, wall, gradient, load,
+        )  # fmt: skip
+
+
+@part
 def _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, inputs, out):
     """Rates at a stage: (storage - scaled A) f = A base + inputs, into ``out``."""
     n, lanes = storage.shape
@@ -280,7 +468,7 @@ def _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, 
             out[i, l] = (out[i, l] + scaled[l] * conductance[i, l] * out[i + 1, l]) * pivot[i, l]
 
 
-@inlined
+@part
 def _substitute(conductance, scaled, pivot, lower, out):
     """Forward and back substitution of ``out`` with the step's factors."""
     n, lanes = out.shape
@@ -294,7 +482,7 @@ def _substitute(conductance, scaled, pivot, lower, out):
             out[i, l] = (out[i, l] + scaled[l] * conductance[i, l] * out[i + 1, l]) * pivot[i, l]
 
 
-@inlined
+@part
 def _enter(l, piece, storage, volume, end_conductance, jump, rates, n):
     """Change of the rates across a break: only jumps of the inputs act, so nothing is lost to differences."""
     for i in range(n):
@@ -303,20 +491,25 @@ def _enter(l, piece, storage, volume, end_conductance, jump, rates, n):
     rates[n - 1, l] += end_conductance[1, l] * jump[piece, 1] / storage[n - 1, l]
 
 
-@inlined
+@part
 def _record(
-    l, piece, offset, mean, mean_rate, profile_every, velocity, rates, travel,
-    cursor, row_piece, row_offset, rows, profile_row, profiles,
+    l, piece, offset, mean, mean_rate, profile_every, velocity, rates, travel, wall, gradient,
+    cursor, row_piece, row_offset, rows, row_mark, profile_row, profiles, mark,
 ):  # fmt: skip
     """Append a row, and a profile where one is due."""
     n = velocity.shape[0]
     at = cursor[2, l]
     row_piece[at, l] = piece
     row_offset[at, l] = offset
+    row_mark[at, l] = mark
     rows[at, l, 0] = velocity[0, l]
     rows[at, l, 1] = velocity[n - 1, l]
     rows[at, l, 2] = mean
     rows[at, l, 3] = mean_rate
+    for kind in range(3):
+        for e in range(2):
+            rows[at, l, 4 + 2 * kind + e] = wall[kind, e, l]
+    rows[at, l, 10] = gradient[l]
     if (cursor[4, l] + at) % profile_every == 0:
         to = cursor[3, l]
         profile_row[to, l] = at
@@ -326,3 +519,194 @@ def _record(
             profiles[to, l, 2, i] = travel[i, l]
         cursor[3, l] = to + 1
     cursor[2, l] = at + 1
+
+
+@part
+def _unit_responses(conductance, volume, end_conductance, mean_weight, scaled, pivot, lower, units, response):
+    """Rates that a unit of either wall's speed or of the pressure drop makes, with the step's factors."""
+    n, lanes = volume.shape
+    for i in range(n):
+        for l in range(lanes):
+            units[0, i, l] = end_conductance[0, l] if i == 0 else 0.0
+            units[1, i, l] = end_conductance[1, l] if i == n - 1 else 0.0
+            units[2, i, l] = volume[i, l]
+    for k in range(3):
+        for i in range(1, n):
+            for l in range(lanes):
+                units[k, i, l] += lower[i, l] * units[k, i - 1, l]
+        for l in range(lanes):
+            units[k, n - 1, l] *= pivot[n - 1, l]
+        for i in range(n - 2, -1, -1):
+            for l in range(lanes):
+                units[k, i, l] = (units[k, i, l] + scaled[l] * conductance[i, l] * units[k, i + 1, l]) * pivot[i, l]
+        for l in range(lanes):
+            response[0, k, l] = units[k, 0, l]
+            response[1, k, l] = units[k, n - 1, l]
+            total = 0.0
+            for i in range(n):
+                total += mean_weight[i, l] * units[k, i, l]
+            response[2, k, l] = total
+
+
+@part
+def _guess(link, flow, wall_base, gradient, inputs, given):
+    """Walls' speeds and pressure of a stage before it is closed, in place of ``inputs``; these go to ``given``."""
+    for l in range(inputs.shape[1]):
+        for e in range(2):
+            given[e, l] = inputs[e, l]
+            if link[e, l, KIND] != PRESCRIBED:
+                inputs[e, l] = wall_base[e, l]
+        given[2, l] = inputs[2, l]
+        if flow[l] != 0:
+            inputs[2, l] = gradient[l]
+
+
+@part
+def _close(
+    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+    curve_speed, curve_value, inputs, given, base, stage_rate, wall_base, place_base, wall_stage,
+    gradient_stage, guess, place, near, matrix, right, change, load, slope,
+):  # fmt: skip
+    """Close one lane's stage: the walls' motion and the pressure, and the fluid's rates that go with them."""
+    n = base.shape[0]
+    s = scaled[l]
+    for k in range(3):
+        guess[k] = inputs[k, l]
+    place[0], place[1] = place_base[0, l], place_base[1, l]
+    near[0] = base[0, l] + s * stage_rate[0, l]
+    near[1] = base[n - 1, l] + s * stage_rate[n - 1, l]
+    mean = 0.0
+    if flow[l] != 0:
+        for i in range(n):
+            mean += mean_weight[i, l] * (base[i, l] + s * stage_rate[i, l])
+    close_stage(
+        l, link, mode, flow, end_conductance, end_weight, response, s, curve_speed, curve_value,
+        given, guess, place, near, mean, matrix, right, change, load, slope,
+    )  # fmt: skip
+    for i in range(n):
+        stage_rate[i, l] += change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l]
+    for e in range(2):
+        inputs[e, l] = guess[e] + change[e]
+        wall_stage[SPEED, e, l] = inputs[e, l]
+        # a body's rate; that of a prescribed wall is its own history's and not needed within the step
+        wall_stage[RATE, e, l] = change[e] / s if link[e, l, KIND] != PRESCRIBED else 0.0
+        wall_stage[PLACE, e, l] = place_base[e, l] + s * inputs[e, l]
+    inputs[2, l] = guess[2] + change[2]
+    gradient_stage[l] = inputs[2, l]
+
+
+@part
+def _close_error(
+    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+    curve_speed, curve_value, step, wall, wall_middle, wall_end, error, wall_error,
+    matrix, right, change, load, slope,
+):  # fmt: skip
+    """Pass one lane's local error through the closed matrix, bodies and flow included."""
+    n = error.shape[0]
+    s = scaled[l]
+    for e in range(2):
+        slope[e] = 0.0
+        right[e] = 0.0
+        wall_error[e, l] = 0.0
+        if link[e, l, KIND] == PRESCRIBED or mode[e, l] == STUCK:
+            continue
+        own = step[l] * (
+            ERROR[0] * wall[RATE, e, l] + ERROR[1] * wall_middle[RATE, e, l] + ERROR[2] * wall_end[RATE, e, l]
+        )
+        gone = step[l] * (
+            ERROR[0] * wall[SPEED, e, l] + ERROR[1] * wall_middle[SPEED, e, l] + ERROR[2] * wall_end[SPEED, e, l]
+        )
+        beside = error[0, l] if e == 0 else error[n - 1, l]
+        right[e] = (
+            link[e, l, MASS] * own / s
+            - link[e, l, STIFFNESS] * gone
+            + link[e, l, GRIP] * end_conductance[e, l] * beside
+        )
+        if link[e, l, CURVE_STOP] > link[e, l, CURVE_FIRST]:
+            first, stop = int(link[e, l, CURVE_FIRST]), int(link[e, l, CURVE_STOP])
+            curve_load(curve_speed, curve_value, first, stop, wall_end[SPEED, e, l], load)
+            slope[e] = load[1]
+    right[2] = 0.0
+    if flow[l] != 0:
+        for i in range(n):
+            right[2] -= mean_weight[i, l] * error[i, l]
+    assemble_three(l, link, mode, flow, end_conductance, end_weight, response, s, slope, matrix)
+    solve_three(matrix, right, change)
+    for i in range(n):
+        error[i, l] += s * (change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l])
+    for e in range(2):
+        wall_error[e, l] = change[e]
+
+
+@part
+def _until_event(
+    l, link, mode, end_conductance, curve_speed, curve_value, given, end, wall, wall_end,
+    gradient_end, net_before, step, tolerance, velocity_scale, load,
+):  # fmt: skip
+    """A shorter step where a body passes standstill, or breaks away, well inside this one; else 0."""
+    n = end.shape[0]
+    shorter = 0.0
+    for e in range(2):
+        if link[e, l, KIND] == PRESCRIBED or mode[e, l] == FREE:
+            continue
+        if mode[e, l] == STUCK:
+            held = link[e, l, BREAKAWAY]
+            near = end[0, l] if e == 0 else end[n - 1, l]
+            net = abs(
+                net_load(l, e, link, end_conductance, curve_speed, curve_value, given, near, wall_end, gradient_end, load)
+            )
+            before = min(net_before[e, l], held)
+            if net - held > EVENT_SHARE * tolerance * held and net > before:
+                wanted = step * max(0.05, min((held - before) / (net - before) + 0.01, 0.95))
+                shorter = wanted if shorter == 0.0 else min(shorter, wanted)
+            continue
+        now = wall_end[SPEED, e, l]
+        if (mode[e, l] == FORWARD and now < 0.0) or (mode[e, l] == BACKWARD and now > 0.0):
+            before = abs(wall[SPEED, e, l])
+            if abs(now) > EVENT_SHARE * tolerance * velocity_scale and before > 0.0:
+                wanted = step * max(0.05, min(before / (before + abs(now)) + 0.01, 0.95))
+                shorter = wanted if shorter == 0.0 else min(shorter, wanted)
+    return shorter
+
+
+@part
+def _advance_walls(
+    l, link, mode, end_conductance, curve_speed, curve_value, given, end_slope, velocity, wall,
+    wall_end, gradient, gradient_end, net_before, load,
+):  # fmt: skip
+    """Take over the walls' motion; whether a body came to a stop or broke away at this instant."""
+    n = velocity.shape[0]
+    gradient[l] = gradient_end[l]
+    event = False
+    for e in range(2):
+        for kind in range(3):
+            wall[kind, e, l] = wall_end[kind, e, l]
+        if link[e, l, KIND] == PRESCRIBED:
+            wall[RATE, e, l] = end_slope[e, l]
+            continue
+        if mode[e, l] == FREE:
+            continue
+        if mode[e, l] == STUCK:
+            near = velocity[0, l] if e == 0 else velocity[n - 1, l]
+            net = abs(net_load(l, e, link, end_conductance, curve_speed, curve_value, given, near, wall, gradient, load))
+            net_before[e, l] = net
+            event = event or net > link[e, l, BREAKAWAY]
+            continue
+        now = wall[SPEED, e, l]
+        if (mode[e, l] == FORWARD and now <= 0.0) or (mode[e, l] == BACKWARD and now >= 0.0):
+            wall[SPEED, e, l] = 0.0
+            net_before[e, l] = 0.0
+            event = True
+    return event
+
+
+@part
+def _left_curve(l, link, curve_speed, wall):
+    """Whether a body that refuses it has left the speeds of its curve."""
+    for e in range(2):
+        if link[e, l, KIND] != PRESCRIBED and link[e, l, REFUSE] > 0.0:
+            low = curve_speed[int(link[e, l, CURVE_FIRST])]
+            high = curve_speed[int(link[e, l, CURVE_STOP]) - 1]
+            if wall[SPEED, e, l] < low or wall[SPEED, e, l] > high:
+                return True
+    return False

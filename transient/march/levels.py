@@ -112,7 +112,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:
     """Features and resolutions of all marches of a problem: one grid, one measure of what is large."""
-    least = 0.1 * min(problem.settle_within, 0.001)
+    least = 0.1 * min(problem.settle_within, 0.001, accuracy)
     found = [features(problem, run.inputs, run.until) for run in runs]
     stress = np.max([f.stress for f in found], axis=0)
     speed = max(f.speed for f in found)

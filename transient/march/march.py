@@ -6,13 +6,14 @@ the finer level plus a third of its difference to the coarser one.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
 from transient.gap.system import System, assemble, steady
 from transient.march import kernel
+from transient.march.links import links
 from transient.march.plan import Features, Resolution
 from transient.march.rates import stress_rates
 from transient.result.history import History
@@ -28,7 +29,7 @@ class SolveError(RuntimeError):
 
 @dataclass(frozen=True, eq=False)
 class Trace:
-    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 4) as named in ``kernel``,
+    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 11) and ``mark`` (rows,) as named in ``kernel``,
     ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done;
     ``final`` (n,) velocities at the end."""
 
@@ -36,6 +37,7 @@ class Trace:
     piece: np.ndarray
     offset: np.ndarray
     fields: np.ndarray
+    mark: np.ndarray
     profile_row: np.ndarray
     profiles: np.ndarray
     profile_every: int
@@ -62,10 +64,13 @@ NO_PLAN = Plan(np.empty(0), np.empty(0, bool), 1)
 
 @dataclass(frozen=True, eq=False)
 class State:
-    """Velocities and their rates at the unknowns (n,), just before the first piece."""
+    """Velocities and their rates at the unknowns (n,), just before the first piece; of walls with bodies their
+    ``speed`` and ``place`` (2,)."""
 
     velocity: np.ndarray
     rates: np.ndarray
+    speed: np.ndarray = field(default_factory=lambda: np.zeros(2))
+    place: np.ndarray = field(default_factory=lambda: np.zeros(2))
 
 
 def initial_state(problem: Problem, system: System, inputs: Inputs) -> State:
@@ -96,7 +101,7 @@ def march(
     run = _Run(problem, system, inputs, until, found, resolution, plan, profile_every, state)
     while run.status[0] != kernel.DONE:
         run.advance()
-        if run.status[0] in (kernel.BROKEN, kernel.STALLED):
+        if run.status[0] in (kernel.BROKEN, kernel.STALLED, kernel.BEYOND):
             raise SolveError(run.complaint())
         run.collect()
     return run.trace()
@@ -111,10 +116,13 @@ class _Run:
         n = system.unknowns
         self.jump = np.array([inputs.row(row).jumps(0) for row in (LOWER, UPPER, PRESSURE)]).T.copy()
         self.velocity = start.velocity.copy()
-        self.rates = start.rates + system.volume * self.jump[0, PRESSURE] / system.storage
-        self.rates[0] += system.end_conductance[0] * self.jump[0, LOWER] / system.storage[0]
-        self.rates[-1] += system.end_conductance[1] * self.jump[0, UPPER] / system.storage[-1]
+        self.rates = start.rates.copy()
         self.travel = np.zeros(n)
+        self.wall = np.zeros((3, 2, 1))
+        self.wall[0, :, 0], self.wall[2, :, 0] = start.speed, start.place
+        self.gradient = np.zeros(1)
+        self.mode = np.zeros((2, 1), np.int64)
+        self.links = links(problem, system)
         self.cursor = np.zeros((5, 1), np.int64)
         self.state = np.zeros((3, 1))
         self.state[1] = resolution.first_step[0]
@@ -125,10 +133,14 @@ class _Run:
         speed = found.speed / (lever.max() if problem.rotating else 1.0)
         flux_scale = found.stress * system.grid.stress_radius
         pieces = len(inputs.starts)
-        self.fixed = (
+        self.gap = (
             system.storage[:, None], system.conductance[:, None], system.volume[:, None],
-            system.end_conductance[:, None].copy(), np.ascontiguousarray(self.weight)[:, None],
-            inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
+            system.end_conductance[:, None].copy(), np.ascontiguousarray(self.weight)[:, None], self.links.end_weight,
+        )  # fmt: skip
+        coupling = self.links
+        self.coupling = (coupling.link, coupling.flow, coupling.curve_speed, coupling.curve_value)
+        self.fixed = (
+            *self.gap, *self.coupling, np.array([resolution.event_step]), inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
             inputs.poly, inputs.coeff, inputs.rate, self.jump,
             resolution.first_step, resolution.longest_step, resolution.calm_after,
             np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
@@ -138,6 +150,7 @@ class _Run:
         self.row_piece = np.empty((rows, 1), np.int64)
         self.row_offset = np.empty((rows, 1))
         self.rows = np.empty((rows, 1, kernel.FIELDS))
+        self.row_mark = np.zeros((rows, 1), np.int64)
         self.profile_row = np.empty((rows, 1), np.int64)
         self.profiles = np.empty((rows, 1, 3, n))
         self.kept: list[tuple[np.ndarray, ...]] = []
@@ -146,19 +159,44 @@ class _Run:
 
     def _first_row(self) -> None:
         """The row at t = 0+: the state as the inputs' jumps leave it."""
+        self._enter()
         self.row_piece[0], self.row_offset[0] = 0, 0.0
         u, f = self.velocity, self.rates
-        self.rows[0, 0] = u[0], u[-1], self.weight @ u, self.weight @ f
+        row = self.rows[0, 0]
+        row[kernel.FIRST], row[kernel.LAST] = u[0], u[-1]
+        row[kernel.MEAN], row[kernel.MEAN_RATE] = self.weight @ u, self.weight @ f
+        row[kernel.WALLS : kernel.DROP] = self.wall.ravel()
+        row[kernel.DROP] = self.gradient[0]
         self.profile_row[0] = 0
         self.profiles[0, 0] = u, f, self.travel
         self.cursor[2] = self.cursor[3] = 1
 
+    def _enter(self) -> None:
+        """Rates, wall motion and pressure at t = 0+."""
+        system, inputs = self.system, self.inputs
+        rows = [inputs.row(row) for row in (LOWER, UPPER, PRESSURE)]
+        start = np.zeros(1, int), np.zeros(1)
+        value, slope = (np.array([row.at(*start, order) for row in rows]) for order in (0, 1))
+        if self.problem.closed:
+            kernel.enter(
+                *self.gap, *self.coupling, self.jump[:1, PRESSURE].copy(), value, slope,
+                self.velocity[:, None], self.rates[:, None], self.wall, self.gradient, self.mode,
+            )  # fmt: skip
+            return
+        self.rates += system.volume * self.jump[0, PRESSURE] / system.storage
+        self.rates[0] += system.end_conductance[0] * self.jump[0, LOWER] / system.storage[0]
+        self.rates[-1] += system.end_conductance[1] * self.jump[0, UPPER] / system.storage[-1]
+        self.wall[0, :], self.wall[1, :] = value[:2], slope[:2]
+        self.gradient[:] = value[2]
+
     def advance(self) -> None:
         self.status[0] = kernel.RUNNING
-        self.solves += kernel.march(
+        march = kernel.march_closed if self.problem.closed else kernel.march_open
+        self.solves += march(
             *self.fixed, self.profile_every,
-            self.velocity[:, None], self.rates[:, None], self.travel[:, None], self.cursor, self.state,
-            self.row_piece, self.row_offset, self.rows, self.profile_row, self.profiles, self.status,
+            self.velocity[:, None], self.rates[:, None], self.travel[:, None], self.wall, self.gradient, self.mode,
+            self.cursor, self.state,
+            self.row_piece, self.row_offset, self.rows, self.row_mark, self.profile_row, self.profiles, self.status,
         )  # fmt: skip
 
     def collect(self) -> None:
@@ -170,6 +208,7 @@ class _Run:
                 self.row_piece[:rows, 0].copy(),
                 self.row_offset[:rows, 0].copy(),
                 self.rows[:rows, 0].copy(),
+                self.row_mark[:rows, 0].copy(),
                 self.profile_row[:profiles, 0] + base,
                 self.profiles[:profiles, 0].copy(),
             )
@@ -185,16 +224,21 @@ class _Run:
             self._thin()
 
     def _thin(self) -> None:
-        while sum(part[4].nbytes for part in self.kept) > PROFILE_BYTES:
+        while sum(part[5].nbytes for part in self.kept) > PROFILE_BYTES:
             self.profile_every *= 2
             for i, part in enumerate(self.kept):
-                keep = part[3] % self.profile_every == 0
-                self.kept[i] = (*part[:3], part[3][keep], part[4][keep])
+                keep = part[4] % self.profile_every == 0
+                self.kept[i] = (*part[:4], part[4][keep], part[5][keep])
 
     def time(self) -> float:
         return float(self.inputs.starts[self.cursor[0, 0]] + self.state[0, 0])
 
     def complaint(self) -> str:
+        if self.status[0] == kernel.BEYOND:
+            return (
+                f"at t = {self.time():.6g} s a body's speed leaves its force-speed curve, which refuses speeds beyond "
+                "its ends; extend the curve or let it hold its end values"
+            )
         what = (
             "a velocity is no longer a finite number"
             if self.status[0] == kernel.BROKEN

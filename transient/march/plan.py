@@ -61,6 +61,7 @@ class Resolution:
     longest_step: np.ndarray
     calm_after: np.ndarray
     growth: float
+    event_step: float = np.inf
 
 
 def on_one_grid(resolutions: list[Resolution]) -> list[Resolution]:
