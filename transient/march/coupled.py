@@ -1,0 +1,225 @@
+"""Fluid, bodies and flow condition as one small dense system: steady states, decay rates, periodic states.
+
+The state is ``z = [w (n unknown nodes), U, x of each body]``; ``dz/dt = B z + r`` with the pressure of a prescribed
+flow eliminated.  Dense, since n is tens to hundreds and this is needed a few times per case, not per step.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from transient.gap.problem import PRESSURE, Problem
+from transient.gap.system import System
+from transient.march import closure
+from transient.march.links import Links, links
+
+MOST_ITERATIONS = 60
+
+
+@dataclass(frozen=True, eq=False)
+class Dense:
+    """``matrix`` (N, N) of the state's rates under zero inputs and zero pressure; ``push`` (N,) what a unit of pressure
+    drop adds to them; ``wall`` (N, 2) a unit of each prescribed wall's speed; ``load`` (N, 2) a unit of each body's
+    load; ``row`` (N,) and ``row_wall`` (2,): the mean velocity as ``row @ z + row_wall @ speeds``; ``ends`` of bodies."""
+
+    matrix: np.ndarray
+    push: np.ndarray
+    wall: np.ndarray
+    load: np.ndarray
+    row: np.ndarray
+    row_wall: np.ndarray
+    ends: tuple[int, ...]
+    coupling: Links
+    flow: bool
+    unknowns: int
+
+    def speed(self, end: int) -> int:
+        """Place of a body's speed in the state."""
+        return self.unknowns + 2 * self.ends.index(end)
+
+
+def dense(problem: Problem, system: System, slopes: tuple[float, float] = (0.0, 0.0)) -> Dense:
+    """The dense system; ``slopes``: of the bodies' force-speed curves where they are linearised."""
+    coupling = links(problem, system)
+    ends = tuple(end for end in (0, 1) if problem.walls[end].body is not None)
+    n = system.unknowns
+    size = n + 2 * len(ends)
+    matrix = np.zeros((size, size))
+    conductance = system.conductance
+    at = np.arange(n - 1)
+    matrix[at, at + 1] = conductance
+    matrix[at + 1, at] = conductance
+    matrix[at, at] -= conductance
+    matrix[at + 1, at + 1] -= conductance
+    near = (0, n - 1)
+    wall, load, push = np.zeros((size, 2)), np.zeros((size, 2)), np.zeros(size)
+    push[:n] = system.volume
+    row, row_wall = np.zeros(size), np.zeros(2)
+    row[:n] = system.grid.mean_weight[system.first : system.first + n]
+    inertia = np.ones(size)
+    inertia[:n] = system.storage
+    for end in (0, 1):
+        pull = system.end_conductance[end]
+        matrix[near[end], near[end]] -= pull
+        link = coupling.link[end, 0]
+        share = coupling.end_weight[end, 0] + link[closure.SWEEP]
+        if end not in ends:
+            wall[near[end], end] = pull
+            row_wall[end] = share
+            continue
+        u = n + 2 * ends.index(end)
+        x = u + 1
+        matrix[near[end], u] += pull
+        matrix[u, near[end]] = link[closure.GRIP] * pull
+        matrix[u, u] = -link[closure.GRIP] * pull - link[closure.DAMPING] + slopes[end]
+        matrix[u, x] = -link[closure.STIFFNESS]
+        matrix[x, u] = 1.0
+        inertia[u] = link[closure.MASS]
+        push[u] = link[closure.PUSH]
+        load[u, end] = 1.0
+        row[u] = share
+    return Dense(
+        matrix / inertia[:, None], push / inertia, wall / inertia[:, None], load / inertia[:, None],
+        row, row_wall, ends, coupling, problem.flow is not None, n,
+    )  # fmt: skip
+
+
+def operator(system: Dense, stiff_only: bool = True) -> np.ndarray:
+    """B: the rates' matrix with the pressure of a prescribed flow eliminated; displacements that no spring answers to
+    are left out."""
+    matrix = system.matrix
+    if system.flow:
+        through = system.row @ system.push
+        matrix = matrix - np.outer(system.push, system.row @ matrix) / through
+    return matrix[np.ix_(kept(system), kept(system))] if stiff_only else matrix
+
+
+def kept(system: Dense) -> np.ndarray:
+    """Indices of the state without displacements that no spring answers to."""
+    out = list(range(system.unknowns))
+    for end in system.ends:
+        u = system.speed(end)
+        out.append(u)
+        if system.coupling.link[end, 0, closure.STIFFNESS] > 0.0:
+            out.append(u + 1)
+    return np.array(out)
+
+
+def slowest(system: Dense) -> float:
+    """Time constant of the slowest mode, s; infinite where something is not held back."""
+    rates = -np.linalg.eigvals(operator(system)).real
+    if system.flow:
+        rates = np.sort(rates)[1:]  # the flow condition itself is one mode that does not move
+    least, largest = rates.min(), rates.max()
+    return float(1.0 / least) if least > 1e-12 * largest else np.inf
+
+
+@dataclass(frozen=True, eq=False)
+class Equilibrium:
+    """Steady ``velocity`` (n,), wall ``speeds`` (2,), displacements ``place`` (2,) (of sprung bodies) and ``gradient``."""
+
+    velocity: np.ndarray
+    speeds: np.ndarray
+    place: np.ndarray
+    gradient: float
+
+
+def equilibrium(
+    problem: Problem, system: System, values: np.ndarray, held: dict[int, float] | None = None,
+    friction: tuple[float, float] = (0.0, 0.0),
+) -> Equilibrium | None:  # fmt: skip
+    """The steady state of constant inputs ``values`` (3,), None where there is none.
+
+    ``held``: bodies kept at a given speed; ``friction``: constant extra force on each body (dry friction in its mode).
+    Force-speed curves are solved by Newton from standstill, so the lowest of several crossings is found.
+    """
+    held = held or {}
+    guess = np.zeros(2)
+    for _ in range(MOST_ITERATIONS):
+        loads, slopes = _curves(problem, guess)
+        found = _linear_equilibrium(problem, system, values, held, loads + np.asarray(friction), slopes)
+        if found is None:
+            return None
+        if np.allclose(found.speeds, guess, rtol=1e-13, atol=1e-300) or not any(
+            wall.body is not None and wall.body.curve[0] for wall in problem.walls
+        ):
+            return found
+        guess = found.speeds
+    return None
+
+
+def _curves(problem: Problem, speeds: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Loads (2,) at zero speed of the curves' tangents at ``speeds``, and their slopes (2,)."""
+    loads, slopes = np.zeros(2), np.zeros(2)
+    out = np.zeros(2)
+    for end, wall in enumerate(problem.walls):
+        if wall.body is None or not wall.body.curve[0]:
+            continue
+        at, values = (np.array(part) for part in wall.body.curve)
+        closure.curve_load(at, values, 0, len(at), float(speeds[end]), out)
+        slopes[end] = out[1]
+        loads[end] = out[0] - out[1] * speeds[end]
+    return loads, slopes
+
+
+def _linear_equilibrium(
+    problem: Problem, system: System, values: np.ndarray, held: dict[int, float], extra: np.ndarray, slopes: np.ndarray
+) -> Equilibrium | None:
+    rows = dense(problem, system, (float(slopes[0]), float(slopes[1])))
+    index = kept(rows)
+    speeds = np.zeros(2)
+    right = np.zeros(len(rows.push))
+    for end in (0, 1):
+        if end in rows.ends:
+            right -= rows.load[:, end] * (values[end] + extra[end])
+        else:
+            speeds[end] = values[end]
+            right -= rows.wall[:, end] * values[end]
+    matrix = rows.matrix.copy()
+    for end, speed in held.items():
+        u = rows.speed(end)
+        matrix[u] = 0.0
+        matrix[u, u] = 1.0
+        right[u] = speed
+        if u + 1 in index:  # a held body's spring rests where it is
+            index = index[index != u + 1]
+    matrix, right = matrix[np.ix_(index, index)], right[index]
+    push = rows.push.copy()
+    for end in held:
+        push[rows.speed(end)] = 0.0
+    push = push[index]
+    size = len(index)
+    if rows.flow:
+        matrix = np.block([[matrix, push[:, None]], [rows.row[index][None, :], np.zeros((1, 1))]])
+        right = np.append(right, values[PRESSURE] - rows.row_wall @ speeds)
+    else:
+        right = right - push * values[PRESSURE]
+    scale = np.abs(matrix).max(axis=1)
+    try:
+        state = np.linalg.solve(matrix / scale[:, None], right / scale)
+    except np.linalg.LinAlgError:
+        return None
+    if not np.isfinite(state).all() or np.linalg.cond(matrix / scale[:, None]) > 1e15:
+        return None
+    whole = np.zeros(len(rows.push))
+    whole[index] = state[:size]
+    place = np.zeros(2)
+    for end in rows.ends:
+        u = rows.speed(end)
+        speeds[end] = whole[u]
+        place[end] = whole[u + 1]
+    gradient = float(state[size]) if rows.flow else float(values[PRESSURE])
+    return Equilibrium(whole[: rows.unknowns], speeds, place, gradient)
+
+
+def periodic_start(system: Dense, after_one: np.ndarray, period: float) -> np.ndarray:
+    """State at t = 0 of the periodic regime from what one period makes out of zero: z = (1 - exp(B period))^-1 z_1."""
+    from scipy.linalg import expm
+
+    index = kept(system)
+    matrix = operator(system)
+    out = np.zeros(len(after_one))
+    out[index] = np.linalg.solve(np.eye(len(index)) - expm(matrix * period), after_one[index])
+    return out
