@@ -84,7 +84,7 @@ def _condition(gap: Gap, k: int, pair):  # noqa: ANN001, ANN202
 def _talbot(image, t):  # noqa: ANN001, ANN202
     """Inverse transform of a real function at t."""
     r = mp.mpf(2) * NODES / (5 * t)
-    total = mp.exp(r * t) * image(r) / 2
+    total = (mp.exp(r * t) * image(r)).real / 2
     for k in range(1, NODES):
         theta = mp.pi * k / NODES
         cot = mp.cot(theta)

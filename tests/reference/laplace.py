@@ -59,7 +59,7 @@ def terms_of(row: int, pieces: list[Piece], before: float, memory: float) -> tup
     for piece in pieces:
         a, b = piece.start, piece.end
         jump = float(piece.value(np.array(a))) - was
-        fast = max([abs(sigma) for _, sigma in piece.waves], default=0.0) * (b - a)
+        fast = max([abs(sigma) * (b - a) for _, sigma in piece.waves], default=0.0)
         leave = b + (PAST * (b - a) if fast <= TURNS else max(PAST * (b - a), memory)) if np.isfinite(b) else np.inf
         terms.append(Term(row, a, a, leave, piece, "start", jump))
         if jump:

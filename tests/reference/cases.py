@@ -1,0 +1,86 @@
+"""Plain cases in SI, and the case file that says the same in the contract's words.
+
+A plain case: shape, motion, height / radius / inner_radius, outer_radius, density, viscosity,
+walls = {name: {speed | displacement | shear_free, slip_length}}, pressure, start, duration, settle_within, accuracy.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+SIZES = ("height", "radius", "inner_radius", "outer_radius", "length", "width")
+TIMES = ("at", "over", "rise", "hold", "fall", "time_constant", "every", "period")
+
+
+def tree_of(case: dict[str, Any]) -> dict[str, Any]:
+    """The contract's case tree, every quantity with its unit."""
+    rotating = case.get("motion") == "rotating"
+    speed = "rad/s" if rotating else "m/s"
+    gap = {"shape": case["shape"]} | {k: _said(case[k], "m") for k in SIZES if k in case}
+    if "motion" in case:
+        gap["motion"] = case["motion"]
+    tree: dict[str, Any] = {
+        "title": case.get("title", "judged"),
+        "gap": gap,
+        "fluid": {"density": _said(case["density"], "kg/m^3"), "viscosity": _said(case["viscosity"], "Pa*s")},
+        "run": {k: _said(100 * case[k], "%") for k in ("settle_within", "accuracy") if k in case},
+    }
+    tree["run"] |= {k: case[k] for k in ("profiles",) if k in case}
+    if case.get("duration") is not None:
+        tree["run"]["duration"] = _said(case["duration"], "s")
+    walls = {name: _wall(wall, speed, "rad" if rotating else "m") for name, wall in case.get("walls", {}).items()}
+    if walls:
+        tree["wall"] = walls
+    if case.get("pressure") is not None:
+        tree["pressure"] = {"drop_per_length": said(case["pressure"], "Pa/m")}
+    if "start" in case:
+        tree["start"] = {"state": case["start"]}
+    return tree
+
+
+def _wall(wall: dict[str, Any], speed: str, angle: str) -> dict[str, Any]:
+    out: dict[str, Any] = {}
+    if "speed" in wall:
+        out["speed"] = said(wall["speed"], speed)
+    if "displacement" in wall:
+        out["displacement"] = said(wall["displacement"], angle)
+    if "slip_length" in wall:
+        out["slip_length"] = _said(wall["slip_length"], "m")
+    if wall.get("shear_free"):
+        out["shear_free"] = True
+    return out
+
+
+def _said(value: float, unit: str) -> str:
+    return f"{float(value)!r} {unit}"
+
+
+def said(history: Any, unit: str) -> Any:
+    """A history in the contract's words, its values in ``unit``."""
+    if not isinstance(history, dict):
+        return _said(history, unit)
+    out: dict[str, Any] = {"kind": history["kind"]}
+    for key, value in history.items():
+        if key in ("kind", "interpolation", "times") and history["kind"] != "table":
+            out[key] = value
+        elif key in TIMES:
+            out[key] = _said(value, "s")
+        elif key == "frequency":
+            out[key] = _said(value, "Hz")
+        elif key == "phase":
+            out[key] = _said(value, "rad")
+        elif key == "acceleration":
+            out[key] = _said(value, f"{unit}/s" if unit != "m/s" else "m/s^2")
+        elif key == "jerk":
+            out[key] = _said(value, f"{unit}/s^2" if unit != "m/s" else "m/s^3")
+        elif key == "part":
+            out[key] = said(value, unit)
+        elif key == "parts":
+            out[key] = [said(v, unit) for v in value]
+        elif history["kind"] == "table":
+            out[key] = value if key in ("kind", "interpolation") else [float(v) for v in value]
+        else:
+            out[key] = _said(value, unit)
+    if history["kind"] == "table":
+        out |= {"unit": unit, "time_unit": "s"}
+    return out
