@@ -16,6 +16,7 @@ from transient.series.uniform import UniformFlow
 # Share of the sum of magnitudes of an answer's terms that its error stays below: contour, cut of the modes, round-off.
 TRUST = 1e-13
 ROUNDING = 2e-16
+FAINT = 1e-6
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,7 +62,9 @@ class Solution:
         """(n, k) velocity (rotating gaps: angular) at coordinates ``r`` (k,) m, and its bound over the gap (n,)."""
         y = np.clip((np.asarray(r, dtype=float) - self.problem.inner) / self.problem.gap, 0.0, 1.0)
         value, bound = self._evaluate(velocity_answer(self.shape, self.window, y), piece, offset)
-        return value, bound.max(axis=1, initial=0.0)
+        # Far from the walls an early answer is smaller than any contour resolves: what is left is of this size.
+        speeds = max(np.abs(self.at.left).max(), np.abs(self.at.jump).max())
+        return value, bound.max(axis=1, initial=0.0) + TRUST * FAINT * speeds
 
     def inputs(self, piece: np.ndarray, offset: np.ndarray) -> np.ndarray:
         """(n, 3) lower speed, upper speed, pressure drop per length, Pa/m."""
