@@ -169,7 +169,8 @@ def _layer(problem: Problem, found: Features, end: int, growth: float, share: fl
         cell = min(cell, (share * found.stress[end] * nu / (problem.density * bend)) ** (1.0 / 3.0))
     shortest = _after_jumps(problem, found, end)
     if shortest < np.inf:
-        cell = min(cell, growth * np.sqrt(nu * FIRST_ROW * shortest))
+        # the wall's half cell takes the new speed at once: the mean velocity is off by that share of the jump
+        cell = min(cell, growth * np.sqrt(nu * FIRST_ROW * shortest), 0.5 * share * gap)
     layer = min(layer, cell / gap / growth)
     return float(max(layer, THINNEST / growth))
 
