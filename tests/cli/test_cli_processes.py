@@ -8,7 +8,7 @@ import subprocess
 import sys
 from pathlib import Path
 
-from transient.cli.progress import _compiled_before
+from transient.cli.progress import Bar, announce_compiling
 
 HOUSE = Path(__file__).resolve().parents[2]
 # A small kernel, compiled as the solver's is: the solver itself would take too long for a test of the cache.
@@ -75,14 +75,11 @@ def test_two_runs_at_once_both_succeed(tmp_path):
     assert [path.name for path in (tmp_path / "same").iterdir()] == ["flow_cell.h5"]
 
 
-def test_the_first_run_is_told_by_the_cache(tmp_path):
-    source = tmp_path / "kernel.py"
-    source.write_text("", encoding="utf-8")
-    assert not _compiled_before(None, source)
-    assert not _compiled_before(str(tmp_path), source)
-    index = tmp_path / f"kernel.march-1.py{sys.version_info.major}{sys.version_info.minor}.nbi"
-    index.write_text("", encoding="utf-8")
-    os.utime(index, (2e9, 2e9))
-    assert _compiled_before(str(tmp_path), source)
-    os.utime(index, (1e9, 1e9))
-    assert not _compiled_before(str(tmp_path), source)
+def test_compiling_is_announced_once_and_only_when_it_happens(capsys):
+    import numba
+
+    announce_compiling(Bar())
+    assert capsys.readouterr().err == ""
+    for factor in (2.0, 3.0):
+        numba.njit(lambda x, factor=factor: factor * x)(1.0)
+    assert capsys.readouterr().err == "first run: preparing the compiled solver, once, about 15 s\n"

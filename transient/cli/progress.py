@@ -5,7 +5,6 @@ from __future__ import annotations
 import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
-from pathlib import Path
 from typing import Any
 
 from transient.cli.words import note
@@ -65,19 +64,19 @@ def progress(total: int, quiet: bool) -> Iterator[Bar]:
         yield TerminalBar(bar, bar.add_task("", total=total))
 
 
-def announce_first_run() -> None:
-    """Say why the first call after installation takes longer."""
-    from transient.march import kernel
+def announce_compiling(bar: Bar) -> None:
+    """From now on say, once, why a run takes longer, at the moment when the compiler sets to work."""
+    from numba.core import event
 
-    if _compiled_before(kernel.march.stats.cache_path, Path(kernel.__file__)):
-        return
-    note("first run: preparing the compiled solver, once, about 15 s")
+    class Announcement(event.Listener):
+        """Heard when nothing usable is in the compiler's cache: first run, new version, or no place for a cache."""
 
+        def on_start(self, event_: event.Event) -> None:
+            event.unregister("numba:compile", self)
+            with bar.aside():
+                note("first run: preparing the compiled solver, once, about 15 s")
 
-def _compiled_before(folder: str | None, source: Path) -> bool:
-    """Whether the compiler's cache holds a kernel that is not older than its source."""
-    if folder is None:
-        return False
-    python = f"py{sys.version_info.major}{sys.version_info.minor}"
-    indexes = Path(folder).glob(f"{source.stem}.*{python}.nbi")
-    return any(index.stat().st_mtime >= source.stat().st_mtime for index in indexes)
+        def on_end(self, event_: event.Event) -> None:
+            """Nothing to say."""
+
+    event.register("numba:compile", Announcement())

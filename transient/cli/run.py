@@ -9,7 +9,7 @@ import typer
 
 from transient.cli.outputs import result_paths
 from transient.cli.printers import Json, Printer, Quiet, Words
-from transient.cli.progress import announce_first_run, progress
+from transient.cli.progress import announce_compiling, progress
 from transient.cli.words import FAILED, REFUSED, Overrides, Stop, Version, changes, one_line, own_error
 
 
@@ -36,7 +36,7 @@ def run(
     with progress(len(cases), quiet) as bar:
         printer = Json(bar) if as_json else Quiet(bar) if quiet else Words(bar)
         if not quiet:
-            announce_first_run()
+            announce_compiling(bar)
         return max(_one(case, path, wanted, printer) for case, path in zip(cases, paths, strict=True))
 
 

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 from transient.cli.numbers import columns, listed, percent, plain, stated
 
 if TYPE_CHECKING:
-    from transient.result.result import Result
+    from transient.result.result import Result, Variable
 
 WIDTH = 80
 LABEL = 11
@@ -25,11 +25,11 @@ VERDICTS = {
 def describe(result: Result, path: Path) -> str:
     """The printed summary of a finished run, lines of at most 80 columns."""
     summary = result.summary
-    speed_unit = result.variables["wall_speed"].units if "wall_speed" in result.variables else "m/s"
+    speeds = result.variables["wall_speed"]
     blocks = [
         [result.title or path.stem],
         _settling(summary["settling"]),
-        [*_walls(summary["walls"], speed_unit), *_remarks(summary)],
+        [*_walls(summary["walls"], speeds), *_remarks(summary)],
         [*_flow(summary), *_hand_formula(summary)],
         [*_trust(summary), *_entry("File", f"{path}   ({_effort(summary)})")],
     ]
@@ -66,7 +66,9 @@ def _unsettled(part: dict[str, Any]) -> str:
     return "the run ends before that; give it a longer duration"
 
 
-def _walls(walls: dict[str, Any], speed_unit: str) -> list[str]:
+def _walls(walls: dict[str, Any], speeds: Variable) -> list[str]:
+    # What is left of a speed that has come back to zero is round-off of the largest.
+    nothing = 1e-12 * float(abs(speeds.data).max(initial=0.0))
     rows = [["Wall", "largest stress", "at", "in the end", "speed then"]]
     for name, wall in walls.items():
         peak = "unbounded" if wall.get("unbounded") else _stated(wall.get("peak_stress"), wall.get("peak_stress_error"))
@@ -76,7 +78,7 @@ def _walls(walls: dict[str, Any], speed_unit: str) -> list[str]:
                 peak,
                 _plain(wall.get("peak_time"), "s"),
                 _stated(wall.get("final_stress"), wall.get("final_stress_error")),
-                _plain(wall.get("final_speed"), speed_unit),
+                plain(wall["final_speed"] if abs(wall["final_speed"]) > nothing else 0.0, speeds.units),
             ]
         )
     for row in rows:
