@@ -80,7 +80,8 @@ def made(case: Problem, time, piece, offset, stress, stress_rate, profile, profi
     mean, mean_rate = (average(case, position, values) for values in (profile, profile_rate))
     return History(
         time, piece, offset, stress, stress_rate, profile[:, [0, -1]], profile_rate[:, [0, -1]], mean, mean_rate,
-        gradient, position, np.arange(len(time)), profile, profile_rate, np.zeros_like(profile),
+        gradient, np.zeros(len(time)), np.zeros((len(time), 2)),  # the pressure is constant in all of them
+        position, np.arange(len(time)), profile, profile_rate, np.zeros_like(profile),
     )  # fmt: skip
 
 

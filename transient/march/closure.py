@@ -1,9 +1,9 @@
 """Bodies on walls and prescribed flow, closed within the step.
 
-In one stage the fluid's rates are linear in what the walls and the pressure do: ``f = p + dU_a h_a + dU_b h_b + dG h_g``
-with ``h`` the rates that one unit of wall speed or pressure drop makes, known with the step's factors.  What a body or a
-flow condition leaves unknown follows from a system of at most three equations, so the fluid's own matrix stays
-tridiagonal and every coupling is implicit.  Unknowns are changes against the stage's explicit guess: differences of
+In one stage the fluid's rates are linear in what the walls and the pressure do:
+``f = p + dU_a h_a + dU_b h_b + dG h_g`` with ``h`` the rates that one unit of wall speed or pressure drop makes, known
+with the step's factors.  What a body or a flow condition leaves unknown follows from a system of at most three
+equations, so the fluid's own matrix stays tridiagonal and every coupling is implicit.  Unknowns are changes against the stage's explicit guess: differences of
 speeds would lose their digits in tiny steps.
 """
 

@@ -20,9 +20,11 @@ MOST_ITERATIONS = 60
 
 @dataclass(frozen=True, eq=False)
 class Dense:
-    """``matrix`` (N, N) of the state's rates under zero inputs and zero pressure; ``push`` (N,) what a unit of pressure
-    drop adds to them; ``wall`` (N, 2) a unit of each prescribed wall's speed; ``load`` (N, 2) a unit of each body's
-    load; ``row`` (N,) and ``row_wall`` (2,): the mean velocity as ``row @ z + row_wall @ speeds``; ``ends`` of bodies."""
+    """Rates of the state as ``matrix @ z + push G + wall @ speeds + load @ loads``.
+
+    ``matrix`` (N, N), ``push`` (N,), ``wall``, ``load`` (N, 2); the mean velocity is ``row @ z + row_wall @ speeds``
+    with ``row`` (N,), ``row_wall`` (2,); ``ends`` that carry bodies; ``flow``: whether the mean velocity is prescribed.
+    """
 
     matrix: np.ndarray
     push: np.ndarray
@@ -118,7 +120,7 @@ def slowest(system: Dense) -> float:
 
 @dataclass(frozen=True, eq=False)
 class Equilibrium:
-    """Steady ``velocity`` (n,), wall ``speeds`` (2,), displacements ``place`` (2,) (of sprung bodies) and ``gradient``."""
+    """Steady ``velocity`` (n,), wall ``speeds`` (2,), ``place`` (2,) of sprung bodies, and ``gradient``."""
 
     velocity: np.ndarray
     speeds: np.ndarray
@@ -148,6 +150,33 @@ def equilibrium(
             return found
         guess = found.speeds
     return None
+
+
+def settled_state(problem: Problem, system: System, values: np.ndarray, mode: np.ndarray) -> Equilibrium | None:
+    """The steady state that a run ends in: bodies in the mode of dry friction (2,) that they end in."""
+    held: dict[int, float] = {}
+    friction = [0.0, 0.0]
+    for end, wall in enumerate(problem.walls):
+        if wall.body is None:
+            continue
+        if mode[end] == closure.STUCK:
+            held[end] = 0.0
+        elif mode[end] == closure.FORWARD:
+            friction[end] = -wall.body.sliding
+        elif mode[end] == closure.BACKWARD:
+            friction[end] = wall.body.sliding
+    return equilibrium(problem, system, values, held, (friction[0], friction[1]))
+
+
+def settled_slopes(problem: Problem, system: System) -> tuple[float, float]:
+    """Slopes of the bodies' force-speed curves at the speeds that the eventual loads lead to (at 0 where unknown)."""
+    if all(wall.body is None or not wall.body.curve[0] for wall in problem.walls):
+        return 0.0, 0.0
+    ends = [drive.eventual.drive for drive in problem.drives]
+    values = np.array([0.0 if drive is None else float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ends])
+    found = equilibrium(problem, system, values)
+    low, high = _curves(problem, np.zeros(2) if found is None else found.speeds)[1]
+    return float(low), float(high)
 
 
 def _curves(problem: Problem, speeds: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

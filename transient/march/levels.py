@@ -2,23 +2,26 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from transient.gap.problem import PRESSURE, Inputs, Problem
-from transient.gap.system import steady
+from transient.gap.system import System, steady
+from transient.march import kernel
+from transient.march.coupled import dense, periodic_start, settled_state
 from transient.march.march import (
     NO_PLAN,
     State,
     Trace,
+    before_start,
     extrapolate,
     finer,
     halved,
     history,
+    initial_state,
     march,
     steady_stress,
-    stress_before,
 )
 from transient.march.plan import Features, Resolution, features, on_one_grid, resolve
 from transient.march.regime import Outlook, deviation_inputs, periodic_inputs, periodic_state, rates_of
@@ -36,6 +39,8 @@ class Histories:
     steady_velocity: np.ndarray | None
     steady_mean: float
     steady_stress: np.ndarray
+    steady_speeds: np.ndarray = field(default_factory=lambda: np.zeros(2))
+    steady_gradient: float = 0.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -97,11 +102,12 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     answers = []
     for number in range(levels):
         trace = flow.level(number)
-        main = history(problem, inputs, trace, stress_before(problem, trace.system, inputs), 2**number)
+        start = initial_state(problem, trace.system, inputs)
+        main = history(problem, inputs, trace, before_start(problem, trace.system, inputs, start), 2**number)
         if ahead.kind == "periodic":
             answers.append(_periodic_answer(problem, runs, number, trace, main))
         elif ahead.kind == "steady":
-            answers.append(_steady_answer(ahead, trace, main, 2**number))
+            answers.append(_steady_answer(problem, ahead, trace, main, 2**number))
         else:
             answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
     best = _mix(answers[-2], answers[-1])
@@ -134,21 +140,27 @@ def _mix(coarse: Histories, fine: Histories) -> Histories:
     return replace(fine, flow=flow, deviation=pair("deviation"), orbit=pair("orbit"))
 
 
-def _steady_answer(ahead: Outlook, trace: Trace, main: History, every: int) -> Histories:
+def _steady_answer(problem: Problem, ahead: Outlook, trace: Trace, main: History, every: int) -> Histories:
     """The deviation from a steady end: the flow minus a state that is exact on this grid."""
     assert ahead.drives is not None
     system = trace.system
     values = np.array([float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ahead.drives])
-    unknown = steady(system, values[:2], values[PRESSURE])
-    velocity = system.nodes(unknown, values[:2])
+    if problem.closed:
+        found = settled_state(problem, system, values, trace.final_mode)
+        if found is None:
+            return Histories(main, None, None, None, 0.0, np.zeros(2))
+        unknown, speeds, gradient = found.velocity, found.speeds, found.gradient
+    else:
+        unknown, speeds, gradient = steady(system, values[:2], values[PRESSURE]), values[:2], float(values[PRESSURE])
+    velocity = system.nodes(unknown, speeds)
     mean = float(system.grid.mean_weight @ velocity)
-    stress = steady_stress(system, unknown, values[:2], values[PRESSURE])
+    stress = steady_stress(system, unknown, speeds, gradient)
     shown = velocity[::every]
     deviation = replace(
         main, stress=main.stress - stress, mean=main.mean - mean, profile=main.profile - shown,
-        speed=main.speed - values[:2], gradient=main.gradient - values[PRESSURE],
+        speed=main.speed - speeds, gradient=main.gradient - gradient,
     )  # fmt: skip
-    return Histories(main, deviation, None, shown, mean, stress)
+    return Histories(main, deviation, None, shown, mean, stress, speeds, gradient)
 
 
 def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: Trace, main: History) -> Histories:
@@ -161,10 +173,12 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     system, every = trace.system, 2**number
     rest = np.zeros(system.unknowns)
     after = first.level(number, State(rest, rates_of(system, rest, first.inputs)))
-    state = periodic_state(system, after.final, first.until)
-    orbit = around.level(number, State(state, rates_of(system, state, around.inputs)))
-    begin = trace.profiles[0, 0] - state
-    gone = away.level(number, State(begin, rates_of(system, begin, away.inputs)))
+    state = _periodic_state(problem, system, after, first.until, around.inputs)
+    orbit = around.level(number, state)
+    begin = trace.profiles[0, 0] - orbit.profiles[0, 0]
+    walls = kernel.WALLS
+    moved = trace.fields[0, walls : walls + 6].reshape(3, 2) - orbit.fields[0, walls : walls + 6].reshape(3, 2)
+    gone = away.level(number, State(begin, rates_of(system, begin, away.inputs), moved[0], moved[2]))
     return Histories(
         main,
         history(problem, away.inputs, gone, None, every),
@@ -173,3 +187,18 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
         0.0,
         np.zeros(2),
     )
+
+
+def _periodic_state(problem: Problem, system: System, after: Trace, period: float, once: Inputs) -> State:
+    """The state with which the periodic regime begins, from what one period makes out of rest."""
+    if not problem.closed:
+        velocity = periodic_state(system, after.final, period)
+        return State(velocity, rates_of(system, velocity, once))
+    whole = dense(problem, system)
+    parts = [after.final, *(after.final_walls[[0, 2], end] for end in whole.ends)]
+    state = periodic_start(whole, np.concatenate(parts), period)
+    speed, place = np.zeros(2), np.zeros(2)
+    for end in whole.ends:
+        speed[end], place[end] = state[whole.speed(end) : whole.speed(end) + 2]
+    velocity = state[: system.unknowns]
+    return State(velocity, np.zeros_like(velocity), speed, place)

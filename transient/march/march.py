@@ -13,11 +13,16 @@ import numpy as np
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
 from transient.gap.system import System, assemble, steady
 from transient.march import kernel
+from transient.march.coupled import equilibrium
 from transient.march.links import links
 from transient.march.plan import Features, Resolution
 from transient.march.rates import stress_rates
 from transient.result.history import History
 
+EXTRAPOLATED = (
+    "stress", "speed", "acceleration", "mean", "mean_rate", "gradient", "gradient_rate", "place",
+    "profile", "profile_rate", "travel",
+)  # fmt: skip
 CHUNK_ROWS = 4096
 PROFILE_BYTES = 16e6  # of the base level; longer runs keep every 2nd, 4th, ... profile
 MOST_STEPS = 20_000_000
@@ -29,9 +34,9 @@ class SolveError(RuntimeError):
 
 @dataclass(frozen=True, eq=False)
 class Trace:
-    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 11) and ``mark`` (rows,) as named in ``kernel``,
-    ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate and travel of the unknowns; ``solves`` done;
-    ``final`` (n,) velocities at the end."""
+    """What the kernel recorded: ``piece``, ``offset`` (rows,), ``fields`` (rows, 11) and ``mark`` (rows,) as named
+    in ``kernel``; ``profile_row`` (k,), ``profiles`` (k, 3, n) velocity, rate, travel of the unknowns; ``solves`` done;
+    ``final`` (n,) velocities at the end, ``final_walls`` (3, 2) and friction's ``final_mode`` (2,) there."""
 
     system: System
     piece: np.ndarray
@@ -43,6 +48,8 @@ class Trace:
     profile_every: int
     solves: int
     final: np.ndarray
+    final_walls: np.ndarray
+    final_mode: np.ndarray
 
     @property
     def steps(self) -> int:
@@ -71,14 +78,28 @@ class State:
     rates: np.ndarray
     speed: np.ndarray = field(default_factory=lambda: np.zeros(2))
     place: np.ndarray = field(default_factory=lambda: np.zeros(2))
+    gradient: float = 0.0
 
 
 def initial_state(problem: Problem, system: System, inputs: Inputs) -> State:
-    """Fluid at rest, or in the steady state of the inputs' values before t = 0."""
+    """Fluid at rest, or in the steady state of the inputs' values before t = 0; bodies as they are just after.
+
+    Raises ``SolveError`` where there is no such state.
+    """
     nothing = np.zeros(system.unknowns)
+    bodies = [wall.body for wall in problem.walls]
+    given = np.array([0.0 if b is None or b.initial_speed is None else b.initial_speed for b in bodies])
+    place = np.array([0.0 if b is None else b.initial_displacement for b in bodies])
     if problem.start == "rest":
-        return State(nothing, nothing)
-    return State(steady(system, inputs.before[:2], float(inputs.before[PRESSURE])), nothing)
+        return State(nothing, nothing, given, place)
+    if not problem.closed:
+        return State(steady(system, inputs.before[:2], float(inputs.before[PRESSURE])), nothing)
+    held = {end: float(given[end]) for end, b in enumerate(bodies) if b is not None and b.initial_speed is not None}
+    found = equilibrium(problem, system, inputs.before, held)
+    if found is None:
+        raise SolveError("the start is to be steady, but the body has no equilibrium speed under its load before t = 0")
+    free = [b is not None and end not in held and b.stiffness > 0.0 for end, b in enumerate(bodies)]
+    return State(found.velocity, nothing, found.speeds, np.where(free, found.place, place), found.gradient)
 
 
 def march(
@@ -140,7 +161,8 @@ class _Run:
         coupling = self.links
         self.coupling = (coupling.link, coupling.flow, coupling.curve_speed, coupling.curve_value)
         self.fixed = (
-            *self.gap, *self.coupling, np.array([resolution.event_step]), inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
+            *self.gap, *self.coupling, np.array([resolution.event_step]),
+            inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
             inputs.poly, inputs.coeff, inputs.rate, self.jump,
             resolution.first_step, resolution.longest_step, resolution.calm_after,
             np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
@@ -253,7 +275,8 @@ class _Run:
 
     def trace(self) -> Trace:
         parts = [np.concatenate(column) for column in zip(*self.kept, strict=True)]
-        return Trace(self.system, *parts, self.profile_every, self.solves, self.velocity)
+        final = self.velocity, self.wall[:, :, 0], self.mode[:, 0]
+        return Trace(self.system, *parts, self.profile_every, self.solves, *final)
 
 
 def halved(trace: Trace, times: int = 1) -> Plan:
@@ -277,30 +300,43 @@ def finer(resolution: Resolution, times: int = 1) -> Resolution:
 
 
 def history(
-    problem: Problem, inputs: Inputs, trace: Trace, before: np.ndarray | None = None, every: int = 1
+    problem: Problem, inputs: Inputs, trace: Trace, before: Before | None = None, every: int = 1
 ) -> History:
     """Rows in physical quantities; ``every``-th node of the trace's grid is kept.
 
-    ``before``: wall stresses just before the first row where its break must be told from a smooth start.
+    ``before``: the state just before the first row where its break must be told from a smooth start.
     """
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
     value, slope = (np.array([row.at(trace.piece, trace.offset, order) for row in rows]) for order in range(2))
     system = trace.system
-    stress = _stresses(problem, trace, inputs, (value, slope), before)
+    fields = trace.fields
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None:
+            value[end], slope[end] = fields[:, kernel.WALLS + end], fields[:, kernel.WALLS + 2 + end]
+    if problem.flow is not None:
+        value[PRESSURE] = fields[:, kernel.DROP]
+    stress = _stresses(problem, trace, value, slope)
+    _join_breaks(problem, inputs, trace, stress, value[PRESSURE], before)
     stress_rate = stress_rates(trace.piece, trace.offset, stress)
+    if problem.flow is not None:
+        slope[PRESSURE] = stress_rates(trace.piece, trace.offset, value[PRESSURE][:, None])[:, 0]
     weight = system.grid.mean_weight
     ends = np.array([weight[0] if system.first else 0.0, weight[-1] if system.end_volume[1] > 0 else 0.0])
-    mean = trace.fields[:, kernel.MEAN] + ends @ value[:2]
-    mean_rate = trace.fields[:, kernel.MEAN_RATE] + ends @ slope[:2]
+    mean = fields[:, kernel.MEAN] + ends @ value[:2]
+    mean_rate = fields[:, kernel.MEAN_RATE] + ends @ slope[:2]
     time = inputs.starts[trace.piece] + trace.offset
     at = trace.profile_row
-    walls = value[:2].T, slope[:2].T, _wall_travel(time, value[:2].T, slope[:2].T)
+    place = _wall_travel(time, value[:2].T, slope[:2].T)
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None:
+            place[:, end] = fields[:, kernel.WALLS + 4 + end]
+    walls = value[:2].T, slope[:2].T, place - place[0]
     profile, profile_rate, travel = (
         system.nodes(trace.profiles[:, i], wall[at])[:, ::every] for i, wall in enumerate(walls)
     )
     return History(
         time, trace.piece, trace.offset, stress, stress_rate, value[:2].T, slope[:2].T, mean, mean_rate,
-        value[PRESSURE], system.grid.radius[::every], at, profile, profile_rate, travel,
+        value[PRESSURE], slope[PRESSURE], place, system.grid.radius[::every], at, profile, profile_rate, travel,
     )  # fmt: skip
 
 
@@ -311,9 +347,7 @@ def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) 
     return np.concatenate([np.zeros((1, 2)), np.cumsum(part, axis=0)])
 
 
-def _stresses(
-    problem: Problem, trace: Trace, inputs: Inputs, values: tuple[np.ndarray, ...], before: np.ndarray | None
-) -> np.ndarray:
+def _stresses(problem: Problem, trace: Trace, value: np.ndarray, slope: np.ndarray) -> np.ndarray:
     """Wall stresses (rows, 2) from the balance of each wall's half cell.
 
     Flux through the last face, plus what the half cell stores, less what the pressure gives it: exact in steady
@@ -321,34 +355,76 @@ def _stresses(
     the limit from the left is used on both sides, which is second order where the right one is first.
     """
     system = trace.system
-    value, slope = values
     stress = np.zeros((len(trace.piece), 2))
     for end, near in ((0, kernel.FIRST), (1, kernel.LAST)):
         conductance, half = system.end_conductance[end], system.end_volume[end]
         balance = conductance * (trace.fields[:, near] - value[end]) + half * value[PRESSURE]
         stress[:, end] = (balance - problem.density * half * slope[end]) / system.grid.stress_radius[end]
-    _join_breaks(inputs, trace, stress, before)
     return stress
 
 
-def _join_breaks(inputs: Inputs, trace: Trace, stress: np.ndarray, before: np.ndarray | None) -> None:
-    """Right-hand limits at breaks: infinite where a no-slip wall's speed jumps, else the left-hand limit."""
+@dataclass(frozen=True, eq=False)
+class Before:
+    """Just before t = 0: wall ``stress`` (2,) Pa, wall ``speed`` (2,) and ``gradient`` Pa/m."""
+
+    stress: np.ndarray
+    speed: np.ndarray
+    gradient: float
+
+
+def _join_breaks(
+    problem: Problem, inputs: Inputs, trace: Trace, stress: np.ndarray, gradient: np.ndarray, before: Before | None
+) -> None:
+    """Right-hand limits at breaks: infinite where a no-slip wall moves suddenly against the fluid, else the left-hand
+    limit; the pressure of a prescribed flow is infinite with them."""
     enters = np.flatnonzero(trace.offset == 0.0)
+    pieces = trace.piece[enters]
+    sudden = sudden_motion(problem, inputs, None if before is None else before.speed)[pieces]
     for end in (0, 1):
         if trace.system.end_volume[end] == 0.0:
             continue
-        jumped = inputs.row(end).jumps(0)[trace.piece[enters]] != 0.0
-        first = stress[0, end] if before is None else before[end]
+        first = stress[0, end] if before is None else before.stress[end]
         left = np.where(enters > 0, stress[enters - 1, end], first)
-        stress[enters, end] = np.where(jumped, np.nan, left)
+        # a massless plate takes its load at once: there the stress itself jumps
+        body = problem.walls[end].body
+        if body is None or body.mass > 0.0:
+            stress[enters, end] = np.where(sudden[:, end] != 0.0, np.nan, left)
+    if problem.flow is not None:
+        gradient[enters[(sudden != 0.0).any(axis=1)]] = np.nan
 
 
-def stress_before(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
-    """Wall stresses (2,) just before t = 0: none at rest, else those of the steady flow."""
+def sudden_motion(problem: Problem, inputs: Inputs, speed_before: np.ndarray | None) -> np.ndarray:
+    """Jump (P, 2) of each no-slip wall's speed against the fluid beside it at every piece's start.
+
+    ``speed_before``: of walls with bodies before t = 0 (None: as after).  A sudden change of the prescribed flow
+    moves all fluid at once; so does a wall that displaces fluid and is set in motion suddenly.
+    """
+    jumps = np.stack([inputs.row(index).jumps(0) for index in (LOWER, UPPER, PRESSURE)], axis=1)
+    walls = jumps[:, :2].copy()
+    core = jumps[:, PRESSURE].copy() if problem.flow is not None else np.zeros(len(jumps))
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None:
+            walls[:, end] = 0.0
+            if speed_before is not None:
+                walls[0, end] = (wall.body.initial_speed or 0.0) - speed_before[end]
+            if wall.body.displaced and problem.section:
+                core -= wall.body.displaced / (problem.section * problem.count) * walls[:, end]
+    out = np.zeros_like(walls)
+    for end, wall in enumerate(problem.walls):
+        if wall.kind == "moving" and wall.slip_length == 0.0:
+            out[:, end] = walls[:, end] - core
+    return out
+
+
+def before_start(problem: Problem, system: System, inputs: Inputs, start: State) -> Before:
+    """What the run comes from: rest, or the steady flow of the inputs' values before t = 0."""
     if problem.start == "rest":
-        return np.zeros(2)
-    speeds, gradient = inputs.before[:2], float(inputs.before[PRESSURE])
-    return steady_stress(system, steady(system, speeds, gradient), speeds, gradient)
+        return Before(np.zeros(2), np.zeros(2), 0.0)
+    speeds, gradient = inputs.before[:2].copy(), float(inputs.before[PRESSURE])
+    if problem.closed:
+        speeds = np.where([wall.body is not None for wall in problem.walls], start.speed, speeds)
+        gradient = start.gradient
+    return Before(steady_stress(system, start.velocity, speeds, gradient), speeds, gradient)
 
 
 def steady_stress(system: System, velocity: np.ndarray, speeds: np.ndarray, gradient: float) -> np.ndarray:
@@ -361,7 +437,7 @@ def extrapolate(coarse: History, fine: History) -> History:
     """Point by point ``fine + (fine - coarse) / 3``; both have the same rows and nodes."""
     mixed = {
         name: getattr(fine, name) + (getattr(fine, name) - getattr(coarse, name)) / 3.0
-        for name in ("stress", "mean", "mean_rate", "profile", "profile_rate", "travel")
+        for name in EXTRAPOLATED
     }
     mixed["stress_rate"] = stress_rates(fine.piece, fine.offset, mixed["stress"])
     return replace(fine, position=coarse.position, **mixed)

@@ -25,6 +25,7 @@ FIRST_ROW = 1e-6
 THINNEST = 1e-9  # of the gap: below this, round-off of the nodes' velocities would show in the stress
 FEWEST_CELLS = 12
 MOST_CELLS = 20_000
+LIGHT = 0.05  # of the gap: a body lighter than so much of its liquid is resolved as if it had that mass
 
 
 @dataclass(frozen=True, eq=False)
@@ -81,16 +82,44 @@ def features(problem: Problem, inputs: Inputs, until: float) -> Features:
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
     lever = _levers(problem)
     length = np.diff(np.append(inputs.starts, until))
-    jumps = np.array([[row.jumps(order) for order in range(3)] for row in rows])  # (3, 3, P)
-    jump = np.abs(jumps[:2, 0]).T * lever
-    kink = np.abs(jumps[:2, 1]).T * lever + np.abs(jumps[PRESSURE, 0])[:, None] / problem.density
-    bend = np.abs(jumps[:2, 2]).T * lever + np.abs(jumps[PRESSURE, 1])[:, None] / problem.density
+    jumps = np.abs([[row.jumps(order) for order in range(3)] for row in rows])  # (3, 3, P)
+    walls = np.stack([_wall_breaks(problem, end, jumps[end], lever[end]) for end in (0, 1)], axis=2)  # (3, P, 2)
+    core = jumps[PRESSURE]
+    if problem.flow is not None:
+        # the fluid is moved as a whole: felt at both walls like a motion of the wall; and what a wall does is answered
+        # by the pressure, which the other wall feels
+        walls = walls + core[:, :, None]
+        walls = np.maximum(walls, walls[:, :, ::-1])
+    else:
+        walls[1] += core[0][:, None] / problem.density
+        walls[2] += core[1][:, None] / problem.density
     for end, wall in enumerate(problem.walls):
         if wall.kind != "moving":
-            jump[:, end] = kink[:, end] = bend[:, end] = 0.0
+            walls[:, :, end] = 0.0
+    jump, kink, bend = walls
     stress, speed = _sizes(problem, rows, lever, length, jump, kink)
     fastest = np.array([np.abs(row.rate[np.abs(row.coeff) > 0]).max(initial=0.0) for row in rows])
     return Features(jump, kink, bend, stress, speed, length, fastest)
+
+
+def _wall_breaks(problem: Problem, end: int, jumps: np.ndarray, lever: float) -> np.ndarray:
+    """Jumps (3, P) of a wall's surface speed, acceleration and its rate, from those of its input's value, slope, bend.
+
+    A load changes a body's acceleration; a body lighter than a thin layer of its liquid is as heavy as that layer.
+    """
+    body = problem.walls[end].body
+    if body is None:
+        return jumps * lever
+    least = body.grip * problem.density * LIGHT * problem.gap * lever
+    inertia = body.mass + least
+    out = np.zeros_like(jumps)
+    out[1], out[2] = jumps[0] * lever / inertia, jumps[1] * lever / inertia
+    outside = (abs(body.stiffness * body.initial_displacement) + max(map(abs, body.curve[1]), default=0.0)) / inertia
+    if problem.start == "rest":
+        out[0, 0] += abs(body.initial_speed or 0.0) * lever
+        out[1, 0] += outside * lever
+    out[1] += body.breakaway * lever / inertia
+    return out
 
 
 def _levers(problem: Problem) -> np.ndarray:
@@ -105,23 +134,44 @@ def _sizes(
     growth after each break for as long as the piece or the diffusion lasts."""
     nu = problem.viscosity / problem.density
     diffusion = problem.diffusion_time
-    samples = [np.concatenate([row.at(np.arange(len(length)), share * length) for share in (0, 0.3, 0.7, 1)])
-               for row in rows]  # fmt: skip
-    low, high = samples[LOWER] * lever[0], samples[UPPER] * lever[1]
-    push = np.abs(samples[PRESSURE]).max(initial=0.0)
-    slip = np.abs(low - high).max(initial=0.0)
-    calm = problem.viscosity * slip / problem.gap + 0.25 * push * problem.gap
+    everywhere = np.arange(len(length))
+    samples = [np.concatenate([row.at(everywhere, share * length) for share in (0, 0.3, 0.7, 1)]) for row in rows]
+    surface = [_surface_speed(problem, end, samples[end], lever[end], float(length.sum())) for end in (0, 1)]
+    largest = np.abs(samples[PRESSURE]).max(initial=0.0)
+    push = 0.0 if problem.flow is not None else largest
+    mean = largest if problem.flow is not None else 0.0
+    slip = np.abs(surface[0] - surface[1]).max(initial=0.0)
+    calm = problem.viscosity * (slip + 6.0 * mean) / problem.gap + 0.25 * push * problem.gap
     last = np.minimum(length, diffusion)[:, None]
-    grown = (2.0 * problem.density * kink * np.sqrt(nu * last / np.pi)).max(axis=0, initial=0.0)
+    held = np.array([wall.body is None for wall in problem.walls])  # a body gives way before the stress has grown
+    grown = (2.0 * problem.density * kink * np.sqrt(nu * last / np.pi)).max(axis=0, initial=0.0) * held
     fallen = (problem.density * jump * np.sqrt(nu / (np.pi * last))).max(axis=0, initial=0.0)
     stress = np.maximum(np.maximum(grown, fallen), calm)
     # a wall that the motion reaches late or never is judged beside the other one
     stress = np.maximum(stress, 1e-6 * stress.max())
-    speed = max(np.abs(low).max(initial=0.0), np.abs(high).max(initial=0.0), push * problem.gap**2
-                / (8.0 * problem.viscosity) * min(1.0, 8.0 * length.sum() / diffusion))  # fmt: skip
-    speed = max(speed, np.abs(np.concatenate([[rows[0].before * lever[0]], [rows[1].before * lever[1]]])).max())
+    driven = push * problem.gap**2 / (8.0 * problem.viscosity) * min(1.0, 8.0 * length.sum() / diffusion)
+    before = [abs(row.before) * lever[end] for end, row in enumerate(rows[:2]) if problem.walls[end].body is None]
+    speed = max(np.abs(surface).max(initial=0.0), driven, 1.5 * mean, *before, 0.0)
     tiny = np.finfo(float).tiny
     return np.where(stress > 0, stress, tiny), speed if speed > 0 else tiny
+
+
+def _surface_speed(problem: Problem, end: int, sample: np.ndarray, lever: float, duration: float) -> np.ndarray:
+    """Surface speeds (m,) of a wall at the sampled instants; of a body one cautious guess of its largest.
+
+    The least of what the film, the inertia over the run, a damper and a spring would allow under its largest load.
+    """
+    body = problem.walls[end].body
+    if body is None:
+        return sample * lever
+    load = np.abs(sample).max(initial=0.0) + max(map(abs, body.curve[1]), default=0.0)
+    load += body.stiffness * abs(body.initial_displacement)
+    film = body.grip * problem.viscosity / problem.gap * lever
+    inertia = body.mass + body.grip * problem.density * lever * LIGHT * problem.gap
+    bounds = [load / (film + body.damping), load * duration / inertia]
+    if body.stiffness > 0.0:
+        bounds.append(load / np.sqrt(body.stiffness * inertia))
+    return np.full(len(sample), (min(bounds) + abs(body.initial_speed or 0.0)) * lever)
 
 
 def resolve(
@@ -142,7 +192,7 @@ def resolve(
     calm = np.zeros(len(first))
     longest[-1] = growth * slowest
     calm[-1] = np.log(1.0 / least) * slowest
-    return Resolution(cells, layers, tolerance, first, longest, calm, growth)
+    return Resolution(cells, layers, tolerance, first, longest, calm, growth, _event_step(problem, found, share))
 
 
 def _layer(problem: Problem, found: Features, end: int, growth: float, share: float) -> float:
@@ -202,3 +252,17 @@ def _first_steps(
     if swiftest > 0.0:
         first = np.minimum(first, 0.05 / swiftest)
     return np.minimum(first, found.length / 4.0)
+
+
+def _event_step(problem: Problem, found: Features, share: float) -> float:
+    """First step after a body has stopped or broken away: as after a kink of the size of its dry friction."""
+    nu = problem.viscosity / problem.density
+    out = np.inf
+    for end, wall in enumerate(problem.walls):
+        if wall.body is None or wall.body.breakaway == 0.0:
+            continue
+        lever = _levers(problem)[end]
+        inertia = wall.body.mass + wall.body.grip * problem.density * LIGHT * problem.gap * lever
+        kink = (wall.body.breakaway + wall.body.sliding) * lever / inertia
+        out = min(out, (share * found.stress[end] / (problem.density * kink)) ** 2 / nu)
+    return float(out)

@@ -9,6 +9,7 @@ import numpy as np
 from transient.drive.pieces import Drive, common_period
 from transient.gap.problem import PRESSURE, Inputs, Problem, join
 from transient.gap.system import System, assemble
+from transient.march.coupled import dense, settled_slopes, slowest
 
 COARSE_CELLS = 24  # enough for the slowest decay rate to a percent
 
@@ -36,6 +37,8 @@ def outlook(problem: Problem) -> Outlook:
     """Look ahead; raises ``ValueError`` where the duration is "auto" and the drive ends in no regime."""
     ends = [drive.eventual for drive in problem.drives]
     fluid = slowest_decay(problem)
+    if not problem.linear and any(end.period is not None for end in ends):
+        return _endless(problem, fluid)
     if any(end.drive is None for end in ends):
         return _endless(problem, fluid)
     period, common = common_period([end.period for end in ends])
@@ -90,7 +93,10 @@ def slowest_decay(problem: Problem) -> float:
     """Time constant of the fluid's slowest mode, s; infinite where no wall holds it."""
     curved = problem.metric > 0 and problem.walls[0].kind != "axis"
     layers = (min(1.0, 0.5 * problem.inner / problem.gap), 1.0) if curved else (1.0, 1.0)
-    rates = decay_rates(assemble(problem, COARSE_CELLS, layers))[0]
+    system = assemble(problem, COARSE_CELLS, layers)
+    if problem.closed:
+        return slowest(dense(problem, system, settled_slopes(problem, system)))
+    rates = decay_rates(system)[0]
     return float(1.0 / rates[0]) if rates[0] > 1e-9 * rates[-1] else np.inf
 
 

@@ -23,7 +23,8 @@ class History:
     ``time`` (n,) s; ``piece`` (n,) number of the smooth piece; ``offset`` (n,) s, the exact time is
     ``starts[piece] + offset``; ``stress``, ``stress_rate`` (n, 2) Pa, Pa/s, traction of the fluid on the wall,
     NaN where infinite; ``speed``, ``acceleration`` (n, 2) m/s or rad/s, and per s; ``mean``, ``mean_rate`` (n,)
-    mean velocity m/s, m/s^2; ``gradient`` (n,) pressure drop per length, Pa/m.
+    mean velocity m/s, m/s^2; ``gradient``, ``gradient_rate`` (n,) pressure drop per length, Pa/m, and per s (NaN
+    where infinite); ``place`` (n, 2) displacement of the walls since t = 0, m or rad (a body's from its own zero).
     ``position`` (N,) m, coordinate r; ``profile_row`` (k,) the rows at which profiles were kept;
     ``profile``, ``profile_rate``, ``travel`` (k, N) velocity w, its rate, and its integral since t = 0
     (in a rotating gap: angular).
@@ -39,6 +40,8 @@ class History:
     mean: np.ndarray
     mean_rate: np.ndarray
     gradient: np.ndarray
+    gradient_rate: np.ndarray
+    place: np.ndarray
     position: np.ndarray
     profile_row: np.ndarray
     profile: np.ndarray
@@ -57,6 +60,10 @@ class History:
     def speed_curve(self, wall: int) -> Curve:
         """The speed of one wall over time."""
         return Curve(self.time, self.speed[:, wall], self.acceleration[:, wall], self.step)
+
+    def gradient_curve(self) -> Curve:
+        """The pressure drop per length over time."""
+        return Curve(self.time, self.gradient, self.gradient_rate, self.step)
 
     def mean_curve(self) -> Curve:
         """The mean velocity over time."""

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from transient.gap.problem import LOWER, PRESSURE, UPPER, Problem
+from transient.gap.problem import LOWER, UPPER, Problem
 from transient.result.history import History
 from transient.trust.check import Check, judge
 from transient.trust.nodes import (
@@ -84,7 +84,7 @@ def judged(problem: Problem, history: History) -> History:
     at = at[~young[row]]
     number = np.cumsum(~young) - 1
     columns = ("time", "piece", "offset", "stress", "stress_rate", "speed", "acceleration", "mean", "mean_rate")
-    rows = {name: getattr(history, name)[~young] for name in (*columns, "gradient")}
+    rows = {name: getattr(history, name)[~young] for name in (*columns, "gradient", "gradient_rate", "place")}
     profiles = {name: getattr(history, name)[at][:, nodes] for name in ("profile", "profile_rate", "travel")}
     profile_row = number[history.profile_row[at]]
     unknown = np.isnan(rows["stress"][profile_row])
@@ -92,12 +92,6 @@ def judged(problem: Problem, history: History) -> History:
     return History(**rows, **profiles, position=position, profile_row=profile_row)
 
 
-def gradient_rate(problem: Problem, history: History) -> np.ndarray:
-    """Rate of the pressure drop per length (n,) at the rows, Pa/m/s."""
-    if not np.any(history.gradient != history.gradient[0]):
-        return np.zeros_like(history.gradient)
-    row = problem.inputs(float(history.time[-1])).row(PRESSURE)
-    return row.at(np.minimum(history.piece, len(row.starts) - 1), history.offset, 1)
 
 
 def momentum_balance(problem: Problem, history: History) -> Closure:
@@ -112,7 +106,7 @@ def momentum_balance(problem: Problem, history: History) -> Closure:
         -reach[end] * increments(history.piece, history.offset, history.stress[:, end], history.stress_rate[:, end])
         for end in (LOWER, UPPER)
     ]
-    parts.append(section * increments(history.piece, history.offset, history.gradient, gradient_rate(problem, history)))
+    parts.append(section * increments(history.piece, history.offset, history.gradient, history.gradient_rate))
     gross = float(sum(np.abs(part).sum() for part in parts))
     impulse = running(sum(parts), history.profile_row)
     if len(momentum) < 2:
@@ -141,7 +135,7 @@ def _power(problem: Problem, history: History) -> tuple[np.ndarray, np.ndarray, 
             radius = (problem.inner, problem.outer)[end]
             factor = wall.slip_length * reach[end] ** 2 / (problem.viscosity * radius**problem.metric)
             lost = lost + factor * increments(piece, offset, stress**2, 2.0 * stress * stress_rate)
-    flow_rate = gradient_rate(problem, history) * history.mean + history.gradient * history.mean_rate
+    flow_rate = history.gradient_rate * history.mean + history.gradient * history.mean_rate
     parts.append(section * increments(piece, offset, history.gradient * history.mean, flow_rate))
     return sum(parts), lost, sum(np.abs(part) for part in parts)
 

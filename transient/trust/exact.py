@@ -12,6 +12,7 @@ from transient.march.regime import Outlook
 from transient.result.curve import Curve
 from transient.result.history import History, largest
 from transient.result.run import Errors
+from transient.series.regime import deviation
 from transient.series.solution import Solution, solve
 from transient.trust.quasi_steady import steady_profile
 
@@ -38,9 +39,7 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
     elif ahead.kind == "steady":
         level_stress, level_mean, level_profile = stress, mean, _profile_error(away, exact, _steady_end(problem, ahead))
     else:
-        from transient.series.solution import deviation
-
-        apart = deviation(problem, ahead.drives, ahead.period, ahead.until)
+        apart = deviation(problem, ahead.until)
         level_stress = _stress_error(away, apart)
         value, bound = apart.mean(away.piece, away.offset)
         level_mean = np.abs(away.mean - value) + bound

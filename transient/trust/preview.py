@@ -48,6 +48,8 @@ def hand_history(problem: Problem, until: float) -> History:
         mean=quasi_steady_mean(problem, speed, gradient),
         mean_rate=np.zeros(rows),
         gradient=gradient,
+        gradient_rate=np.zeros(rows),
+        place=np.zeros((rows, 2)),
         position=position,
         profile_row=np.arange(rows),
         profile=profile,
