@@ -25,7 +25,7 @@ def once(command: list[str]) -> tuple[float, float]:
     process = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL, cwd=HOUSE, env=PLAIN)
     _, status, usage = os.wait4(process.pid, 0)
     seconds = time.perf_counter() - began
-    if os.waitstatus_to_exitcode(status) not in (0, 1, 3):
+    if os.waitstatus_to_exitcode(status) != 0:
         raise SystemExit(f"{' '.join(command)} ended with status {os.waitstatus_to_exitcode(status)}")
     # Linux counts in kB, macOS in bytes.
     return seconds, usage.ru_maxrss / (1024.0**2 if sys.platform == "darwin" else 1024.0)
