@@ -135,15 +135,15 @@ def test_a_periodic_end_names_its_period_and_no_overshoot():
 
 
 @pytest.mark.parametrize(
-    ("verdict", "status", "words"),
+    ("verdict", "kind", "status", "words"),
     [
-        ("caution", "caution", ["good, with a caution (8 of 9 checks passed)", "caution: close to the limit"]),
-        ("outside", "fail", ["outside what this model describes: do not rely on", "FAILED: close to the limit"]),
-        ("failed", "fail", ["a self-check failed: do not rely on", "FAILED: close to the limit"]),
+        ("caution", "validity", "caution", ["good, with a caution (8 of 9 checks passed)", "caution (a): close"]),
+        ("outside", "validity", "fail", ["outside what this model describes: do not rely on", "OUTSIDE (a): close"]),
+        ("failed", "numerics", "fail", ["a self-check failed: do not rely on", "FAILED (a): close"]),
     ],
 )
-def test_cautions_and_failures_are_sentences(verdict, status, words):
-    checks = [*SUMMARY["checks"], {**PASSED, "status": status, "note": "close to the limit"}]
+def test_cautions_and_failures_are_sentences(verdict, kind, status, words):
+    checks = [*SUMMARY["checks"], {**PASSED, "kind": kind, "status": status, "note": "close to the limit"}]
     text = " ".join(printed(verdict=verdict, checks=checks).split())
     for word in words:
         assert word in text

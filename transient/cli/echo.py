@@ -42,7 +42,7 @@ def cautions(checks: Sequence[Check]) -> list[str]:
     for check in checks:
         if check.status != "pass":
             word = "OUTSIDE" if check.status == "fail" else "caution"
-            text = f"{word}: {check.name} {check.value:.3g}, limit {check.limit:.3g}: {check.note}"
+            text = f"{word} ({check.name} {check.value:.3g}, limit {check.limit:.3g}): {check.note}"
             lines += textwrap.wrap(text, WIDTH, initial_indent="  ", subsequent_indent="    ")
     if len(lines) == 1:
         lines.append("  no caution")

@@ -164,9 +164,14 @@ def _trust(summary: dict[str, Any]) -> list[str]:
     lines = _entry("Trust", text)
     for check in sorted(checks, key=lambda check: check["status"] != "fail"):
         if check["status"] != "pass":
-            word = "FAILED" if check["status"] == "fail" else "caution"
-            lines += _entry("", f"{word}: {check.get('note') or check['name']}")
+            lines += _entry("", f"{_word(check)} ({check['name']}): {check['note']}")
     return lines
+
+
+def _word(check: dict[str, Any]) -> str:
+    if check["status"] == "caution":
+        return "caution"
+    return "OUTSIDE" if check["kind"] == "validity" else "FAILED"
 
 
 def _accuracy(part: dict[str, Any]) -> str:
