@@ -1,0 +1,41 @@
+"""Marches on a grid and with steps of the test's own choice."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from transient.gap.problem import Problem
+from transient.march.march import NO_PLAN, Plan, Trace, history, march, stress_before
+from transient.march.plan import Resolution, features, resolve
+from transient.result.history import History
+
+
+def even_steps(starts: np.ndarray, until: float, each: int) -> Plan:
+    """``each`` equal steps in every piece."""
+    ends = np.append(starts[1:], until)
+    share = np.arange(1, each + 1) / each
+    lands = np.tile(np.arange(1, each + 1) == each, len(starts))
+    return Plan(((ends - starts)[:, None] * share).ravel(), lands, 1)
+
+
+def resolution(problem: Problem, until: float, cells: int, layers: tuple[float, float], accuracy=1e-3) -> Resolution:
+    """Steps for ``accuracy``, but the grid as given."""
+    found = features(problem, problem.inputs(until), until)
+    slowest = 0.1 * problem.diffusion_time
+    return replace(resolve(problem, found, accuracy, slowest, 1e-4), cells=cells, layers=layers)
+
+
+def traced(problem: Problem, until: float, cells=24, layers=(0.3, 0.3), plan: Plan = NO_PLAN, **more) -> Trace:
+    """What the kernel records."""
+    inputs = problem.inputs(until)
+    found = features(problem, inputs, until)
+    return march(problem, inputs, until, found, resolution(problem, until, cells, layers, **more), plan=plan)
+
+
+def marched(problem: Problem, until: float, plan: Plan = NO_PLAN, every: int = 1, **more) -> History:
+    """The histories of one level."""
+    trace = traced(problem, until, plan=plan, **more)
+    inputs = problem.inputs(until)
+    return history(problem, inputs, trace, stress_before(problem, trace.system, inputs), every)
