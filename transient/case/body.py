@@ -29,7 +29,7 @@ def read_body(reading: Reading, gap: GapInput, end: int) -> BodyInput:
         for name in ("incline", "damping", "dry_friction", "breakaway_friction", "stiffness", "initial_speed",
                      "initial_displacement", "displaces")
     }  # fmt: skip
-    _check_values(section, mass, values)
+    _check_values(section, gap, mass, values)
     return BodyInput(
         mass=mass,
         load=_load(section, load_key),
@@ -48,7 +48,7 @@ def _refuse_other_motion(section: Section) -> None:
         raise section.refuse(name, f"has no meaning in a {place} gap; {need}")
 
 
-def _check_values(section: Section, mass: float, values: dict[str, Any]) -> None:
+def _check_values(section: Section, gap: GapInput, mass: float, values: dict[str, Any]) -> None:
     breakaway = values["breakaway_friction"]
     if breakaway is not None and breakaway < values["dry_friction"]:
         raise section.fault("breakaway_friction", "is below dry_friction", "a value of dry_friction or more is needed")
@@ -58,6 +58,9 @@ def _check_values(section: Section, mass: float, values: dict[str, Any]) -> None
         )
     if values["displaces"] is not None and section.reading.tree.get("pressure", {}).get("sealed") is not True:
         raise section.refuse("displaces", "is given without sealed; sealed = true in [pressure] is needed with it")
+    if values["displaces"] is not None and (gap.length is None or gap.section is None):
+        sizes = "gap.length and gap.width" if _has(gap, "width") else "gap.length"
+        raise section.refuse("displaces", f"needs the gap's section and length; {sizes} is needed with it")
 
 
 def _load(section: Section, name: str) -> Drive:

@@ -15,13 +15,6 @@ LATER: dict[str, str] = {
     "fluid.density_temperature": "a density that depends on the temperature",
     "wall.*.temperature": "a wall temperature",
     "wall.*.insulated": "an insulated wall",
-    "wall.*.displacement": "a wall moved by its displacement",
-    "wall.*.shear_free": "a free surface",
-    "wall.*.slip_length": "a slip length",
-    "wall.*.body": "a body on a wall",
-    "pressure.flow_rate": "a prescribed flow rate",
-    "pressure.mean_velocity": "a prescribed mean velocity",
-    "pressure.sealed": "a sealed gap",
 }
 
 LATER_SHAPES: dict[str, str] = {

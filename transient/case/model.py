@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from math import sin
 from pathlib import Path as FilePath
 from typing import Any
 
 from transient.case.gap import read_fluid, read_gap
-from transient.case.inputs import FluidInput, GapInput, PressureInput, RunInput, WallInput
+from transient.case.inputs import BodyInput, FluidInput, GapInput, PressureInput, RunInput, WallInput
 from transient.case.keys import TITLE
 from transient.case.override import as_changes, put
 from transient.case.reading import Input, Reading
@@ -15,11 +16,12 @@ from transient.case.run import read_pressure, read_run, read_start
 from transient.case.source import CaseError, Source
 from transient.case.walls import read_walls
 from transient.case.write import to_toml
-from transient.drive.pieces import Drive, DriveError, common_period, constant
+from transient.drive.pieces import Drive, DriveError, common_period, constant, total
 from transient.fluid import LAWS
-from transient.gap.problem import Law, Problem, Wall
+from transient.gap.problem import Body, Law, Problem, Wall
 from transient.units import typed
 
+GRAVITY = 9.80665  # m/s^2, standard gravity of ISO 80000-3 (value from memory)
 TABLES = ("title", "gap", "fluid", "wall", "pressure", "start", "run")
 
 
@@ -83,6 +85,7 @@ class Case:
             walls=(self._wall(0), self._wall(1)),
             speeds=(self._speed(0), self._speed(1)),
             gradient=self._gradient(),
+            flow=self._flow(),
             start=self.start,
             duration=run.duration,
             settle_within=run.settle_within,
@@ -99,11 +102,46 @@ class Case:
         if wall is None:
             return Wall(self.gap.shape.walls[end], "axis")
         kind = "shear_free" if wall.shear_free else "moving"
-        return Wall(wall.name, kind, wall.slip_length, self.gap.areas[end], self.gap.radii[end])
+        area = self.gap.areas[end] if wall.body is None else wall.body.area
+        body = None if wall.body is None else self._body(wall.body, end)
+        return Wall(wall.name, kind, wall.slip_length, area, self.gap.radii[end], body)
+
+    def _body(self, body: BodyInput, end: int) -> Body:
+        """The body with its weight along +x among its loads, and all gaps' stress acting on it."""
+        lever = self.gap.radii[end] if self.gap.shape.rotating else 1.0
+        weight = body.mass * GRAVITY * sin(body.incline)
+        return Body(
+            mass=body.mass,
+            load=body.load if weight == 0.0 else total([body.load, constant(weight)]),
+            grip=body.area * self.gap.count * lever,
+            damping=body.damping,
+            stiffness=body.stiffness,
+            curve=((), ()) if body.curve is None else (body.curve.speeds, body.curve.values),
+            held_beyond=body.curve is None or body.curve.beyond == "hold",
+            sliding=body.dry_friction,
+            breakaway=body.breakaway_friction,
+            initial_speed=body.initial_speed,
+            initial_displacement=body.initial_displacement,
+            displaced=body.displaces or 0.0,
+        )
 
     def _speed(self, end: int) -> Drive:
         wall = self.walls[end]
-        return constant(0.0) if wall is None or wall.speed is None else wall.speed
+        if wall is None or (wall.speed is None and wall.displacement is None):
+            return constant(0.0)
+        return wall.speed if wall.displacement is None else wall.displacement.derivative()
+
+    def _flow(self) -> Drive | None:
+        """The prescribed mean velocity, None where the pressure is prescribed."""
+        pressure, gap = self.pressure, self.gap
+        if pressure.kind == "sealed":
+            return constant(0.0)
+        if pressure.drive is None or pressure.kind not in ("flow_rate", "mean_velocity"):
+            return None
+        if pressure.kind == "mean_velocity":
+            return pressure.drive
+        assert gap.section is not None
+        return pressure.drive.scaled(1.0 / (gap.section * gap.count))
 
     def _gradient(self) -> Drive:
         if self.pressure.kind == "drop_per_length" and self.pressure.drive is not None:
