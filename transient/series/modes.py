@@ -15,6 +15,7 @@ from scipy.special import j0, j1
 
 from transient.series.basis import hankel_slopes, reduced_hankel
 from transient.series.gapshape import FREE, GapShape
+from transient.series.weak import WEAK, weak_ends, weak_root, weak_velocity
 
 _STEPS = 60
 # From this inner radius over gap on the norms are taken without the differences of the two ends.
@@ -28,7 +29,8 @@ class Modes:
     """The first M modes: ``rate`` (M,) = lambda^2, ``root`` (M,) = lambda.
 
     ``share`` (M, 3): projection of the unit steady flows (lower speed, upper speed, pressure drop) on each mode.
-    ``stress`` (M, 2): traction of each mode on the walls; ``mean`` (M,).
+    ``stress`` (M, 2): traction of each mode on the walls; ``mean`` (M,).  ``doubt``: relative error of the roots, where
+    weakly held fluid leaves more than round-off.
     """
 
     shape: GapShape
@@ -38,6 +40,7 @@ class Modes:
     stress: np.ndarray
     mean: np.ndarray
     phase: np.ndarray
+    doubt: float
 
     def velocity(self, y: np.ndarray) -> np.ndarray:
         """Eigenfunctions (M, k) at ``y`` (k,) in gaps from the lower wall."""
@@ -49,13 +52,17 @@ class Modes:
         if shape.metric == 0:
             return turn.imag
         # Near the axis of a very small inner cylinder the amplitude is large, but r is never 0 there.
-        return r ** (-shape.order - 0.5) * (reduced_hankel(shape.order, self.root[:, None] * r) * turn).imag
+        out = r ** (-shape.order - 0.5) * (reduced_hankel(shape.order, self.root[:, None] * r) * turn).imag
+        if _weak(shape, self.root):
+            out[0] = weak_velocity(shape, float(self.root[0]), y)
+        return out
 
 
 @lru_cache(maxsize=256)
 def modes(shape: GapShape, count: int) -> Modes:
     """The ``count`` slowest modes of a gap with at least one wall that holds the fluid back."""
     root = roots(shape, count)
+    doubt = _doubt(root, shape)
     phase = _lower_phase(shape, root) if not shape.axis else np.zeros(count)
     values, slopes, spins = _ends(shape, root, phase)
     rate = root**2
@@ -74,7 +81,7 @@ def modes(shape: GapShape, count: int) -> Modes:
     else:
         mean = push / rate / shape.volume
     stress = slopes * np.array([shape.levers[0], -shape.levers[1]])
-    return Modes(shape, root, rate, share, stress, mean, phase)
+    return Modes(shape, root, rate, share, stress, mean, phase, doubt)
 
 
 def roots(shape: GapShape, count: int) -> np.ndarray:
@@ -88,13 +95,29 @@ def roots(shape: GapShape, count: int) -> np.ndarray:
         low, high = np.where(gap < 0, x, low), np.where(gap >= 0, x, high)
         step = 1e-6 * x
         slope = (_gain(shape, x + step) - _gain(shape, x - step)) / (2 * step)
-        new = x - gap / slope
-        new = np.where((new > low) & (new < high), new, (low + high) / 2)
+        new = x - gap / np.where(slope > 0, slope, 1.0)
+        new = np.where((slope > 0) & (new > low) & (new < high), new, (low + high) / 2)
         done = np.abs(new - x) <= 4e-16 * new
         x = new
         if done.all():
             break
+    if _weak(shape, x):
+        x[0] = weak_root(shape, 0.98 * x[1])[0]
     return x
+
+
+def _doubt(root: np.ndarray, shape: GapShape) -> float:
+    """Largest relative error of the roots: round-off of the phases over how fast they turn."""
+    kept = root[_weak(shape, root) :]
+    step = 1e-5 * kept
+    slope = (_gain(shape, kept + step) - _gain(shape, kept - step)) / (2 * step)
+    doubt = float((2.3e-16 * np.pi * np.arange(1, len(kept) + 1) / (kept * slope)).max())
+    return max(doubt, weak_root(shape, 0.98 * root[1])[1]) if len(kept) < len(root) else doubt
+
+
+def _weak(shape: GapShape, root: np.ndarray) -> int:
+    """How many modes (none or one) are slow enough to be written in Bessel functions themselves."""
+    return int(shape.metric != 0 and root[0] < WEAK)
 
 
 def _first(shape: GapShape) -> float:
@@ -151,6 +174,8 @@ def _ends(shape: GapShape, root: np.ndarray, phase: np.ndarray) -> tuple[np.ndar
             values[:, end] = 0.0
         if shape.metric == 3:
             spins[:, end] = r**-0.5 * (reduced_hankel(0, root * r) * turn).real
+    if _weak(shape, root):
+        values[0], slopes[0], spins[0] = weak_ends(shape, float(root[0]))
     return values, slopes, spins
 
 

@@ -85,7 +85,7 @@ class Solution:
     def _evaluate(self, answer: Answer, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         value, size = evaluate(self.line, self.at, answer, *self._instants(piece, offset))
         # Round-off in a nearly closed annulus grows with radius over gap, even in stating the gap itself.
-        trust = TRUST + ROUNDING * self.shape.a
+        trust = TRUST + ROUNDING * self.shape.a + 20 * answer.modes.doubt
         return value, trust * (size + 1e-10 * size.max(axis=1, keepdims=True))
 
 
