@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.gap.problem import PRESSURE, Inputs, Problem
+from transient.gap.problem import Problem
 from transient.gap.system import assemble, steady
 from transient.march.levels import Ladder
+from transient.march.march import sudden_motion
 from transient.march.regime import Outlook
 from transient.result.history import History, largest
 from transient.result.run import Errors, Regime, Run, WallFacts
@@ -17,7 +18,7 @@ DENSE = 8  # times the nodes of the finest level, where the largest steady veloc
 def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> Run:
     """Everything that headline numbers are made from."""
     best = ladder.best
-    unbounded, when = infinite_stress(problem, ladder.inputs, ahead.until)
+    unbounded, when = infinite_stress(problem, ladder)
     return Run(
         best.flow,
         _regime(problem, ahead, ladder),
@@ -34,14 +35,14 @@ def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> 
         problem.viscosity,
         unbounded,
         when,
-        _free_motion(problem, ladder.inputs, best.flow),
+        _free_motion(problem, best.flow),
     )
 
 
 def _regime(problem: Problem, ahead: Outlook, ladder: Ladder) -> Regime:
     best = ladder.best
-    if ahead.kind == "steady":
-        size = _largest_steady(problem, ahead, ladder)
+    if ahead.kind == "steady" and best.deviation is not None:
+        size = _largest_steady(problem, ladder)
         return Regime("steady", None, best.deviation, size, abs(best.steady_mean), np.abs(best.steady_stress))
     if ahead.kind == "periodic":
         assert best.orbit is not None
@@ -58,43 +59,40 @@ def _regime(problem: Problem, ahead: Outlook, ladder: Ladder) -> Regime:
     return Regime("none", None, None, 0.0, 0.0, np.zeros(2))
 
 
-def _largest_steady(problem: Problem, ahead: Outlook, ladder: Ladder) -> float:
+def _largest_steady(problem: Problem, ladder: Ladder) -> float:
     """Largest |w| over the gap of the steady end: a steady state is exact on any grid, so one denser than the
     march's tells what lies between its nodes."""
-    assert ahead.drives is not None
-    values = np.array([float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ahead.drives])
+    speeds, gradient = ladder.best.steady_speeds, ladder.best.steady_gradient
     system = assemble(problem, DENSE * ladder.cells, ladder.layers)
-    profile = system.nodes(steady(system, values[:2], values[PRESSURE]), values[:2])[None, :]
+    profile = system.nodes(steady(system, speeds, gradient), speeds)[None, :]
     return float(largest(system.grid.radius, profile, np.zeros_like(profile))[0][0])
 
 
-def infinite_stress(problem: Problem, inputs: Inputs, until: float) -> tuple[np.ndarray, np.ndarray]:
+def infinite_stress(problem: Problem, ladder: Ladder) -> tuple[np.ndarray, np.ndarray]:
     """(coefficient K of |stress| ~ K / sqrt(t - t_jump), its time) per wall (2,): that of the largest jump, 0 without.
 
-    K = sqrt(density viscosity / pi) x jump of the surface speed (Stokes 1851; from memory): so soon after a jump
-    every gap is a half space.
+    K = sqrt(density viscosity / pi) x jump of the wall's surface speed against the fluid (Stokes 1851; from memory):
+    so soon after a jump every gap is a half space.
     """
+    inputs = ladder.inputs
     factor = np.sqrt(problem.density * problem.viscosity / np.pi)
     lever = (problem.inner, problem.outer) if problem.rotating else (1.0, 1.0)
     coefficient, when = np.zeros(2), np.zeros(2)
-    for end, wall in enumerate(problem.walls):
-        if wall.kind != "moving" or wall.slip_length > 0.0:
-            continue
-        jump = np.abs(inputs.row(end).jumps(0)) * lever[end]
-        worst = int(jump.argmax())
-        coefficient[end] = factor * jump[worst]
-        when[end] = inputs.starts[worst] if jump[worst] > 0.0 else 0.0
+    jumps = np.abs(sudden_motion(problem, inputs, ladder.speed_before)) * lever
+    for end in (0, 1):
+        largest_jump = int(jumps[:, end].argmax())
+        coefficient[end] = factor * jumps[largest_jump, end]
+        when[end] = inputs.starts[largest_jump] if coefficient[end] > 0.0 else 0.0
     return coefficient, when
 
 
-def _free_motion(problem: Problem, inputs: Inputs, flow: History) -> np.ndarray:
+def _free_motion(problem: Problem, flow: History) -> np.ndarray:
     """What the pressure alone would have added to the velocity since t = 0, at the kept profiles (k,)."""
     if problem.rotating:
         return np.zeros(len(flow.profile_row))
-    row = inputs.row(PRESSURE)
-    before = float(inputs.before[PRESSURE])
-    rate = (flow.gradient - before) / problem.density
-    change = row.at(flow.piece, flow.offset, 1) / problem.density
+    begin = flow.gradient[0] if problem.start == "steady" and np.isfinite(flow.gradient[0]) else 0.0
+    rate = np.where(np.isfinite(flow.gradient), flow.gradient - begin, 0.0) / problem.density
+    change = np.where(np.isfinite(flow.gradient_rate), flow.gradient_rate, 0.0) / problem.density
     h = flow.step
     part = 0.5 * h * (rate[1:] + rate[:-1]) + h * h / 12.0 * (change[:-1] - change[1:])
     return np.concatenate([[0.0], np.cumsum(part)])[flow.profile_row]

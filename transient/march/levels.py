@@ -51,6 +51,7 @@ class Ladder:
     best: Histories
     next_best: Histories
     inputs: Inputs
+    speed_before: np.ndarray
     layers: tuple[float, float]
     cells: int
     steps: int
@@ -102,8 +103,8 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     answers = []
     for number in range(levels):
         trace = flow.level(number)
-        start = initial_state(problem, trace.system, inputs)
-        main = history(problem, inputs, trace, before_start(problem, trace.system, inputs, start), 2**number)
+        before = before_start(problem, trace.system, inputs, initial_state(problem, trace.system, inputs))
+        main = history(problem, inputs, trace, before, 2**number)
         if ahead.kind == "periodic":
             answers.append(_periodic_answer(problem, runs, number, trace, main))
         elif ahead.kind == "steady":
@@ -113,7 +114,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     best = _mix(answers[-2], answers[-1])
     other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
-    return Ladder(best, other, inputs, flow.resolution.layers, cells, flow.steps, sum(run.solves for run in runs))
+    return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, sum(run.solves for run in runs))
 
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:

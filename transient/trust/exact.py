@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 import numpy as np
 
-from transient.gap.problem import PRESSURE, Problem
+from transient.gap.problem import Problem
 from transient.march.levels import Ladder
 from transient.march.regime import Outlook
 from transient.result.curve import Curve
@@ -37,7 +37,7 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
     if away is None:
         level_stress, level_mean, level_profile = stress, mean, np.zeros(len(flow.profile_row))
     elif ahead.kind == "steady":
-        level_stress, level_mean, level_profile = stress, mean, _profile_error(away, exact, _steady_end(problem, ahead))
+        level_stress, level_mean, level_profile = stress, mean, _profile_error(away, exact, _steady_end(problem, ladder))
     else:
         apart = deviation(problem, ahead.until)
         level_stress = _stress_error(away, apart)
@@ -49,11 +49,10 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
     return Errors("exact", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak)
 
 
-def _steady_end(problem: Problem, ahead: Outlook) -> Callable[[np.ndarray], np.ndarray]:
+def _steady_end(problem: Problem, ladder: Ladder) -> Callable[[np.ndarray], np.ndarray]:
     """The steady velocity that the drives end in, as a function of the coordinate."""
-    assert ahead.drives is not None
-    values = np.array([float(drive.pieces(1.0).value(np.zeros(1))[0]) for drive in ahead.drives])
-    return lambda r: steady_profile(problem, values[:2], values[PRESSURE], r)
+    best = ladder.best
+    return lambda r: steady_profile(problem, best.steady_speeds, best.steady_gradient, r)
 
 
 def _stress_error(history: History, exact: Solution) -> np.ndarray:
