@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from transient.gap.problem import Problem
-from transient.march.march import NO_PLAN, Plan, Trace, history, march, stress_before
+from transient.march.march import NO_PLAN, Plan, Trace, before_start, history, initial_state, march
 from transient.march.plan import Resolution, features, resolve
 from transient.result.history import History
 
@@ -34,8 +34,13 @@ def traced(problem: Problem, until: float, cells=24, layers=(0.3, 0.3), plan: Pl
     return march(problem, inputs, until, found, resolution(problem, until, cells, layers, **more), plan=plan)
 
 
-def marched(problem: Problem, until: float, plan: Plan = NO_PLAN, every: int = 1, **more) -> History:
-    """The histories of one level."""
-    trace = traced(problem, until, plan=plan, **more)
+def told(problem: Problem, until: float, trace: Trace, every: int = 1) -> History:
+    """The histories of a trace, ``every``-th node kept."""
     inputs = problem.inputs(until)
-    return history(problem, inputs, trace, stress_before(problem, trace.system, inputs), every)
+    before = before_start(problem, trace.system, inputs, initial_state(problem, trace.system, inputs))
+    return history(problem, inputs, trace, before, every)
+
+
+def marched(problem: Problem, until: float, plan: Plan = NO_PLAN, **more) -> History:
+    """The histories of one level."""
+    return told(problem, until, traced(problem, until, plan=plan, **more))

@@ -11,11 +11,11 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
-from by_hand import even_steps, marched, traced
+from by_hand import even_steps, marched, told, traced
 from chebyshev import Collocation
 from problems import SHAPES, problem, smooth_ramp
 
-from transient.march.march import extrapolate, halved, history, stress_before
+from transient.march.march import extrapolate, halved
 
 UNTIL = 1.5
 DECLARED, WITHIN = 2.0, 0.1
@@ -95,11 +95,8 @@ def test_extrapolated_levels_converge_with_order_three(shape, drive):
     for each, cells in ((15, 12), (30, 24), (60, 48)):
         base = traced(flow, UNTIL, cells=cells, plan=even_steps(inputs.starts, UNTIL, each))
         fine = traced(flow, UNTIL, cells=2 * cells, plan=halved(base))
-        levels = [
-            history(flow, inputs, trace, stress_before(flow, trace.system, inputs), every)
-            for trace, every in ((base, 1), (fine, 2))
-        ]
-        errors.append(against_collocation(flow, extrapolate(*levels), "stress"))
+        both = extrapolate(told(flow, UNTIL, base), told(flow, UNTIL, fine, 2))
+        errors.append(against_collocation(flow, both, "stress"))
     order = np.log2(np.array(errors[:-1]) / errors[1:])
     # the steps' error has a third-order term, which halving twice does not remove; that of the grid has none
     assert order[-1] > 3.0 - WITHIN
