@@ -36,7 +36,7 @@ class Solved:
 def result_of(case: Case, problem: Problem, solved: Solved, seconds: float) -> Result:
     """The result of a case; ``seconds`` spent solving."""
     run = solved.run
-    rows = stored(run.history, solved.ladder.inputs, problem.accuracy, run.errors.stress)
+    rows = stored(problem, run.history, solved.ladder.inputs, run.errors.stress)
     variables = _variables(problem, solved, rows)
     summary = _summary(case, problem, solved, seconds)
     return Result(variables, summary, case.text(), {"title": case.title})

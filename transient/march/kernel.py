@@ -89,7 +89,7 @@ def _march_of(closed: bool):
         record_every, profile_every,
         velocity, rates, travel, wall, gradient, mode,  # state, updated: [n, L] thrice, [3, 2, L], (L,), int64 [2, L]
         cursor,  # int64 [5, L]: piece, place in the plan, rows, profiles, rows handed over before these
-        state,  # [3, L]: offset, step, steps since the piece began
+        state,  # [4, L]: offset, step, steps since the piece or the last event, that event's own offset in the piece
         row_piece, row_offset, rows, row_mark,  # records: (R, L), (R, L), (R, L, FIELDS), (R, L)
         profile_row, profiles,  # (Q, L), (Q, L, 3, n)
         status,
@@ -152,11 +152,12 @@ def _march_of(closed: bool):
                 running += 1
                 piece = cursor[0, l]
                 offset = state[0, l]
+                since = state[3, l]
                 if adaptive:
                     stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
-                    left = (stop - piece_start[piece]) - offset
+                    left = (stop - piece_start[piece]) - since - offset
                     wanted = state[1, l]
-                    if offset < calm_after[piece]:
+                    if since + offset < calm_after[piece]:
                         wanted = min(wanted, longest_step[piece])
                     if wanted >= left:
                         wanted = left
@@ -167,9 +168,9 @@ def _march_of(closed: bool):
                     step[l] = plan[cursor[1, l]] - offset
                 scaled[l] = ALPHA * step[l]
                 for row in range(3):
-                    _input(poly, coeff, rate, piece, row, offset + GAMMA * step[l], values)
+                    _input(poly, coeff, rate, piece, row, since + (offset + GAMMA * step[l]), values)
                     middle_in[row, l] = values[0]
-                    _input(poly, coeff, rate, piece, row, offset + step[l], values)
+                    _input(poly, coeff, rate, piece, row, since + (offset + step[l]), values)
                     end_in[row, l] = values[0]
                     end_slope[row, l] = values[1]
             if running == 0:
@@ -313,7 +314,7 @@ def _march_of(closed: bool):
                         grown = max(grown, state[1, l])
                     state[1, l] = grown
                     stop = until[l] if piece + 1 >= piece_stop[l] else piece_start[piece + 1]
-                    length = stop - piece_start[piece]
+                    length = stop - piece_start[piece] - state[3, l]
                     landed = step[l] >= length - state[0, l] or state[0, l] + step[l] >= length
                     state[0, l] = length if landed else state[0, l] + step[l]
                 else:
@@ -364,16 +365,19 @@ def _march_of(closed: bool):
                     status[l] = DONE
                     continue
                 longest = event_step[l]
+                if not landed:
+                    state[3, l] += state[0, l]
+                state[0, l] = 0.0
                 if landed:
                     piece += 1
                     cursor[0, l] = piece
-                    state[0, l] = 0.0
+                    state[3, l] = 0.0
                     longest = first_step[piece]
                     if event:
                         longest = min(longest, event_step[l])
                 if closed:
                     for row in range(3):
-                        _input(poly, coeff, rate, piece, row, state[0, l], values)
+                        _input(poly, coeff, rate, piece, row, state[3, l], values)
                         end_in[row, l] = values[0]
                         end_slope[row, l] = values[1]
                     if landed:

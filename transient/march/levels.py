@@ -10,6 +10,7 @@ from transient.gap.problem import PRESSURE, Inputs, Problem
 from transient.gap.system import System, steady
 from transient.march import kernel
 from transient.march.coupled import dense, periodic_start, settled_state
+from transient.march.events import divided, eventful, resampled
 from transient.march.march import (
     NO_PLAN,
     State,
@@ -23,9 +24,11 @@ from transient.march.march import (
     march,
     steady_stress,
 )
-from transient.march.plan import Features, Resolution, features, on_one_grid, resolve
+from transient.march.plan import Features, Resolution, features, on_one_grid, resolve, tightened
 from transient.march.regime import Outlook, deviation_inputs, periodic_inputs, periodic_state, rates_of
 from transient.result.history import History
+
+EVENT_LEVELS = 3
 
 
 @dataclass(frozen=True, eq=False)
@@ -87,6 +90,8 @@ class _Climb:
 
 def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, levels: int) -> Ladder:
     """Solve on ``levels`` (2 or 3) levels.  Raises ``SolveError``."""
+    if eventful(problem):
+        return _climb_by_events(problem, ahead, accuracy, refine)
     inputs = problem.inputs(ahead.until)
     runs = [_Climb(problem, inputs, ahead.until)]
     if ahead.kind == "periodic":
@@ -115,6 +120,34 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
     return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, sum(run.solves for run in runs))
+
+
+def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: float) -> Ladder:
+    """Levels that each find their own stops and breakings-away: compared, but not extrapolated."""
+    inputs = problem.inputs(ahead.until)
+    base = _Climb(problem, inputs, ahead.until)
+    _prepare(problem, [base], ahead, accuracy, refine)
+    answers = []
+    for number in range(EVENT_LEVELS):
+        run = _Climb(problem, inputs, ahead.until)
+        run.found = base.found
+        run.resolution = tightened(base.resolution, number)
+        trace = run.level(0)
+        base.solves += trace.solves
+        own, parted = divided(inputs, trace)
+        before = before_start(problem, trace.system, inputs, initial_state(problem, trace.system, inputs))
+        main = history(problem, own, parted, before, 2**number)
+        if ahead.kind == "steady":
+            answers.append(_steady_answer(problem, ahead, parted, main, 2**number))
+        else:
+            answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
+    best, other = answers[-1], answers[-2]
+    again = resampled(other.flow, best.flow)
+    away = None
+    if best.deviation is not None and other.deviation is not None:
+        away = resampled(other.deviation, best.deviation)
+    other = replace(other, flow=again, deviation=away)
+    return Ladder(best, other, own, before.speed, base.resolution.layers, run.resolution.cells, run.steps, base.solves)
 
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:

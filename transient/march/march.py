@@ -145,7 +145,7 @@ class _Run:
         self.mode = np.zeros((2, 1), np.int64)
         self.links = links(problem, system)
         self.cursor = np.zeros((5, 1), np.int64)
-        self.state = np.zeros((3, 1))
+        self.state = np.zeros((4, 1))
         self.state[1] = resolution.first_step[0]
         self.status = np.zeros(1, np.int64)
         weights = system.grid.mean_weight
@@ -253,7 +253,7 @@ class _Run:
                 self.kept[i] = (*part[:4], part[4][keep], part[5][keep])
 
     def time(self) -> float:
-        return float(self.inputs.starts[self.cursor[0, 0]] + self.state[0, 0])
+        return float(self.inputs.starts[self.cursor[0, 0]] + self.state[3, 0] + self.state[0, 0])
 
     def complaint(self) -> str:
         if self.status[0] == kernel.BEYOND:

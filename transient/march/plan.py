@@ -72,6 +72,19 @@ def on_one_grid(resolutions: list[Resolution]) -> list[Resolution]:
     return [replace(r, layers=layers, cells=cells) for r in resolutions]
 
 
+def tightened(resolution: Resolution, times: int) -> Resolution:
+    """The same layers with 2^times the cells, and steps so many times shorter by themselves."""
+    by = 2.0**times
+    return replace(
+        resolution,
+        cells=resolution.cells * 2**times,
+        tolerance=resolution.tolerance / by**3,
+        first_step=resolution.first_step / by,
+        longest_step=resolution.longest_step / by,
+        event_step=resolution.event_step / by,
+    )
+
+
 def _cells(layers: tuple[float, ...], growth: float) -> int:
     along = np.log1p(1.0 / layers[0]) + np.log1p(1.0 / layers[1])
     return int(np.clip(np.ceil(along / growth), FEWEST_CELLS, MOST_CELLS))

@@ -29,18 +29,19 @@ class Rows:
     gradient: np.ndarray
 
 
-def stored(history: History, inputs: Inputs, accuracy: float, stress_error: np.ndarray) -> Rows:
+def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.ndarray) -> Rows:
     """Rows of ``history``, filled in where a straight line would be off, without those that are not needed.
 
     A finite jump of an input is two rows at neighbouring times, an infinite stress one row of NaN.  Rows so soon
     after an infinite stress that their error (``stress_error`` (n, 2)) exceeds the local accuracy are left out.
     """
+    accuracy = problem.accuracy
     keep = _trusted(history, accuracy, stress_error)
     pairs = np.flatnonzero(keep)
     low, high = pairs[:-1], pairs[1:]
     same = history.piece[low] == history.piece[high]
     low, high = low[same], high[same]
-    parts = _parts(history, inputs, accuracy, low, high)
+    parts = _parts(problem, history, inputs, low, high)
     inner = np.repeat(np.arange(len(low)), parts - 1)
     number = np.arange(len(inner)) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
     share = number / parts[inner]
@@ -60,6 +61,11 @@ def stored(history: History, inputs: Inputs, accuracy: float, stress_error: np.n
     pieces, offsets, stress, mean = pieces[order], offsets[order], stress[order], mean[order]
     speed = np.stack([inputs.row(end).at(pieces, offsets) for end in (LOWER, UPPER)], axis=1)
     gradient = inputs.row(PRESSURE).at(pieces, offsets)
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None:
+            speed[:, end] = fill(history.speed[:, end], history.acceleration[:, end])[order]
+    if problem.flow is not None:
+        gradient = fill(history.gradient, history.gradient_rate)[order]
     time = inputs.starts[pieces] + offsets
     return _part_jumps(Rows(time, stress, speed, mean, gradient), pieces)
 
@@ -88,14 +94,23 @@ def _trusted(history: History, accuracy: float, error: np.ndarray) -> np.ndarray
     return keep
 
 
-def _parts(history: History, inputs: Inputs, accuracy: float, low: np.ndarray, high: np.ndarray) -> np.ndarray:
+def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, high: np.ndarray) -> np.ndarray:
     """Into how many parts each kept interval is cut (m,)."""
+    accuracy = problem.accuracy
     step = history.offset[high] - history.offset[low]
     need = np.zeros(len(low))
     columns = [
         *((history.stress[:, end], history.stress_rate[:, end]) for end in (0, 1)),
         (history.mean, history.mean_rate),
     ]
+    given = [PRESSURE] if problem.flow is None else []
+    if problem.flow is not None:
+        columns.append((history.gradient, history.gradient_rate))
+    for end, wall in enumerate(problem.walls):
+        if wall.body is None:
+            given.append(end)
+        else:
+            columns.append((history.speed[:, end], history.acceleration[:, end]))
     for value, rate in columns:
         size = np.nanmax(np.abs(value), initial=0.0)
         scale = np.full(len(low), size)
@@ -111,7 +126,7 @@ def _parts(history: History, inputs: Inputs, accuracy: float, low: np.ndarray, h
         with np.errstate(all="ignore"):
             bend = np.maximum(np.abs(start), np.abs(end)) / 8.0 / (STRAIGHT * accuracy * scale)
         need = np.maximum(need, np.where(np.isfinite(bend), bend, 0.0))
-    for index in (LOWER, UPPER, PRESSURE):
+    for index in given:
         row = inputs.row(index)
         size = np.abs(row.at(history.piece, history.offset)).max(initial=0.0)
         if size == 0.0:
