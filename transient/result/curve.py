@@ -107,12 +107,15 @@ class Curve:
 
     def last_above(self, level: float) -> float:
         """Time after which |value| stays at or below ``level``: 0 if always, nan if not by the end."""
-        magnitude = np.abs(self.value)
+        return max(self.last_over(level, 1.0), self.last_over(level, -1.0), key=lambda t: np.inf if np.isnan(t) else t)
+
+    def last_over(self, level: float, sign: float) -> float:
+        """Time after which sign x value stays at or below ``level``: 0 if always, nan if not by the end."""
         time, value, interval = self.turning
-        high = np.zeros(len(self.step))
-        np.maximum.at(high, interval, np.abs(value))
+        high = np.full(len(self.step), -np.inf)
+        np.maximum.at(high, interval, sign * value)
         with np.errstate(invalid="ignore"):
-            rows = ~(magnitude <= level)  # a value that is not finite is above
+            rows = ~(sign * self.value <= level)  # a value that is not finite is above
             over = rows[:-1] | (high > level)
         if rows[-1]:
             return np.nan
@@ -122,10 +125,9 @@ class Curve:
         i = int(above[-1])
         if self.step[i] <= 0.0 or not np.isfinite(self.value[i]):
             return float(self.time[i + 1])
-        inside = (interval == i) & (np.abs(value) > level)
+        inside = (interval == i) & (sign * value > level)
         low = float(((time[inside] - self.time[i]) / self.step[i]).max(initial=0.0))
-        side = 1.0 if float(self.at(i, low)) >= 0.0 else -1.0
-        share = _crossing(self._interval(i, -side), -level, low, 1.0)
+        share = _crossing(self._interval(i, -sign), -level, low, 1.0)
         return float(self.time[i] + share * self.step[i])
 
     def integral(self) -> np.ndarray:

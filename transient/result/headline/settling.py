@@ -53,11 +53,9 @@ class _Judge:
     def __init__(self, curve: Curve, error: np.ndarray, size: float):
         self.size = size
         self.curve = curve
-        sign = np.sign(curve.value)
-        magnitude = np.abs(curve.value)
-        rate = sign * curve.rate
-        self.above = Curve(curve.time, magnitude + error, rate, curve.step)
-        self.below = Curve(curve.time, magnitude - error, rate, curve.step)
+        # the deviation off by its error, to either side
+        self.higher = Curve(curve.time, curve.value + error, curve.rate, curve.step)
+        self.lower = Curve(curve.time, curve.value - error, curve.rate, curve.step)
 
     def time(self, level: float) -> float | None:
         """Settling time within ``level``, None if not by the end or if there is nothing to measure against."""
@@ -73,11 +71,15 @@ class _Judge:
         if self.size == 0.0:
             return 0.0
         end = float(self.curve.time[-1])
-        late = self.above.last_above(level * self.size)
-        early = self.below.last_above(level * self.size)
-        late = end if np.isnan(late) else late
-        early = end if np.isnan(early) else early
+        band = level * self.size
+        late = _later(self.higher.last_over(band, 1.0), self.lower.last_over(band, -1.0), end)
+        early = _later(self.lower.last_over(band, 1.0), self.higher.last_over(band, -1.0), end)
         return max(late - time, time - early, 4e-16 * time, 0.0)
+
+
+def _later(one: float, other: float, end: float) -> float:
+    """The later of two times; one that is not reached counts as the end of the run."""
+    return max(end if np.isnan(one) else one, end if np.isnan(other) else other)
 
 
 def _judges(run: Run) -> dict[str, Any]:
