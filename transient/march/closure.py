@@ -3,8 +3,8 @@
 In one stage the fluid's rates are linear in what the walls and the pressure do:
 ``f = p + dU_a h_a + dU_b h_b + dG h_g`` with ``h`` the rates that one unit of wall speed or pressure drop makes, known
 with the step's factors.  What a body or a flow condition leaves unknown follows from a system of at most three
-equations, so the fluid's own matrix stays tridiagonal and every coupling is implicit.  Unknowns are changes against the stage's explicit guess: differences of
-speeds would lose their digits in tiny steps.
+equations, so the fluid's own matrix stays tridiagonal and every coupling is implicit.  Unknowns are changes against
+the stage's explicit guess: differences of speeds would lose their digits in tiny steps.
 """
 
 from __future__ import annotations
@@ -20,6 +20,12 @@ SPEED, RATE, PLACE = 0, 1, 2
 # modes of dry friction: [2, L]
 FREE, STUCK, FORWARD, BACKWARD = 0, 1, 2, 3
 MOST_ITERATIONS = 60
+
+# of the two stages: weight of the first two rates, implicit share, and the local error's weights (Hosea & Shampine)
+GAMMA = 2.0 - 2.0**0.5
+ALPHA = GAMMA / 2.0
+SHARE = 2.0**0.5 / 4.0
+ERROR = (SHARE - (1.0 - SHARE) / 3.0, SHARE - (3.0 * SHARE + 1.0) / 3.0, ALPHA - ALPHA / 3.0)
 
 
 @part
@@ -181,121 +187,90 @@ def close_stage(
 
 
 @part
-def net_load(l, e, link, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load):
-    """Force on a body short of friction and of its own inertia."""
-    curve_load(
-        curve_speed, curve_value, int(link[e, l, CURVE_FIRST]), int(link[e, l, CURVE_STOP]), wall[SPEED, e, l], load
-    )
-    return (
-        inputs[e, l]
-        + load[0]
-        - link[e, l, DAMPING] * wall[SPEED, e, l]
-        - link[e, l, STIFFNESS] * wall[PLACE, e, l]
-        + link[e, l, GRIP] * end_conductance[e, l] * (near - wall[SPEED, e, l])
-        + link[e, l, PUSH] * gradient[l]
-    )
+def guess_walls(link, flow, wall_base, gradient, inputs, given):
+    """Walls' speeds and pressure of a stage before it is closed, in place of ``inputs``; these go to ``given``."""
+    for l in range(inputs.shape[1]):
+        for e in range(2):
+            given[e, l] = inputs[e, l]
+            if link[e, l, KIND] != PRESCRIBED:
+                inputs[e, l] = wall_base[e, l]
+        given[2, l] = inputs[2, l]
+        if flow[l] != 0:
+            inputs[2, l] = gradient[l]
 
 
 @part
-def choose_mode(l, e, link, mode, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load):
-    """What dry friction does from a body's present state on."""
-    if link[e, l, KIND] == PRESCRIBED or link[e, l, BREAKAWAY] == 0.0:
-        mode[e, l] = FREE
-        return
-    speed = wall[SPEED, e, l]
-    if speed > 0.0:
-        mode[e, l] = FORWARD
-    elif speed < 0.0:
-        mode[e, l] = BACKWARD
-    else:
-        net = net_load(l, e, link, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load)
-        if net > link[e, l, BREAKAWAY]:
-            mode[e, l] = FORWARD
-        elif net < -link[e, l, BREAKAWAY]:
-            mode[e, l] = BACKWARD
-        else:
-            mode[e, l] = STUCK
-
-
-@part
-def begin(
-    l, link, mode, flow, storage, conductance, volume, end_conductance, end_weight, mean_weight,
-    curve_speed, curve_value, inputs, input_rates, velocity, rates, wall, gradient, load,
+def close_walls(
+    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+    curve_speed, curve_value, inputs, given, base, stage_rate, wall_base, place_base, wall_stage,
+    gradient_stage, guess, place, near, matrix, right, change, load, slope,
 ):  # fmt: skip
-    """Rates of fluid and bodies, and the pressure drop, that belong to the present velocities and inputs.
-
-    ``inputs``, ``input_rates`` [3, L]: values and slopes at the instant.
-    """
-    n = velocity.shape[0]
-    for e in range(2):
-        if link[e, l, KIND] == PRESCRIBED:
-            wall[SPEED, e, l] = inputs[e, l]
-            wall[RATE, e, l] = input_rates[e, l]
-    if flow[l] == 0:
-        gradient[l] = inputs[2, l]
-    for i in range(n):
-        here = velocity[i, l]
-        below = end_conductance[0, l] * (wall[SPEED, 0, l] - here)
-        if i > 0:
-            below = conductance[i - 1, l] * (velocity[i - 1, l] - here)
-        above = end_conductance[1, l] * (wall[SPEED, 1, l] - here)
-        if i + 1 < n:
-            above = conductance[i, l] * (velocity[i + 1, l] - here)
-        rates[i, l] = (below + above) / storage[i, l]
-    # with a prescribed flow the pressure is what keeps the flow's own rate; friction's mode depends on it and back
-    for _ in range(3):
-        for e in range(2):
-            near = velocity[0, l] if e == 0 else velocity[n - 1, l]
-            choose_mode(
-                l, e, link, mode, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load
-            )
-        if flow[l] == 0:
-            break
-        have = 0.0
-        per_push = 0.0
+    """Close one lane's stage: the walls' motion and the pressure, and the fluid's rates that go with them."""
+    n = base.shape[0]
+    s = scaled[l]
+    for k in range(3):
+        guess[k] = inputs[k, l]
+    place[0], place[1] = place_base[0, l], place_base[1, l]
+    near[0] = base[0, l] + s * stage_rate[0, l]
+    near[1] = base[n - 1, l] + s * stage_rate[n - 1, l]
+    mean = 0.0
+    if flow[l] != 0:
         for i in range(n):
-            have += mean_weight[i, l] * rates[i, l]
-            per_push += mean_weight[i, l] * volume[i, l] / storage[i, l]
-        for e in range(2):
-            share = end_weight[e, l] + link[e, l, SWEEP]
-            if link[e, l, KIND] == PRESCRIBED:
-                have += share * wall[RATE, e, l]
-            elif mode[e, l] != STUCK:
-                near = velocity[0, l] if e == 0 else velocity[n - 1, l]
-                net = net_load(l, e, link, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load)
-                still = net - link[e, l, PUSH] * gradient[l] + friction(link, mode, e, l)
-                have += share * still / link[e, l, MASS]
-                per_push += share * link[e, l, PUSH] / link[e, l, MASS]
-        gradient[l] = (input_rates[2, l] - have) / per_push
+            mean += mean_weight[i, l] * (base[i, l] + s * stage_rate[i, l])
+    close_stage(
+        l, link, mode, flow, end_conductance, end_weight, response, s, curve_speed, curve_value,
+        given, guess, place, near, mean, matrix, right, change, load, slope,
+    )  # fmt: skip
     for i in range(n):
-        rates[i, l] += volume[i, l] * gradient[l] / storage[i, l]
+        stage_rate[i, l] += change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l]
     for e in range(2):
-        if link[e, l, KIND] == PRESCRIBED:
-            continue
-        if mode[e, l] == STUCK:
-            wall[RATE, e, l] = 0.0
-            continue
-        near = velocity[0, l] if e == 0 else velocity[n - 1, l]
-        net = net_load(l, e, link, end_conductance, curve_speed, curve_value, inputs, near, wall, gradient, load)
-        wall[RATE, e, l] = (net + friction(link, mode, e, l)) / link[e, l, MASS]
+        inputs[e, l] = guess[e] + change[e]
+        wall_stage[SPEED, e, l] = inputs[e, l]
+        # a body's rate; that of a prescribed wall is its own history's and not needed within the step
+        wall_stage[RATE, e, l] = change[e] / s if link[e, l, KIND] != PRESCRIBED else 0.0
+        wall_stage[PLACE, e, l] = place_base[e, l] + s * inputs[e, l]
+    inputs[2, l] = guess[2] + change[2]
+    gradient_stage[l] = inputs[2, l]
 
 
 @part
-def impulse(l, link, mode, flow, storage, volume, end_weight, mean_weight, step_of_flow, velocity, wall):
-    """A sudden change of the prescribed flow: all fluid (and what hangs on it) is pushed at once."""
-    if flow[l] == 0 or step_of_flow == 0.0:
-        return
-    n = velocity.shape[0]
-    per_push = 0.0
-    for i in range(n):
-        per_push += mean_weight[i, l] * volume[i, l] / storage[i, l]
+def close_error(
+    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
+    curve_speed, curve_value, step, wall, wall_middle, wall_end, error, wall_error,
+    matrix, right, change, load, slope,
+):  # fmt: skip
+    """Pass one lane's local error through the closed matrix, bodies and flow included."""
+    n = error.shape[0]
+    s = scaled[l]
     for e in range(2):
-        if link[e, l, KIND] != PRESCRIBED and mode[e, l] != STUCK:
-            share = end_weight[e, l] + link[e, l, SWEEP]
-            per_push += share * link[e, l, PUSH] / link[e, l, MASS]
-    push = step_of_flow / per_push
+        slope[e] = 0.0
+        right[e] = 0.0
+        wall_error[e, l] = 0.0
+        if link[e, l, KIND] == PRESCRIBED or mode[e, l] == STUCK:
+            continue
+        own = step[l] * (
+            ERROR[0] * wall[RATE, e, l] + ERROR[1] * wall_middle[RATE, e, l] + ERROR[2] * wall_end[RATE, e, l]
+        )
+        gone = step[l] * (
+            ERROR[0] * wall[SPEED, e, l] + ERROR[1] * wall_middle[SPEED, e, l] + ERROR[2] * wall_end[SPEED, e, l]
+        )
+        beside = error[0, l] if e == 0 else error[n - 1, l]
+        right[e] = (
+            link[e, l, MASS] * own / s
+            - link[e, l, STIFFNESS] * gone
+            + link[e, l, GRIP] * end_conductance[e, l] * beside
+        )
+        if link[e, l, CURVE_STOP] > link[e, l, CURVE_FIRST]:
+            first, stop = int(link[e, l, CURVE_FIRST]), int(link[e, l, CURVE_STOP])
+            curve_load(curve_speed, curve_value, first, stop, wall_end[SPEED, e, l], load)
+            slope[e] = load[1]
+    right[2] = 0.0
+    if flow[l] != 0:
+        for i in range(n):
+            right[2] -= mean_weight[i, l] * error[i, l]
+    assemble_three(l, link, mode, flow, end_conductance, end_weight, response, s, slope, matrix)
+    solve_three(matrix, right, change)
     for i in range(n):
-        velocity[i, l] += volume[i, l] * push / storage[i, l]
+        error[i, l] += s * (change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l])
     for e in range(2):
-        if link[e, l, KIND] != PRESCRIBED and mode[e, l] != STUCK:
-            wall[SPEED, e, l] += link[e, l, PUSH] * push / link[e, l, MASS]
+        wall_error[e, l] = change[e]

@@ -16,35 +16,19 @@ import numpy as np
 
 from transient.compiled import compiled, part
 from transient.march.closure import (
-    BACKWARD,
-    BREAKAWAY,
-    CURVE_FIRST,
-    CURVE_STOP,
-    FORWARD,
-    FREE,
-    GRIP,
-    KIND,
-    MASS,
+    ALPHA,
+    ERROR,
+    GAMMA,
     PLACE,
-    PRESCRIBED,
     RATE,
-    REFUSE,
+    SHARE,
     SPEED,
-    STIFFNESS,
-    STUCK,
-    assemble_three,
-    begin,
-    close_stage,
-    curve_load,
-    impulse,
-    net_load,
-    solve_three,
+    close_error,
+    close_walls,
+    guess_walls,
 )
-
-GAMMA = 2.0 - np.sqrt(2.0)
-ALPHA = GAMMA / 2.0  # the matrix is storage - ALPHA step A in both stages
-SHARE = np.sqrt(2.0) / 4.0  # weight of the first two rates in the step
-ERROR = (SHARE - (1.0 - SHARE) / 3.0, SHARE - (3.0 * SHARE + 1.0) / 3.0, ALPHA - ALPHA / 3.0)
+from transient.march.standstill import advance_walls, begin, impulse, left_curve, until_event
+from transient.march.tridiagonal import solve_rates, substitute, unit_responses
 
 # what a recorded row holds: the unknowns next to the walls, the mean of the unknowns with its rate, the walls' motion
 # (speed, rate, place of the lower and of the upper) and the pressure drop per length
@@ -53,7 +37,6 @@ RUNNING, DONE, FULL, STALLED, BROKEN, BEYOND = 0, 1, 2, 3, 4, 5
 LANDS, EVENT = 1, 2  # marks of recorded rows: ends a piece of the drive; a body stops or breaks away here
 
 GROW_MOST, SHRINK_MOST, AIM = 2.0, 0.2, 0.85
-EVENT_SHARE = 0.01  # of the step tolerance: how exactly a stop or a breaking away is located
 KEEP_ABOVE = 1.15  # a step that could grow by less keeps its length, and with it the factors
 
 
@@ -116,7 +99,7 @@ def _march_of(closed: bool):
         end_in = np.zeros((3, lanes))
         end_slope = np.zeros((3, lanes))
         values = np.empty(3)
-        # responses to a unit of either wall's speed and of the pressure, and what they do beside the walls and in the mean
+        # responses to a unit of either wall's speed and of the pressure; what they do beside the walls and in the mean
         units = np.zeros((3, n if closed else 1, lanes))
         response = np.zeros((3, 3, lanes))  # [beside the lower wall, beside the upper, mean; cause; lane]
         wall_base = np.zeros((2, lanes))
@@ -198,7 +181,7 @@ def _march_of(closed: bool):
                         lower[i, l] = factor
                         pivot[i, l] = 1.0 / (storage[i, l] + below + above - factor * below)
                 if closed:
-                    _unit_responses(
+                    unit_responses(
                         conductance, volume, end_conductance, mean_weight, scaled, pivot, lower, units, response
                     )
                     solves += 3
@@ -212,15 +195,17 @@ def _march_of(closed: bool):
                     for e in range(2):
                         wall_base[e, l] = wall[SPEED, e, l] + scaled[l] * wall[RATE, e, l]
                         place_base[e, l] = wall[PLACE, e, l] + scaled[l] * wall[SPEED, e, l]
-                _guess(link, flow, wall_base, gradient, middle_in, given_middle)
-            _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, middle_in, middle_rate)
+                guess_walls(link, flow, wall_base, gradient, middle_in, given_middle)
+            solve_rates(
+                storage, conductance, volume, end_conductance, scaled, pivot, lower, base, middle_in, middle_rate
+            )
             if closed:
                 for l in range(lanes):
                     if status[l] == RUNNING:
-                        _close(
+                        close_walls(
                             l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
-                            curve_speed, curve_value, middle_in, given_middle, base, middle_rate, wall_base, place_base, wall_middle,
-                            gradient_middle, guess, place, near, matrix, right, change, load, slope,
+                            curve_speed, curve_value, middle_in, given_middle, base, middle_rate, wall_base, place_base,
+                            wall_middle, gradient_middle, guess, place, near, matrix, right, change, load, slope,
                         )  # fmt: skip
             for i in range(n):
                 for l in range(lanes):
@@ -232,15 +217,15 @@ def _march_of(closed: bool):
                         part = SHARE * step[l]
                         wall_base[e, l] = wall[SPEED, e, l] + part * (wall[RATE, e, l] + wall_middle[RATE, e, l])
                         place_base[e, l] = wall[PLACE, e, l] + part * (wall[SPEED, e, l] + wall_middle[SPEED, e, l])
-                _guess(link, flow, wall_base, gradient_middle, end_in, given_end)
-            _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, end_in, end_rate)
+                guess_walls(link, flow, wall_base, gradient_middle, end_in, given_end)
+            solve_rates(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, end_in, end_rate)
             if closed:
                 for l in range(lanes):
                     if status[l] == RUNNING:
-                        _close(
+                        close_walls(
                             l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
-                            curve_speed, curve_value, end_in, given_end, base, end_rate, wall_base, place_base, wall_end,
-                            gradient_end, guess, place, near, matrix, right, change, load, slope,
+                            curve_speed, curve_value, end_in, given_end, base, end_rate, wall_base, place_base,
+                            wall_end, gradient_end, guess, place, near, matrix, right, change, load, slope,
                         )  # fmt: skip
             for i in range(n):
                 for l in range(lanes):
@@ -252,12 +237,12 @@ def _march_of(closed: bool):
                         error[i, l] = (storage[i, l] * step[l]) * (
                             ERROR[0] * rates[i, l] + ERROR[1] * middle_rate[i, l] + ERROR[2] * end_rate[i, l]
                         )
-                _substitute(conductance, scaled, pivot, lower, error)
+                substitute(conductance, scaled, pivot, lower, error)
                 solves += 1
                 if closed:
                     for l in range(lanes):
                         if status[l] == RUNNING:
-                            _close_error(
+                            close_error(
                                 l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
                                 curve_speed, curve_value, step, wall, wall_middle, wall_end, error, wall_error,
                                 matrix, right, change, load, slope,
@@ -298,7 +283,7 @@ def _march_of(closed: bool):
                             status[l] = STALLED
                         continue
                     if closed:
-                        shorter = _until_event(
+                        shorter = until_event(
                             l, link, mode, end_conductance, curve_speed, curve_value, given_end, end, wall, wall_end,
                             gradient_end, net_before, step[l], tolerance[l], velocity_scale[l], load,
                         )  # fmt: skip
@@ -335,11 +320,11 @@ def _march_of(closed: bool):
                 event = False
                 mark = 0
                 if closed:
-                    event = _advance_walls(
+                    event = advance_walls(
                         l, link, mode, end_conductance, curve_speed, curve_value, given_end, end_slope, velocity, wall,
                         wall_end, gradient, gradient_end, net_before, load,
                     )  # fmt: skip
-                    if _left_curve(l, link, curve_speed, wall):
+                    if left_curve(l, link, curve_speed, wall):
                         status[l] = BEYOND
                         continue
                 else:
@@ -382,7 +367,8 @@ def _march_of(closed: bool):
                         end_slope[row, l] = values[1]
                     if landed:
                         impulse(
-                            l, link, mode, flow, storage, volume, end_weight, mean_weight, jump[piece, 2], velocity, wall
+                            l, link, mode, flow, storage, volume, end_weight, mean_weight, jump[piece, 2], velocity,
+                            wall,
                         )
                     begin(
                         l, link, mode, flow, storage, conductance, volume, end_conductance, end_weight, mean_weight,
@@ -435,58 +421,6 @@ def enter(
 
 
 @part
-def _solve(storage, conductance, volume, end_conductance, scaled, pivot, lower, base, inputs, out):
-    """Rates at a stage: (storage - scaled A) f = A base + inputs, into ``out``."""
-    n, lanes = storage.shape
-    for l in range(lanes):
-        here = base[0, l]
-        flux = end_conductance[0, l] * (inputs[0, l] - here)
-        if n > 1:
-            flux += conductance[0, l] * (base[1, l] - here)
-        else:
-            flux += end_conductance[1, l] * (inputs[1, l] - here)
-        out[0, l] = flux + volume[0, l] * inputs[2, l]
-    for i in range(1, n - 1):
-        for l in range(lanes):
-            here = base[i, l]
-            source = (
-                conductance[i, l] * (base[i + 1, l] - here)
-                - conductance[i - 1, l] * (here - base[i - 1, l])
-                + volume[i, l] * inputs[2, l]
-            )
-            out[i, l] = source + lower[i, l] * out[i - 1, l]
-    if n > 1:
-        i = n - 1
-        for l in range(lanes):
-            here = base[i, l]
-            source = (
-                end_conductance[1, l] * (inputs[1, l] - here)
-                - conductance[i - 1, l] * (here - base[i - 1, l])
-                + volume[i, l] * inputs[2, l]
-            )
-            out[i, l] = source + lower[i, l] * out[i - 1, l]
-    for l in range(lanes):
-        out[n - 1, l] *= pivot[n - 1, l]
-    for i in range(n - 2, -1, -1):
-        for l in range(lanes):
-            out[i, l] = (out[i, l] + scaled[l] * conductance[i, l] * out[i + 1, l]) * pivot[i, l]
-
-
-@part
-def _substitute(conductance, scaled, pivot, lower, out):
-    """Forward and back substitution of ``out`` with the step's factors."""
-    n, lanes = out.shape
-    for i in range(1, n):
-        for l in range(lanes):
-            out[i, l] += lower[i, l] * out[i - 1, l]
-    for l in range(lanes):
-        out[n - 1, l] *= pivot[n - 1, l]
-    for i in range(n - 2, -1, -1):
-        for l in range(lanes):
-            out[i, l] = (out[i, l] + scaled[l] * conductance[i, l] * out[i + 1, l]) * pivot[i, l]
-
-
-@part
 def _enter(l, piece, storage, volume, end_conductance, jump, rates, n):
     """Change of the rates across a break: only jumps of the inputs act, so nothing is lost to differences."""
     for i in range(n):
@@ -525,192 +459,3 @@ def _record(
     cursor[2, l] = at + 1
 
 
-@part
-def _unit_responses(conductance, volume, end_conductance, mean_weight, scaled, pivot, lower, units, response):
-    """Rates that a unit of either wall's speed or of the pressure drop makes, with the step's factors."""
-    n, lanes = volume.shape
-    for i in range(n):
-        for l in range(lanes):
-            units[0, i, l] = end_conductance[0, l] if i == 0 else 0.0
-            units[1, i, l] = end_conductance[1, l] if i == n - 1 else 0.0
-            units[2, i, l] = volume[i, l]
-    for k in range(3):
-        for i in range(1, n):
-            for l in range(lanes):
-                units[k, i, l] += lower[i, l] * units[k, i - 1, l]
-        for l in range(lanes):
-            units[k, n - 1, l] *= pivot[n - 1, l]
-        for i in range(n - 2, -1, -1):
-            for l in range(lanes):
-                units[k, i, l] = (units[k, i, l] + scaled[l] * conductance[i, l] * units[k, i + 1, l]) * pivot[i, l]
-        for l in range(lanes):
-            response[0, k, l] = units[k, 0, l]
-            response[1, k, l] = units[k, n - 1, l]
-            total = 0.0
-            for i in range(n):
-                total += mean_weight[i, l] * units[k, i, l]
-            response[2, k, l] = total
-
-
-@part
-def _guess(link, flow, wall_base, gradient, inputs, given):
-    """Walls' speeds and pressure of a stage before it is closed, in place of ``inputs``; these go to ``given``."""
-    for l in range(inputs.shape[1]):
-        for e in range(2):
-            given[e, l] = inputs[e, l]
-            if link[e, l, KIND] != PRESCRIBED:
-                inputs[e, l] = wall_base[e, l]
-        given[2, l] = inputs[2, l]
-        if flow[l] != 0:
-            inputs[2, l] = gradient[l]
-
-
-@part
-def _close(
-    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
-    curve_speed, curve_value, inputs, given, base, stage_rate, wall_base, place_base, wall_stage,
-    gradient_stage, guess, place, near, matrix, right, change, load, slope,
-):  # fmt: skip
-    """Close one lane's stage: the walls' motion and the pressure, and the fluid's rates that go with them."""
-    n = base.shape[0]
-    s = scaled[l]
-    for k in range(3):
-        guess[k] = inputs[k, l]
-    place[0], place[1] = place_base[0, l], place_base[1, l]
-    near[0] = base[0, l] + s * stage_rate[0, l]
-    near[1] = base[n - 1, l] + s * stage_rate[n - 1, l]
-    mean = 0.0
-    if flow[l] != 0:
-        for i in range(n):
-            mean += mean_weight[i, l] * (base[i, l] + s * stage_rate[i, l])
-    close_stage(
-        l, link, mode, flow, end_conductance, end_weight, response, s, curve_speed, curve_value,
-        given, guess, place, near, mean, matrix, right, change, load, slope,
-    )  # fmt: skip
-    for i in range(n):
-        stage_rate[i, l] += change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l]
-    for e in range(2):
-        inputs[e, l] = guess[e] + change[e]
-        wall_stage[SPEED, e, l] = inputs[e, l]
-        # a body's rate; that of a prescribed wall is its own history's and not needed within the step
-        wall_stage[RATE, e, l] = change[e] / s if link[e, l, KIND] != PRESCRIBED else 0.0
-        wall_stage[PLACE, e, l] = place_base[e, l] + s * inputs[e, l]
-    inputs[2, l] = guess[2] + change[2]
-    gradient_stage[l] = inputs[2, l]
-
-
-@part
-def _close_error(
-    l, link, mode, flow, end_conductance, mean_weight, end_weight, units, response, scaled,
-    curve_speed, curve_value, step, wall, wall_middle, wall_end, error, wall_error,
-    matrix, right, change, load, slope,
-):  # fmt: skip
-    """Pass one lane's local error through the closed matrix, bodies and flow included."""
-    n = error.shape[0]
-    s = scaled[l]
-    for e in range(2):
-        slope[e] = 0.0
-        right[e] = 0.0
-        wall_error[e, l] = 0.0
-        if link[e, l, KIND] == PRESCRIBED or mode[e, l] == STUCK:
-            continue
-        own = step[l] * (
-            ERROR[0] * wall[RATE, e, l] + ERROR[1] * wall_middle[RATE, e, l] + ERROR[2] * wall_end[RATE, e, l]
-        )
-        gone = step[l] * (
-            ERROR[0] * wall[SPEED, e, l] + ERROR[1] * wall_middle[SPEED, e, l] + ERROR[2] * wall_end[SPEED, e, l]
-        )
-        beside = error[0, l] if e == 0 else error[n - 1, l]
-        right[e] = (
-            link[e, l, MASS] * own / s
-            - link[e, l, STIFFNESS] * gone
-            + link[e, l, GRIP] * end_conductance[e, l] * beside
-        )
-        if link[e, l, CURVE_STOP] > link[e, l, CURVE_FIRST]:
-            first, stop = int(link[e, l, CURVE_FIRST]), int(link[e, l, CURVE_STOP])
-            curve_load(curve_speed, curve_value, first, stop, wall_end[SPEED, e, l], load)
-            slope[e] = load[1]
-    right[2] = 0.0
-    if flow[l] != 0:
-        for i in range(n):
-            right[2] -= mean_weight[i, l] * error[i, l]
-    assemble_three(l, link, mode, flow, end_conductance, end_weight, response, s, slope, matrix)
-    solve_three(matrix, right, change)
-    for i in range(n):
-        error[i, l] += s * (change[0] * units[0, i, l] + change[1] * units[1, i, l] + change[2] * units[2, i, l])
-    for e in range(2):
-        wall_error[e, l] = change[e]
-
-
-@part
-def _until_event(
-    l, link, mode, end_conductance, curve_speed, curve_value, given, end, wall, wall_end,
-    gradient_end, net_before, step, tolerance, velocity_scale, load,
-):  # fmt: skip
-    """A shorter step where a body passes standstill, or breaks away, well inside this one; else 0."""
-    n = end.shape[0]
-    shorter = 0.0
-    for e in range(2):
-        if link[e, l, KIND] == PRESCRIBED or mode[e, l] == FREE:
-            continue
-        if mode[e, l] == STUCK:
-            held = link[e, l, BREAKAWAY]
-            near = end[0, l] if e == 0 else end[n - 1, l]
-            net = abs(
-                net_load(l, e, link, end_conductance, curve_speed, curve_value, given, near, wall_end, gradient_end, load)
-            )
-            before = min(net_before[e, l], held)
-            if net - held > EVENT_SHARE * tolerance * held and net > before:
-                wanted = step * max(0.05, min((held - before) / (net - before) + 0.01, 0.95))
-                shorter = wanted if shorter == 0.0 else min(shorter, wanted)
-            continue
-        now = wall_end[SPEED, e, l]
-        if (mode[e, l] == FORWARD and now < 0.0) or (mode[e, l] == BACKWARD and now > 0.0):
-            before = abs(wall[SPEED, e, l])
-            if abs(now) > EVENT_SHARE * tolerance * velocity_scale and before > 0.0:
-                wanted = step * max(0.05, min(before / (before + abs(now)) + 0.01, 0.95))
-                shorter = wanted if shorter == 0.0 else min(shorter, wanted)
-    return shorter
-
-
-@part
-def _advance_walls(
-    l, link, mode, end_conductance, curve_speed, curve_value, given, end_slope, velocity, wall,
-    wall_end, gradient, gradient_end, net_before, load,
-):  # fmt: skip
-    """Take over the walls' motion; whether a body came to a stop or broke away at this instant."""
-    n = velocity.shape[0]
-    gradient[l] = gradient_end[l]
-    event = False
-    for e in range(2):
-        for kind in range(3):
-            wall[kind, e, l] = wall_end[kind, e, l]
-        if link[e, l, KIND] == PRESCRIBED:
-            wall[RATE, e, l] = end_slope[e, l]
-            continue
-        if mode[e, l] == FREE:
-            continue
-        if mode[e, l] == STUCK:
-            near = velocity[0, l] if e == 0 else velocity[n - 1, l]
-            net = abs(net_load(l, e, link, end_conductance, curve_speed, curve_value, given, near, wall, gradient, load))
-            net_before[e, l] = net
-            event = event or net > link[e, l, BREAKAWAY]
-            continue
-        now = wall[SPEED, e, l]
-        if (mode[e, l] == FORWARD and now <= 0.0) or (mode[e, l] == BACKWARD and now >= 0.0):
-            wall[SPEED, e, l] = 0.0
-            net_before[e, l] = 0.0
-            event = True
-    return event
-
-
-@part
-def _left_curve(l, link, curve_speed, wall):
-    """Whether a body that refuses it has left the speeds of its curve."""
-    for e in range(2):
-        if link[e, l, KIND] != PRESCRIBED and link[e, l, REFUSE] > 0.0:
-            low = curve_speed[int(link[e, l, CURVE_FIRST])]
-            high = curve_speed[int(link[e, l, CURVE_STOP]) - 1]
-            if wall[SPEED, e, l] < low or wall[SPEED, e, l] > high:
-                return True
-    return False

@@ -119,7 +119,8 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
     best = _mix(answers[-2], answers[-1])
     other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
-    return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, sum(run.solves for run in runs))
+    solves = sum(run.solves for run in runs)
+    return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, solves)
 
 
 def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: float) -> Ladder:
