@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 
 from transient.compiled import compiled
-from transient.series.recursion import decay_loss, forced, input_value, moving
+from transient.series.recursion import decay_and_loss, forced, input_value, moving
 
 SHORT = 0.125  # a piece shorter than this share of the age of its end enters as a pulse
 
@@ -81,17 +81,19 @@ def fill_old(
                 which[active] = i
                 active += 1
         for n in range(count):
-            loss = decay_loss(rate[n] * age)
+            decay, loss = decay_and_loss(rate[n] * age)
             amplitude, most = ahead[k, n], reach[k, n] * 1.0
             if not held:
                 for i in range(3):
                     amplitude -= share[n, i] * jump[k, i]
                     most += abs(share[n, i] * jump[k, i])
-            amplitude *= 1.0 - loss
-            most *= 1.0 - loss
+            amplitude *= decay
+            most *= decay
             for c in range(active):
                 i = which[c]
-                push = share[n, i] * forced(rate[n], loss, poly[k, i], coeff[k, i], exponent[k, i], age, scratch)
+                push = share[n, i] * forced(
+                    rate[n], decay, loss, poly[k, i], coeff[k, i], exponent[k, i], age, scratch
+                )
                 amplitude -= push
                 most += abs(push)
             if most != 0.0:

@@ -8,20 +8,19 @@ from transient.compiled import compiled
 
 
 @compiled
-def power_integrals(y, loss, out):  # type: ignore[no-untyped-def]
-    """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0; ``loss`` = 1 - exp(-y)."""
+def power_integrals(y, decay, loss, out):  # type: ignore[no-untyped-def]
+    """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0; ``decay`` = exp(-y)."""
     if y > 1.0:
         out[0] = loss / y
         out[1] = (1.0 - out[0]) / y
         out[2] = (1.0 - 2.0 * out[1]) / y
     else:
-        damping = 1.0 - loss
         for p in range(3):
             term, total = 1.0, 0.0
             for k in range(20):
                 total += term / (k + p + 1)
                 term *= y / (k + 1)
-            out[p] = damping * total
+            out[p] = decay * total
 
 
 @compiled
@@ -37,14 +36,14 @@ def divided_exponential(d):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def forced(rate, loss, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
+def forced(rate, decay, loss, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
     """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials.
 
-    ``loss`` = 1 - exp(-rate x).
+    ``decay`` = exp(-rate x), ``loss`` = 1 - decay.
     """
     total = 0.0
     if poly[2] != 0.0 or poly[3] != 0.0:
-        power_integrals(rate * x, loss, scratch)
+        power_integrals(rate * x, decay, loss, scratch)
         total = x * (poly[1] * scratch[0] + x * (2.0 * poly[2] * scratch[1] + x * 3.0 * poly[3] * scratch[2]))
     elif poly[1] != 0.0:
         total = poly[1] * loss / rate
@@ -53,9 +52,9 @@ def forced(rate, loss, poly, coeff, exponent, x, scratch):  # type: ignore[no-un
             s = exponent[k]
             d = (s + rate) * x
             if d.real < 1.0:
-                answer = x * (1.0 - loss) * divided_exponential(d)
+                answer = x * decay * divided_exponential(d)
             else:
-                answer = (np.exp(s * x) - (1.0 - loss)) / (s + rate)
+                answer = (np.exp(s * x) - decay) / (s + rate)
             total += (coeff[k] * s * answer).real
     return total
 
@@ -72,9 +71,10 @@ def moving(poly, coeff):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def decay_loss(y):  # type: ignore[no-untyped-def]
-    """1 - exp(-y), y >= 0."""
-    return -np.expm1(-y) if y < 40.0 else 1.0
+def decay_and_loss(y):  # type: ignore[no-untyped-def]
+    """exp(-y) and 1 - exp(-y), both to all digits, y >= 0."""
+    decay = np.exp(-y)
+    return decay, -np.expm1(-y) if y < 0.7 else 1.0 - decay
 
 
 @compiled
@@ -105,7 +105,7 @@ def fill_states(
     ``rate`` (M,), ``share`` (M, 3), ``initial``, ``worst`` (M,) amplitudes just before the first break and their reach.
     """
     pieces, count = len(poly), len(rate)
-    scratch, losses = np.zeros(3), np.zeros(count)
+    scratch, decays, losses = np.zeros(3), np.zeros(count), np.zeros(count)
     now, most = np.zeros(count), np.zeros(count)
     known, elapsed = -1.0, 0.0
     for i in range(3):
@@ -129,16 +129,16 @@ def fill_states(
         if abs(x - known) > 4e-16 * elapsed:
             known = x
             for n in range(count):
-                losses[n] = decay_loss(rate[n] * x)
+                decays[n], losses[n] = decay_and_loss(rate[n] * x)
         for n in range(count):
-            now[n] *= 1.0 - losses[n]
-            most[n] *= 1.0 - losses[n]
+            now[n] *= decays[n]
+            most[n] *= decays[n]
         for i in range(3):
             left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
             if moving(poly[p, i], coeff[p, i]):
                 for n in range(count):
                     push = share[n, i] * forced(
-                        rate[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch
+                        rate[n], decays[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch
                     )
                     now[n] -= push
                     most[n] += abs(push)
