@@ -15,6 +15,7 @@ STRAIGHT = 0.35  # share of the accuracy that a straight line may be off
 LEADING = 0.6  # share of the local stress's accuracy that rows after an infinite stress must have
 MOST_ROWS = 1_000_000
 MOST_PARTS = 4096
+UNMOVED = 1e-10  # of the largest velocity: changes that add up to less over a run are round-off
 SMOOTH = 80  # intervals across the gap of a stored profile, at least
 
 
@@ -135,6 +136,7 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
             bend = np.abs(row.at(history.piece[low], history.offset[low] + share * step, 2)) * step**2 / 8.0
             need = np.maximum(need, bend / (STRAIGHT * accuracy * size))
     parts = np.clip(np.ceil(np.sqrt(need)), 1, MOST_PARTS)
+    parts[np.isnan(history.stress[low]).any(axis=1)] = 1  # or an infinite stress would spread over rows of its own
     if parts.sum() > MOST_ROWS:
         parts = np.maximum(np.floor(parts * (MOST_ROWS / parts.sum())), 1)
     return parts.astype(int)
@@ -207,7 +209,7 @@ def profile_times(history: History, count: int) -> np.ndarray:
     change = np.abs(np.diff(history.profile, axis=0)).max(axis=1)
     moved = np.concatenate([[0.0], np.cumsum(change)])
     span = kept[-1] - kept[0]
-    measure = moved / moved[-1] if moved[-1] > 0 else np.zeros_like(moved)
+    measure = moved / moved[-1] if moved[-1] > UNMOVED * np.abs(history.profile).max() else np.zeros_like(moved)
     measure = 0.85 * measure + 0.15 * (kept - kept[0]) / span
     rising = np.append(True, np.diff(measure) > 0)
     wanted = np.interp(np.linspace(0.0, measure[-1], count), measure[rising], kept[rising])
