@@ -8,6 +8,7 @@ so both see exactly the same drive.  Plain arrays only.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from math import factorial
 
 import numpy as np
@@ -100,6 +101,15 @@ class Pieces:
 
         Differences that are round-off, of the terms or of the time at which they come, are exactly 0.
         """
+        if order not in self._jumps:
+            self._jumps[order] = self._find_jumps(order)
+        return self._jumps[order]
+
+    @cached_property
+    def _jumps(self) -> dict[int, np.ndarray]:
+        return {}
+
+    def _find_jumps(self, order: int) -> np.ndarray:
         lengths = np.diff(self.starts)
         count = np.arange(len(self.starts))
         right = self.at(count, np.zeros(len(count)), order)

@@ -7,6 +7,7 @@ velocity (m = 0 plates; m = 1 pipe and axial annulus) or the angular speed (m = 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -87,8 +88,13 @@ class Inputs:
 
     def row(self, index: int) -> Pieces:
         """One input as Pieces."""
-        return Pieces(
-            self.starts, self.poly[:, index], self.coeff[:, index], self.rate[:, index], float(self.before[index])
+        return self._rows[index]
+
+    @cached_property
+    def _rows(self) -> tuple[Pieces, ...]:
+        return tuple(
+            Pieces(self.starts, self.poly[:, i], self.coeff[:, i], self.rate[:, i], float(self.before[i]))
+            for i in range(self.poly.shape[1])
         )
 
 
@@ -98,8 +104,9 @@ class Problem:
 
     ``metric`` is m; ``inner``, ``outer`` (m) the ends' coordinates (plates: 0 and the height; pipe: 0 and the
     radius).  ``speeds`` the two walls' Drives in m/s (rad/s where ``rotating``), ``gradient`` that of the
-    pressure drop per length, Pa/m; ``flow`` that of a prescribed mean velocity instead, m/s.  ``start`` "rest" (all still and no pressure before t = 0, whatever the
-    drives say) or "steady" (the steady flow of the drives' values before t = 0).
+    pressure drop per length, Pa/m; ``flow`` that of a prescribed mean velocity instead, m/s.
+    ``start`` "rest" (all still and no pressure before t = 0, whatever the drives say) or "steady" (the steady flow of
+    the drives' values before t = 0).
     ``duration`` s or None for "auto"; ``settle_within``, ``accuracy`` fractions.
     ``section`` flow area of one gap in m^2 or None; ``count`` gaps in parallel.
     """
@@ -165,7 +172,13 @@ class Problem:
 
     def inputs(self, until: float) -> Inputs:
         """The inputs over [0, until) on common pieces; with a start from rest nothing moves before t = 0."""
-        return join(self.drives, until, still=self.start == "rest")
+        if until not in self._joined:
+            self._joined[until] = join(self.drives, until, still=self.start == "rest")
+        return self._joined[until]
+
+    @cached_property
+    def _joined(self) -> dict[float, Inputs]:
+        return {}
 
 
 def join(drives: tuple[Drive, ...], until: float, still: bool) -> Inputs:

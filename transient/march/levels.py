@@ -23,6 +23,7 @@ from transient.march.march import (
     initial_state,
     march,
     steady_stress,
+    with_rates,
 )
 from transient.march.plan import Features, Resolution, features, on_one_grid, resolve, tightened
 from transient.march.regime import Outlook, deviation_inputs, periodic_inputs, periodic_state, rates_of
@@ -117,7 +118,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
         else:
             answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
     best = _mix(answers[-2], answers[-1])
-    other = answers[-1] if levels == 2 else _mix(answers[-3], answers[-2])
+    other = _rated(answers[-1]) if levels == 2 else _mix(answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
     solves = sum(run.solves for run in runs)
     return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, solves)
@@ -142,7 +143,7 @@ def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: 
             answers.append(_steady_answer(problem, ahead, parted, main, 2**number))
         else:
             answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
-    best, other = answers[-1], answers[-2]
+    best, other = _rated(answers[-1]), _rated(answers[-2])
     again = resampled(other.flow, best.flow)
     away = None
     if best.deviation is not None and other.deviation is not None:
@@ -163,6 +164,12 @@ def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: flo
         resolutions.append(resolve(problem, run.found, accuracy, ahead.slowest, least, refine))
     for run, resolution in zip(runs, on_one_grid(resolutions), strict=True):
         run.resolution = resolution
+
+
+def _rated(answer: Histories) -> Histories:
+    """A level as it is, its stresses with rates."""
+    away = None if answer.deviation is None else with_rates(answer.deviation)
+    return replace(answer, flow=with_rates(answer.flow), deviation=away)
 
 
 def _mix(coarse: Histories, fine: Histories) -> Histories:

@@ -317,7 +317,7 @@ def history(
         value[PRESSURE] = fields[:, kernel.DROP]
     stress = _stresses(problem, trace, value, slope)
     _join_breaks(problem, inputs, trace, stress, value[PRESSURE], before)
-    stress_rate = stress_rates(trace.piece, trace.offset, stress)
+    stress_rate = np.full_like(stress, np.nan)  # of the histories that are read between rows: see ``with_rates``
     if problem.flow is not None:
         slope[PRESSURE] = stress_rates(trace.piece, trace.offset, value[PRESSURE][:, None])[:, 0]
     weight = system.grid.mean_weight
@@ -439,5 +439,9 @@ def extrapolate(coarse: History, fine: History) -> History:
         name: getattr(fine, name) + (getattr(fine, name) - getattr(coarse, name)) / 3.0
         for name in EXTRAPOLATED
     }
-    mixed["stress_rate"] = stress_rates(fine.piece, fine.offset, mixed["stress"])
-    return replace(fine, position=coarse.position, **mixed)
+    return with_rates(replace(fine, position=coarse.position, **mixed))
+
+
+def with_rates(rows: History) -> History:
+    """The history with the rates of its stresses, from its own rows."""
+    return replace(rows, stress_rate=stress_rates(rows.piece, rows.offset, rows.stress))

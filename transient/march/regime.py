@@ -96,22 +96,17 @@ def slowest_decay(problem: Problem) -> float:
     system = assemble(problem, COARSE_CELLS, layers)
     if problem.closed:
         return slowest(dense(problem, system, settled_slopes(problem, system)))
-    rates = decay_rates(system)[0]
+    diagonal, off = symmetric(system)
+    rates = np.linalg.eigvalsh(np.diag(diagonal) + np.diag(off, 1) + np.diag(off, -1))
     return float(1.0 / rates[0]) if rates[0] > 1e-9 * rates[-1] else np.inf
 
 
-def decay_rates(system: System) -> tuple[np.ndarray, np.ndarray]:
-    """(rates (n,) in 1/s rising, modes (n, n) in columns) of the discrete gap, scaled by sqrt(storage)."""
-    n = system.unknowns
+def symmetric(system: System) -> tuple[np.ndarray, np.ndarray]:
+    """Diagonal (n,) and off-diagonal (n-1,) of the discrete gap's decay operator, scaled by sqrt(storage), 1/s."""
     below = np.concatenate([system.end_conductance[:1], system.conductance])
     above = np.concatenate([system.conductance, system.end_conductance[1:]])
     root = np.sqrt(system.storage)
-    matrix = np.zeros((n, n))
-    matrix[np.arange(n), np.arange(n)] = (below + above) / system.storage
-    off = -system.conductance / (root[1:] * root[:-1])
-    matrix[np.arange(n - 1), np.arange(1, n)] = off
-    matrix[np.arange(1, n), np.arange(n - 1)] = off
-    return np.linalg.eigh(matrix)
+    return (below + above) / system.storage, -system.conductance / (root[1:] * root[:-1])
 
 
 def periodic_inputs(ahead: Outlook) -> Inputs:
@@ -152,7 +147,9 @@ def periodic_state(system: System, after_one: np.ndarray, period: float) -> np.n
 
     u = (1 - exp(-A period))^-1 u_1, in the discrete gap's own modes.
     """
-    rates, modes = decay_rates(system)
+    from scipy.linalg import eigh_tridiagonal  # only periodic drives need it, and its import takes a while
+
+    rates, modes = eigh_tridiagonal(*symmetric(system))
     root = np.sqrt(system.storage)
     amplitude = modes.T @ (root * after_one)
     return (modes @ (amplitude / -np.expm1(-rates * period))) / root

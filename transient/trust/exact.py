@@ -37,7 +37,8 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
     if away is None:
         level_stress, level_mean, level_profile = stress, mean, np.zeros(len(flow.profile_row))
     elif ahead.kind == "steady":
-        level_stress, level_mean, level_profile = stress, mean, _profile_error(away, exact, _steady_end(problem, ladder))
+        level_stress, level_mean = stress, mean
+        level_profile = _profile_error(away, exact, _steady_end(problem, ladder))
     else:
         apart = deviation(problem, ahead.until)
         level_stress = _stress_error(away, apart)
