@@ -130,7 +130,7 @@ def velocity_answer(shape: GapShape, window: float, y: np.ndarray) -> Answer:
     return _velocity_answer(shape, window, tuple(np.asarray(y, dtype=float).tolist()))
 
 
-@lru_cache(maxsize=64)
+@lru_cache(maxsize=4)  # tables over a whole gap weigh megabytes
 def _velocity_answer(shape: GapShape, window: float, y: tuple[float, ...]) -> Answer:
     kept = modes(shape, mode_count(window))
     at = np.array(y)

@@ -109,6 +109,43 @@ def add_table(amount, series, reach, turn, out, size):  # type: ignore[no-untype
 
 
 @compiled
+def _add_instant(poly, coeff, exponent, left, j, base, offset, cubic, terms, sudden, out):  # type: ignore[no-untyped-def]
+    """Add the answer at the very instant of break ``j``: only a jump of value is felt at once."""
+    for i in range(3):
+        jump = cubic[i, 0]
+        for m in range(terms.shape[1]):
+            jump += terms[i, m].real
+        jump = clean(poly, coeff, exponent, left, j, base, offset, i, 0, jump)
+        for q in range(len(out)):
+            if jump != 0.0 and sudden[i, q] != 0.0:
+                out[q] += sudden[i, q] * jump
+
+
+@compiled
+def _jump(cubic, terms, rates, scale, order):  # type: ignore[no-untyped-def]
+    """Jump of the ``order``-th derivative of an input, fast exponentials left out."""
+    jump = 0.0
+    if order < 4:
+        factor = 1.0
+        for c in range(2, order + 1):
+            factor *= c
+        jump = factor * cubic[order]
+    for m in range(len(terms)):
+        if terms[m] != 0.0 and abs(rates[m]) * scale < SLOW:
+            jump += (terms[m] * rates[m] ** order).real
+    return jump
+
+
+@compiled
+def _add_jumps(jumps, terms, rates, scale, series, reach, turn, out, size):  # type: ignore[no-untyped-def]
+    """Add the answers to the ``jumps`` (4,) of value, slope ... and to the higher ones of slow exponentials."""
+    for d in range(series.shape[0] - 1):
+        jump = jumps[d] if d < 4 else _jump(jumps, terms, rates, scale, d)
+        if jump != 0.0:
+            add_table(jump, series[d + 1], reach[d + 1], turn, out, size)
+
+
+@compiled
 def add_young(
     starts, lengths, poly, coeff, exponent, left, piece, offset, base, levels, row_of_level, series, reach, contours,
     smallest, node, node_weight, whole, whole_index, sudden, out, size,
@@ -142,14 +179,7 @@ def add_young(
                 since = lengths[reference] if j == reference + 1 else starts[j] - starts[reference]
             difference(poly, coeff, exponent, left[anchor], j, reference, since, cubic, terms, rates, owners)
             if level < 0:
-                for i in range(3):
-                    jump = cubic[i, 0]
-                    for m in range(2 * width):
-                        jump += terms[i, m].real
-                    jump = clean(poly, coeff, exponent, left[anchor], j, reference, since, i, 0, jump)
-                    for q in range(out.shape[1]):
-                        if jump != 0.0 and sudden[i, q] != 0.0:
-                            out[e, q] += sudden[i, q] * jump
+                _add_instant(poly, coeff, exponent, left[anchor], j, reference, since, cubic, terms, sudden, out[e])
                 reference = j
                 continue
             row = row_of_level[level]
@@ -161,20 +191,17 @@ def add_young(
                         turn, out[e], size[e],
                     )
                 continue
+            for i in range(3):
+                for d in range(4):
+                    cubic[i, d] = _jump(cubic[i], terms[i], rates[i], scale, d)
+                    if cubic[i, d] != 0.0:
+                        cubic[i, d] = clean(
+                            poly, coeff, exponent, left[anchor], j, reference, since, i, d, cubic[i, d]
+                        )
             chebyshev((age / scale - MIDDLE) / HALF, turn)
             for i in range(3):
-                for d in range(series.shape[1] - 1):
-                    factor = 1.0
-                    for c in range(2, d + 1):
-                        factor *= c
-                    jump = factor * cubic[i, d] if d < 4 else 0.0
-                    for m in range(2 * width):
-                        if terms[i, m] != 0.0 and abs(rates[i, m]) * scale < SLOW:
-                            jump += (terms[i, m] * rates[i, m] ** d).real
-                    if d < 4 and jump != 0.0:
-                        jump = clean(poly, coeff, exponent, left[anchor], j, reference, since, i, d, jump)
-                    if jump != 0.0:
-                        add_table(jump, series[row, d + 1, i], reach[row, d + 1, i], turn, out[e], size[e])
+                answers, sizes = series[row, :, i], reach[row, :, i]
+                _add_jumps(cubic[i], terms[i], rates[i], scale, answers, sizes, turn, out[e], size[e])
                 for m in range(2 * width):
                     if terms[i, m] != 0.0 and abs(rates[i, m]) * scale >= SLOW:
                         _add_fast(
