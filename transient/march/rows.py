@@ -13,6 +13,7 @@ from transient.result.history import History
 
 STRAIGHT = 0.35  # share of the accuracy that a straight line may be off
 LEADING = 0.6  # share of the local stress's accuracy that rows after an infinite stress must have
+YOUNG = 1e-3  # of a piece after an infinite stress: where rows may be left out
 MOST_ROWS = 1_000_000
 MOST_PARTS = 4096
 UNMOVED = 1e-10  # of the largest velocity: changes that add up to less over a run are round-off
@@ -81,17 +82,19 @@ def _gaps(step: np.ndarray) -> np.ndarray:
 
 
 def _trusted(history: History, accuracy: float, error: np.ndarray) -> np.ndarray:
-    """Rows to keep (n,): all but those that directly follow an infinite stress and are not yet accurate."""
+    """Rows to keep (n,): all but those that follow an infinite stress up to the last that is not yet accurate.
+
+    The row at the next break stays in any case.
+    """
     keep = np.ones(len(history.time), bool)
     for end in (0, 1):
         bad = error[:, end] > LEADING * accuracy * np.abs(history.stress[:, end])
         for start in np.flatnonzero(np.isnan(history.stress[:, end])):
-            i = start + 1
-            while i < len(bad) - 1 and history.piece[i] == history.piece[start] and bad[i]:
-                if i + 1 < len(bad) and history.piece[i + 1] != history.piece[start]:
-                    break  # the row at the next break stays
-                keep[i] = False
-                i += 1
+            rows = np.flatnonzero(history.piece == history.piece[start])
+            rows = rows[(rows > start) & (rows < rows[-1])]
+            young = rows[history.offset[rows] < YOUNG * history.offset[rows[-1]]] if len(rows) else rows
+            if bad[young].any():
+                keep[young[: int(np.flatnonzero(bad[young])[-1]) + 1]] = False
     return keep
 
 

@@ -15,6 +15,7 @@ from transient.result.run import Run
 HARDLY = 1e-6
 HISTORY_SHARE = 0.6  # of the accuracy, for stored rows: straight lines between them use the rest
 FINAL_SHARE = 0.01  # a final stress is relative to at least this share of the wall's peak
+SOON = 1e-5  # of a piece after an infinite stress: from there on the rows must have the local accuracy
 GRAZE = 8.0  # a settling error so much larger than slope and error explain is the band's, not the solver's
 
 
@@ -61,10 +62,27 @@ def _stresses(
             yield Demand(f"{wall.name} peak stress", said["peak_stress_error"] or 0.0, accuracy * peak)
             worst = float(run.errors.stress[:, wall.end].max(initial=0.0))
             yield Demand(f"{wall.name} stress history", worst, HISTORY_SHARE * accuracy * peak)
+        else:
+            yield Demand(f"{wall.name} stress history", _after_infinite(run, wall.end), HISTORY_SHARE * accuracy)
         final = abs(said["final_stress"])
         calm = steady_stress is not None and abs(steady_stress[wall.end]) > 1e-6 * peak
         size = max(final, FINAL_SHARE * peak) if calm else max(final, peak)
         yield Demand(f"{wall.name} final stress", said["final_stress_error"], accuracy * max(size, HARDLY * largest))
+
+
+def _after_infinite(run: Run, end: int) -> float:
+    """Worst error relative to the local stress of the rows after an infinite one, but for the very first."""
+    history = run.history
+    stress = history.stress[:, end]
+    infinite = np.flatnonzero(np.isnan(stress))
+    worst = 0.0
+    floor = np.nanmedian(np.abs(stress)) * FINAL_SHARE
+    for start in infinite:
+        rows = np.flatnonzero(history.piece == history.piece[start])[1:]
+        rows = rows[history.offset[rows] >= SOON * history.offset[rows[-1]]]
+        size = np.maximum(np.abs(stress[rows]), floor)
+        worst = max(worst, float((run.errors.stress[rows, end] / size).max(initial=0.0)))
+    return worst
 
 
 def _peak(run: Run, end: int) -> float:
