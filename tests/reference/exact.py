@@ -11,8 +11,8 @@ import mpmath as mp
 from .drives import Piece
 from .gap import Gap
 
-NODES = 56
-DIGITS = 60
+NODES = 44
+DIGITS = 45
 
 
 def transfer(gap: Gap, s: mp.mpc, row: int, channel: int, r: float = 0.0) -> mp.mpc:

@@ -149,7 +149,19 @@ class Judge:
             found = self._summit(channel, lo, hi)
             if abs(found[0]) > abs(best[0]):
                 best = found
-        return best
+        return max([best, *self._limits(channel)], key=lambda p: abs(p[0]))
+
+    def _limits(self, channel: int) -> list[tuple[float, float]]:
+        """(stress, time) just after each jump of a slipping wall's own speed: mu/b times the change at once."""
+        if channel > 1 or not self.gap.slip[channel]:
+            return []
+        radius = (self.gap.ri, self.gap.ro)[channel] if self.gap.kind == "rotating" else 1.0
+        stiff = self.gap.mu * radius / self.gap.slip[channel]
+        out = []
+        for t, jump in self.signals[channel].jumps(self.until, self.before[channel]):
+            was = np.array(self.before) @ self.response.steady[:, channel] if t == 0 else self.state([t])[channel, 0]
+            out.append((float(was) - stiff * jump, float(t)))
+        return out
 
     def _bracket(self, t: np.ndarray, i: int) -> tuple[float, float]:
         """The neighbours of sample i, not across a break from the sample."""

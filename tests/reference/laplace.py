@@ -134,7 +134,7 @@ class Response:
         ordered = t[rank]
         for k, term in enumerate(terms):
             lo, hi = np.searchsorted(ordered, [term.since, term.until], side="right")
-            which.append(np.full(hi - lo, k))
+            which.append(np.full(max(hi - lo, 0), k))
             when.append(rank[lo:hi])
         pair, time = np.concatenate(which), np.concatenate(when)
         x = t[time] - np.array([term.onset for term in terms])[pair]
@@ -160,13 +160,14 @@ class Response:
             )
             summed = pick @ (growth[mine] * image[local[mine]])
             out[:, moments] += (transferred[row][: out.shape[0]] @ summed.T).real
-        self._add_poles(terms, used, local, s, weight, time, x, out, order)
+        self._add_poles(w, terms, used, local, time, x, out, order)
 
-    def _add_poles(self, terms, used, local, s, weight, time, x, out, order) -> None:  # noqa: ANN001
+    def _add_poles(self, w, terms, used, local, time, x, out, order) -> None:  # noqa: ANN001
         """Undamped waves: the residue at their pole in place of the contour's share of it."""
+        s, weight = S_UNIT / self.first(w), W_UNIT / self.first(w)
         for j, k in enumerate(used):
             for c, sigma in terms[k].waves:
-                if abs(sigma.imag) * WINDOW / abs(S_UNIT[0]) * abs(s[0]) <= 1.0:
+                if abs(sigma.imag) * WINDOW * self.first(w) <= 1.0:
                     continue
                 mine = local == j
                 growth = np.exp(np.outer(x[mine], s)) * (weight * s**order) / 2
