@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.gap.problem import Problem
+from transient.drive.pieces import Pieces
+from transient.gap.problem import PRESSURE, Body, Problem
 from transient.gap.system import assemble, steady
 from transient.march.levels import Ladder
 from transient.march.march import sudden_motion
+from transient.march.rates import stress_rates
 from transient.march.regime import Outlook
 from transient.result.history import History, largest
-from transient.result.run import Errors, Regime, Run, WallFacts
+from transient.result.run import BodyFacts, Errors, Regime, Run, WallFacts
 
 DENSE = 8  # times the nodes of the finest level, where the largest steady velocity is looked for
 
@@ -36,7 +38,62 @@ def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> 
         unbounded,
         when,
         _free_motion(problem, best.flow),
+        tuple(_body(problem, ladder, end) for end, wall in enumerate(problem.walls) if wall.body is not None),
+        problem.flow is not None,
+        _pressure_jump(problem, ladder),
     )
+
+
+def _body(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
+    """A body's loads and motion on the history's rows."""
+    body = problem.walls[end].body
+    assert body is not None
+    best, flow = ladder.best, ladder.best.flow
+    row = ladder.inputs.row(end)
+    acceleration = np.where(np.isnan(flow.stress[:, end]), np.nan, flow.acceleration[:, end])
+    terminal = size = None
+    if best.orbit is not None:
+        size = abs(best.orbit.speed_curve(end).magnitude()[0])
+    elif best.deviation is not None:
+        terminal = float(best.steady_speeds[end])
+        size = abs(terminal)
+    return BodyFacts(
+        end,
+        row.at(flow.piece, flow.offset),
+        row.at(flow.piece, flow.offset, 1),
+        (np.array(body.curve[0]), np.array(body.curve[1])),
+        body.grip,
+        body.displaced * (problem.length or 0.0),
+        acceleration,
+        stress_rates(flow.piece, flow.offset, acceleration[:, None])[:, 0],
+        terminal,
+        size,
+        _released(body, row, float(flow.speed[0, end])),
+        body.breakaway > 0.0,
+    )
+
+
+def _released(body: Body, row: Pieces, first_speed: float) -> float | None:
+    """Start of the last pieces in which no drive acts on the body; from the start only where it moves then."""
+    if np.any(np.array(body.curve[1]) != 0.0):
+        return None
+    acts = (row.poly != 0.0).any(axis=1) | (row.coeff != 0.0).any(axis=1)
+    driven = np.flatnonzero(acts)
+    first = int(driven[-1]) + 1 if len(driven) else 0
+    if first == len(row.starts) or (first == 0 and first_speed == 0.0):
+        return None
+    return float(row.starts[first])
+
+
+def _pressure_jump(problem: Problem, ladder: Ladder) -> float | None:
+    """Time of the first instant at which the pressure of a prescribed flow is infinite."""
+    if problem.flow is None:
+        return None
+    flow, inputs = ladder.best.flow, ladder.inputs
+    times = np.concatenate(
+        [flow.time[np.isnan(flow.gradient)], inputs.starts[inputs.row(PRESSURE).jumps(0) != 0.0]]
+    )
+    return float(times.min()) if len(times) else None
 
 
 def _regime(problem: Problem, ahead: Outlook, ladder: Ladder) -> Regime:

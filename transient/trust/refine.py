@@ -32,7 +32,19 @@ def estimate(ladder: Ladder) -> Errors:
         level_profile = spread(away.profile, other_away.profile).max(axis=1)
     peak = np.array([_peak(flow.stress_curve(end), other.flow.stress_curve(end), stress[:, end]) for end in (0, 1)])
     mean_peak = _peak(flow.mean_curve(), other.flow.mean_curve(), mean)
-    return Errors("estimate", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak)
+    return Errors(
+        "estimate", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak, _more(ladder)
+    )  # fmt: skip
+
+
+def _more(ladder: Ladder) -> dict[str, np.ndarray]:
+    """Of what bodies and a prescribed flow make results, see ``Errors.more``."""
+    best, other = ladder.best, ladder.next_best
+    names = ("gradient", "speed", "acceleration", "place")
+    out = {name: spread(getattr(best.flow, name), getattr(other.flow, name)) for name in names}
+    if best.deviation is not None and other.deviation is not None:
+        out["level_speed"] = spread(best.deviation.speed, other.deviation.speed)
+    return out
 
 
 def spread(best: np.ndarray, other: np.ndarray) -> np.ndarray:

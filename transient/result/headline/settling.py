@@ -47,7 +47,7 @@ def label(level: float) -> str:
     return f"{100 * level:g} %"
 
 
-class _Judge:
+class Judge:
     """One quantity's deviation as a curve, its error at the rows, and the size it is measured against."""
 
     def __init__(self, curve: Curve, error: np.ndarray, size: float):
@@ -92,13 +92,13 @@ def _judges(run: Run) -> dict[str, Any]:
     mean = regime.mean if regime.mean > ZERO * mean_peak else mean_peak
     stress = {wall.name: _stress_judge(run, wall.end, wall.shear_free) for wall in run.walls}
     return {
-        "velocity": _Judge(away.largest_curve(), errors.level_profile, velocity),
-        "flow": _Judge(away.mean_curve(), errors.level_mean, mean),
+        "velocity": Judge(away.largest_curve(), errors.level_profile, velocity),
+        "flow": Judge(away.mean_curve(), errors.level_mean, mean),
         "stress": stress,
     }
 
 
-def _stress_judge(run: Run, end: int, shear_free: bool) -> _Judge:
+def _stress_judge(run: Run, end: int, shear_free: bool) -> Judge:
     away = run.regime.deviation
     assert away is not None
     size = float(run.regime.stress[end])
@@ -110,7 +110,7 @@ def _stress_judge(run: Run, end: int, shear_free: bool) -> _Judge:
         size = np.inf if infinite else peak
     if shear_free:
         size = np.inf
-    return _Judge(away.stress_curve(end), run.errors.level_stress[:, end], size)
+    return Judge(away.stress_curve(end), run.errors.level_stress[:, end], size)
 
 
 def _times(judges: dict[str, Any], level: float, names: list[str]) -> dict[str, Any]:
