@@ -105,7 +105,8 @@ class Run:
     ``unbounded`` (2,) coefficient K of |stress| ~ K / sqrt(t - t_jump) per wall, 0 where bounded, with
     ``unbounded_time`` (2,); ``viscosity`` Pa s, ``density`` kg/m^3; ``section`` flow area of one gap or None;
     ``bodies`` that carry walls; ``flow_given``: the flow is prescribed and the pressure a result, ``pressure_jump`` s
-    the time at which that is an impulse, None without.  ``fluid_impulse`` (k,) what the pressure alone would have added to the velocity at the kept profiles, m/s.
+    the time at which that is infinite, None without.
+    ``fluid_impulse`` (k,) what the pressure alone would have added to the velocity at the kept profiles, m/s.
     """
 
     history: History

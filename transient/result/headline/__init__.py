@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
+from transient.result.headline.bodies import bodies
 from transient.result.headline.flow import flow
 from transient.result.headline.motion import motion
 from transient.result.headline.pressure import pressure
@@ -17,6 +18,7 @@ HEADLINES: dict[str, Callable[[Run], dict[str, Any]]] = {
     "walls": walls,
     "flow": flow,
     "pressure": pressure,
+    "bodies": bodies,
     "motion": motion,
 }
 
