@@ -8,6 +8,7 @@ import numpy as np
 
 from transient.gap.grid import spacing
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
+from transient.march.rates import stress_rates
 from transient.result.curve import Curve
 from transient.result.history import History
 
@@ -21,14 +22,26 @@ SMOOTH = 80  # intervals across the gap of a stored profile, at least
 
 
 @dataclass(frozen=True, eq=False)
+class Motion:
+    """How walls and their bodies move: ``place``, ``acceleration`` (n, 2), the latter NaN where a body's is infinite,
+    and ``load`` (n, 2) on the bodies, their speed-dependent part left out (0 without a body)."""
+
+    place: np.ndarray
+    acceleration: np.ndarray
+    load: np.ndarray
+
+
+@dataclass(frozen=True, eq=False)
 class Rows:
-    """Histories as stored: ``time`` (n,) s rising; ``stress``, ``speed`` (n, 2); ``mean``, ``gradient`` (n,)."""
+    """Histories as stored: ``time`` (n,) s rising; ``stress``, ``speed`` (n, 2); ``mean``, ``gradient`` (n,);
+    ``motion`` where a wall carries a body."""
 
     time: np.ndarray
     stress: np.ndarray
     speed: np.ndarray
     mean: np.ndarray
     gradient: np.ndarray
+    motion: Motion | None = None
 
 
 def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.ndarray) -> Rows:
@@ -63,13 +76,28 @@ def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.
     pieces, offsets, stress, mean = pieces[order], offsets[order], stress[order], mean[order]
     speed = np.stack([inputs.row(end).at(pieces, offsets) for end in (LOWER, UPPER)], axis=1)
     gradient = inputs.row(PRESSURE).at(pieces, offsets)
-    for end, wall in enumerate(problem.walls):
-        if wall.body is not None:
+    ends = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
+    motion = None
+    if ends:
+        motion = Motion(
+            np.stack([fill(history.place[:, end], history.speed[:, end])[order] for end in (LOWER, UPPER)], axis=1),
+            np.stack([inputs.row(end).at(pieces, offsets, 1) for end in (LOWER, UPPER)], axis=1),
+            np.zeros_like(speed),
+        )
+        for end in ends:
+            motion.load[:, end] = speed[:, end]
             speed[:, end] = fill(history.speed[:, end], history.acceleration[:, end])[order]
+            motion.acceleration[:, end] = fill(*_accelerations(history, end))[order]
     if problem.flow is not None:
         gradient = fill(history.gradient, history.gradient_rate)[order]
     time = inputs.starts[pieces] + offsets
-    return _part_jumps(Rows(time, stress, speed, mean, gradient), pieces)
+    return _part_jumps(Rows(time, stress, speed, mean, gradient, motion), pieces)
+
+
+def _accelerations(history: History, end: int) -> tuple[np.ndarray, np.ndarray]:
+    """A body's acceleration (n,), NaN where the stress is infinite, and its rate."""
+    value = np.where(np.isnan(history.stress[:, end]), np.nan, history.acceleration[:, end])
+    return value, stress_rates(history.piece, history.offset, value[:, None])[:, 0]
 
 
 def _weave(value: np.ndarray, low: np.ndarray, high: np.ndarray) -> np.ndarray:
@@ -115,6 +143,7 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
             given.append(end)
         else:
             columns.append((history.speed[:, end], history.acceleration[:, end]))
+            columns.append(_accelerations(history, end))
     for value, rate in columns:
         size = np.nanmax(np.abs(value), initial=0.0)
         scale = np.full(len(low), size)
@@ -149,9 +178,8 @@ def _part_jumps(rows: Rows, piece: np.ndarray) -> Rows:
     """Make times rise: breaks without a jump become one row, the others two at neighbouring times."""
     time = rows.time.copy()
     enters = np.flatnonzero(piece[1:] != piece[:-1])  # last row of its piece
-    values = np.concatenate(
-        [rows.stress, rows.speed, rows.gradient[:, None]], axis=1
-    )
+    moved = [] if rows.motion is None else [rows.motion.acceleration, rows.motion.load]
+    values = np.concatenate([rows.stress, rows.speed, rows.gradient[:, None], *moved], axis=1)
     left, right = values[enters], values[enters + 1]
     with np.errstate(invalid="ignore"):
         size = np.nanmax(np.abs(values), axis=0, initial=0.0)
@@ -166,7 +194,10 @@ def _part_jumps(rows: Rows, piece: np.ndarray) -> Rows:
     # a row lost to the resolution of the time axis must not be the one that says a stress was infinite
     index = index[rising | np.isnan(rows.stress[index]).any(axis=1)]
     index = index[np.append(True, np.diff(time[index]) > 0)]
-    return Rows(time[index], rows.stress[index], rows.speed[index], rows.mean[index], rows.gradient[index])
+    motion = rows.motion
+    if motion is not None:
+        motion = Motion(motion.place[index], motion.acceleration[index], motion.load[index])
+    return Rows(time[index], rows.stress[index], rows.speed[index], rows.mean[index], rows.gradient[index], motion)
 
 
 def denser(problem: Problem, layers: tuple[float, float], cells: int) -> tuple[int, np.ndarray]:
