@@ -83,3 +83,15 @@ def test_compiling_is_announced_once_and_only_when_it_happens(capsys):
     for factor in (2.0, 3.0):
         numba.njit(lambda x, factor=factor: factor * x)(1.0)
     assert capsys.readouterr().err == "first run: preparing the compiled solver, once, about 15 s\n"
+
+
+def test_a_run_loads_nothing_that_it_does_not_need(tmp_path):
+    # Start-up is what a user waits for most: each of these costs a tenth of a second and more.
+    heavy = ("matplotlib", "scipy.optimize", "scipy.interpolate", "xarray", "rich", "jinja2")
+    code = (
+        "import sys; from transient.cli import main; "
+        f"main(['run', 'cases/flow_cell.toml', '--quiet', '--out', {str(tmp_path)!r}]); "
+        f"print([name for name in {heavy!r} if name in sys.modules])"
+    )
+    ended = subprocess.run([sys.executable, "-c", code], cwd=HOUSE, text=True, capture_output=True, check=True)
+    assert ended.stdout == "[]\n"
