@@ -11,15 +11,15 @@ from transient.case.model import Case
 from transient.gap.problem import Problem
 from transient.march.levels import Ladder
 from transient.march.regime import Outlook
-from transient.march.rows import Rows, between, denser, profile_times, stored
-from transient.result.headline.motion import reach
-from transient.result.result import Result, Variable
+from transient.march.rows import stored
+from transient.result.result import Result
 from transient.result.run import Run
 from transient.trust.balance import BALANCES
 from transient.trust.check import Check, verdict
 from transient.trust.demand import Demand, unmet
-from transient.trust.quasi_steady import compare, quasi_steady_stress
+from transient.trust.quasi_steady import compare
 from transient.trust.validity import validity_checks
+from transient.variables import variables
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,9 +37,9 @@ def result_of(case: Case, problem: Problem, solved: Solved, seconds: float) -> R
     """The result of a case; ``seconds`` spent solving."""
     run = solved.run
     rows = stored(problem, run.history, solved.ladder.inputs, run.errors.stress)
-    variables = _variables(problem, solved, rows)
+    kept = variables(problem, run, rows, solved.ladder, solved.ahead.until)
     summary = _summary(case, problem, solved, seconds)
-    return Result(variables, summary, case.text(), {"title": case.title})
+    return Result(kept, summary, case.text(), {"title": case.title})
 
 
 def _summary(case: Case, problem: Problem, solved: Solved, seconds: float) -> dict[str, Any]:
@@ -120,90 +120,3 @@ def _reached(problem: Problem, solved: Solved, kind: str) -> Check:
 def _grazing(demand: Demand) -> Check:
     note = f"{demand.name}: the deviation runs along the settling band, so the time is uncertain by its stated error"
     return Check("settling band", "numerics", "caution", demand.error, demand.allowed, "stated error", note)
-
-
-def _variables(problem: Problem, solved: Solved, rows: Rows) -> dict[str, Variable]:
-    run = solved.run
-    columns = [wall.end for wall in run.walls]
-    angular = "rad/s" if problem.rotating else "m/s"
-    out = {
-        "time": Variable(("time",), rows.time, "s", "time since the start of the run"),
-        "wall": Variable(("wall",), np.array([wall.name for wall in run.walls]), "1", "wall"),
-        "wall_stress": Variable(
-            ("time", "wall"), rows.stress[:, columns], "Pa", "stress of the fluid on the wall, positive along +x"
-        ),
-        "wall_speed": Variable(("time", "wall"), rows.speed[:, columns], angular, "speed of the wall"),
-    }
-    out |= _loads(problem, run, rows, columns)
-    out["mean_velocity"] = Variable(("time",), rows.mean, "m/s", "mean velocity")
-    if problem.section is not None:
-        flow = rows.mean * problem.section * problem.count
-        out["flow_rate"] = Variable(("time",), flow, "m^3/s", "flow rate of all gaps")
-    out["pressure_drop_per_length"] = Variable(
-        ("time",), rows.gradient, "Pa/m", "pressure drop per length, positive along +x"
-    )
-    out["quasi_steady_stress"] = Variable(
-        ("time", "wall"),
-        quasi_steady_stress(problem, rows.speed, rows.gradient)[:, columns],
-        "Pa",
-        "wall stress by the hand formula (steady profile at each instant)",
-    )
-    return out | _profiles(problem, run, solved, rows, columns)
-
-
-def _loads(problem: Problem, run: Run, rows: Rows, columns: list[int]) -> dict[str, Variable]:
-    """Force or torque of all gaps, where the area is known."""
-    if any(problem.walls[end].area is None for end in columns):
-        return {}
-    factor = np.array([problem.walls[end].area for end in columns], dtype=float) * problem.count
-    if problem.rotating:
-        factor = factor * [problem.walls[end].radius for end in columns]
-        return {
-            "wall_torque": Variable(
-                ("time", "wall"), rows.stress[:, columns] * factor, "N*m", "torque of the fluid on the wall, all gaps"
-            )
-        }
-    return {
-        "wall_force": Variable(
-            ("time", "wall"), rows.stress[:, columns] * factor, "N", "force of the fluid on the wall, all gaps"
-        )
-    }
-
-
-def _profiles(problem: Problem, run: Run, solved: Solved, rows: Rows, columns: list[int]) -> dict[str, Variable]:
-    history = run.history
-    if problem.profile_times is not None:
-        at = np.array([t for t in problem.profile_times if t <= solved.ahead.until])
-    else:
-        at = profile_times(history, problem.profiles)
-    velocity, travel = history.profiles_at(at)
-    infinite = history.time[np.isnan(history.stress).any(axis=1)]
-    parts, position = denser(problem, solved.ladder.layers, len(history.position) - 1)
-    velocity, travel = (between(field, parts, np.isin(at, infinite)) for field in (velocity, travel))
-    lever = position if problem.rotating else np.ones(len(position))
-    depth = reach(run)
-    kept = history.time[history.profile_row]
-    breaks = np.unique(solved.ladder.inputs.starts)
-    return {
-        "profile_time": Variable(("profile_time",), at, "s", "time of the velocity profiles"),
-        "position": Variable(
-            ("position",), position, "m", "radius" if problem.metric else "distance from the lower wall"
-        ),
-        "velocity": Variable(
-            ("profile_time", "position"), velocity * lever, "m/s",
-            "tangential velocity" if problem.rotating else "velocity along +x",
-        ),
-        "travel": Variable(
-            ("profile_time", "position"), travel * lever, "m", "distance that the fluid has travelled since the start"
-        ),
-        "reach": Variable(
-            ("time", "wall"),
-            np.stack([np.interp(rows.time, kept, depth[:, end]) for end in columns], axis=1),
-            "m",
-            "depth that the wall's motion or drag has reached into the gap (1 % depth)",
-        ),
-        "drive_break": Variable(("drive_break",), breaks, "s", "break points of the drive"),
-    }  # fmt: skip
-
-
-

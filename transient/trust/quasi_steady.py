@@ -167,6 +167,15 @@ def quasi_steady_mean(problem: Problem, speeds: np.ndarray, gradient: np.ndarray
     return _profiles(problem, speeds, gradient, depth) @ weight
 
 
+def quasi_steady_gradient(problem: Problem, speeds: np.ndarray, mean: np.ndarray) -> np.ndarray:
+    """Steady pressure drop per length (n,) in Pa/m that makes ``mean`` (n,) m/s flow between walls at ``speeds``."""
+    speeds, mean = _rows(speeds, mean)
+    nothing = np.zeros_like(mean)
+    dragged = quasi_steady_mean(problem, speeds, nothing)
+    pushed = quasi_steady_mean(problem, np.zeros((1, 2)), np.ones(1))
+    return (mean - dragged) / pushed
+
+
 def quasi_steady_peaks(problem: Problem, history: History) -> np.ndarray:
     """Signed hand-formula stress of largest magnitude over the run, (2,) Pa.
 
