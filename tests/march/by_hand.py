@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from transient.gap.problem import Problem
-from transient.march.march import NO_PLAN, Plan, Trace, before_start, history, initial_state, march
+from transient.march.march import NO_PLAN, Plan, Trace, before_start, history, initial_state, march, with_rates
 from transient.march.plan import Resolution, features, resolve
 from transient.result.history import History
 
@@ -38,7 +38,7 @@ def told(problem: Problem, until: float, trace: Trace, every: int = 1) -> Histor
     """The histories of a trace, ``every``-th node kept."""
     inputs = problem.inputs(until)
     before = before_start(problem, trace.system, inputs, initial_state(problem, trace.system, inputs))
-    return history(problem, inputs, trace, before, every)
+    return with_rates(history(problem, inputs, trace, before, every))
 
 
 def marched(problem: Problem, until: float, plan: Plan = NO_PLAN, **more) -> History:
