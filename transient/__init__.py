@@ -1,0 +1,48 @@
+"""What happens between rest and steady running in a liquid-filled gap.
+
+``read_case`` or ``Case`` states a case, ``run`` solves it, ``read_result`` opens a finished one.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from transient.answer import run
+    from transient.case.model import Case, CaseError
+    from transient.case.read import read_case
+    from transient.march.march import SolveError
+    from transient.result.result import Result, ResultError
+    from transient.result.store import read as read_result
+
+# Loaded when first used, so that ``import transient`` stays light.
+_WHERE = {
+    "Case": ("transient.case.model", "Case"),
+    "CaseError": ("transient.case.model", "CaseError"),
+    "Result": ("transient.result.result", "Result"),
+    "ResultError": ("transient.result.result", "ResultError"),
+    "SolveError": ("transient.march.march", "SolveError"),
+    "read_case": ("transient.case.read", "read_case"),
+    "read_result": ("transient.result.store", "read"),
+    "run": ("transient.answer", "run"),
+}
+
+__all__ = ["Case", "CaseError", "Result", "ResultError", "SolveError", "read_case", "read_result", "run"]
+
+
+def __getattr__(name: str) -> Any:
+    if name == "__version__":
+        from importlib.metadata import version
+
+        return version("transient")
+    if name not in _WHERE:
+        raise AttributeError(f"module 'transient' has no attribute {name!r}")
+    module, own = _WHERE[name]
+    value = getattr(import_module(module), own)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted([*globals(), *__all__, "__version__"])
