@@ -66,8 +66,8 @@ def _drive(
 
 def history(rng: np.random.Generator, size: float, time: float, limits: list[float], deep: bool = True) -> Any:
     """One random history of values about ``size`` and times about ``time``; ``limits`` collects longest durations."""
-    kinds = ["bare", "step", "ramp", "smooth_ramp", "s_curve", "trapezoid", "lag", "sine", "half_sine", "table", "smooth"]
-    kinds += ["sum", "repeat"] if deep else []
+    kinds = ["bare", "step", "ramp", "smooth_ramp", "s_curve", "trapezoid", "lag", "sine", "half_sine", "table"]
+    kinds += ["smooth", "sum", "repeat"] if deep else ["smooth"]
     kind = kinds[rng.integers(len(kinds))]
     value = size * rng.uniform(-1.5, 1.5, 6)
     span = time * 10 ** rng.uniform(-0.5, 0.5, 6)

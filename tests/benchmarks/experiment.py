@@ -173,7 +173,8 @@ def table(outcomes: list[Outcome]) -> str:
         ratios = [v.ratio for v in mine if np.isfinite(v.ratio) and np.isfinite(v.off) and v.off > v.floor]
         half, most = (np.quantile(ratios, (0.5, 0.9)) if ratios else (np.nan, np.nan))
         held = sum(v.held for v in mine)
-        lines.append(f"{name:18s} {len(mine):7d} {held:7d} {100 * held / max(len(mine), 1):7.2f}% {half:19.3g} {most:9.3g}")
+        share = 100 * held / max(len(mine), 1)
+        lines.append(f"{name:18s} {len(mine):7d} {held:7d} {share:7.2f}% {half:19.3g} {most:9.3g}")
     bad = [(o, v) for o, v in every if not v.held]
     bad.sort(key=lambda ov: -ov[1].off / (ov[1].stated or 1e-300))
     lines.append(f"cases with all stated errors holding: {sum(all(v.held for v in o.verdicts) for o in solved)}")

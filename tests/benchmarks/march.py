@@ -63,7 +63,7 @@ def main() -> None:
             f" {got['marches']:8d} {got['points']:7d} {got['steps']:6d}"
         )
     memory = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / (1024.0**2 if sys.platform == "darwin" else 1024.0)
-    print(f"medians of {repeats}; wanted: march under 2 ms, solve under 20 ms; peak memory {memory:.0f} MB, wanted 400 MB")
+    print(f"medians of {repeats}; wanted: march < 2 ms, solve < 20 ms; peak memory {memory:.0f} MB, wanted < 400 MB")
 
 
 if __name__ == "__main__":

@@ -1,12 +1,13 @@
 """A second judge, unrelated to the first: Chebyshev collocation across the gap, SciPy's Radau in time.
 
 Trefethen, Spectral Methods in MATLAB (2000), program cheb, for the matrices; Hairer & Wanner's Radau IIA of order 5
-as in SciPy.  Walls are prescribed (or slip), every break is landed on.  A pipe is solved in r squared, where it is regular.
+as in SciPy.  Walls are prescribed, every break is landed on.  A pipe is solved in r squared, where it is regular.
 """
 
 from __future__ import annotations
 
 import cmath
+import itertools
 from typing import Any
 
 import numpy as np
@@ -62,7 +63,7 @@ class Collocation:
         edges = np.unique(np.concatenate([s.breaks(until) for s in signals] + [[until]]))
         edges = edges[np.concatenate([[True], np.diff(edges) > 1e-12 * until])]
         out = np.full((len(times), 2), np.nan)
-        for a, b in zip(edges[:-1], edges[1:], strict=True):
+        for a, b in itertools.pairwise(edges):
             ends = [_within(s, a, b) for s in signals]
 
             def whole(t: float, inner: np.ndarray, ends: list = ends) -> np.ndarray:
@@ -92,7 +93,7 @@ def _within(s: Signal, a: float, b: float) -> Any:
     middle = (a + b) / 2
     owners = [[p for p in atom.expand(0.0, b) if p.start <= middle][-1] for atom in s.atoms]
     waves = [(c, sigma, p.start) for p in owners for c, sigma in p.waves]
-    cubics = [(*p.poly, 0.0, 0.0, 0.0, 0.0)[:4] + (p.start,) for p in owners]
+    cubics = [(*(*p.poly, 0.0, 0.0, 0.0, 0.0)[:4], p.start) for p in owners]
 
     def value(t: float) -> float:
         out = 0.0

@@ -24,13 +24,13 @@ def transfer(gap: Gap, s: mp.mpc, row: int, channel: int, r: float = 0.0) -> mp.
     return _driven(gap, s, q, a, b, row, channel, r)
 
 
-def _pressed(gap: Gap, s, q, a, b, channel, r):  # noqa: ANN001, ANN202
+def _pressed(gap: Gap, s, q, a, b, channel, r):
     free = 1 / (gap.rho * s)
     one = 0 if channel in (0, 1) else 1
     return free * (one - sum(_driven(gap, s, q, a, b, k, channel, r) for k in (0, 1)))
 
 
-def _pair(gap: Gap, q, r):  # noqa: ANN001, ANN202
+def _pair(gap: Gap, q, r):
     """Values, slopes and mean's primitives of both solutions at r."""
     z = q * r
     if gap.kind == "plates":
@@ -47,7 +47,7 @@ def _pair(gap: Gap, q, r):  # noqa: ANN001, ANN202
     )
 
 
-def _driven(gap: Gap, s, q, a, b, row, channel, r):  # noqa: ANN001, ANN202
+def _driven(gap: Gap, s, q, a, b, row, channel, r):
     if gap.kind == "pipe":
         if row == 0:
             return mp.mpf(0)
@@ -74,14 +74,14 @@ def _driven(gap: Gap, s, q, a, b, row, channel, r):  # noqa: ANN001, ANN202
     return (1, -1)[channel] * gap.mu * lever * (c * p[0][1] + d * p[1][1])
 
 
-def _condition(gap: Gap, k: int, pair):  # noqa: ANN001, ANN202
+def _condition(gap: Gap, k: int, pair):
     if gap.free[k]:
         return pair[0][1], pair[1][1]
     side = (1, -1)[k]
     return tuple(p[0] - side * mp.mpf(gap.slip[k]) * p[1] for p in pair)
 
 
-def _talbot(image, t):  # noqa: ANN001, ANN202
+def _talbot(image, t):
     """Inverse transform of a real function at t."""
     r = mp.mpf(2) * NODES / (5 * t)
     total = (mp.exp(r * t) * image(r)).real / 2
@@ -94,7 +94,7 @@ def _talbot(image, t):  # noqa: ANN001, ANN202
     return total * r / NODES
 
 
-def _onset(gap: Gap, piece: Piece, shift: float, x, row: int, channel: int, r: float, jump: float):  # noqa: ANN001, ANN202
+def _onset(gap: Gap, piece: Piece, shift: float, x, row: int, channel: int, r: float, jump: float):
     """Answer at x after the drive took up this piece's continuation at ``shift`` into it; value part is ``jump``."""
     slopes = []
     poly = [mp.mpf(c) for c in piece.poly]
@@ -103,7 +103,7 @@ def _onset(gap: Gap, piece: Piece, shift: float, x, row: int, channel: int, r: f
     waves = [(mp.mpc(c) * mp.exp(mp.mpc(g) * shift), mp.mpc(g)) for c, g in piece.waves]
     fixed = [(c, g, transfer(gap, g, row, channel, r) if g.imag else mp.mpf(0)) for c, g in waves]
 
-    def image(s):  # noqa: ANN001, ANN202
+    def image(s):
         h = transfer(gap, s, row, channel, r)
         total = h * mp.mpf(jump) / s
         for k, slope in enumerate(slopes, start=1):
@@ -117,7 +117,7 @@ def _onset(gap: Gap, piece: Piece, shift: float, x, row: int, channel: int, r: f
 
 
 def state(
-    gap: Gap, inputs: list[list[tuple[list[Piece], float]]], t: float, channel: int, steady, r: float = 0.0  # noqa: ANN001
+    gap: Gap, inputs: list[list[tuple[list[Piece], float]]], t: float, channel: int, steady, r: float = 0.0
 ) -> float:
     """One channel at one time; ``inputs`` as in ``laplace.Response.histories``, ``steady`` its steady matrix column."""
     with mp.workdps(DIGITS):

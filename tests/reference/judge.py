@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable
 from typing import Any
 
@@ -113,7 +114,7 @@ class Judge:
         many = len(edges) > 60
         turns = max([abs(sg.imag) for s in self.signals for a in s.atoms for p in a.pieces for _, sg in p.waves] or [0])
         out = [edges[1:]]
-        for a, b in zip(edges[:-1], edges[1:], strict=True):
+        for a, b in itertools.pairwise(edges):
             span = b - a
             low = max(least * min(span, self.gap.time), 4e-16 * b)
             if low < span:
@@ -172,7 +173,7 @@ class Judge:
         inside = breaks[(breaks > lo * (1 + 1e-14)) & (breaks < hi * (1 - 1e-14))]
         edges = np.concatenate([[lo], inside, [hi]])
         best = (0.0, lo)
-        for a, b in zip(edges[:-1], edges[1:], strict=True):
+        for a, b in itertools.pairwise(edges):
             for _ in range(9):
                 x = np.linspace(a, b, 18)[1:-1]
                 y, rate = self.state(x)[channel], self.state(x, order=1)[channel] * 1.0

@@ -162,7 +162,7 @@ class Response:
             out[:, moments] += (transferred[row][: out.shape[0]] @ summed.T).real
         self._add_poles(w, terms, used, local, time, x, out, order)
 
-    def _add_poles(self, w, terms, used, local, time, x, out, order) -> None:  # noqa: ANN001
+    def _add_poles(self, w, terms, used, local, time, x, out, order) -> None:
         """Undamped waves: the residue at their pole in place of the contour's share of it."""
         s, weight = S_UNIT / self.first(w), W_UNIT / self.first(w)
         for j, k in enumerate(used):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 from scipy.interpolate import BarycentricInterpolator
 
@@ -20,10 +22,10 @@ class Profile:
         x = -np.cos(np.pi * np.arange(NODES) / (NODES - 1))
         fine = np.linspace(-1.0, 1.0, FINE)
         one = BarycentricInterpolator(x, np.eye(NODES))(fine)
-        z = [lo + (hi - lo) * (x + 1) / 2 for lo, hi in zip(edges[:-1], edges[1:], strict=True)]
+        z = [lo + (hi - lo) * (x + 1) / 2 for lo, hi in itertools.pairwise(edges)]
         self.r = gap.ri + (gap.ro - gap.ri) * np.concatenate(z)
         self._to_fine = np.kron(np.eye(len(edges) - 1), one)
-        lever = np.concatenate([lo + (hi - lo) * (fine + 1) / 2 for lo, hi in zip(edges[:-1], edges[1:], strict=True)])
+        lever = np.concatenate([lo + (hi - lo) * (fine + 1) / 2 for lo, hi in itertools.pairwise(edges)])
         self.fine = gap.ri + (gap.ro - gap.ri) * lever
         self.lever = self.fine if gap.kind == "rotating" else np.ones_like(self.fine)
 

@@ -6,6 +6,7 @@ from typing import Any
 
 import numpy as np
 import pytest
+
 from transient.answer import run
 from transient.case.model import Case
 
