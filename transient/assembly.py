@@ -17,7 +17,7 @@ from transient.result.run import Run
 from transient.trust.balance import BALANCES
 from transient.trust.check import Check, verdict
 from transient.trust.demand import Demand, unmet
-from transient.trust.quasi_steady import compare
+from transient.trust.hand_formula import compare
 from transient.trust.validity import validity_checks
 from transient.variables import variables
 
@@ -53,10 +53,12 @@ def _summary(case: Case, problem: Problem, solved: Solved, seconds: float) -> di
     reached = problem.accuracy * max((d.ratio for d in solved.wanted if not d.grazes), default=0.0)
     return {
         "title": case.title,
-        "shape": problem.shape,
+        "shape": case.gap.shape.word,
         "verdict": verdict(checks),
         **parts,
-        "quasi_steady": compare(problem, run.history, peaks),
+        "quasi_steady": compare(
+            problem, run.history, peaks, parts["bodies"], parts["pressure"]["peak_drop_per_length"]
+        ),
         "checks": [check.as_dict() for check in checks],
         "accuracy": {
             "asked": problem.accuracy,
