@@ -8,20 +8,12 @@ All differences of nearly equal radii are taken from the depth ``r - inner``: a 
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from typing import Any
-
 import numpy as np
 
 from transient.gap.problem import LOWER, UPPER, Problem
-from transient.result.history import History
 
-# The hand formula is enough where it finds the peak to 5 %: common practice, no source.
-ENOUGH = 0.05
 # Gauss points across the gap for averages; in the logarithm of the radius these are exact to round-off at ratio 0.01.
 GAUSS = 48
-# Points between neighbouring rows at which the drive is looked at for its extremes.
-BETWEEN = 7
 
 
 def lever(problem: Problem) -> tuple[float, float]:
@@ -126,7 +118,7 @@ def quasi_steady_stress(problem: Problem, speeds: np.ndarray, gradient: np.ndarr
     return np.stack([lower, upper], axis=1)
 
 
-def _profiles(problem: Problem, speeds: np.ndarray, gradient: np.ndarray, depth: np.ndarray) -> np.ndarray:
+def profiles(problem: Problem, speeds: np.ndarray, gradient: np.ndarray, depth: np.ndarray) -> np.ndarray:
     """Steady w (n, k) at ``depth`` (k,) from the inner end, from the fluid's value there."""
     first, _, start, _ = _fluxes(problem, speeds, gradient)
     m, inner, mu = problem.metric, problem.inner, problem.viscosity
@@ -139,7 +131,7 @@ def _profiles(problem: Problem, speeds: np.ndarray, gradient: np.ndarray, depth:
 def steady_profile(problem: Problem, speeds: np.ndarray, gradient: float, r: np.ndarray) -> np.ndarray:
     """Steady velocity (k,) in m/s (angular speed in rad/s in a rotating gap) at coordinates ``r`` (k,) m."""
     speeds, gradient_row = _rows(speeds, np.asarray(gradient))
-    return _profiles(problem, speeds, gradient_row, np.asarray(r, dtype=float) - problem.inner)[0]
+    return profiles(problem, speeds, gradient_row, np.asarray(r, dtype=float) - problem.inner)[0]
 
 
 def mean_weights(problem: Problem) -> tuple[np.ndarray, np.ndarray]:
@@ -164,7 +156,7 @@ def quasi_steady_mean(problem: Problem, speeds: np.ndarray, gradient: np.ndarray
     """Steady mean velocity (n,) in m/s for ``speeds`` (n, 2), ``gradient`` (n,), as in ``mean_weights``."""
     speeds, gradient = _rows(speeds, gradient)
     depth, weight = mean_weights(problem)
-    return _profiles(problem, speeds, gradient, depth) @ weight
+    return profiles(problem, speeds, gradient, depth) @ weight
 
 
 def quasi_steady_gradient(problem: Problem, speeds: np.ndarray, mean: np.ndarray) -> np.ndarray:
@@ -174,57 +166,3 @@ def quasi_steady_gradient(problem: Problem, speeds: np.ndarray, mean: np.ndarray
     dragged = quasi_steady_mean(problem, speeds, nothing)
     pushed = quasi_steady_mean(problem, np.zeros((1, 2)), np.ones(1))
     return (mean - dragged) / pushed
-
-
-def quasi_steady_peaks(problem: Problem, history: History) -> np.ndarray:
-    """Signed hand-formula stress of largest magnitude over the run, (2,) Pa.
-
-    Taken at the rows and at points of the drive between them (a drive's own extremes need not be rows).
-    """
-    speeds, gradient = history.speed, history.gradient
-    gaps = np.diff(history.time) > 0.0
-    if gaps.any():
-        inside = (np.arange(BETWEEN) + 1.0) / (BETWEEN + 1.0)
-        t = (history.time[:-1][gaps, None] + np.diff(history.time)[gaps, None] * inside).ravel()
-        inputs = problem.inputs(float(history.time[-1]))
-        speeds = np.concatenate([speeds, np.stack([inputs.row(LOWER).value(t), inputs.row(UPPER).value(t)], axis=1)])
-        gradient = np.concatenate([gradient, inputs.row(2).value(t)])
-    stress = quasi_steady_stress(problem, speeds, gradient)
-    return stress[np.abs(stress).argmax(axis=0), [LOWER, UPPER]]
-
-
-def compare(problem: Problem, history: History, peaks: Mapping[str, float | None]) -> dict[str, Any]:
-    """Hand formula beside the answer, as in the summary: "enough", "peak_stress", "difference", "note".
-
-    ``peaks``: wall name -> signed true peak stress in Pa, None where it is infinite (a sudden start).
-    Walls that carry no stress (an axis, a shear-free surface) may be left out.
-    """
-    hand = quasi_steady_peaks(problem, history)
-    largest = max((abs(p) for p in peaks.values() if p is not None), default=0.0)
-    stress, difference = {}, {}
-    for index, wall in enumerate(problem.walls):
-        if wall.kind == "axis" or wall.name not in peaks:
-            continue
-        true = peaks[wall.name]
-        stress[wall.name] = float(hand[index])
-        # Against a peak that is round-off beside the other wall's, a relative difference says nothing.
-        if true is None:
-            difference[wall.name] = None
-        elif abs(true) <= 1e-12 * largest or true == 0.0:
-            difference[wall.name] = 0.0 if abs(hand[index]) <= 1e-9 * largest else 1.0
-        else:
-            difference[wall.name] = float(abs(hand[index] - true) / abs(true))
-    enough = all(d is not None and d <= ENOUGH for d in difference.values())
-    return {"enough": enough, "peak_stress": stress, "difference": difference, "note": _sentence(difference)}
-
-
-def _sentence(difference: Mapping[str, float | None]) -> str:
-    infinite = [name for name, d in difference.items() if d is None]
-    if infinite:
-        return f"a sudden start has no finite peak on the {' or '.join(infinite)} wall, which the hand formula misses"
-    if not difference:
-        return "no wall carries a stress"
-    name, worst = max(difference.items(), key=lambda item: item[1] or 0.0)
-    if worst is not None and worst <= ENOUGH:
-        return f"the hand formula finds every peak within {100 * worst:.2g} %, but not how long the flow takes"
-    return f"the hand formula misses the peak on the {name} wall by {100 * (worst or 0.0):.3g} %"
