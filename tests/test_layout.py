@@ -8,6 +8,8 @@ from pathlib import Path
 
 import pytest
 
+import transient
+
 ROOT = Path(__file__).resolve().parents[1]
 AGREED = {"README.md", "DEVELOPERS.md", "pyproject.toml", "transient", "cases", "tests", "outputs"}
 ROOMS = {"cli", "sheet", "trust", "case", "march", "series", "gap", "fluid", "drive", "result", "units"}
@@ -57,6 +59,17 @@ def loaded(code: str) -> set[str]:
     command = [sys.executable, "-c", f"{code}\nimport sys\nprint(*{{name.split('.')[0] for name in sys.modules}})"]
     done = subprocess.run(command, cwd=ROOT, capture_output=True, text=True, check=True)
     return set(done.stdout.split())
+
+
+PUBLIC = ["Case", "CaseError", "Result", "ResultError", "SolveError", "read_case", "read_result", "run"]
+
+
+def test_public_names_are_pinned():
+    assert transient.__all__ == PUBLIC
+    for name in [*PUBLIC, "__version__"]:
+        assert getattr(transient, name) is not None
+    with pytest.raises(AttributeError, match="no attribute 'solve_it'"):
+        transient.solve_it  # noqa: B018
 
 
 def test_the_door_is_light():

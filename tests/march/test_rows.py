@@ -98,7 +98,7 @@ def test_after_an_infinite_stress_lines_follow_the_local_value(accuracy):
         {"upper": 1.0},
         {"upper": step.build(1.0, at=0.3), "lower": step.build(-0.5, at=0.6)},
         {"upper": trapezoid.build(1.0, 0.0, 0.1, 0.0), "push": step.build(1.0, at=0.1)},
-        {"upper": ramp.build(1.0, 1e-9, at=5.0)},
+        {"upper": ramp.build(1.0, 1e-4, at=5.0)},
         {"push": step.build(1.0, at=1e6), "duration": 1e6 + 1.0},
     ],
 )

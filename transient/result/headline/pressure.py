@@ -12,7 +12,7 @@ from transient.result.run import Run
 def pressure(run: Run) -> dict[str, Any]:
     """Largest magnitude (signed) and final value, Pa/m.
 
-    Of a prescribed flow the peak is found between the rows too; where the pressure is infinite at some instant (a
+    The peak is found between the rows too.  Where a flow is prescribed and the pressure is infinite at some instant (a
     sudden change of the flow, or of a wall's speed in it) ``unbounded`` says so, there is no peak and ``peak_time`` is
     that instant.
     """
@@ -20,12 +20,11 @@ def pressure(run: Run) -> dict[str, Any]:
 
 
 def _given(run: Run) -> dict[str, Any]:
-    drop = run.history.gradient
-    peak = int(np.abs(drop).argmax())
+    peak, at = run.history.gradient_curve().magnitude()
     return {
-        "peak_drop_per_length": float(drop[peak]),
-        "peak_time": float(run.history.time[peak]),
-        "final_drop_per_length": float(drop[-1]),
+        "peak_drop_per_length": peak,
+        "peak_time": at,
+        "final_drop_per_length": float(run.history.gradient[-1]),
     }
 
 
