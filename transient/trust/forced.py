@@ -9,7 +9,7 @@ import numpy as np
 
 from transient.gap.problem import Inputs
 
-TERMS = 20  # of the series for small arguments: round-off at |z| = 1
+TERMS = 16  # of the series for small arguments: round-off at |z| = 1
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,7 +27,7 @@ def forced(
 
     By the matrix's own modes; modes that coincide (critical damping) cost half of the digits.
     """
-    rate, modes = np.linalg.eig(system.matrix.astype(complex))
+    rate, modes = np.linalg.eig(system.matrix)
     back = np.linalg.inv(modes)
     source = back @ system.source
     lengths = np.diff(inputs.starts)
@@ -44,7 +44,7 @@ def forced(
 def _answer(rate: np.ndarray, source: np.ndarray, inputs: Inputs, piece: np.ndarray, x: np.ndarray) -> np.ndarray:
     """Amplitudes (n, N) at ``x`` (n,) s into the pieces that began with none: integral of e^(rate (x - t)) source u."""
     z = rate * x[:, None]
-    out = np.zeros(z.shape, complex)
+    out = np.zeros(z.shape, complex if inputs.coeff.shape[2] else z.dtype)
     for order, weight in enumerate(_weights(z)):
         drive = inputs.poly[piece, :, order] @ source.T
         out += drive * factorial(order) * x[:, None] ** (order + 1) * weight

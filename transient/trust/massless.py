@@ -23,7 +23,7 @@ from transient.trust.quasi_steady import (
     section_measure,
 )
 
-TOLERANCE = 1e-7  # of the integration where curves or friction leave no closed form
+TOLERANCE = 1e-6  # of the integration where curves or friction leave no closed form
 # Dry friction rises over this share of the largest speed that the film alone would allow; common practice, no source.
 SLIDING = 1e-4
 
@@ -172,36 +172,40 @@ def _integrated(
 
     count = len(bodies)
     slow = SLIDING * _scale(system, inputs, bodies, mass)
+    ease = np.linalg.inv(mass)
+    plain = not inputs.coeff.any()
 
-    def extra(speed: np.ndarray) -> np.ndarray:
-        load = [np.interp(u, *body.curve) if body.curve[0] else 0.0 for u, body in zip(speed, bodies, strict=True)]
-        rub = [body.sliding * np.tanh(u / slow) if body.sliding else 0.0 for u, body in zip(speed, bodies, strict=True)]
-        return np.linalg.solve(mass, np.array(load) - np.array(rub))
-
-    rows = [inputs.row(row) for row in range(3)]
-
-    def rate(x: float, z: np.ndarray, number: int) -> np.ndarray:
-        at = np.array([number]), np.array([x])
-        out = system.matrix @ z + system.source @ np.array([row.at(*at)[0] for row in rows])
-        out[:count] += extra(z[:count])
+    def rate(z: np.ndarray, given: np.ndarray) -> np.ndarray:
+        out = system.matrix @ z + system.source @ given
+        for i, body in enumerate(bodies):
+            load = np.interp(z[i], *body.curve) if body.curve[0] else 0.0
+            if body.sliding:
+                load = load - body.sliding * np.tanh(z[i] / slow)
+            out[:count] += np.multiply.outer(ease[:, i], load)
         return out
 
+    def inputs_at(x: float, number: int) -> np.ndarray:
+        if plain:
+            c = inputs.poly[number].T
+            return c[0] + x * (c[1] + x * (c[2] + x * c[3]))
+        at = np.array([number]), np.array([x])
+        return np.array([inputs.row(row).at(*at)[0] for row in range(3)])
+
     values = np.zeros((len(piece), len(state)))
-    rates = np.zeros_like(values)
     for number in np.unique(piece):
         own = np.flatnonzero(piece == number)
         times, back = np.unique(offset[own], return_inverse=True)
-        if times[-1] <= 0.0:
-            found = state[:, None].repeat(len(times), axis=1)
-        else:
-            size = 1e-9 * max(float(np.abs(state).max()), slow)
+        found = state[:, None].repeat(len(times), axis=1)
+        if times[-1] > 0.0:
+            size = 1e-7 * max(float(np.abs(state).max()), slow / SLIDING)
             found = solve_ivp(
-                rate, (0.0, times[-1]), state, "LSODA", times, args=(number,), rtol=TOLERANCE, atol=size
+                lambda x, z, n=number: rate(z, inputs_at(x, n)), (0.0, times[-1]), state, "LSODA", times,
+                rtol=TOLERANCE, atol=size,
             ).y  # fmt: skip
         state = found[:, -1]
         values[own] = found.T[back]
-        rates[own] = np.array([rate(x, z, number) for x, z in zip(times, found.T, strict=True)])[back]
-    return values, rates
+    given = np.stack([inputs.row(row).at(piece, offset) for row in range(3)])
+    return values, rate(values.T, given).T
 
 
 def _scale(system: Linear, inputs: Inputs, bodies: list[Body], mass: np.ndarray) -> float:

@@ -8,6 +8,8 @@ All differences of nearly equal radii are taken from the depth ``r - inner``: a 
 
 from __future__ import annotations
 
+from functools import cache
+
 import numpy as np
 
 from transient.gap.problem import LOWER, UPPER, Problem
@@ -134,13 +136,19 @@ def steady_profile(problem: Problem, speeds: np.ndarray, gradient: float, r: np.
     return profiles(problem, speeds, gradient_row, np.asarray(r, dtype=float) - problem.inner)[0]
 
 
+@cache
+def _gauss() -> tuple[np.ndarray, np.ndarray]:
+    """Gauss-Legendre points and weights on [0, 1]."""
+    x, weight = np.polynomial.legendre.leggauss(GAUSS)
+    return 0.5 * (x + 1.0), 0.5 * weight
+
+
 def mean_weights(problem: Problem) -> tuple[np.ndarray, np.ndarray]:
     """(depth (k,) m from the inner end, weight (k,)): mean velocity = sum(weight x w), m/s.
 
     The mean over the flow area; in a rotating gap the tangential speed averaged over the radius (w is angular there).
     """
-    x, weight = np.polynomial.legendre.leggauss(GAUSS)
-    x, weight = 0.5 * (x + 1.0), 0.5 * weight
+    x, weight = _gauss()
     inner, gap = problem.inner, problem.gap
     if problem.metric == 0:
         return gap * x, weight
