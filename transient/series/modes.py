@@ -15,9 +15,11 @@ from scipy.special import j0, j1
 
 from transient.series.basis import hankel_slopes, reduced_hankel
 from transient.series.gapshape import FREE, GapShape
-from transient.series.weak import WEAK, weak_ends, weak_root, weak_velocity
+from transient.series.weak import WEAK, bessel_mean, bessel_mode, weak_root
 
 _STEPS = 60
+# Below this lambda times the inner radius a thin inner cylinder is told by the Bessel functions themselves.
+THIN = 1.0
 # From this inner radius over gap on the norms are taken without the differences of the two ends.
 NARROW = 100.0
 _SLOW = 30.0
@@ -51,10 +53,12 @@ class Modes:
         turn = np.exp(1j * (self.root[:, None] * y - self.phase[:, None]))
         if shape.metric == 0:
             return turn.imag
-        # Near the axis of a very small inner cylinder the amplitude is large, but r is never 0 there.
-        out = r ** (-shape.order - 0.5) * (reduced_hankel(shape.order, self.root[:, None] * r) * turn).imag
-        if _weak(shape, self.root):
-            out[0] = weak_velocity(shape, float(self.root[0]), y)
+        # Near a thin inner cylinder h is large and its phase all that is left: there the functions themselves.
+        thin = self.root * shape.a < THIN
+        out = np.empty((len(self.root), len(y)))
+        out[thin] = bessel_mode(shape, self.root[thin, None], y)
+        z = self.root[~thin, None] * r
+        out[~thin] = r ** (-shape.order - 0.5) * (reduced_hankel(shape.order, z) * turn[~thin]).imag
         return out
 
 
@@ -64,7 +68,7 @@ def modes(shape: GapShape, count: int) -> Modes:
     root = roots(shape, count)
     doubt = _doubt(root, shape)
     phase = _lower_phase(shape, root) if not shape.axis else np.zeros(count)
-    values, slopes, spins = _ends(shape, root, phase)
+    values, slopes = _ends(shape, root)
     rate = root**2
     weight = np.array([shape.a, shape.b]) ** shape.metric if shape.metric else np.ones(2)
     flux = slopes * weight
@@ -77,7 +81,11 @@ def modes(shape: GapShape, count: int) -> Modes:
         share[:, 1] = 0.0
     if shape.metric == 3:
         share[:, 2] = 0.0
-        mean = (spins[:, 0] - spins[:, 1]) / root
+        # r C_1 integrates to -C_0 / lambda, and C_0 = 2 C_1 / z - C_2
+        spins = 2 * values + slopes * np.array([shape.a, shape.b])
+        mean = (spins[:, 0] - spins[:, 1]) / rate
+        if _weak(shape, root):
+            mean[0] = bessel_mean(shape, root[0])
     else:
         mean = push / rate / shape.volume
     stress = slopes * np.array([shape.levers[0], -shape.levers[1]])
@@ -155,28 +163,25 @@ def _hankels(shape: GapShape, z: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     return reduced_hankel(shape.order, z), reduced_hankel(shape.order + 1, z)
 
 
-def _ends(shape: GapShape, root: np.ndarray, phase: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Values, slopes and (rotating) C_0 of the eigenfunctions at both ends, each (M, 2)."""
+def _ends(shape: GapShape, root: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Values and slopes of the eigenfunctions at both ends, each (M, 2).
+
+    The walls' conditions and Re[h_(nu+1) conj(h_nu)] = 1 (the Wronskian, A&S 9.1.16) leave one modulus.
+    """
     if shape.axis:
         zero = np.zeros_like(root)
-        return np.stack([zero + 1, j0(root)], 1), np.stack([zero, -root * j1(root)], 1), np.zeros((len(root), 2))
+        return np.stack([zero + 1, j0(root)], 1), np.stack([zero, -root * j1(root)], 1)
     sign = np.where(np.arange(1, len(root) + 1) % 2, -1.0, 1.0)
-    turns = [np.exp(-1j * phase), sign * np.exp(-1j * _upper_phase(shape, root))]
-    values, slopes, spins = (np.zeros((len(root), 2)) for _ in range(3))
-    for end, (r, turn, slip) in enumerate(zip((shape.a, shape.b), turns, (shape.lower, shape.upper), strict=True)):
+    values, slopes = np.zeros((len(root), 2)), np.zeros((len(root), 2))
+    for end, (r, side, slip) in enumerate(((shape.a, 1.0, shape.lower), (shape.b, -1.0, shape.upper))):
         value, next_value = _hankels(shape, root * r)
-        power = r ** (-shape.order - 0.5) if shape.metric else 1.0
-        values[:, end] = power * (value * turn).imag
-        slopes[:, end] = root * power * (next_value * turn).real
+        size = (r ** (-shape.order - 0.5) if shape.metric else 1.0) * (1.0 if end == 0 else sign)
         if slip == FREE:
-            slopes[:, end] = 0.0
-        elif slip == 0.0:
-            values[:, end] = 0.0
-        if shape.metric == 3:
-            spins[:, end] = r**-0.5 * (reduced_hankel(0, root * r) * turn).real
-    if _weak(shape, root):
-        values[0], slopes[0], spins[0] = weak_ends(shape, float(root[0]))
-    return values, slopes, spins
+            values[:, end] = side * size / np.abs(next_value)
+        else:
+            slopes[:, end] = size * root / np.abs(value - side * 1j * slip * root * next_value)
+            values[:, end] = side * slip * slopes[:, end]
+    return values, slopes
 
 
 def _norms(shape: GapShape, root: np.ndarray, phase: np.ndarray, values: np.ndarray, slopes: np.ndarray) -> np.ndarray:

@@ -17,6 +17,7 @@ from transient.series.uniform import UniformFlow
 TRUST = 1e-13
 ROUNDING = 2e-16
 FAINT = 1e-6
+HAIR = 3e-5
 
 
 @dataclass(frozen=True, eq=False)
@@ -84,8 +85,10 @@ class Solution:
 
     def _evaluate(self, answer: Answer, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         value, size = evaluate(self.line, self.at, answer, *self._instants(piece, offset))
-        # Round-off in a nearly closed annulus grows with radius over gap, even in stating the gap itself.
-        trust = TRUST + ROUNDING * self.shape.a + 20 * answer.modes.doubt
+        # Round-off in a nearly closed annulus grows with radius over gap, even in stating the gap itself; around a
+        # hair-thin inner cylinder with the curvature.
+        a = self.shape.a
+        trust = TRUST * (1 + (HAIR / a if a > 0 else 0.0)) + ROUNDING * a + 20 * answer.modes.doubt
         return value, trust * (size + 1e-10 * size.max(axis=1, keepdims=True))
 
 

@@ -24,8 +24,8 @@ def log_rest(x: np.ndarray | float) -> np.ndarray | float:
 class SteadyFlow:
     """Three unit steady flows: lower wall's speed, upper wall's speed, pressure drop per length (rows).
 
-    Each is ``constant + wall q(y) + drop P(y)`` with q the profile driven by the lower wall's unit gradient and P
-    that of the unit pressure drop; columns of ``weights`` (3, 3).  Dimensionless as in ``GapShape``.
+    Each is a sum of four profiles, columns of ``weights`` (3, 4): a constant, the wall-driven profiles that vanish at
+    the lower and at the upper wall, and that of the unit pressure drop.  Dimensionless as in ``GapShape``.
     """
 
     shape: GapShape
@@ -33,12 +33,11 @@ class SteadyFlow:
 
     def velocity(self, y: np.ndarray) -> np.ndarray:
         """(3, k) at ``y`` (k,)."""
-        return self.weights @ np.stack([np.ones_like(y), *_profiles(self.shape, y)[0]])
+        return self.weights @ _profiles(self.shape, y)[0]
 
     def stress(self) -> np.ndarray:
         """(3, 2): traction on the lower and upper wall."""
-        slopes = _profiles(self.shape, np.array([0.0, 1.0]))[1]
-        gradient = self.weights[:, 1:] @ slopes
+        gradient = self.weights @ _profiles(self.shape, np.array([0.0, 1.0]))[1]
         return gradient * np.array([self.shape.levers[0], -self.shape.levers[1]]) * self.shape.grips
 
     def mean(self) -> np.ndarray:
@@ -51,21 +50,28 @@ def steady_flow(shape: GapShape) -> SteadyFlow:
     """Unit steady flows of a gap.  Raises SeriesError where nothing holds the fluid back."""
     if shape.unrestrained:
         raise SeriesError("no wall holds the fluid back, so there is no steady state")
-    (value, slope) = _profiles(shape, np.array([0.0, 1.0]))
-    terms = np.array([[1.0, 1.0], *value])  # constant, q, P at both ends
-    slopes = np.array([[0.0, 0.0], *slope])
-    low = _condition(shape.lower, terms[:, 0], -slopes[:, 0])
-    high = _condition(shape.upper, terms[:, 1], slopes[:, 1])
-    rows = np.array([low, high])
+    value, slope = _profiles(shape, np.array([0.0, 1.0]))
+    low = _condition(shape.lower, value[:, 0], -slope[:, 0])
+    high = _condition(shape.upper, value[:, 1], slope[:, 1])
     if shape.axis:
-        rows[0] = [0.0, 1.0, 0.0]
-    weights = np.zeros((3, 3))
+        low = np.array([0.0, 1.0, 0.0, 0.0])
+    # Two walls that hold: each speed in the profile that vanishes at the other wall, so that small values stay exact.
+    # Else a constant carries the speed of the one wall there is.
+    pair = [1, 2] if shape.grips.all() else [0, 1]
+    weights = np.zeros((3, 4))
     for i, right in enumerate(np.eye(3)):
-        weights[i, :2] = np.linalg.solve(rows[:, :2], shape.grips * right[:2] - right[2] * rows[:, 2])
-        weights[i, 2] = right[2]
+        known = shape.grips * right[:2] - right[2] * np.array([low[3], high[3]])
+        weights[i, pair] = _solve(low[pair], high[pair], known)
+        weights[i, 3] = right[2]
     if shape.metric == 3:
         weights[2] = 0.0
     return SteadyFlow(shape, weights)
+
+
+def _solve(low: np.ndarray, high: np.ndarray, known: np.ndarray) -> np.ndarray:
+    """Both amounts by Cramer's rule, which keeps zeros."""
+    determinant = low[0] * high[1] - low[1] * high[0]
+    return np.array([known[0] * high[1] - known[1] * low[1], known[1] * low[0] - known[0] * high[0]]) / determinant
 
 
 def _condition(slip: float, value: np.ndarray, outward: np.ndarray) -> np.ndarray:
@@ -73,37 +79,49 @@ def _condition(slip: float, value: np.ndarray, outward: np.ndarray) -> np.ndarra
 
 
 def _profiles(shape: GapShape, y: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """((2, k) q and P, (2, k) their slopes); q' = 1 and P' = 0 at the lower wall."""
-    a, r = shape.a, shape.a + y
+    """((4, k) profiles, (4, k) their slopes); the wall-driven ones have slopes 1 and -1 at the lower wall."""
+    a, b, r = shape.a, shape.b, shape.a + y
+    one, zero, down = np.ones_like(y), np.zeros_like(y), 1.0 - y
     if shape.metric == 0:
-        return np.stack([y, -y * y / 2]), np.stack([np.ones_like(y), -y])
+        return np.stack([one, y, down, -y * y / 2]), np.stack([zero, one, -one, -y])
     if shape.axis:
-        return np.stack([0 * y, -y * y / 4]), np.stack([0 * y, -y / 2])
+        return np.stack([one, zero, zero, -y * y / 4]), np.stack([zero, zero, zero, -y / 2])
     if shape.metric == 1:
         logarithm = np.log1p(y / a)
         wide = -y * (2 * a + y) / 4 + a * a / 2 * logarithm
         narrow = -y * y / 2 + a * a / 2 * log_rest(y / a)
         drop = np.where(y > a / 4, wide, narrow)
-        return np.stack([a * logarithm, drop]), np.stack([a / r, -y * (2 * a + y) / (2 * r)])
-    return np.stack([a * y * (2 * a + y) / (2 * r * r), 0 * y]), np.stack([(a / r) ** 3, 0 * y])
+        return (
+            np.stack([one, a * logarithm, a * np.log1p(down / r), drop]),
+            np.stack([zero, a / r, -a / r, -y * (2 * a + y) / (2 * r)]),
+        )
+    up = a * y * (2 * a + y) / (2 * r * r)
+    return (
+        np.stack([one, up, a**3 * down * (b + r) / (2 * (r * b) ** 2), zero]),
+        np.stack([zero, (a / r) ** 3, -((a / r) ** 3), zero]),
+    )
 
 
 def _means(shape: GapShape) -> np.ndarray:
-    """Means of 1, q, P (integrals by hand)."""
-    a = shape.a
+    """Means of the four profiles (integrals by hand); narrow gaps by what is left of the logarithm."""
+    a, b = shape.a, shape.b
     if shape.metric == 0:
-        return np.array([1.0, 0.5, -1.0 / 6.0])
+        return np.array([1.0, 0.5, 0.5, -1.0 / 6.0])
     if shape.axis:
-        return np.array([1.0, 0.0, -1.0 / 8.0])
-    x = 1.0 / a
-    rest = float(log_rest(x))
+        return np.array([1.0, 0.0, 0.0, -1.0 / 8.0])
+    x, wide = 1.0 / a, a < 4
+    rest, logarithm = float(log_rest(x)), float(np.log1p(x))
     if shape.metric == 1:
-        if a > 4:
-            moment = a * (0.5 - x * x / 4 + shape.b**2 * rest / 2)
-            drop = -a / 4 - 3 / 16 + (a * shape.b) ** 2 * rest / 4
+        if wide:
+            up = a * (b * b / 2 * logarithm - (2 * a + 1) / 4)
+            down = a * ((2 * a + 1) / 4 - a * a / 2 * logarithm)
+            drop = -((2 * a + 1) ** 2) / 16 + a / 2 * up
         else:
-            moment = a * (shape.b**2 / 2 * np.log1p(x) - (2 * a + 1) / 4)
-            drop = -((2 * a + 1) ** 2) / 16 + a / 2 * moment
-        return np.array([1.0, moment / shape.volume, drop / shape.volume])
-    spin = 1.0 - a * a * rest if a > 4 else a + 0.5 - a * a * np.log1p(x)
-    return np.array([shape.volume, a / 2 * spin, 0.0])
+            up = a * (0.5 - x * x / 4 + b * b * rest / 2)
+            down = a * logarithm * shape.volume - up
+            drop = -a / 4 - 3 / 16 + (a * b) ** 2 * rest / 4
+        return np.array([1.0, up / shape.volume, down / shape.volume, drop / shape.volume])
+    up = a / 2 * (a + 0.5 - a * a * logarithm if wide else 1.0 - a * a * rest)
+    total = a * (2 * a + 1) / (2 * b * b) * shape.volume
+    down = a**3 / 2 * (logarithm - (2 * a + 1) / (2 * b * b)) if wide else total - up
+    return np.array([shape.volume, up, down, 0.0])

@@ -1,7 +1,8 @@
-"""The slowest mode where walls hold the fluid but weakly: lambda << 1, where phases would lose digits.
+"""Modes written with the Bessel functions themselves, where phases would lose digits.
 
-Written with the Bessel functions themselves, ``phi = r^-nu (Y_nu(lambda r) J_a - J_nu(lambda r) Y_a) / |H_a|`` with
-``_a`` the lower wall's condition, the same function as in ``modes``.
+Two places: the slowest mode of fluid that is held but weakly (lambda << 1), and a thin inner cylinder.
+``phi = r^-nu sqrt(pi lambda / 2) (Y_nu(lambda r) J_a - J_nu(lambda r) Y_a) / |H_a|`` with ``_a`` the lower wall's
+condition is the same function as in ``modes``.
 """
 
 from __future__ import annotations
@@ -26,46 +27,30 @@ def weak_root(shape: GapShape, below: float) -> tuple[float, float]:
     return root, float(1e-15 / abs(slope))
 
 
-def weak_ends(shape: GapShape, root: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Values, slopes and (rotating) C_0 at both ends, each (2,)."""
-    factor, j_part, y_part = _amounts(shape, root)
-    ends = np.array([shape.a, shape.b])
-    slope = -factor * root * ends**-shape.order * _mix(shape.order + 1, root * ends, j_part, y_part)
-    value = factor * ends**-shape.order * _mix(shape.order, root * ends, j_part, y_part)
-    for end, (slip, side) in enumerate(((shape.lower, 1.0), (shape.upper, -1.0))):
-        if slip == FREE:
-            slope[end] = 0.0
-        elif slip < 1.0:
-            value[end] = side * slip * slope[end]
-        else:
-            slope[end] = side * value[end] / slip
-    spin = factor * _mix(0, root * ends, j_part, y_part) if shape.metric == 3 else np.zeros(2)
-    return value, slope, spin
-
-
-def weak_velocity(shape: GapShape, root: float, y: np.ndarray) -> np.ndarray:
-    """The mode at ``y`` (k,)."""
-    factor, j_part, y_part = _amounts(shape, root)
-    r = shape.a + y
-    return factor * r**-shape.order * _mix(shape.order, root * r, j_part, y_part)
-
-
-def _mix(order: float, z: np.ndarray, j_part: float, y_part: float) -> np.ndarray:
-    return yv(order, z) * j_part - jv(order, z) * y_part
-
-
-def _amounts(shape: GapShape, root: float) -> tuple[float, float, float]:
+def bessel_mode(shape: GapShape, root: np.ndarray, y: np.ndarray) -> np.ndarray:
+    """Modes of ``root`` (M, 1) at ``y`` (k,): (M, k)."""
     j_part, y_part = _condition(shape, root, shape.a, shape.lower, 1.0)
-    size = np.hypot(j_part, y_part)
-    return float(np.sqrt(np.pi * root / 2)), j_part / size, y_part / size
+    r = shape.a + y
+    z = root * r
+    mix = (yv(shape.order, z) * j_part - jv(shape.order, z) * y_part) / np.hypot(j_part, y_part)
+    return np.sqrt(np.pi * root / 2) * r**-shape.order * mix
 
 
-def _condition(shape: GapShape, x: float, r: float, slip: float, side: float) -> tuple[float, float]:
+def bessel_mean(shape: GapShape, root: float) -> float:
+    """Integral of r phi over the gap, by Gauss-Legendre in log r: in closed form the ends all but cancel."""
+    x, weight = np.polynomial.legendre.leggauss(120)
+    span = np.log1p(1.0 / shape.a)
+    y = shape.a * np.expm1(0.5 * (x + 1.0) * span)
+    phi = bessel_mode(shape, np.array([[root]]), y)[0]
+    return float(phi * (shape.a + y) ** 2 @ weight * 0.5 * span)
+
+
+def _condition(shape: GapShape, x, r: float, slip: float, side: float):  # type: ignore[no-untyped-def]
     """J and Y in a wall's condition, C_nu + side slip lambda C_(nu+1)."""
-    return tuple(float(sum(parts)) for parts in _terms(shape, x, r, slip, side))  # type: ignore[return-value]
+    return tuple(sum(parts) for parts in _terms(shape, x, r, slip, side))
 
 
-def _terms(shape: GapShape, x: float, r: float, slip: float, side: float) -> list[tuple[float, ...]]:
+def _terms(shape: GapShape, x, r: float, slip: float, side: float):  # type: ignore[no-untyped-def]
     nu = shape.order
     if slip == FREE:
         return [(f(nu + 1, x * r),) for f in (jv, yv)]
