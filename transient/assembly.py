@@ -15,6 +15,7 @@ from transient.march.rows import stored
 from transient.result.result import Result
 from transient.result.run import Run
 from transient.trust.balance import BALANCES
+from transient.trust.body_balance import accounts, body_checks
 from transient.trust.check import Check, verdict
 from transient.trust.demand import Demand, unmet
 from transient.trust.hand_formula import compare
@@ -59,6 +60,7 @@ def _summary(case: Case, problem: Problem, solved: Solved, seconds: float) -> di
         "quasi_steady": compare(
             problem, run.history, peaks, parts["bodies"], parts["pressure"]["peak_drop_per_length"]
         ),
+        "energy": accounts(problem, run),
         "checks": [check.as_dict() for check in checks],
         "accuracy": {
             "asked": problem.accuracy,
@@ -80,7 +82,9 @@ def _summary(case: Case, problem: Problem, solved: Solved, seconds: float) -> di
 
 def _self_checks(problem: Problem, solved: Solved) -> list[Check]:
     errors = solved.run.errors
-    checks = [_difference(problem, solved), *(check(problem, solved.run.history) for check in BALANCES)]
+    run = solved.run
+    checks = [_difference(problem, solved), *(check(problem, run.history) for check in BALANCES)]
+    checks += body_checks(problem, run)
     grazing = [d for d in solved.wanted if d.grazes and d.ratio > 1.0]
     if grazing:
         checks.append(_grazing(grazing[0]))

@@ -69,6 +69,14 @@ class Closure:
     resolution: float
 
 
+def young_rows(problem: Problem, history: History) -> np.ndarray:
+    """Rows (n,) so soon after an infinite stress that the nodes cannot follow its layer."""
+    position = history.position[distinct(history.position)]
+    wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy)
+    infinite = after_infinite(history.piece, history.offset, history.stress)
+    return (infinite & (history.offset[:, None] < wait)).any(axis=1) & (history.offset > 0.0)
+
+
 def judged(problem: Problem, history: History) -> History:
     """The rows and profiles that balances are drawn up from.
 
@@ -77,9 +85,7 @@ def judged(problem: Problem, history: History) -> History:
     """
     nodes = distinct(history.position)
     position = history.position[nodes]
-    wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy)
-    infinite = after_infinite(history.piece, history.offset, history.stress)
-    young = (infinite & (history.offset[:, None] < wait)).any(axis=1) & (history.offset > 0.0)
+    young = young_rows(problem, history)
     row, at = np.unique(history.profile_row, return_index=True)
     at = at[~young[row]]
     number = np.cumsum(~young) - 1
@@ -90,7 +96,6 @@ def judged(problem: Problem, history: History) -> History:
     unknown = np.isnan(rows["stress"][profile_row])
     profiles["profile"] = wall_values_before(position, profiles["profile"], unknown)
     return History(**rows, **profiles, position=position, profile_row=profile_row)
-
 
 
 
@@ -119,7 +124,7 @@ def momentum_balance(problem: Problem, history: History) -> Closure:
     return Closure(float(np.abs(residual).max()) / gross, floor / gross)
 
 
-def _power(problem: Problem, history: History) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def power(problem: Problem, history: History) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Increments between rows of the work of walls and pressure, of the loss by slip, and of gross work."""
     reach, section = lever(problem), section_measure(problem)
     piece, offset = history.piece, history.offset
@@ -156,7 +161,7 @@ def energy_balance(problem: Problem, history: History) -> Closure:
     infinite = np.isnan(history.stress[row]).any(axis=1)
     heat = np.where(infinite, np.nan, problem.viscosity * quadratic(shapes.stiffness, w, w))
     heat_rate = 2.0 * problem.viscosity * quadratic(shapes.stiffness, w, history.profile_rate)
-    work, lost, gross = _power(problem, history)
+    work, lost, gross = power(problem, history)
     net = running(work - lost, row)
     piece, offset = history.piece[row], history.offset[row]
     warmed = np.concatenate([[0.0], np.cumsum(increments(piece, offset, heat, heat_rate))])
