@@ -26,7 +26,7 @@ from transient.trust.nodes import (
     wall_flux,
     wall_values_before,
 )
-from transient.trust.quasi_steady import lever, quasi_steady_stress, section_measure
+from transient.trust.quasi_steady import lever, quasi_steady_stress, section_measure, steady_drop
 
 SOURCE = "the accuracy asked for"
 
@@ -196,7 +196,7 @@ def stress_difference(problem: Problem, history: History) -> Closure:
     nodes = distinct(history.position)
     position = history.position[nodes]
     wait = resolution_time(position, problem.viscosity / problem.density, problem.accuracy)
-    hand = np.abs(quasi_steady_stress(problem, history.speed, history.gradient)).max(axis=0)
+    hand = np.abs(quasi_steady_stress(problem, history.speed, steady_drop(problem, history))).max(axis=0)
     radii = (problem.inner, problem.outer) if problem.rotating else (1.0, 1.0)
     calm = problem.viscosity * float(np.ptp(history.profile)) / problem.gap
     worst, resolution, rows = 0.0, 0.0, 0

@@ -13,6 +13,7 @@ from functools import cache
 import numpy as np
 
 from transient.gap.problem import LOWER, UPPER, Problem
+from transient.result.history import History
 
 # Gauss points across the gap for averages; in the logarithm of the radius these are exact to round-off at ratio 0.01.
 GAUSS = 48
@@ -174,3 +175,11 @@ def quasi_steady_gradient(problem: Problem, speeds: np.ndarray, mean: np.ndarray
     dragged = quasi_steady_mean(problem, speeds, nothing)
     pushed = quasi_steady_mean(problem, np.zeros((1, 2)), np.ones(1))
     return (mean - dragged) / pushed
+
+
+def steady_drop(problem: Problem, history: History) -> np.ndarray:
+    """Pressure drop per length (n,) of the steady flow at each row: the drive's own, or, where the flow is prescribed,
+    what that flow would need if it were steady (finite where the true one is not)."""
+    if problem.flow is None:
+        return history.gradient
+    return quasi_steady_gradient(problem, history.speed, history.mean)

@@ -7,7 +7,13 @@ import numpy as np
 from transient.gap.problem import LOWER, UPPER, Problem
 from transient.result.history import History
 from transient.trust.check import Check, judge
-from transient.trust.quasi_steady import lever, quasi_steady_mean, quasi_steady_stress, section_measure
+from transient.trust.quasi_steady import (
+    lever,
+    quasi_steady_mean,
+    quasi_steady_stress,
+    section_measure,
+    steady_drop,
+)
 
 # Mineral oil, the liquid that warms most: common practice, no source.
 CONDUCTIVITY, SPECIFIC_HEAT = 0.13, 1900.0
@@ -40,12 +46,13 @@ def temperature_rise(problem: Problem, history: History) -> tuple[float, float]:
     actual = np.where(np.isfinite(actual), actual, 0.0)
     elapsed = np.diff(history.time)
     spent = float(np.sum(0.5 * elapsed * (np.abs(actual[1:]) + np.abs(actual[:-1]))))
+    drop = steady_drop(problem, history)
     hand = power_density(
         problem,
-        quasi_steady_stress(problem, history.speed, history.gradient),
+        quasi_steady_stress(problem, history.speed, drop),
         history.speed,
-        history.gradient,
-        quasi_steady_mean(problem, history.speed, history.gradient),
+        drop,
+        quasi_steady_mean(problem, history.speed, drop),
     )
     total = float(history.time[-1] - history.time[0])
     # The hand formula's power peaks are finite after a sudden start; the mean of the true one covers fast oscillations.

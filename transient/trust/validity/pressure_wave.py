@@ -16,7 +16,8 @@ SOURCE = "sound at 1000 m/s in liquids (1000 to 1500) and 340 m/s in gases; a te
 
 
 def rise_time(problem: Problem, until: float) -> float | None:
-    """Swing of the pressure drop over its steepest rate, s; 0 with a jump, None where it is constant."""
+    """Swing of the pressure drop (of a prescribed flow) over its steepest rate, s; 0 with a jump, None where it is
+    constant."""
     row = problem.inputs(until).row(PRESSURE)
     if np.any(row.jumps() != 0.0):
         return 0.0
@@ -27,11 +28,23 @@ def rise_time(problem: Problem, until: float) -> float | None:
     return float(np.ptp(row.at(piece, offset))) / steepest if steepest > 0.0 else None
 
 
+def moving_time(history: History) -> float | None:
+    """Swing of a wall's speed over its largest rate, s, of the faster wall; None where none changes."""
+    swing = np.ptp(history.speed, axis=0)
+    # where the stress is infinite so is the rate, for no time at all
+    fastest = np.where(np.isnan(history.stress), 0.0, np.abs(history.acceleration)).max(axis=0)
+    times = [float(s / f) for s, f in zip(swing, fastest, strict=True) if f > 0.0 and s > 0.0]
+    return min(times, default=None)
+
+
 def pressure_wave(problem: Problem, history: History) -> Check | None:
     """Time of a pressure wave along the length over the slower of the drive's change and the gap's response."""
     if problem.length is None or problem.rotating:
         return None
     rise = rise_time(problem, float(history.time[-1]))
+    if problem.flow is not None:
+        # the pressure answers to the walls as well
+        rise = min((time for time in (rise, moving_time(history)) if time is not None), default=None)
     if rise is None:
         return None
     sound = GAS if problem.density < GAS_BELOW else LIQUID
