@@ -36,10 +36,13 @@ def _long_enough(problem: Problem, until: float) -> float:
     """``until``, or later where bodies take longer to come up to speed and the case names no duration."""
     if problem.duration is not None or all(wall.body is None for wall in problem.walls):
         return until
-    inputs = problem.inputs(until)
-    last = np.array([len(inputs.starts) - 1]), np.array([until - float(inputs.starts[-1])])
-    motion = _hand_motion(problem, inputs, *last)
-    tardy = 0.0 if motion is None or motion.time_constant is None else motion.time_constant
+    film = film_of(problem)
+    tardy = 0.0
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None:
+            holds = wall.body.damping - film.resistance[end, end]
+            inertia = wall.body.mass + film.inertia[end, end]
+            tardy = max(tardy, inertia / holds if holds > 0.0 else 0.0)
     return until + TIME_CONSTANTS * tardy
 
 
