@@ -117,9 +117,19 @@ def verdicts(case: dict[str, Any], summary: dict[str, Any]) -> list[Verdict]:
     flow = summary["flow"]
     peak = judge.peak(2)[0]
     floor = SURE * abs(peak)
+    peak = tied(judge, 2, peak, flow["peak_mean_velocity"], flow["peak_mean_velocity_error"])
     out.append(Verdict("peak mean", flow["peak_mean_velocity"], flow["peak_mean_velocity_error"], peak, floor))
     out.append(Verdict("final mean", flow["final_mean_velocity"], flow["final_mean_velocity_error"], final[2], floor))
     return out + _settling(judge, summary["settling"])
+
+
+def tied(judge: Judge, channel: int, peak: float, said: float | None, error: float | None) -> float:
+    """The exact peak, or where the opposite sign was said the exact extreme of that sign, if it is as large within
+    the stated error: an oscillation has two."""
+    if said is None or error is None or said * peak >= 0.0:
+        return peak
+    other = float((np.sign(said) * judge.state(judge.samples())[channel]).max())
+    return np.sign(said) * abs(peak) if other >= abs(peak) - max(error, 1e-3 * abs(peak)) else peak
 
 
 def _wall(judge: Judge, end: int, said: dict[str, Any], final: float, accuracy: float) -> list[Verdict]:
@@ -128,14 +138,15 @@ def _wall(judge: Judge, end: int, said: dict[str, Any], final: float, accuracy: 
     if k > 0.0 or said["unbounded"]:
         out.append(Verdict("unbounded K", said["unbounded_coefficient"], 1e-9 * k, k if k > 0 else None, 0.0))
         out.append(Verdict("unbounded time", said["peak_time"], 1e-9 * at, at, 0.0))
-        scale = abs(final)
+        scale = max(abs(final), k / np.sqrt(judge.gap.time))
     else:
         peak, when = judge.peak(end)
         scale = abs(peak)
         error = said["peak_stress_error"]
+        peak = tied(judge, end, peak, said["peak_stress"], error)
         out.append(Verdict("peak stress", said["peak_stress"], error, peak, SURE * scale, accuracy * scale))
         if peak != 0.0 and said["peak_stress"] is not None:
-            first = judge.first_at(end, abs(peak) - error, float(np.sign(peak)))
+            first = judge.first_at(end, abs(peak) - error)
             first = min(first, when)
             out.append(Verdict("peak time", said["peak_time"], said["peak_time_error"], first, 1e-6 * judge.until))
     out.append(Verdict("final stress", said["final_stress"], said["final_stress_error"], final, SURE * scale))

@@ -190,9 +190,9 @@ class Judge:
                     break
         return best
 
-    def first_at(self, channel: int, level: float, sign: float) -> float:
-        """First time at which sign * channel reaches ``level``; that of the peak where only the peak does."""
-        found = self._first(self.samples(), lambda x: sign * self.state(x)[channel] - level)
+    def first_at(self, channel: int, level: float) -> float:
+        """First time at which the magnitude reaches ``level``; that of the peak where only the peak does."""
+        found = self._first(self.samples(), lambda x: np.abs(self.state(x)[channel]) - level)
         return self.peak(channel)[1] if np.isnan(found) else found
 
     def _first(self, t: np.ndarray, above: Function) -> float:
