@@ -112,7 +112,7 @@ def _extrema(measures: Measures) -> str:
     count = sum(kind in ("maximum", "minimum", "infinite") for *_, kind in measures.extrema)
     turns = "1 turn" if count == 1 else f"{count} turns"
     low, high = _amount(measures, min(values, default=0.0)), _amount(measures, max(values, default=0.0))
-    finite = "finite turns and ends" if measures.load.peak is None else "all"
+    finite = "what is finite lies" if measures.load.peak is None else "all"
     return f"{turns} of the load between start and end; {finite} between {low} and {high}"
 
 

@@ -66,6 +66,7 @@ def loads(
             measures = measure(load_of(finished, wall), wanted)
         except ResultError as error:
             raise ResultError(f"{result}: {error}") from None
+        _named(csv, plain)
         _no_two_alike([result, *([csv, *companions(measures, csv)] if csv else []), *([plain] if plain else [])])
         program = finished.attributes.get("program", "transient")
         written = write_files(measures, f"{result.name} ({program})", csv, plain)
@@ -136,6 +137,12 @@ def _is_number(text: str) -> bool:
     except ValueError:
         return False
     return True
+
+
+def _named(*paths: Path | None) -> None:
+    for path in paths:
+        if path is not None and (not path.name or path.is_dir()):
+            raise Stop(f"{path} is a folder; the name of a file is needed, such as {path / 'load.csv'}")
 
 
 def _no_two_alike(paths: list[Path]) -> None:

@@ -20,14 +20,15 @@ def reversals(values: np.ndarray, least: float | None = None) -> np.ndarray:
         least = ROUND_OFF * float(np.abs(values[np.isfinite(values)]).max(initial=0.0))
     rows = _turns(values)
     kept = [int(rows[0])]
-    way = 0.0  # direction in which the history has left the last kept turn but one; 0 before it has left the first
+    way = 0  # direction in which the history came to the last kept turn; 0 at the first
     for row in rows[1:].tolist():
-        change = values[row] - values[kept[-1]]
-        if way * change > 0.0:
+        change = float(values[row] - values[kept[-1]])
+        direction = (change > 0.0) - (change < 0.0)
+        if direction and way == direction:
             kept[-1] = row
         elif abs(change) > least:
             kept.append(row)
-            way = change
+            way = direction
     last = len(values) - 1
     if kept[-1] != last and (len(kept) == 1 or values[kept[-1]] != values[last]):
         kept.append(last)

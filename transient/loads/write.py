@@ -8,7 +8,6 @@ from pathlib import Path
 import numpy as np
 
 from transient.loads.measures import Measures
-from transient.result.result import ResultError
 from transient.result.whole import whole
 
 REVIEW = (
@@ -47,8 +46,6 @@ def companions(measures: Measures, csv: Path) -> dict[Path, str]:
 
 
 def _write(path: Path, lines: Iterable[str]) -> None:
-    if path.is_dir():
-        raise ResultError(f"{path} is a folder; a file name is needed")
     with whole(path) as draft, open(draft, "w", encoding="utf-8", newline="") as file:
         file.write("\n".join(lines) + "\n")
 
@@ -130,7 +127,7 @@ def _comments(measures: Measures, source: str) -> list[str]:
         f"from {source}",
         f"{_what(measures)}, by the fluid, positive along +x (the direction of positive rotation)",
         f"every {table.step!r} s; the first row lies {table.shift!r} s after the start of the run, so that the time "
-        "of the largest load is a row",
+        f"{load.peak_time!r} s of the {'infinite' if load.peak is None else 'largest'} load is a row",
     ]
     if load.peak is None:
         for instant in load.history.infinite:
