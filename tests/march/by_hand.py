@@ -22,9 +22,10 @@ def even_steps(starts: np.ndarray, until: float, each: int) -> Plan:
 
 def resolution(problem: Problem, until: float, cells: int, layers: tuple[float, float], accuracy=1e-3) -> Resolution:
     """Steps for ``accuracy``, but the grid as given."""
-    found = features(problem, problem.inputs(until), until)
+    inputs = problem.inputs(until)
+    found = features(problem, inputs, until)
     slowest = 0.1 * problem.diffusion_time
-    return replace(resolve(problem, found, accuracy, slowest, 1e-4), cells=cells, layers=layers)
+    return replace(resolve(problem, inputs, found, accuracy, slowest, 1e-4), cells=cells, layers=layers)
 
 
 def traced(problem: Problem, until: float, cells=24, layers=(0.3, 0.3), plan: Plan = NO_PLAN, **more) -> Trace:

@@ -110,8 +110,9 @@ def test_features_of_a_kink_and_a_jump():
 
 def test_finer_requests_give_finer_grids_and_first_steps():
     case = problem(upper=ramp.build(1.0, 0.1))
-    found = features(case, case.inputs(1.0), 1.0)
-    coarse, fine = (resolve(case, found, accuracy, 0.1, 1e-4) for accuracy in (1e-2, 1e-4))
+    inputs = case.inputs(1.0)
+    found = features(case, inputs, 1.0)
+    coarse, fine = (resolve(case, inputs, found, accuracy, 0.1, 1e-4) for accuracy in (1e-2, 1e-4))
     assert fine.cells > coarse.cells
     assert fine.tolerance < coarse.tolerance
     assert (fine.first_step < coarse.first_step).all()

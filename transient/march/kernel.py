@@ -66,7 +66,8 @@ def _march_of(closed: bool):
         link, flow, curve_speed, curve_value, event_step,  # [2, L, LINKS], (L,), (V,), (V,), (L,): see ``closure``
         piece_start, piece_first, piece_stop, until,  # times of all pieces (P,), each lane's range (L,), end (L,)
         poly, coeff, rate, jump,  # (P, 3, 4), (P, 3, K), (P, 3, K), jumps of the inputs at each piece's start (P, 3)
-        first_step, longest_step, calm_after,  # (P,) s: of each piece, and the offset from which steps may be longer
+        first_step,  # (P,) s: of each piece
+        longest_step, calm_after, swift_step, swift_until,  # (P,) s: bounds of the steps, and until which offset
         tolerance, velocity_scale, stress_scale,  # (L,); (L,); [2, L] as end flux
         plan, plan_lands,  # ends of prescribed steps as offsets (S,), whether each ends its piece; empty: adaptive
         record_every, profile_every,
@@ -142,6 +143,8 @@ def _march_of(closed: bool):
                     wanted = state[1, l]
                     if since + offset < calm_after[piece]:
                         wanted = min(wanted, longest_step[piece])
+                    if since + offset < swift_until[piece]:
+                        wanted = min(wanted, swift_step[piece])
                     if wanted >= left:
                         wanted = left
                     elif 2.0 * wanted > left:

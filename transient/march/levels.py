@@ -161,7 +161,7 @@ def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: flo
     resolutions = []
     for run, own in zip(runs, found, strict=True):
         run.found = replace(own, stress=own.stress if run is runs[0] else stress, speed=speed)
-        resolutions.append(resolve(problem, run.found, accuracy, ahead.slowest, least, refine))
+        resolutions.append(resolve(problem, run.inputs, run.found, accuracy, ahead.slowest, least, refine))
     for run, resolution in zip(runs, on_one_grid(resolutions), strict=True):
         run.resolution = resolution
 

@@ -165,6 +165,7 @@ class _Run:
             inputs.starts, np.zeros(1, np.int64), np.full(1, pieces, np.int64), np.array([until]),
             inputs.poly, inputs.coeff, inputs.rate, self.jump,
             resolution.first_step, resolution.longest_step, resolution.calm_after,
+            resolution.swift_step, resolution.swift_until,
             np.array([resolution.tolerance]), np.array([speed]), flux_scale[:, None].copy(),
             plan.offset, plan.lands, plan.record_every,
         )  # fmt: skip

@@ -52,7 +52,8 @@ class Resolution:
     """Numbers for one base level.
 
     ``cells``, the walls' ``layers`` (share of the gap), step ``tolerance``; of each piece (P,) in s: its first step,
-    its longest step while the flow settles, and the offset from which longer ones may follow.
+    its longest step while the flow settles, and the offset from which longer ones may follow; the step with which its
+    own curved course can be read between rows, and the offset until which that course lasts.
     """
 
     cells: int
@@ -61,6 +62,8 @@ class Resolution:
     first_step: np.ndarray
     longest_step: np.ndarray
     calm_after: np.ndarray
+    swift_step: np.ndarray
+    swift_until: np.ndarray
     growth: float
     event_step: float = np.inf
 
@@ -81,6 +84,7 @@ def tightened(resolution: Resolution, times: int) -> Resolution:
         tolerance=resolution.tolerance / by**3,
         first_step=resolution.first_step / by,
         longest_step=resolution.longest_step / by,
+        swift_step=resolution.swift_step / by,
         event_step=resolution.event_step / by,
     )
 
@@ -188,7 +192,13 @@ def _surface_speed(problem: Problem, end: int, sample: np.ndarray, lever: float,
 
 
 def resolve(
-    problem: Problem, found: Features, accuracy: float, slowest: float, least: float, refine: float = 1.0
+    problem: Problem,
+    inputs: Inputs,
+    found: Features,
+    accuracy: float,
+    slowest: float,
+    least: float,
+    refine: float = 1.0,
 ) -> Resolution:
     """The base level for ``accuracy``; ``refine`` > 1 divides the expected error by its square.
 
@@ -205,7 +215,32 @@ def resolve(
     calm = np.zeros(len(first))
     longest[-1] = growth * slowest
     calm[-1] = np.log(1.0 / least) * slowest
-    return Resolution(cells, layers, tolerance, first, longest, calm, growth, _event_step(problem, found, share))
+    swift, lasts = _courses(inputs, found, accuracy, refine)
+    first = np.minimum(first, swift)
+    event = _event_step(problem, found, share)
+    return Resolution(cells, layers, tolerance, first, longest, calm, swift, lasts, growth, event)
+
+
+def _courses(inputs: Inputs, found: Features, accuracy: float, refine: float) -> tuple[np.ndarray, np.ndarray]:
+    """(longest step, until which offset) of each piece (P,) that follow the drive's own course.
+
+    A film thin enough follows its drive at once: no local error then bounds the step, yet a cubic between rows must
+    still follow it.  Its error is ``(step rate)^4 / 384`` of an exponential term; a bent polynomial gets eight rows.
+    """
+    share = (40.0 * min(accuracy, 0.02)) ** 0.25 / refine**0.5
+    alive = np.abs(inputs.coeff) > 0.0
+    rate = np.where(alive, inputs.rate, 0.0)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        step = share / np.abs(rate).max(axis=(1, 2), initial=0.0)
+        decay = np.where(alive & (rate.real < 0.0), np.log(100.0 / accuracy) / -rate.real, np.inf)
+    until = np.where(alive, decay, 0.0).max(axis=(1, 2), initial=0.0)
+    length = found.length[:, None]
+    bent = (np.abs(inputs.poly[:, :, 2]) * length**2 + np.abs(inputs.poly[:, :, 3]) * length**3) / 8.0
+    size = np.abs(inputs.poly[:, :, 0]).max(axis=0, initial=0.0)
+    size = size + np.abs(inputs.coeff).sum(axis=2).max(axis=0, initial=0.0)
+    curved = (bent > accuracy * np.where(size > 0.0, size, np.inf)).any(axis=1)
+    step = np.where(curved, np.minimum(step, found.length / (8.0 * refine**0.5)), step)
+    return step, np.where(curved, np.inf, until)
 
 
 def _layer(problem: Problem, found: Features, end: int, growth: float, share: float) -> float:

@@ -61,11 +61,10 @@ def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.
     number = np.arange(len(inner)) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
     share = number / parts[inner]
     piece = history.piece[low][inner]
-    step = history.offset[high] - history.offset[low]
-    offset = history.offset[low][inner] + share * step[inner]
+    offset = history.offset[low][inner] + _pairs(history, low, high).passed(2 * inner, share)
 
     def fill(value: np.ndarray, rate: np.ndarray) -> np.ndarray:
-        joined = Curve(np.zeros(2 * len(low)), _weave(value, low, high), _weave(rate, low, high), _gaps(step))
+        joined = _pairs(history, low, high, value, rate)
         return np.concatenate([value[pairs], joined.at(2 * inner, share)])
 
     stress = np.stack([fill(history.stress[:, end], history.stress_rate[:, end]) for end in (0, 1)], axis=1)
@@ -100,13 +99,23 @@ def _accelerations(history: History, end: int) -> tuple[np.ndarray, np.ndarray]:
     return value, stress_rates(history.piece, history.offset, value[:, None])[:, 0]
 
 
-def _weave(value: np.ndarray, low: np.ndarray, high: np.ndarray) -> np.ndarray:
-    """Both ends of each interval one after the other."""
-    return np.stack([value[low], value[high]], axis=1).ravel()
+def _pairs(
+    history: History, low: np.ndarray, high: np.ndarray, value: np.ndarray | None = None, rate: np.ndarray | None = None
+) -> Curve:
+    """A curve whose even intervals are those from rows ``low`` to rows ``high``, one after the other."""
 
+    def weave(of: np.ndarray) -> np.ndarray:
+        return np.stack([of[low], of[high]], axis=1).ravel()
 
-def _gaps(step: np.ndarray) -> np.ndarray:
-    return np.stack([step, np.zeros_like(step)], axis=1).ravel()[:-1]
+    step = history.offset[high] - history.offset[low]
+    nothing = np.zeros(len(history.time))
+    return Curve(
+        np.zeros(2 * len(low)),
+        weave(nothing if value is None else value),
+        weave(nothing if rate is None else rate),
+        np.stack([step, np.zeros_like(step)], axis=1).ravel()[:-1],
+        np.stack([history.offset[low], history.offset[high]], axis=1).ravel()[:-1],
+    )
 
 
 def _trusted(history: History, accuracy: float, error: np.ndarray) -> np.ndarray:
@@ -152,12 +161,17 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
             scale = np.where(np.isfinite(scale), scale, np.inf)
             floor = np.nanmedian(np.abs(value)) * 1e-2
             scale = np.maximum(scale, floor)
-        rise = value[high] - value[low]
-        first, last = rate[low] * step, rate[high] * step
-        start = 2.0 * (3.0 * rise - 2.0 * first - last)
-        end = start + 6.0 * (first + last - 2.0 * rise)
+        curve = _pairs(history, low, high, value, rate)
+        even = 2 * np.arange(len(low))
+        off = np.zeros(len(low))
+        for part in (0.25, 0.5, 0.75):
+            share = np.full(len(low), part)
+            with np.errstate(all="ignore"):
+                along = curve.passed(even, share) / np.where(step > 0, step, 1.0)
+                line = value[low] + along * (value[high] - value[low])
+                off = np.fmax(off, np.abs(curve.at(even, share) - line))
         with np.errstate(all="ignore"):
-            bend = np.maximum(np.abs(start), np.abs(end)) / 8.0 / (STRAIGHT * accuracy * scale)
+            bend = 1.1 * off / (STRAIGHT * accuracy * scale)
         need = np.maximum(need, np.where(np.isfinite(bend), bend, 0.0))
     for index in given:
         row = inputs.row(index)

@@ -12,20 +12,57 @@ import numpy as np
 class Curve:
     """n rows: ``time`` (n,) s, ``value``, ``rate`` (n,); ``step`` (n-1,) lengths, 0 across a break.
 
-    Rows that are not finite, and the steps beside them, are left out of every answer.
+    With ``offset`` (n-1,), the times since the last break at which the steps begin, the cubic is one in the root of
+    that time: a flow that answers to a break is smooth in it, and steps may double.  A ``share`` of an interval counts in
+    the same measure.  Rows that are not finite, and the steps beside them, are left out of every answer.
     """
 
     time: np.ndarray
     value: np.ndarray
     rate: np.ndarray
     step: np.ndarray
+    offset: np.ndarray | None = None
+
+    @cached_property
+    def _roots(self) -> tuple[np.ndarray, np.ndarray]:
+        """Roots of the times since the break at both ends of each interval; plain times where no break is known."""
+        if self.offset is None:
+            return np.zeros_like(self.step), self.step
+        return np.sqrt(self.offset), np.sqrt(self.offset + self.step)
+
+    def passed(self, interval: np.ndarray, share: np.ndarray) -> np.ndarray:
+        """Time from the start of the given intervals to ``share`` of them, s."""
+        if self.offset is None:
+            return share * self.step[interval]
+        low, high = (root[interval] for root in self._roots)
+        gone = share * (high - low)
+        return gone * (2.0 * low + gone)
+
+    def share_of(self, interval: np.ndarray, passed: np.ndarray) -> np.ndarray:
+        """The inverse of ``passed``; 1 where an interval has no length."""
+        low, high = (root[interval] for root in self._roots)
+        width = np.where(high > low, high - low, 1.0)
+        if self.offset is None:
+            share = passed / width
+        else:
+            share = passed / (np.sqrt(low * low + passed) + low + (passed == 0.0)) / width
+        return np.where(high > low, share, 1.0)
 
     @cached_property
     def cubic(self) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
         """Coefficients in s = (t - time) / step of each interval, lowest power first, (n-1,) each."""
         low, high = self.value[:-1], self.value[1:]
-        slope_low, slope_high = self.rate[:-1] * self.step, self.rate[1:] * self.step
         rise = high - low
+        if self.offset is None:
+            slope_low, slope_high = self.rate[:-1] * self.step, self.rate[1:] * self.step
+        else:
+            first, last = self._roots
+            slope_high = 2.0 * last * self.rate[1:] * (last - first)
+            # right at a break the rate in time may be infinite: values and the slope at the other end make a parabola
+            with np.errstate(invalid="ignore"):
+                slope_low = np.where(
+                    first > 0.0, 2.0 * first * self.rate[:-1] * (last - first), 2.0 * rise - slope_high
+                )
         return low, slope_low, 3.0 * rise - 2.0 * slope_low - slope_high, slope_low + slope_high - 2.0 * rise
 
     def at(self, interval: np.ndarray, share: np.ndarray) -> np.ndarray:
@@ -33,12 +70,29 @@ class Curve:
         c0, c1, c2, c3 = (c[interval] for c in self.cubic)
         return c0 + share * (c1 + share * (c2 + share * c3))
 
+    def without(self) -> np.ndarray:
+        """How far off (n,) the cubic over two steps is at the row between them; 0 at rows beside a break."""
+        inner = np.flatnonzero((self.step[:-1] > 0.0) & (self.step[1:] > 0.0)) + 1
+        out = np.zeros(len(self.value))
+        if len(inner) == 0:
+            return out
+        low, high = inner - 1, inner + 1
+        long = np.stack([self.step[low] + self.step[inner], np.zeros(len(inner))], axis=1).ravel()[:-1]
+        offset = None
+        if self.offset is not None:
+            offset = np.stack([self.offset[low], np.zeros(len(inner))], axis=1).ravel()[:-1]
+        ends = [np.stack([of[low], of[high]], axis=1).ravel() for of in (self.time, self.value, self.rate)]
+        curve = Curve(*ends, long, offset)
+        even = 2 * np.arange(len(inner))
+        off = np.abs(curve.at(even, curve.share_of(even, self.step[low])) - self.value[inner])
+        out[inner] = np.where(np.isfinite(off), off, 0.0)
+        return out
+
     def sample(self, time: np.ndarray) -> np.ndarray:
         """Values at absolute times (m,), clipped to the rows; a break gives its later side."""
         time = np.clip(time, self.time[0], self.time[-1])
         interval = np.clip(np.searchsorted(self.time, time, side="right") - 1, 0, len(self.step) - 1)
-        step = self.step[interval]
-        share = np.where(step > 0, (time - self.time[interval]) / np.where(step > 0, step, 1.0), 1.0)
+        share = self.share_of(interval, np.maximum(time - self.time[interval], 0.0))
         return self.at(interval, np.clip(share, 0.0, 1.0))
 
     @cached_property
@@ -57,7 +111,7 @@ class Curve:
         interval, share = interval[inside], pair[inside]
         value = c0[interval] + share * (c1[interval] + share * (c2[interval] + share * c3[interval]))
         keep = np.isfinite(value)
-        return (self.time[interval] + share * self.step[interval])[keep], value[keep], interval[keep]
+        return (self.time[interval] + self.passed(interval, share))[keep], value[keep], interval[keep]
 
     def extreme(self, sign: float) -> tuple[float, float]:
         """(value, its earliest time) where sign x value is largest; (nan, nan) without finite rows."""
@@ -98,12 +152,12 @@ class Curve:
         peak = 1.0
         inside = interval == i
         if inside.any():
-            shares = (time[inside] - self.time[i]) / self.step[i]
+            shares = self.share_of(interval[inside], time[inside] - self.time[i])
             above = sign * value[inside] >= level
             if above.any():
                 peak = float(shares[above].min())
         share = _crossing(self._interval(i, sign), level, 0.0, peak)
-        return float(self.time[i] + share * self.step[i])
+        return float(self.time[i] + self.passed(np.array([i]), np.array([share]))[0])
 
     def last_above(self, level: float) -> float:
         """Time after which |value| stays at or below ``level``: 0 if always, nan if not by the end."""
@@ -126,16 +180,22 @@ class Curve:
         if self.step[i] <= 0.0 or not np.isfinite(self.value[i]):
             return float(self.time[i + 1])
         inside = (interval == i) & (sign * value > level)
-        low = float(((time[inside] - self.time[i]) / self.step[i]).max(initial=0.0))
+        low = float(self.share_of(interval[inside], time[inside] - self.time[i]).max(initial=0.0))
         share = _crossing(self._interval(i, -sign), -level, low, 1.0)
-        return float(self.time[i] + share * self.step[i])
+        return float(self.time[i] + self.passed(np.array([i]), np.array([share]))[0])
 
     def integral(self) -> np.ndarray:
-        """Running integral at the rows (n,); steps beside values that are not finite count by their finite end."""
-        value = np.where(np.isfinite(self.value), self.value, 0.0)
-        rate = np.where(np.isfinite(self.rate), self.rate, 0.0)
-        h = self.step
-        part = 0.5 * h * (value[1:] + value[:-1]) + h * h / 12.0 * (rate[:-1] - rate[1:])
+        """Running integral at the rows (n,); a step after an infinite value counts by its finite end."""
+        c0, c1, c2, c3 = self.cubic
+        low, high = self._roots
+        width = high - low
+        plain = c0 + c1 / 2.0 + c2 / 3.0 + c3 / 4.0
+        if self.offset is None:
+            part = plain * width
+        else:
+            part = 2.0 * width * (low * plain + width * (c0 / 2.0 + c1 / 3.0 + c2 / 4.0 + c3 / 5.0))
+        finite = np.isfinite(part)
+        part = np.where(finite, part, np.where(np.isfinite(self.value[1:]), self.value[1:], 0.0) * self.step)
         return np.concatenate([[0.0], np.cumsum(part)])
 
 

@@ -55,7 +55,7 @@ class History:
 
     def stress_curve(self, wall: int) -> Curve:
         """The stress on one wall over time."""
-        return Curve(self.time, self.stress[:, wall], self.stress_rate[:, wall], self.step)
+        return Curve(self.time, self.stress[:, wall], self.stress_rate[:, wall], self.step, self.offset[:-1])
 
     def speed_curve(self, wall: int) -> Curve:
         """The speed of one wall over time."""
@@ -63,11 +63,11 @@ class History:
 
     def gradient_curve(self) -> Curve:
         """The pressure drop per length over time."""
-        return Curve(self.time, self.gradient, self.gradient_rate, self.step)
+        return Curve(self.time, self.gradient, self.gradient_rate, self.step, self.offset[:-1])
 
     def mean_curve(self) -> Curve:
         """The mean velocity over time."""
-        return Curve(self.time, self.mean, self.mean_rate, self.step)
+        return Curve(self.time, self.mean, self.mean_rate, self.step, self.offset[:-1])
 
     def profile_step(self) -> np.ndarray:
         """Lengths of the intervals between kept profiles (k-1,) s."""
@@ -78,7 +78,9 @@ class History:
     def largest_curve(self) -> Curve:
         """The largest |profile| over the gap as a curve over the kept profiles."""
         value, rate = largest(self.position, self.profile, self.profile_rate)
-        return Curve(self.time[self.profile_row], value, rate, self.profile_step())
+        piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
+        begins = np.where(piece[1:] == piece[:-1], offset[:-1], 0.0)
+        return Curve(self.time[self.profile_row], value, rate, self.profile_step(), begins)
 
     def profiles_at(self, time: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Velocity and travel (m, N) at absolute times (m,), by cubics between the kept profiles."""

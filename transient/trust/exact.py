@@ -26,13 +26,12 @@ MOST_AT_ONCE = 4_000_000  # velocities compared in one go
 def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
     """Errors of the ladder's best histories against the series (``kind`` "exact"), series' own bounds included.
 
+    A row's error covers the halves of the steps beside it, where the march only interpolates.
     Raises ``SeriesError`` where the case has no series solution.
     """
     flow = ladder.best.flow
     exact = solve(problem, ahead.until)
-    stress = _stress_error(flow, exact)
-    value, bound = exact.mean(flow.piece, flow.offset)
-    mean = np.abs(flow.mean - value) + bound
+    stress, mean = _errors(flow, exact)
     away = ladder.best.deviation
     if away is None:
         level_stress, level_mean, level_profile = stress, mean, np.zeros(len(flow.profile_row))
@@ -41,13 +40,40 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
         level_profile = _profile_error(away, exact, _steady_end(problem, ladder))
     else:
         apart = deviation(problem, ahead.until)
-        level_stress = _stress_error(away, apart)
-        value, bound = apart.mean(away.piece, away.offset)
-        level_mean = np.abs(away.mean - value) + bound
+        level_stress, level_mean = _errors(away, apart)
         level_profile = _profile_error(away, apart, np.zeros_like)
     peak = np.array([_peak_error(flow.stress_curve(end), flow, exact, end, stress[:, end]) for end in (0, 1)])
     mean_peak = _peak_error(flow.mean_curve(), flow, exact, None, mean)
     return Errors("exact", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak)
+
+
+def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
+    """|march - series| + bound of the stresses (n, 2) and of the mean velocity (n,), at rows and half-way between.
+
+    0 where the march itself says infinite.
+    """
+    inside = np.flatnonzero(history.step > 0.0)
+    curves = [history.stress_curve(0), history.stress_curve(1), history.mean_curve()]
+    half = np.full(len(inside), 0.5)
+    piece = np.concatenate([history.piece, history.piece[inside]])
+    offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
+    value = np.stack([np.concatenate([curve.value, curve.at(inside, half)]) for curve in curves], axis=1)
+    true, bound = exact.stress(piece, offset)
+    mean, mean_bound = exact.mean(piece, offset)
+    true, bound = np.column_stack([true, mean]), np.column_stack([bound, mean_bound])
+    with np.errstate(invalid="ignore"):
+        off = np.abs(value - true) + bound
+    off = np.where(np.isfinite(value), np.where(np.isfinite(off), off, np.inf), 0.0)
+    rows = _beside(off, inside, len(history.time))
+    return np.where(np.isfinite(history.stress), rows[:, :2], 0.0), rows[:, 2]
+
+
+def _beside(off: np.ndarray, inside: np.ndarray, rows: int) -> np.ndarray:
+    """Errors at the rows (n, c), each at least those half-way to its neighbours; ``off`` holds rows, then halves."""
+    out, between = off[:rows].copy(), off[rows:]
+    out[inside] = np.maximum(out[inside], between)
+    out[inside + 1] = np.maximum(out[inside + 1], between)
+    return out
 
 
 def _steady_end(problem: Problem, ladder: Ladder) -> Callable[[np.ndarray], np.ndarray]:
@@ -56,34 +82,31 @@ def _steady_end(problem: Problem, ladder: Ladder) -> Callable[[np.ndarray], np.n
     return lambda r: steady_profile(problem, best.steady_speeds, best.steady_gradient, r)
 
 
-def _stress_error(history: History, exact: Solution) -> np.ndarray:
-    """|march - series| + bound (n, 2); 0 where the march itself says infinite."""
-    value, bound = exact.stress(history.piece, history.offset)
-    stated = np.isfinite(history.stress)
-    with np.errstate(invalid="ignore"):
-        off = np.abs(history.stress - value) + bound
-    return np.where(stated, np.where(np.isfinite(off), off, np.inf), 0.0)
-
-
 def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], np.ndarray]) -> np.ndarray:
-    """|largest of the march - largest of the series| + bound (k,) over the gap at the kept profiles.
+    """|largest of the march - largest of the series| + bound (k,) over the gap at the kept profiles and half-way.
 
     ``away`` holds the deviation whose largest value is judged; the series gives it plus ``end`` (a function of the
     coordinate).  It is looked at between the nodes too, where the march only interpolates.
     """
     rows = away.profile_row
-    dense = np.interp(np.arange(2 * len(away.position) - 1) / 2.0, np.arange(len(away.position)), away.position)
+    nodes = np.arange(2 * len(away.position) - 1) / 2.0
+    dense = np.interp(nodes, np.arange(len(away.position)), away.position)
     shift = end(dense)
-    value = largest(away.position, away.profile, away.profile_rate)[0]
-    out = np.empty(len(rows))
+    curve = away.largest_curve()
+    same = away.piece[rows][1:] == away.piece[rows][:-1]
+    inside = np.flatnonzero((curve.step > 0.0) & same)
+    half = np.full(len(inside), 0.5)
+    piece = np.concatenate([away.piece[rows], away.piece[rows][inside]])
+    offset = np.concatenate([away.offset[rows], away.offset[rows][inside] + curve.passed(inside, half)])
+    value = np.concatenate([curve.value, curve.at(inside, half)])
+    off = np.empty(len(piece))
     chunk = max(1, MOST_AT_ONCE // len(dense))
-    for first in range(0, len(rows), chunk):
+    for first in range(0, len(piece), chunk):
         part = slice(first, first + chunk)
-        at = rows[part]
-        true, bound = exact.velocity(away.piece[at], away.offset[at], dense)
+        true, bound = exact.velocity(piece[part], offset[part], dense)
         true = true - shift
-        out[part] = np.abs(value[part] - largest(dense, true, np.zeros_like(true))[0]) + bound
-    return out
+        off[part] = np.abs(value[part] - largest(dense, true, np.zeros_like(true))[0]) + bound
+    return _beside(off[:, None], inside, len(rows))[:, 0]
 
 
 def _peak_error(curve: Curve, history: History, exact: Solution, end: int | None, rows: np.ndarray) -> float:

@@ -9,12 +9,14 @@ from __future__ import annotations
 import numpy as np
 
 from transient.march.levels import Ladder
+from transient.result.curve import Curve
 from transient.result.run import Errors
 
 # The coarser extrapolation errs more than the finer one by a factor of 16 in smooth flow and of 2 beside kinks: the
 # difference alone covers both, the margin the luck of two errors of one sign.  Measured, see the experiment.
 MARGIN = 1.5
 ROUNDING = 2e-13
+DOUBLED = 8.0
 
 
 def estimate(ladder: Ladder) -> Errors:
@@ -30,6 +32,13 @@ def estimate(ladder: Ladder) -> Errors:
         level_stress = spread(away.stress, other_away.stress)
         level_mean = spread(away.mean, other_away.mean)
         level_profile = spread(away.profile, other_away.profile).max(axis=1)
+    # what no level tells, since all share the rows: how far off the cubic between rows may be
+    stress = stress + _between([flow.stress_curve(end) for end in (0, 1)])
+    mean = mean + _between([flow.mean_curve()])[:, 0]
+    if away is not None:
+        level_stress = level_stress + _between([away.stress_curve(end) for end in (0, 1)])
+        level_mean = level_mean + _between([away.mean_curve()])[:, 0]
+        level_profile = level_profile + _between([away.largest_curve()])[:, 0]
     peak = np.array([_peak(flow.stress_curve(end), other.flow.stress_curve(end), stress[:, end]) for end in (0, 1)])
     mean_peak = _peak(flow.mean_curve(), other.flow.mean_curve(), mean)
     return Errors(
@@ -45,6 +54,16 @@ def _more(ladder: Ladder) -> dict[str, np.ndarray]:
     if best.deviation is not None and other.deviation is not None:
         out["level_speed"] = spread(best.deviation.speed, other.deviation.speed)
     return out
+
+
+def _between(curves: list[Curve]) -> np.ndarray:
+    """Bound (n, columns) of the cubics' error beside each row: a cubic over two steps errs 16 times as much as over
+    one in smooth flow, and 4 times beside a break."""
+    off = np.stack([curve.without() for curve in curves], axis=1) / DOUBLED
+    beside = off.copy()
+    beside[1:] = np.maximum(beside[1:], off[:-1])
+    beside[:-1] = np.maximum(beside[:-1], off[1:])
+    return beside
 
 
 def spread(best: np.ndarray, other: np.ndarray) -> np.ndarray:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -54,8 +55,8 @@ class Judge:
         self.size = size
         self.curve = curve
         # the deviation off by its error, to either side
-        self.higher = Curve(curve.time, curve.value + error, curve.rate, curve.step)
-        self.lower = Curve(curve.time, curve.value - error, curve.rate, curve.step)
+        self.higher = replace(curve, value=curve.value + error)
+        self.lower = replace(curve, value=curve.value - error)
 
     def time(self, level: float) -> float | None:
         """Settling time within ``level``, None if not by the end or if there is nothing to measure against."""
