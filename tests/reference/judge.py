@@ -10,11 +10,19 @@ import numpy as np
 
 from .drives import Signal, signal, slope
 from .gap import gap_of
-from .laplace import Response, chains
+from .laplace import Cycles, Response, chains, long_past
 from .profile import Profile
 
+RECENT = 4  # cycles of a periodic drive that are answered piece by piece
 ZERO = 1e-6  # the contract's "zero": this share of the run's largest value
 Function = Callable[[np.ndarray], np.ndarray]
+
+
+def _within_cycle(t: np.ndarray, every: float) -> np.ndarray:
+    """Times modulo ``every``, in (0, every]: a break counts from the left, as elsewhere."""
+    phase = t - np.floor(t / every) * every
+    near = phase <= 4e-16 * t
+    return np.where(near, every, phase)
 
 
 class Judge:
@@ -64,7 +72,7 @@ class Judge:
         """The regime that the drive ends in (channels, n) at times ``t``."""
         t = np.asarray(t, dtype=float)
         out = np.zeros((channels, len(t)))
-        loops: list[list[tuple]] = [[], [], []]
+        loops: dict[float, tuple[list[list[tuple]], list[Cycles]]] = {}
         for row, s in enumerate(self.signals):
             for atom in s.atoms:
                 if atom.final is not None:
@@ -76,10 +84,15 @@ class Judge:
                         wave = c * np.exp(sigma * (t - last.start))
                         out += (self.response.wave(sigma)[row, :channels, None] * wave).real
                 else:
-                    begin = -np.ceil(self.gap.memory / atom.every + 1) * atom.every
-                    pieces = atom.expand(begin, float(t.max()) + atom.every)
-                    loops[row].append((pieces, float(pieces[0].value(np.array(pieces[0].start)))))
-        return out + self.response.histories(loops, t, channels)
+                    recent, past = loops.setdefault(atom.every, ([[], [], []], []))
+                    begin = -RECENT * atom.every
+                    pieces = atom.expand(begin, atom.every)
+                    # the cycles that came before end at this cycle's last value
+                    recent[row].append((pieces, float(atom.pieces[-1].value(np.array(atom.every)))))
+                    past += long_past(row, list(atom.pieces), atom.every, begin, self.gap.memory)
+        for every, (recent, past) in loops.items():
+            out += self.response.histories(recent, _within_cycle(t, every), channels, past=tuple(past))
+        return out
 
     def deviation(self, t: np.ndarray, channels: int = 3) -> np.ndarray:
         """State minus the regime that it ends in."""

@@ -7,6 +7,8 @@ large terms).  Undamped waves lose their pole to a residue.  Long after a piece 
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 from scipy.sparse import csr_matrix
 
@@ -51,6 +53,39 @@ class Term:
         half = (self.piece.end - self.piece.start) / 2
         rate = self.piece.value(self.piece.start + half * (x + 1), 1) * w * half
         return np.exp(np.outer(s, half * (1 - x))) @ rate / s
+
+
+class Cycles:
+    """``count`` whole cycles of a periodic drive, the last ended at ``onset``: a geometric sum in closed form."""
+
+    role, waves = "cycles", ()
+
+    def __init__(self, row: int, cycle: list[Piece], every: float, count: int, end: float):
+        self.row, self.onset, self.since, self.until = row, end, end, np.inf
+        self.cycle, self.every, self.count = cycle, every, count
+
+    def image(self, s: np.ndarray) -> np.ndarray:
+        """Transform counted from the end of the last cycle."""
+        total = np.zeros_like(s)
+        was = float(self.cycle[-1].value(np.array(self.cycle[-1].end)))
+        for piece in self.cycle:
+            jump = float(piece.value(np.array(piece.start))) - was
+            whole = Term(self.row, piece.end, 0.0, 0.0, piece, "whole", 0.0).image(s)
+            total = total + jump / s * np.exp(s * (self.every - piece.start)) + whole * np.exp(
+                s * (self.every - piece.end)
+            )
+            was = float(piece.value(np.array(piece.end)))
+        return total * np.expm1(s * self.count * self.every) / np.expm1(s * self.every)
+
+
+def long_past(row: int, cycle: list[Piece], every: float, first: float, memory: float) -> list[Cycles]:
+    """All cycles that ended at ``first`` < 0 or before, in groups short against their distance from t = 0."""
+    groups, end = [], first
+    while -end < memory:
+        count = max(1, int(-end / (PAST * every)))
+        groups.append(Cycles(row, cycle, every, count, end))
+        end -= count * every
+    return groups
 
 
 def terms_of(row: int, pieces: list[Piece], before: float, memory: float) -> tuple[list[Term], list[tuple]]:
@@ -105,13 +140,18 @@ class Response:
         return self.gap.time * WINDOW**window
 
     def histories(
-        self, inputs: list[list[tuple[list[Piece], float]]], t: np.ndarray, channels: int, order: int = 0
+        self,
+        inputs: list[list[tuple[list[Piece], float]]],
+        t: np.ndarray,
+        channels: int,
+        order: int = 0,
+        past: tuple[Cycles, ...] = (),
     ) -> np.ndarray:
         """(channels, len(t)): the state at ``t`` (order 1: its time derivative).
 
-        ``inputs[row]`` lists (pieces, value before the first piece); before that all was steady.
+        ``inputs[row]`` lists (pieces, value before the first piece); before that all was steady, but for ``past``.
         """
-        terms: list[Term] = []
+        terms: list[Any] = list(past)
         settled: list[tuple] = []
         out = np.zeros((channels, len(t)))
         for row, chains in enumerate(inputs):

@@ -169,6 +169,19 @@ def test_pulsating_pipe_flow() -> None:
     assert judge.settled(t)[2] == pytest.approx(mean, abs=2e-6 * np.abs(mean).max())
 
 
+def test_many_short_cycles_are_summed() -> None:
+    """The periodic state against the march of every cycle from rest until nothing of the start is left."""
+    case = still("axial", walls={"outer": {"speed": 0.0}})
+    gap = gap_of(case)
+    every = 0.05 * gap.time
+    part = {"kind": "trapezoid", "to": 1.0, "rise": 0.2 * every, "hold": 0.3 * every, "fall": 0.1 * every, "from": 0.3}
+    case["walls"]["outer"]["speed"] = {"kind": "repeat", "every": every, "part": part}
+    judge = Judge(case | {"duration": 170 * every})
+    t = np.linspace(0.011, 1.0, 20) * every
+    late = judge.state(t + 165 * every)
+    assert np.abs(judge.settled(t) - late).max() < 1e-10 * np.abs(late).max()
+
+
 def test_a_planted_error_is_seen() -> None:
     """The agreement above cannot be had with a viscosity one part in a hundred thousand off."""
     case = plain("axial", "ramp", "steady")
