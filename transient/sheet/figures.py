@@ -16,6 +16,7 @@ from transient.result.result import Result, ResultError
 from transient.result.view import nearest
 from transient.result.whole import whole
 from transient.sheet.flow import flow
+from transient.sheet.motion import motion
 from transient.sheet.overview import overview
 from transient.sheet.profiles import profiles
 from transient.sheet.reach import reach
@@ -31,6 +32,7 @@ FIGURES: dict[str, Callable[[Result], Figure]] = {
     "profiles": profiles,
     "flow": flow,
     "reach": reach,
+    "motion": motion,
 }
 DEFAULT = "overview"
 # File endings, with what keeps a picture of the same result the same file.

@@ -107,6 +107,7 @@ def _stirs(result: Result, name: str) -> bool:
 _WORDS = {
     "wall_stress": "wall stress",
     "wall_speed": "wall speed",
+    "wall_position": "wall position",
     "pressure_drop_per_length": "pressure drop",
     "mean_velocity": "mean velocity",
     "flow_rate": "flow rate",
