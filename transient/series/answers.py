@@ -13,8 +13,13 @@ from transient.series.modes import Modes, modes
 from transient.series.steady import steady_flow
 from transient.series.transfer import NODE, sudden_limit, velocity_transfer, wall_transfer
 
-_CIRCLE = 24  # points of the Cauchy integrals; what they integrate is analytic far beyond the circle
+# Points of the Cauchy integrals: the remainder is analytic to four times the circle, which leaves 4^-32.
+_CIRCLE = 32
 _TAYLOR = 8
+# Exponentials slower than this share of the last kept rate use the power series of the remainder: leaves 0.01^8.
+_NEAR = 0.01
+# Exponentials this near the negative axis are held by the contours; nearer than _BESIDE they may meet eigenvalues.
+_ON_AXIS, _BESIDE = 1e-3, 0.1
 
 
 @dataclass(frozen=True, eq=False)
@@ -35,7 +40,6 @@ class Answer:
     weight: np.ndarray
     slow: np.ndarray
     taylor: np.ndarray
-    radius: float
     sudden: np.ndarray
     contours: dict[int, np.ndarray] = field(default_factory=dict)
     tables: dict[tuple[int, int], EarlyTable] = field(default_factory=dict)
@@ -63,8 +67,8 @@ class Answer:
 
         The first is exact also where a rate meets an eigenvalue; the second is used off the negative axis only.
         """
-        near = np.abs(rates) <= self.radius
-        decaying = on_negative_axis(rates) & ~near
+        near = np.abs(rates) <= _NEAR * self.modes.rate[-1]
+        decaying = _beside_axis(rates, _BESIDE) & ~near
         gone = decaying & (np.abs(rates) > 0.5 * self.modes.rate[-1])
         rest = np.zeros((len(rates), 3, self.weight.shape[1]), complex)
         whole = np.zeros_like(rest)
@@ -73,10 +77,11 @@ class Answer:
             rest[near] = np.einsum("rk,kiq->riq", powers, self.taylor)
         for index in np.flatnonzero(decaying & ~gone):
             rest[index] = self._circle_mean(rates[index])
-        fast = ~on_negative_axis(rates) & (np.abs(rates) * self.window > 0.25)
+        fast = ~_beside_axis(rates, _ON_AXIS) & (np.abs(rates) * self.window > 0.25)
         other = ~near & ~decaying
-        if (other | fast).any():
-            whole[other | fast] = self.transfer(rates[other | fast])
+        ask = other | fast
+        if ask.any():
+            whole[ask] = self.transfer(rates[ask])
             rest[other] = whole[other] + self._kept(rates[other])
         return rest, whole
 
@@ -91,9 +96,9 @@ class Answer:
         return (self.transfer(circle) + self._kept(circle)).mean(axis=0)
 
 
-def on_negative_axis(rates: np.ndarray) -> np.ndarray:
-    """Whether rates lie so near the negative real axis that the contour holds them, and eigenvalues may meet them."""
-    return (rates.real < 0) & (np.abs(rates.imag) <= 0.1 * np.abs(rates.real))
+def _beside_axis(rates: np.ndarray, slope: float) -> np.ndarray:
+    """Whether rates lie within a wedge of ``slope`` around the negative real axis."""
+    return (rates.real < 0) & (np.abs(rates.imag) <= slope * np.abs(rates.real))
 
 
 def smallest_age(window: float, level: int | np.ndarray) -> float | np.ndarray:
@@ -138,8 +143,9 @@ def _velocity_answer(shape: GapShape, window: float, y: tuple[float, ...]) -> An
 
 
 def _prepare(shape, kept, window, y, order, weight, start):  # type: ignore[no-untyped-def]
-    radius = float(((kept.root[1] + kept.root[2]) / 2) ** 2)
-    circle = radius * _directions()
+    # Between two eigenvalues half way up: the coefficients keep their digits relative to the modes left out.
+    half = len(kept.root) // 2
+    circle = ((kept.root[half - 1] + kept.root[half]) / 2) ** 2 * _directions()
     whole = wall_transfer(shape, circle) if y is None else velocity_transfer(shape, circle, y)
     rest = whole + _kept_modes(kept, weight, circle)
     powers = circle[None, :] ** -np.arange(_TAYLOR)[:, None]
@@ -152,5 +158,5 @@ def _prepare(shape, kept, window, y, order, weight, start):  # type: ignore[no-u
         weight = -kept.rate[:, None] * weight
     return Answer(
         shape, kept, window, y, order, np.ascontiguousarray(weight), np.ascontiguousarray(taylor[:4]), taylor,
-        radius, sudden_limit(shape, y) if not order else np.zeros((3, weight.shape[1])),
+        sudden_limit(shape, y) if not order else np.zeros((3, weight.shape[1])),
     )

@@ -28,13 +28,18 @@ _CHUNK = 4096
 
 @dataclass(frozen=True, eq=False)
 class Timeline:
-    """Inputs in diffusion times: ``starts`` (P,), ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K)."""
+    """Inputs in diffusion times: ``starts`` (P,), ``poly`` (P, 3, 4), ``coeff``, ``exponent`` (P, 3, K).
+
+    ``quiet`` (P, 3): where an input's value does not jump; a break late in a run moves by the round-off of its time,
+    and a steep ramp with it, which must not pass for a jump.
+    """
 
     starts: np.ndarray
     poly: np.ndarray
     coeff: np.ndarray
     exponent: np.ndarray
     before: np.ndarray
+    quiet: np.ndarray
 
     @property
     def lengths(self) -> np.ndarray:
@@ -63,6 +68,7 @@ def timeline(inputs: Inputs, problem: Problem) -> Timeline:
     return Timeline(
         inputs.starts / time, np.ascontiguousarray(poly), np.ascontiguousarray(coeff),
         np.ascontiguousarray(inputs.rate * time), inputs.before * scale,
+        np.stack([inputs.row(i).jumps(0) == 0.0 for i in range(3)], axis=1),
     )
 
 
@@ -97,6 +103,9 @@ def states(
         line.lengths, line.poly, line.coeff, line.exponent, line.before, kept.rate, kept.share, start,
         np.abs(start) if worst is None else worst, out.left, out.jump, out.ahead, out.reach,
     )
+    begins = line.poly[:, :, 0] + line.coeff.real.sum(axis=2)
+    out.left[line.quiet] = begins[line.quiet]
+    out.jump[line.quiet] = 0.0
     return out
 
 

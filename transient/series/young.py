@@ -85,7 +85,7 @@ def clean(poly, coeff, exponent, left, j, base, offset, i, order, jump):  # type
 @compiled
 def _held(rate):  # type: ignore[no-untyped-def]
     """Whether the contour holds this pole inside, whatever its size."""
-    return rate.real < 0.0 and abs(rate.imag) <= 0.1 * abs(rate.real)
+    return rate.real < 0.0 and abs(rate.imag) <= 1e-3 * abs(rate.real)
 
 
 @compiled
