@@ -20,11 +20,14 @@ if TYPE_CHECKING:
 
 # An infinite film load is shown up to this many times its median: the rest is the spike itself.
 MEDIANS = 6.0
+# Points per interval of rows at which powers are drawn.
+PARTS = 8
 NOTES = {
     "drive": "drive: outside load, weight included",
     "film": "film: fluid on the wall",
     "pressure": "pressure: on the face that displaces fluid",
 }
+PRESCRIBED = {**NOTES, "drive": "drive: what the film asks for, the wall's own inertia left out"}
 
 
 def motion(result: Result) -> Figure:
@@ -34,7 +37,8 @@ def motion(result: Result) -> Figure:
     loads = _loads(result)
     panels = [_speed] + [_position] * ("wall_position" in result.variables)
     panels += [_load_panel, _power_panel, _work_panel] if loads else []
-    said = [NOTES[kind] for kind in dict.fromkeys(kind for kind, _, _ in loads)]
+    notes = NOTES if _bodies(result) else PRESCRIBED
+    said = [notes[kind] for kind in dict.fromkeys(kind for kind, _, _ in loads)]
     heading = ["Motion of the walls" + " and what moves them" * bool(loads), "; ".join(said)]
     heading = [line for line in heading if line]
     figure = page(result.title, 1.75 + 1.4 * len(panels), "\n".join(heading))
@@ -89,20 +93,30 @@ def _load_panel(axes: Axes, result: Result, shared: Span) -> None:
 
 def _power_panel(axes: Axes, result: Result, shared: Span) -> None:
     """Power put in by the drive, and by film and pressure into the body (mostly negative: taken out)."""
-    curves = [
-        (label, column, data * result.wall_speed[:, column]) for label, column, data in _named(result, _loads(result))
-    ]
-    _draw(axes, shared, result.time, curves, "power", "W")
+    curves = [(label, column, _power(result, column, data)) for label, column, data in _named(result, _loads(result))]
+    _draw(axes, shared, _within(result.time), curves, "power", "W")
 
 
 def _work_panel(axes: Axes, result: Result, shared: Span) -> None:
     """Running integrals of the powers; drive and the others differ by what the body, a spring or a damper takes."""
-    curves = []
+    time, curves = _within(result.time), []
     for label, column, data in _named(result, _loads(result)):
-        power = np.nan_to_num(data * result.wall_speed[:, column])
-        work = np.concatenate([[0.0], np.cumsum(0.5 * np.diff(result.time) * (power[1:] + power[:-1]))])
+        finite = np.isfinite(data)
+        power = _power(result, column, np.interp(result.time, result.time[finite], data[finite]))
+        work = np.concatenate([[0.0], np.cumsum(0.5 * np.diff(time) * (power[1:] + power[:-1]))])
         curves.append((label, column, work))
-    _draw(axes, shared, result.time, curves, "work", "J")
+    _draw(axes, shared, time, curves, "work", "J")
+
+
+def _power(result: Result, column: int, load: np.ndarray) -> np.ndarray:
+    """Load times speed where both are straight between the rows and their product is not."""
+    return _within(load) * _within(result.wall_speed[:, column])
+
+
+def _within(values: np.ndarray) -> np.ndarray:
+    """Values (n,) with points added on the straight lines between neighbours."""
+    inner = values[:-1, None] + np.diff(values)[:, None] * np.arange(PARTS) / PARTS
+    return np.append(inner.ravel(), values[-1])
 
 
 def _draw(
