@@ -13,6 +13,7 @@ import signal
 import sys
 import time
 import traceback
+from collections.abc import Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -164,13 +165,26 @@ def _settling(judge: Judge, said: dict[str, Any]) -> list[Verdict]:
     return out
 
 
-def experiment(cases: int, seed: int, workers: int = 1, how: str = "series") -> list[Outcome]:
-    """Judge cases 0 .. cases - 1 of ``seed``; ``how`` as the product's ``judge``."""
-    jobs = [(seed, number, how) for number in range(cases)]
+def experiment(
+    cases: int, seed: int, workers: int = 1, how: str = "series", minutes: float = np.inf, first: int = 0
+) -> list[Outcome]:
+    """Judge ``cases`` cases of ``seed`` from ``first`` on; after ``minutes`` no further outcome is waited for."""
+    jobs = [(seed, number, how) for number in range(first, first + cases)]
     if workers == 1:
-        return [judge_case(job) for job in jobs]
+        return _until(map(judge_case, jobs), minutes)
     with ProcessPoolExecutor(workers) as pool:
-        return list(pool.map(judge_case, jobs, chunksize=4))
+        outcomes = _until(pool.map(judge_case, jobs, chunksize=2), minutes)
+        pool.shutdown(wait=False, cancel_futures=True)
+    return outcomes
+
+
+def _until(outcomes: Iterator[Outcome], minutes: float) -> list[Outcome]:
+    end, out = time.monotonic() + 60.0 * minutes, []
+    for outcome in outcomes:
+        out.append(outcome)
+        if time.monotonic() > end:
+            break
+    return out
 
 
 def table(outcomes: list[Outcome]) -> str:
@@ -204,6 +218,8 @@ def main() -> None:
     parser.add_argument("--cases", type=int, default=2000)
     parser.add_argument("--seed", type=int, default=1)
     parser.add_argument("--workers", type=int, default=2)
+    parser.add_argument("--first", type=int, default=0)
+    parser.add_argument("--minutes", type=float, default=np.inf)
     parser.add_argument("--without-series", action="store_true")
     parser.add_argument("--only", type=int)
     options = parser.parse_args()
@@ -216,7 +232,7 @@ def main() -> None:
         print(outcome.trouble, f"{outcome.seconds:.2f} s, met {outcome.met}")
         return
     began = time.perf_counter()
-    outcomes = experiment(options.cases, options.seed, options.workers, how)
+    outcomes = experiment(options.cases, options.seed, options.workers, how, options.minutes, options.first)
     print(table(outcomes))
     print(f"seed {options.seed}, judged by {how}, {time.perf_counter() - began:.0f} s in all")
 
