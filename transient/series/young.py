@@ -9,6 +9,7 @@ from transient.series.early import HALF, MIDDLE
 from transient.series.evaluation import SHORT
 
 SLOW = 0.4  # exponentials slower than this on an octave's smallest age are developed in powers of time
+ROUNDING = 8.0 * 2.0**-52
 NOISE = 1e-11  # a jump of value, slope ... below this share of the terms it is the difference of is round-off
 
 # Gauss-Legendre on 0 .. 1 for pulses: n points leave about (length / 4 age)^2n, so 3 or 4 do for brief ones.
@@ -60,13 +61,14 @@ def difference(poly, coeff, exponent, left, j, base, offset, cubic, terms, rates
 
 
 @compiled
-def clean(poly, coeff, exponent, left, j, base, offset, i, order, jump):  # type: ignore[no-untyped-def]
-    """The jump of the ``order``-th derivative of input i, exactly 0 where it is the round-off of its terms."""
+def _terms(poly, coeff, exponent, left, j, base, offset, i, order):  # type: ignore[no-untyped-def]
+    """Sum of the magnitudes that the ``order``-th derivative's jump at piece j is the difference of."""
     size = abs(left[i]) if (base < 0 and order == 0) else 0.0
     factor = 1.0
     for d in range(2, order + 1):
         factor *= d
-    size += factor * abs(poly[j, i, order])
+    if order < 4:
+        size += factor * abs(poly[j, i, order])
     for k in range(coeff.shape[2]):
         if coeff[j, i, k] != 0.0:
             size += abs(coeff[j, i, k]) * abs(exponent[j, i, k]) ** order
@@ -79,7 +81,16 @@ def clean(poly, coeff, exponent, left, j, base, offset, i, order, jump):  # type
             if coeff[base, i, k] != 0.0:
                 s = exponent[base, i, k]
                 size += abs(coeff[base, i, k]) * abs(s) ** order * np.exp(s.real * offset)
-    return jump if abs(jump) > NOISE * size else 0.0
+    return size
+
+
+@compiled
+def clean(poly, coeff, exponent, left, j, base, offset, late, i, order, jump):  # type: ignore[no-untyped-def]
+    """The jump of the ``order``-th derivative of input i, exactly 0 where it is the round-off of its terms, or of the
+    time ``late`` at which piece j begins."""
+    noise = NOISE * _terms(poly, coeff, exponent, left, j, base, offset, i, order)
+    noise += ROUNDING * late * _terms(poly, coeff, exponent, left, j, base, offset, i, order + 1)
+    return jump if abs(jump) > noise else 0.0
 
 
 @compiled
@@ -109,13 +120,13 @@ def add_table(amount, series, reach, turn, out, size):  # type: ignore[no-untype
 
 
 @compiled
-def _add_instant(poly, coeff, exponent, left, j, base, offset, cubic, terms, sudden, out):  # type: ignore[no-untyped-def]
+def _add_instant(poly, coeff, exponent, left, j, base, offset, late, cubic, terms, sudden, out):  # type: ignore[no-untyped-def]
     """Add the answer at the very instant of break ``j``: only a jump of value is felt at once."""
     for i in range(3):
         jump = cubic[i, 0]
         for m in range(terms.shape[1]):
             jump += terms[i, m].real
-        jump = clean(poly, coeff, exponent, left, j, base, offset, i, 0, jump)
+        jump = clean(poly, coeff, exponent, left, j, base, offset, late, i, 0, jump)
         for q in range(len(out)):
             if jump != 0.0 and sudden[i, q] != 0.0:
                 out[q] += sudden[i, q] * jump
@@ -179,7 +190,9 @@ def add_young(
                 since = lengths[reference] if j == reference + 1 else starts[j] - starts[reference]
             difference(poly, coeff, exponent, left[anchor], j, reference, since, cubic, terms, rates, owners)
             if level < 0:
-                _add_instant(poly, coeff, exponent, left[anchor], j, reference, since, cubic, terms, sudden, out[e])
+                _add_instant(
+                    poly, coeff, exponent, left[anchor], j, reference, since, starts[j], cubic, terms, sudden, out[e]
+                )
                 reference = j
                 continue
             row = row_of_level[level]
@@ -196,7 +209,7 @@ def add_young(
                     cubic[i, d] = _jump(cubic[i], terms[i], rates[i], scale, d)
                     if cubic[i, d] != 0.0:
                         cubic[i, d] = clean(
-                            poly, coeff, exponent, left[anchor], j, reference, since, i, d, cubic[i, d]
+                            poly, coeff, exponent, left[anchor], j, reference, since, starts[j], i, d, cubic[i, d]
                         )
             chebyshev((age / scale - MIDDLE) / HALF, turn)
             for i in range(3):
