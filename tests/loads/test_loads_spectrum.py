@@ -92,6 +92,15 @@ def test_the_spectrum_has_no_factor_where_the_load_is_infinite(capsys, tmp_path)
     assert said["cycles"] is None
 
 
+@pytest.mark.parametrize("damping", [0.0, 1e-4, 3e-3, 0.1])
+def test_a_step_of_many_swings_is_cut_short_without_loss(damping):
+    """A load that climbs, holds and falls slowly under a lively oscillator, against every swing of it."""
+    time, force = np.array([0.0, 0.3, 40.0, 41.0, 90.0]), np.array([-1.0, 2.0, 3.0, -1.5, -3.2])
+    largest = np.empty(1)
+    largest_deflections(time, force, 1.0, np.array([2.0 * np.pi * 3.1]), damping, largest)
+    assert largest[0] == pytest.approx(_simulated(time, force, 1.0, 2.0 * np.pi * 3.1, damping), rel=1e-5)
+
+
 def test_sign_size_and_time_scale_do_not_matter():
     rng = np.random.default_rng(5)
     time, force = np.sort(rng.uniform(0.0, 1.0, 40)), rng.normal(size=40)

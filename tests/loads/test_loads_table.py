@@ -5,7 +5,9 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from pulses import forced, measured
+from scipy.integrate import quad
 
+from transient.loads.history import Infinite, LoadHistory
 from transient.loads.load import load_of
 from transient.loads.table import table_of
 from transient.result.result import ResultError
@@ -159,3 +161,12 @@ def test_force_torque_or_stress(capsys, tmp_path, variable, unit, quantity):
     said = measured(capsys, tmp_path, forced([0.0, 1.0], [0.0, 2.0], variable=variable, unit=unit))
     assert (said["quantity"], said["unit"], said["peak"], said["peak_time"]) == (quantity, unit, 2.0, 1.0)
     assert said["impulse"] == 1.0
+
+
+def test_the_law_and_what_it_leaves_integrate_together():
+    # Against adaptive quadrature of the values themselves.
+    instant = Infinite(1, 0.5, -3.0, 1.0 / 3.0, 0.7)
+    history = LoadHistory(np.array([0.0, 0.5, 2.5]), np.array([1.0, 1.0, -1.6811]), (instant,))
+    for until in (0.9, 2.2):
+        area = 0.5 + quad(lambda t: float(history.at(np.array([t]))[0]), 0.5, until, epsabs=1e-12)[0]
+        assert history.integral(np.array([until]))[0] == pytest.approx(area, rel=1e-7)

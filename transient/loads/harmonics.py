@@ -5,7 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.special import spherical_jn
 
 from transient.loads.load import Load
 from transient.result.result import ResultError
@@ -60,6 +59,8 @@ def _fourier(time: np.ndarray, value: np.ndarray, omega: np.ndarray) -> np.ndarr
     Over an interval of half length d about m, with y = omega d: 2 d exp(-i omega m) (mean j0(y) - i half rise j1(y)),
     j0 and j1 spherical Bessel functions (from memory: the Fourier transforms of 1 and x on [-1, 1]); no cancellation.
     """
+    from scipy.special import spherical_jn
+
     half = 0.5 * np.diff(time)
     middle = time[:-1] + half
     mean, rise = 0.5 * (value[1:] + value[:-1]), 0.5 * np.diff(value)
