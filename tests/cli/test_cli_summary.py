@@ -116,7 +116,8 @@ def test_an_unbounded_start_states_its_law_and_no_peak():
     }
     text = " ".join(printed(walls=walls).split())
     assert "upper unbounded 0 s -0.37575 ± 0.00001 Pa 0.3 m/s" in text
-    assert "It falls as K / sqrt(t) with K = 0.1693 Pa s^0.5, t from the jump on: 5.352 Pa after 1 ms" in text
+    assert "upper: a jump at 0 s makes the stress infinite there. It falls as K / sqrt(t) with" in text
+    assert "K = 0.1693 Pa s^0.5, t from the jump on: 5.352 Pa after 1 ms" in text
 
 
 def test_a_flow_that_does_not_settle_is_said_so():
@@ -161,6 +162,33 @@ def test_a_turning_wall_reads_in_turns_per_minute_and_torque():
     text = printed("rad/s", walls=walls)
     assert "60 rpm" in text
     assert "largest torque 12 mN·m on lower and 12 mN·m on upper" in text
+
+
+def test_a_body_is_told_by_speed_way_and_what_holds_it():
+    body = {
+        "terminal_speed": 0.4258,
+        "speed_settling_time": 25.492,
+        "speed_settling_error": 0.019,
+        "peak_speed": 0.5,
+        "peak_speed_time": 3.0,
+        "peak_acceleration": 0.08,
+        "peak_acceleration_time": 0.0,
+        "final_position": 22.63,
+        "coast_down": {"begins": 5.0, "speed": 0.4, "time": 1.5, "distance": 0.2},
+        "standstills": [[0.0, 0.25], [8.0, None]],
+    }
+    assert (
+        "on upper: ends at 0.4258 m/s, within 1 % after 25.492 ± 0.019 s; largest speed 0.5 m/s at 3 s; largest "
+        "acceleration 0.08 m/s^2 at 0 s; at the end 22.63 m from its zero; coasts from 0.4 m/s for 1.5 s and 200 mm; "
+        "held by dry friction from 0 s to 250 ms and 8 s on"
+    ) in " ".join(printed(bodies={"upper": body}).split())
+
+
+def test_a_pressure_that_follows_from_the_flow_is_told_with_its_error():
+    pressure = {"peak_drop_per_length": 1.0e4, "peak_drop_per_length_error": 12.0, "final_drop_per_length": 950.0}
+    assert "drop per length 950 Pa/m in the end, largest 10.000 ± 0.012 kPa/m" in printed(pressure=pressure)
+    sudden = {"peak_drop_per_length": None, "unbounded": True, "peak_time": 0.1, "final_drop_per_length": 950.0}
+    assert "drop per length 950 Pa/m in the end, after an impulse at 100 ms" in printed(pressure=sudden)
 
 
 def test_no_line_is_wider_than_80_columns():

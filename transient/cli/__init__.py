@@ -5,7 +5,9 @@ Rooms are imported inside the commands, so that each command pays only for what 
 
 from __future__ import annotations
 
+import os
 import signal
+import warnings
 
 import typer
 
@@ -43,6 +45,8 @@ def main(arguments: list[str] | None = None) -> int:
     if arguments is None and hasattr(signal, "SIGPIPE"):
         # A reader that has seen enough (`| head`) ends the program quietly, as with any console tool.
         signal.signal(signal.SIGPIPE, signal.SIG_DFL)
+    if arguments is None and not os.environ.get("TRANSIENT_DEBUG"):
+        warnings.simplefilter("ignore")  # they speak to developers; tests turn each into an error
     try:
         status = app(args=arguments, prog_name="transient", standalone_mode=False) or 0
         if status == INTERRUPTED:  # the newer versions of typer catch the interrupt themselves

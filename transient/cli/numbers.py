@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import textwrap
 from collections.abc import Iterator
 
 from transient.result.scale import quantity, scale
@@ -10,6 +11,8 @@ from transient.result.scale import quantity, scale
 # More digits than this help nobody at the bench, however small the error is.
 MOST_DIGITS = 5
 _RPM = 60.0 / (2.0 * math.pi)
+WIDTH = 80
+LABEL = 11
 
 
 def stated(value: float, error: float | None, unit: str) -> str:
@@ -56,3 +59,11 @@ def columns(rows: list[list[str]], gap: int = 3) -> Iterator[str]:
     widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
     for row in rows:
         yield (" " * gap).join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip()
+
+
+def entry(label: str, text: str) -> list[str]:
+    """A label and its text as lines of at most WIDTH columns, the text indented by LABEL."""
+    return textwrap.wrap(
+        text, WIDTH, initial_indent=label.ljust(LABEL), subsequent_indent=" " * LABEL,
+        break_long_words=False, break_on_hyphens=False,
+    )  # fmt: skip

@@ -2,17 +2,14 @@
 
 from __future__ import annotations
 
-import textwrap
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from transient.cli.numbers import columns, listed, percent, plain, stated
+from transient.cli.body_words import describe_bodies
+from transient.cli.numbers import LABEL, columns, entry, listed, percent, plain, stated
 
 if TYPE_CHECKING:
     from transient.result.result import Result, Variable
-
-WIDTH = 80
-LABEL = 11
 
 VERDICTS = {
     "good": "good",
@@ -30,34 +27,27 @@ def describe(result: Result, path: Path) -> str:
         [result.title or path.stem],
         _settling(summary["settling"]),
         [*_walls(summary["walls"], speeds), *_remarks(summary)],
-        [*_flow(summary), *_hand_formula(summary)],
-        [*_trust(summary), *_entry("File", f"{path}   ({_effort(summary)})")],
+        describe_bodies(summary.get("bodies") or {}, summary["settling"]["within"], speeds.units == "rad/s"),
+        [*_flow(summary), *_pressure(summary), *_hand_formula(summary)],
+        [*_trust(summary), *entry("File", f"{path}   ({_effort(summary)})")],
     ]
     return "\n\n".join("\n".join(block) for block in blocks if block)
-
-
-def _entry(label: str, text: str) -> list[str]:
-    """A label and its text, wrapped and indented."""
-    return textwrap.wrap(
-        text, WIDTH, initial_indent=label.ljust(LABEL), subsequent_indent=" " * LABEL,
-        break_long_words=False, break_on_hyphens=False,
-    )
 
 
 def _settling(part: dict[str, Any]) -> list[str]:
     within = percent(part["within"])
     if part.get("time") is None:
-        return _entry("Settled", f"not within {within} in this run, since {_unsettled(part)}")
+        return entry("Settled", f"not within {within} in this run, since {_unsettled(part)}")
     end = "steady state"
     if part.get("regime") == "periodic":
         end = f"periodic state (period {plain(part['period'], 's')})"
     time = stated(part["time"], part.get("error"), "s")
-    lines = _entry("Settled", f"after {time}: velocity within {within} of its {end}")
+    lines = entry("Settled", f"after {time}: velocity within {within} of its {end}")
     told = [] if part.get("flow") is None else [f"flow after {plain(part['flow'], 's')}"]
     walls = [f"on {w} after {plain(at, 's')}" for w, at in (part.get("stress") or {}).items() if at is not None]
     if walls:
         told.append(f"wall stress {listed(walls)}")
-    return lines + (_entry("", "; ".join(told)) if told else [])
+    return lines + (entry("", "; ".join(told)) if told else [])
 
 
 def _unsettled(part: dict[str, Any]) -> str:
@@ -100,14 +90,14 @@ def _remarks(summary: dict[str, Any]) -> list[str]:
     lines: list[str] = []
     for name, wall in walls:
         if wall.get("unbounded"):
-            lines += _entry("", _unbounded(name, wall))
+            lines += entry("", _unbounded(name, wall))
     above = [f"{1.0 + wall['overshoot']:.3g} times on {name}" for name, wall in walls if _overshoots(wall)]
     if above and summary["settling"].get("regime") == "steady":
-        lines += _entry("", f"largest over final stress: {listed(above)}")
+        lines += entry("", f"largest over final stress: {listed(above)}")
     for key, unit in (("force", "N"), ("torque", "N m")):
         peaks = [f"{plain(wall[f'peak_{key}'], unit)} on {name}" for name, wall in walls if wall.get(f"peak_{key}")]
         if peaks:
-            lines += _entry("", f"largest {key} {listed(peaks)}")
+            lines += entry("", f"largest {key} {listed(peaks)}")
     return lines
 
 
@@ -123,7 +113,7 @@ def _unbounded(name: str, wall: dict[str, Any]) -> str:
     law = "K / sqrt(t)" if exponent == 0.5 else f"K / t^{exponent:.3g}"
     example = plain(coefficient / 1e-3**exponent, "Pa")
     return (
-        f"{name}: the speed jumps at {at}, where the stress is infinite. It falls as {law} with "
+        f"{name}: a jump at {at} makes the stress infinite there. It falls as {law} with "
         f"K = {coefficient:.4g} Pa s^{exponent:.3g}, t from the jump on: {example} after 1 ms"
     )
 
@@ -140,7 +130,20 @@ def _flow(summary: dict[str, Any]) -> list[str]:
         text += f"; largest flow rate {plain(flow['peak_flow_rate'], 'm^3/s')}"
     if flow.get("volume_delivered") is not None:
         text += f"; {plain(flow['volume_delivered'], 'm^3')} delivered in the run"
-    return _entry("Flow", text)
+    return entry("Flow", text)
+
+
+def _pressure(summary: dict[str, Any]) -> list[str]:
+    part = summary.get("pressure") or {}
+    final = stated(part["final_drop_per_length"], part.get("final_drop_per_length_error"), "Pa/m")
+    if part.get("unbounded"):
+        at = plain(part["peak_time"], "s")
+        return entry("Pressure", f"drop per length {final} in the end, after an impulse at {at}")
+    peak = part.get("peak_drop_per_length")
+    if not peak:
+        return []
+    largest = stated(peak, part.get("peak_drop_per_length_error"), "Pa/m")
+    return entry("Pressure", f"drop per length {final} in the end, largest {largest}")
 
 
 def _hand_formula(summary: dict[str, Any]) -> list[str]:
@@ -153,7 +156,7 @@ def _hand_formula(summary: dict[str, Any]) -> list[str]:
     text += "Enough here" if part.get("enough") else "Not enough here"
     if part.get("note"):
         text += f": {part['note']}"
-    return _entry("By hand", text)
+    return entry("By hand", text)
 
 
 def _trust(summary: dict[str, Any]) -> list[str]:
@@ -161,10 +164,10 @@ def _trust(summary: dict[str, Any]) -> list[str]:
     passed = sum(check["status"] == "pass" for check in checks)
     text = f"{VERDICTS.get(summary['verdict'], summary['verdict'])} ({passed} of {len(checks)} checks passed)"
     text += _accuracy(summary.get("accuracy") or {})
-    lines = _entry("Trust", text)
+    lines = entry("Trust", text)
     for check in sorted(checks, key=lambda check: check["status"] != "fail"):
         if check["status"] != "pass":
-            lines += _entry("", f"{_word(check)} ({check['name']}): {check['note']}")
+            lines += entry("", f"{_word(check)} ({check['name']}): {check['note']}")
     return lines
 
 
