@@ -35,6 +35,8 @@ def test_json_holds_the_peak_of_the_run(call, finished):
     wall = read(finished).summary["walls"]["upper"]
     assert found["peak"] == pytest.approx(wall["peak_force"], rel=1e-12)
     assert found["peak_time"] == wall["peak_time"]
+    share = wall["peak_stress_error"] / abs(wall["peak_stress"])
+    assert found["peak_error"] / abs(found["peak"]) == pytest.approx(share)
     assert (found["quantity"], found["unit"], found["step"]) == ("force", "N", 1e-3)
     assert found["factored"] == {"peak": 1.5 * found["peak"], "impulse": 1.5 * found["impulse"]}
     assert set(found["spectrum"]) >= {"frequency", "factor"}
@@ -102,9 +104,20 @@ def test_printed_factored_and_unfactored(call, finished):
     assert "rainflow count (ASTM E1049) of 1000 runs" in said.out
     assert max(map(len, said.out.splitlines())) <= 80
     assert "licensed" in said.out
+    assert " ± " in said.out
+    assert "the run's own verdict: good" in said.out
     plain = call("loads", finished, "--wall", "upper", *MS)
     assert "No safety factor is included." in plain.out
     assert "factored" not in plain.out.replace("unfactored", "")
+
+
+@pytest.mark.parametrize("verdict", ["failed", "outside"])
+def test_loads_of_a_run_that_distrusts_itself_say_so(call, finished, tmp_path, verdict):
+    result = read(finished)
+    write(Result(result.variables, {**result.summary, "verdict": verdict}, result.case_text), tmp_path / "bad.h5")
+    said = call("loads", tmp_path / "bad.h5", "--wall", "upper", *MS, "--csv", tmp_path / "bad.csv")
+    assert "do not rely on these numbers" in " ".join(said.out.split())
+    assert f"# verdict of the run on itself: {verdict}" in rows_of(tmp_path / "bad.csv")[0]
 
 
 def test_a_wall_need_not_be_named_where_there_is_one(call, finished, tmp_path):

@@ -3,22 +3,22 @@
 from __future__ import annotations
 
 import math
-import textwrap
 from pathlib import Path
 
 import numpy as np
 
-from transient.cli.numbers import columns, percent
+from transient.cli.numbers import LABEL, columns, entry, percent, stated
+from transient.cli.summary import VERDICTS
 from transient.loads.measures import Measures
 from transient.loads.write import REVIEW
 from transient.result.scale import quantity
 
-WIDTH = 80
-LABEL = 11
 MOST_CYCLES = 8
 # Cycles and harmonics below this share of the largest one are not printed one by one.
 FAINT = 1e-3
 MOST_HARMONICS = 8
+# Between a number and its unit, where no line may end; printed as a blank.
+_BOUND = "\u00a0"
 
 
 def describe(measures: Measures, path: Path) -> str:
@@ -30,32 +30,34 @@ def describe(measures: Measures, path: Path) -> str:
         _spectrum(measures),
         _cycles(measures),
         _harmonics(measures),
-        _entry("Review", " ".join([REVIEW[0], _factor_told(measures)])),
+        [*_trust(measures), *entry("Review", " ".join([REVIEW[0], _factor_told(measures)]))],
     ]
-    return "\n\n".join("\n".join(block) for block in blocks if block)
-
-
-def _entry(label: str, text: str) -> list[str]:
-    return textwrap.wrap(
-        text, WIDTH, initial_indent=label.ljust(LABEL), subsequent_indent=" " * LABEL,
-        break_long_words=False, break_on_hyphens=False,
-    )
+    return "\n\n".join("\n".join(block) for block in blocks if block).replace(_BOUND, " ")
 
 
 def _amount(measures: Measures, value: float, over_time: bool = False) -> str:
     text = quantity(value, measures.load.unit.replace("*", " "))
-    return f"{text} s" if over_time else text
+    return _bound(f"{text} s" if over_time else text)
+
+
+def _seconds(value: float) -> str:
+    return _bound(quantity(value, "s"))
+
+
+def _bound(text: str) -> str:
+    return text.replace(" ", _BOUND)
 
 
 def _largest(measures: Measures) -> list[str]:
     load, factor = measures.load, measures.wanted.factor
     if load.peak is None:
         return _infinite(measures)
-    text = f"{_amount(measures, load.peak)} at {quantity(load.peak_time, 's')}"
+    value = _bound(stated(load.peak, load.peak_error, load.unit.replace("*", " ")))
+    text = f"{value} at {_seconds(load.peak_time)}"
     if factor is None:
-        return _entry("Largest", text)
+        return entry("Largest", text)
     factored = f"{_amount(measures, factor * load.peak)}   (factored)"
-    return [*_entry("Largest", f"{text}   (unfactored)"), *_entry(f"x {factor:g}", factored)]
+    return [*entry("Largest", f"{text}   (unfactored)"), *entry(f"x {factor:g}", factored)]
 
 
 def _infinite(measures: Measures) -> list[str]:
@@ -66,16 +68,16 @@ def _infinite(measures: Measures) -> list[str]:
         unit = load.unit.replace("*", " ")
         power = "sqrt(t)" if instant.exponent == 0.5 else f"t^{instant.exponent:.3g}"
         text = (
-            f"infinite at {quantity(instant.time, 's')}, then {instant.coefficient:.4g} {unit} / {power}, t in s "
+            f"infinite at {_seconds(instant.time)}, then {instant.coefficient:.4g} {unit} / {power}, t in s "
             "since: it has no largest value, whatever the step"
         )
-        lines += _entry("Largest" if not lines else "", text)
+        lines += entry("Largest" if not lines else "", text)
     more = len(load.history.infinite) - 3
     if more > 0:
-        lines += _entry("", f"and at {more} further instants")
+        lines += entry("", f"and at {more} further instants")
     row = table.averaged[0]
     text = f"there the table's row carries {_amount(measures, float(table.value[row]))}, which keeps the impulse"
-    return lines + _entry("", f"{text}; a finer step makes it larger")
+    return lines + entry("", f"{text}; a finer step makes it larger")
 
 
 def _impulse(measures: Measures) -> list[str]:
@@ -90,21 +92,21 @@ def _impulse(measures: Measures) -> list[str]:
     if abs(table.outside) > 0.1 * abs(table.impulse_error):
         ends = _amount(measures, -table.outside, over_time=True)
         text += f", of which {ends} lies before its first or after its last row"
-    return _entry("Impulse", text)
+    return entry("Impulse", text)
 
 
 def _table(measures: Measures) -> list[str]:
     load, table = measures.load, measures.table
     rows = "1 row" if len(table.time) == 1 else f"{len(table.time)} rows"
-    text = f"{rows} every {quantity(table.step, 's')}"
+    text = f"{rows} every {_seconds(table.step)}"
     aim = "the infinite instant" if load.peak is None else "the largest load"
     if table.shift > 0.0:
-        text += f", the first {quantity(table.shift, 's')} after the start so that {aim} is a row"
+        text += f", the first {_seconds(table.shift)} after the start so that {aim} is a row"
     size = float(np.abs(load.history.value).max())
     share = f" ({percent(table.departure / size)} of the largest)" if load.peak and size else ""
     if table.departure > 0.0:
         text += f"; between rows the history departs from it by up to {_amount(measures, table.departure)}{share}"
-    return [*_entry("Table", text), *_entry("Extrema", _extrema(measures))]
+    return [*entry("Table", text), *entry("Extrema", _extrema(measures))]
 
 
 def _extrema(measures: Measures) -> str:
@@ -125,17 +127,17 @@ def _spectrum(measures: Measures) -> list[str]:
     band += f", damping ratio {found.damping:g}"
     if found.factor is None:
         why = "the load is infinite at an instant" if measures.load.peak is None else "there is no load"
-        return _entry("Response", f"no dynamic load factor, since {why} ({band})")
+        return entry("Response", f"no dynamic load factor, since {why} ({band})")
     top = int(np.argmax(found.factor))
     text = f"dynamic load factor at most {found.factor[top]:.4g}, at {_hertz(found.frequency[top])}"
     if low != high:
         text += f"; {found.factor[0]:.4g} at {low}, {found.factor[-1]:.4g} at {high}"
-    return _entry("Response", f"{text} ({band})")
+    return entry("Response", f"{text} ({band})")
 
 
 def _hertz(value: float) -> str:
     value = float(f"{value:.4g}")
-    return f"{value / 1e3:.4g} kHz" if value >= 1e3 else f"{value:.4g} Hz"
+    return _bound(f"{value / 1e3:.4g} kHz" if value >= 1e3 else f"{value:.4g} Hz")
 
 
 def _cycles(measures: Measures) -> list[str]:
@@ -144,8 +146,8 @@ def _cycles(measures: Measures) -> list[str]:
         return []
     runs = "one run" if repeat == 1 else f"{repeat} runs end to end"
     if found is None:
-        return _entry("Cycles", "not counted, since the load is infinite at an instant and the range is without bound")
-    head = _entry("Cycles", f"rainflow count (ASTM E1049) of {runs}, unfactored, largest first")
+        return entry("Cycles", "not counted, since the load is infinite at an instant and the range is without bound")
+    head = entry("Cycles", f"rainflow count (ASTM E1049) of {runs}, unfactored, largest first")
     rows = [["", "range", "mean", "count"]]
     shown = [cycle for cycle in found if cycle[0] > FAINT * found[0][0]][:MOST_CYCLES]
     rows += [["", _amount(measures, extent), _amount(measures, mean), f"{count:g}"] for extent, mean, count in shown]
@@ -153,22 +155,27 @@ def _cycles(measures: Measures) -> list[str]:
     lines = [*head, *columns(rows)]
     rest = sum(count for *_, count in found[len(shown) :])
     if rest:
-        lines += _entry("", f"and {rest:g} smaller ones")
-    return lines if found else _entry("Cycles", f"none in {runs}: the load does not turn")
+        lines += entry("", f"and {rest:g} smaller ones")
+    return lines if found else entry("Cycles", f"none in {runs}: the load does not turn")
 
 
 def _harmonics(measures: Measures) -> list[str]:
     found = measures.harmonics
     if found is None:
         return []
-    text = f"over the last period, {quantity(found.period, 's')}: mean {_amount(measures, found.mean)} + sum of "
-    lines = _entry("Harmonics", text + "amplitude sin(2 pi f t + phase), unfactored")
+    text = f"over the last period, {_seconds(found.period)}: mean {_amount(measures, found.mean)} + sum of "
+    lines = entry("Harmonics", text + "amplitude sin(2 pi f t + phase), unfactored")
     rows = [[" " * (LABEL - 3), "f", "amplitude", "phase"]]
     clear = np.flatnonzero(found.amplitude > FAINT * found.amplitude.max(initial=0.0))[:MOST_HARMONICS]
     for i in clear:
         degrees = math.degrees(found.phase[i])
         rows.append(["", _hertz(found.frequency[i]), _amount(measures, found.amplitude[i]), f"{degrees:.1f} deg"])
     return [*lines, *columns(rows)]
+
+
+def _trust(measures: Measures) -> list[str]:
+    verdict = measures.load.verdict
+    return [] if verdict is None else entry("Trust", f"the run's own verdict: {VERDICTS.get(verdict, verdict)}")
 
 
 def _factor_told(measures: Measures) -> str:

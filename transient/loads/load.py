@@ -25,8 +25,9 @@ class Load:
     """The load history of one wall, SI.
 
     ``variable`` the result's variable, ``quantity`` "force", "torque" or "stress", with its ``unit``; ``before`` the
-    load just before t = 0; ``peak`` the value of largest magnitude (None where infinite) and ``peak_time``;
-    ``period`` of the state that the run ends in, or None.
+    load just before t = 0; ``peak`` the value of largest magnitude (None where infinite) at ``peak_time``, with the
+    run's bound of its error where stated; ``period`` of the state that the run ends in, or None; ``verdict`` of the
+    run on itself, or None.
     """
 
     title: str
@@ -38,7 +39,9 @@ class Load:
     before: float
     peak: float | None
     peak_time: float
+    peak_error: float | None
     period: float | None
+    verdict: str | None
 
     @property
     def impulse_unit(self) -> str:
@@ -66,11 +69,12 @@ def load_of(result: Result, wall: str | None = None) -> Load:
     factor = _factor(result, rows, column)
     before = _before(result, numbers, factor, rows)
     history = _history(time, rows, before, numbers, factor)
-    history, peak, peak_time = _with_peak(history, result, numbers, factor)
+    history, peak, peak_time, error = _with_peak(history, result, numbers, factor)
     period = (result.summary.get("settling") or {}).get("period")
-    unit = result.variables[variable].units
+    unit, verdict = result.variables[variable].units, result.summary.get("verdict")
+    word = QUANTITIES[variable]
     return Load(
-        result.title, name, variable, QUANTITIES[variable], unit, history, before, peak, peak_time, period
+        result.title, name, variable, word, unit, history, before, peak, peak_time, error, period, verdict
     )
 
 
@@ -141,14 +145,16 @@ def _history(
 
 def _with_peak(
     history: LoadHistory, result: Result, numbers: dict[str, Any], factor: float | None
-) -> tuple[LoadHistory, float | None, float]:
-    """The history with the extremes that lie between stored rows made rows of it; its peak and the peak's time."""
+) -> tuple[LoadHistory, float | None, float, float | None]:
+    """The history with the extremes that lie between stored rows made rows of it; its peak, the peak's time, and
+    the stated bound of its error.
+    """
     if history.infinite:
-        return history, None, max(history.infinite, key=lambda instant: abs(instant.coefficient)).time
+        return history, None, max(history.infinite, key=lambda instant: abs(instant.coefficient)).time, None
     top = int(np.argmax(np.abs(history.value)))
-    peak, peak_time = float(history.value[top]), float(history.time[top])
+    peak, peak_time, error = float(history.value[top]), float(history.time[top]), None
     if factor is None:
-        return history, peak, peak_time
+        return history, peak, peak_time, error
     accuracy = (result.summary.get("accuracy") or {}).get("asked") or _USUAL_ACCURACY
     room = _ROWS_AGREE * accuracy * abs(peak)
     for kind in ("smallest", "largest", "peak"):
@@ -162,8 +168,10 @@ def _with_peak(
             if abs(value) < np.abs(history.value).max() * (1.0 - _ROWS_AGREE * accuracy):
                 continue
             peak, peak_time = value, float(when)
+            stated = numbers.get("peak_stress_error")
+            error = None if stated is None else abs(factor * stated)
         history = _insert(history, float(when), value)
-    return history, peak, peak_time
+    return history, peak, peak_time, error
 
 
 def _insert(history: LoadHistory, time: float, value: float) -> LoadHistory:

@@ -141,12 +141,15 @@ def _comments(measures: Measures, source: str) -> list[str]:
                 "impulse; it depends on the step and is no largest load"
             )
     else:
-        said.append(f"largest {load.peak!r} {unit} at {load.peak_time!r} s")
+        error = "" if load.peak_error is None else f", error of the run at most {load.peak_error!r} {unit}"
+        said.append(f"largest {load.peak!r} {unit} at {load.peak_time!r} s{error}")
     said.append(
         f"impulse of the history {load.history.impulse!r} {load.impulse_unit}, of straight lines between these rows "
         f"{table.impulse!r} {load.impulse_unit}"
     )
     said.append(f"between the rows the history departs from straight lines by up to {table.departure!r} {unit}")
+    if load.verdict is not None:
+        said.append(f"verdict of the run on itself: {load.verdict}")
     said += REVIEW
     return [f"# {_one_line(text)}" for text in said if text]
 
