@@ -13,8 +13,8 @@ class Curve:
     """n rows: ``time`` (n,) s, ``value``, ``rate`` (n,); ``step`` (n-1,) lengths, 0 across a break.
 
     With ``offset`` (n-1,), the times since the last break at which the steps begin, the cubic is one in the root of
-    that time: a flow that answers to a break is smooth in it, and steps may double.  A ``share`` of an interval counts in
-    the same measure.  Rows that are not finite, and the steps beside them, are left out of every answer.
+    that time: a flow that answers to a break is smooth in it, and steps may double.  A ``share`` of an interval counts
+    in the same measure.  Rows that are not finite, and the steps beside them, are left out of every answer.
     """
 
     time: np.ndarray

@@ -16,7 +16,6 @@ HARDLY = 1e-6
 HISTORY_SHARE = 0.6  # of the accuracy, for stored rows: straight lines between them use the rest
 FINAL_SHARE = 0.01  # a final stress is relative to at least this share of the wall's peak
 SOON = 1e-5  # of a piece after an infinite stress: from there on the rows must have the local accuracy
-GRAZE = 8.0  # a settling error so much larger than slope and error explain is the band's, not the solver's
 
 
 @dataclass(frozen=True)
@@ -103,23 +102,9 @@ def _means(run: Run, accuracy: float) -> Iterator[Demand]:
 
 def _settlings(run: Run, said: dict[str, Any], accuracy: float) -> Iterator[Demand]:
     spread = said["errors"]
-    pairs = [("settling time", said["velocity"], spread["velocity"]), ("flow settling", said["flow"], spread["flow"])]
-    pairs += [(f"{name} stress settling", said["stress"][name], spread["stress"][name]) for name in said["stress"]]
-    for name, time, error in pairs:
-        if time is None or error is None:
-            continue
-        yield Demand(name, error, accuracy * time, _grazes(run, name, time, error, said["within"]))
-
-
-def _grazes(run: Run, name: str, time: float, error: float, within: float) -> bool:
-    """Whether the deviation runs along the settling band, so that any error moves the time far."""
-    away = run.regime.deviation
-    if away is None or error <= 0.0 or "stress" in name:
-        return False
-    curve = away.largest_curve() if name == "settling time" else away.mean_curve()
-    errors = run.errors.level_profile if name == "settling time" else run.errors.level_mean
-    i = int(np.clip(np.searchsorted(curve.time, time), 1, len(curve.time) - 1))
-    drop = abs(abs(curve.value[i]) - abs(curve.value[i - 1]))
-    steep = drop / max(curve.time[i] - curve.time[i - 1], 1e-300)
-    local = float(errors[max(i - 2, 0) : i + 2].max(initial=0.0))
-    return bool(error > GRAZE * local / steep) if steep > 0.0 else True
+    rows = [("velocity", "settling time", said["velocity"], spread["velocity"])]
+    rows.append(("flow", "flow settling", said["flow"], spread["flow"]))
+    rows += [(name, f"{name} stress settling", said["stress"][name], spread["stress"][name]) for name in said["stress"]]
+    for key, name, time, error in rows:
+        if time is not None and error is not None:
+            yield Demand(name, error, accuracy * time, key in said["grazing"])

@@ -10,6 +10,7 @@ import numpy as np
 from transient.result.curve import Curve
 from transient.result.run import ZERO, Run
 
+GRAZE = 30.0  # beyond this sensitivity a settling error is the band's, not the solver's
 LEVELS = (0.10, 0.05, 0.01, 0.001)
 
 
@@ -25,7 +26,7 @@ def settling(run: Run) -> dict[str, Any]:
         nothing = {"velocity": None, "flow": None, "stress": dict.fromkeys(names)}
         levels = {label(level): dict(nothing) for level in LEVELS}
         return {"reached": False, "time": None, "error": None, "within": within, **nothing,
-                "errors": dict(nothing), "regime": "none", "period": None, "levels": levels}  # fmt: skip
+                "errors": dict(nothing), "grazing": [], "regime": "none", "period": None, "levels": levels}  # fmt: skip
     judges = _judges(run)
     main = _times(judges, within, names)
     spread = _spreads(judges, within, main, names)
@@ -36,6 +37,7 @@ def settling(run: Run) -> dict[str, Any]:
         "within": within,
         **main,
         "errors": spread,
+        "grazing": _grazing(judges, within, main, spread, names),
         "error_kind": run.errors.kind,
         "regime": run.regime.kind,
         "period": run.regime.period,
@@ -76,6 +78,29 @@ class Judge:
         late = _later(self.higher.last_over(band, 1.0), self.lower.last_over(band, -1.0), end)
         early = _later(self.lower.last_over(band, 1.0), self.higher.last_over(band, -1.0), end)
         return max(late - time, time - early, 4e-16 * time, 0.0)
+
+
+    def grazes(self, level: float, time: float | None, spread: float | None) -> bool:
+        """Whether the deviation runs along the band: a share of it moves the time by ``GRAZE`` times that share.
+
+        (A plain decay to 1 % moves it by a fifth of that share.)
+        """
+        if not time or not spread:
+            return False
+        curve = self.curve
+        i = int(np.clip(np.searchsorted(curve.time, time), 1, len(curve.time) - 1))
+        near = slice(max(i - 2, 0), i + 2)
+        error = 0.5 * float(np.nanmax(np.abs(self.higher.value - self.lower.value)[near], initial=0.0))
+        return spread * level * self.size > GRAZE * error * time
+
+
+def _grazing(
+    judges: dict[str, Any], level: float, times: dict[str, Any], spread: dict[str, Any], names: list[str]
+) -> list[str]:
+    """Names of the settling times that the band itself, not the solver, makes uncertain."""
+    found = [name for name in ("velocity", "flow") if judges[name].grazes(level, times[name], spread[name])]
+    walls = spread["stress"]
+    return found + [n for n in names if judges["stress"][n].grazes(level, times["stress"][n], walls[n])]
 
 
 def _later(one: float, other: float, end: float) -> float:
