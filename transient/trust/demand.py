@@ -94,6 +94,8 @@ def _peak(run: Run, end: int) -> float:
 
 
 def _means(run: Run, accuracy: float) -> Iterator[Demand]:
+    if run.flow_given:  # the mean is what was asked for, to round-off; of none at all that would be no accuracy
+        return
     largest = float(np.abs(run.history.mean).max(initial=0.0))
     worst = float(run.errors.mean.max(initial=0.0))
     yield Demand("mean velocity history", worst, HISTORY_SHARE * accuracy * largest)
