@@ -85,11 +85,38 @@ def _terms(poly, coeff, exponent, left, j, base, offset, i, order):  # type: ign
 
 
 @compiled
-def clean(poly, coeff, exponent, left, j, base, offset, late, i, order, jump):  # type: ignore[no-untyped-def]
+def _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order):  # type: ignore[no-untyped-def]
+    """Sum of the magnitudes that the ``order``-th derivative's jump at piece j is the difference of.
+
+    Exponentials too fast for ``scale`` are no part of it.
+    """
+    size = abs(left[i]) if (base < 0 and order == 0) else 0.0
+    factor = 1.0
+    for d in range(2, order + 1):
+        factor *= d
+    if order < 4:
+        size += factor * abs(poly[j, i, order])
+    for k in range(coeff.shape[2]):
+        if coeff[j, i, k] != 0.0 and abs(exponent[j, i, k]) * scale < SLOW:
+            size += abs(coeff[j, i, k]) * abs(exponent[j, i, k]) ** order
+    if base >= 0:
+        power = factor
+        for d in range(order, 4):
+            size += power * abs(poly[base, i, d])
+            power *= offset * (d + 1) / (d + 1 - order)
+        for k in range(coeff.shape[2]):
+            if coeff[base, i, k] != 0.0 and abs(exponent[base, i, k]) * scale < SLOW:
+                s = exponent[base, i, k]
+                size += abs(coeff[base, i, k]) * abs(s) ** order * np.exp(s.real * offset)
+    return size
+
+
+@compiled
+def clean(poly, coeff, exponent, left, j, base, offset, scale, late, i, order, jump):  # type: ignore[no-untyped-def]
     """The jump of the ``order``-th derivative of input i, exactly 0 where it is the round-off of its terms, or of the
     time ``late`` at which piece j begins."""
-    noise = NOISE * _terms(poly, coeff, exponent, left, j, base, offset, i, order)
-    noise += ROUNDING * late * _terms(poly, coeff, exponent, left, j, base, offset, i, order + 1)
+    noise = NOISE * _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order)
+    noise += ROUNDING * abs(late) * _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order + 1)
     return jump if abs(jump) > noise else 0.0
 
 
@@ -126,7 +153,7 @@ def _add_instant(poly, coeff, exponent, left, j, base, offset, late, cubic, term
         jump = cubic[i, 0]
         for m in range(terms.shape[1]):
             jump += terms[i, m].real
-        jump = clean(poly, coeff, exponent, left, j, base, offset, late, i, 0, jump)
+        jump = clean(poly, coeff, exponent, left, j, base, offset, 0.0, late, i, 0, jump)
         for q in range(len(out)):
             if jump != 0.0 and sudden[i, q] != 0.0:
                 out[q] += sudden[i, q] * jump
@@ -209,7 +236,8 @@ def add_young(
                     cubic[i, d] = _jump(cubic[i], terms[i], rates[i], scale, d)
                     if cubic[i, d] != 0.0:
                         cubic[i, d] = clean(
-                            poly, coeff, exponent, left[anchor], j, reference, since, starts[j], i, d, cubic[i, d]
+                            poly, coeff, exponent, left[anchor], j, reference, since, scale, starts[j], i, d,
+                            cubic[i, d],
                         )
             chebyshev((age / scale - MIDDLE) / HALF, turn)
             for i in range(3):
