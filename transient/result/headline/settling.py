@@ -11,6 +11,7 @@ from transient.result.curve import Curve
 from transient.result.run import ZERO, Run
 
 GRAZE = 30.0  # beyond this sensitivity a settling error is the band's, not the solver's
+NOTHING = 1e-11  # of the run's largest velocity
 LEVELS = (0.10, 0.05, 0.01, 0.001)
 
 
@@ -116,6 +117,8 @@ def _judges(run: Run) -> dict[str, Any]:
     velocity = regime.velocity if regime.velocity > ZERO * run_largest else run_largest
     mean_peak = abs(history.mean_curve().magnitude()[0])
     mean = regime.mean if regime.mean > ZERO * mean_peak else mean_peak
+    if mean_peak <= NOTHING * run_largest:  # no net flow at all: what is left is round-off
+        mean = 0.0
     stress = {wall.name: _stress_judge(run, wall.end, wall.shear_free) for wall in run.walls}
     return {
         "velocity": Judge(away.largest_curve(), errors.level_profile, velocity),
