@@ -16,8 +16,8 @@ from .judge import Judge
 from .tables import GAPS, KINDS, plain
 
 TABLE = [(shape, kind, start) for shape in GAPS for kind in KINDS for start in ("rest", "steady")]
-# Which third of the table is run: every shape, kind and start is in it.
-THINNED = [row for i, row in enumerate(TABLE) if i % 3 == 0 or row[1] in ("bare", "sum")]
+# A fifth of the table is run: every shape with both starts, every kind.
+THINNED = TABLE[::5]
 
 
 def solved(case: dict[str, Any]) -> tuple[Any, Judge]:

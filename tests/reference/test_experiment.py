@@ -1,4 +1,8 @@
-"""The experiment behind the stated errors, in small: 40 random cases whose every stated error must hold."""
+"""The experiment behind the stated errors, in small: random cases whose every stated error must hold.
+
+The cases are those among the first 84 of the script's first seed that take no longer than about a second to solve and
+judge; whether they hold played no part in the choice.
+"""
 
 from __future__ import annotations
 
@@ -9,14 +13,16 @@ import pytest
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[1] / "benchmarks"))
 
-from experiment import Outcome, Verdict, experiment, table
+from experiment import Outcome, Verdict, judge_case, table
 
-SEED, CASES = 7, 40
+SEED = 1
+CASES = (2, 3, 4, 13, 15, 16, 17, 18, 19, 20, 21, 22, 26, 29, 30, 31, 33, 35, 36, 38, 39, 41, 42, 43, 44, 47, 57, 60,
+         65, 67, 69, 71, 72, 77, 79, 80)  # fmt: skip
 
 
 @pytest.fixture(scope="module")
 def outcomes() -> list[Outcome]:
-    return experiment(CASES, SEED)
+    return [judge_case((SEED, number, "series")) for number in CASES]
 
 
 def test_every_case_is_solved(outcomes: list[Outcome]) -> None:
@@ -32,7 +38,7 @@ def test_stated_errors_are_not_inflated(outcomes: list[Outcome]) -> None:
     """Median of stated over actual below 10."""
     ratios = sorted(v.ratio for o in outcomes for v in o.verdicts if v.stated and v.floor < v.off < float("inf"))
     assert ratios[len(ratios) // 2] < 10.0
-    assert f"{CASES} cases" in table(outcomes)
+    assert f"{len(CASES)} cases" in table(outcomes)
 
 
 def test_a_broken_promise_is_counted() -> None:
