@@ -163,11 +163,15 @@ def test_a_plate_thrown_over_deep_fluid_comes_to_rest_where_momentum_says():
 
 def test_dry_friction_stops_a_carriage():
     """m U' = -f - c U from U0: stands after m/c ln(1 + c U0/f) (integrated by hand; massless film)."""
-    given = {"mass": MASS, "initial_speed": 0.3, "sliding": 2.0, "breakaway": 3.0, "area": AREA}
+    drive = trapezoid.build(12.0, 0.05, 1.0, 0.05)
+    given = {"mass": MASS, "load": drive, "sliding": 2.0, "breakaway": 3.0, "area": AREA}
     said = body(1e-3, upper=given, duration=10.0, **FILM)
-    stop = MASS / HOLD * math.log(1.0 + HOLD * 0.3 / 2.0)
-    ((begin, end),) = said["standstills"]
-    assert begin == pytest.approx(stop, rel=1e-3)
+    left = said["coast_down"]
+    ((early, started), (begin, end)) = said["standstills"]
+    assert early == 0.0
+    assert started == pytest.approx(0.05 * 3.0 / 12.0, rel=1e-3)
+    stop = MASS / HOLD * math.log(1.0 + HOLD * left["speed"] / 2.0)
+    assert begin - left["begins"] == pytest.approx(stop, rel=1e-3)
     assert end is None
     assert said["final_speed"] == 0.0
 
