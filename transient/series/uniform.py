@@ -45,6 +45,12 @@ class UniformFlow:
         zero = np.zeros((len(np.atleast_1d(piece)), 2))
         return zero, zero.copy()
 
+    def stress_and_mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n, 3) stresses and mean velocity in one go, and their bounds (n, 3)."""
+        stress, none = self.stress(piece, offset)
+        mean, bound = self.mean(piece, offset)
+        return np.column_stack([stress, mean]), np.column_stack([none, bound])
+
     def stress_rate(self, piece: np.ndarray, offset: np.ndarray) -> np.ndarray:
         """(n, 2) zeros."""
         return self.stress(piece, offset)[0]
