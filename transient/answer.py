@@ -44,8 +44,10 @@ def run(case: Case, judge: str = "series") -> Result:
 def solve(problem: Problem, judge: str = "series") -> Solved:
     """Refine until every headline number's error meets the accuracy, or no finer level is in reach."""
     ahead = look(problem)
-    levels = 2 if judge == "series" else 3
-    refine, best = 1.0 if judge == "series" else 0.5, None
+    # bodies and prescribed flow have no series yet: three levels must judge themselves there
+    judged = judge == "series" and not problem.closed
+    levels = 2 if judged else 3
+    refine, best = 1.0 if judged else 0.5, None
     for _ in range(MOST_ATTEMPTS):
         attempt = _attempt(problem, ahead, refine, levels, judge)
         missing = unmet(attempt.wanted)

@@ -6,8 +6,9 @@ import numpy as np
 
 from transient.gap.problem import Problem
 from transient.march.levels import Ladder
-from transient.march.rows import Motion, Rows, between, denser, profile_times
+from transient.march.rows import Motion, Rows, denser, profile_times
 from transient.result.headline.motion import reach
+from transient.result.history import between
 from transient.result.result import Variable
 from transient.result.run import Run
 from transient.trust.quasi_steady import quasi_steady_gradient, quasi_steady_stress

@@ -10,7 +10,8 @@ from problems import SHAPES, constant, lag, problem, ramp, sine, step, trapezoid
 from scipy.special import erfc
 
 from transient.answer import solve
-from transient.march.rows import Rows, between, denser, profile_times, stored
+from transient.march.rows import Rows, denser, profile_times, stored
+from transient.result.history import between
 
 SHARES = np.linspace(0.0, 1.0, 7)[1:-1]
 

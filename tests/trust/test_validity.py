@@ -31,8 +31,8 @@ def steady_history(case, speeds=(0.0, 0.0), gradient=0.0, end=1.0, **changes) ->
     profile = steady_profile(case, np.array(speeds, dtype=float), gradient, position)[None]
     history = History(
         time, np.zeros(2, int), time, quasi_steady_stress(case, speed, push), np.zeros((2, 2)), speed,
-        np.zeros((2, 2)), quasi_steady_mean(case, speed, push), np.zeros(2), push, 0 * push, 0 * speed, position, np.zeros(1, int),
-        profile, 0 * profile, 0 * profile,
+        np.zeros((2, 2)), quasi_steady_mean(case, speed, push), np.zeros(2), push, 0 * push, 0 * speed, position,
+        np.zeros(1, int), profile, 0 * profile, 0 * profile,
     )  # fmt: skip
     return replace(history, **changes)
 

@@ -114,7 +114,7 @@ def features(problem: Problem, inputs: Inputs, until: float) -> Features:
         if wall.kind != "moving":
             walls[:, :, end] = 0.0
     jump, kink, bend = walls
-    stress, speed = _sizes(problem, rows, lever, length, jump, kink)
+    stress, speed = _sizes(problem, rows, lever, length, jump)
     fastest = np.array([np.abs(row.rate[np.abs(row.coeff) > 0]).max(initial=0.0) for row in rows])
     return Features(jump, kink, bend, stress, speed, length, fastest)
 
@@ -145,10 +145,10 @@ def _levers(problem: Problem) -> np.ndarray:
 
 
 def _sizes(
-    problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray, jump: np.ndarray, kink: np.ndarray
+    problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray, jump: np.ndarray
 ) -> tuple[np.ndarray, float]:
-    """(guess of each wall's peak stress, largest speed): quasi-steady values sampled along the pieces, and the
-    growth after each break for as long as the piece or the diffusion lasts."""
+    """(guess of each wall's peak stress, largest speed): quasi-steady values sampled along the pieces, and what a
+    steady acceleration makes of the stress for as long as the piece or the diffusion lasts."""
     nu = problem.viscosity / problem.density
     diffusion = problem.diffusion_time
     everywhere = np.arange(len(length))
@@ -161,7 +161,9 @@ def _sizes(
     calm = problem.viscosity * (slip + 6.0 * mean) / problem.gap + 0.25 * push * problem.gap
     last = np.minimum(length, diffusion)[:, None]
     held = np.array([wall.body is None for wall in problem.walls])  # a body gives way before the stress has grown
-    grown = (2.0 * problem.density * kink * np.sqrt(nu * last / np.pi)).max(axis=0, initial=0.0) * held
+    grown = (2.0 * problem.density * _accelerations(problem, rows, lever, length) * np.sqrt(nu * last / np.pi)).max(
+        axis=0, initial=0.0
+    ) * held
     fallen = (problem.density * jump * np.sqrt(nu / (np.pi * last))).max(axis=0, initial=0.0)
     stress = np.maximum(np.maximum(grown, fallen), calm)
     # a wall that the motion reaches late or never is judged beside the other one
@@ -171,6 +173,21 @@ def _sizes(
     speed = max(np.abs(surface).max(initial=0.0), driven, 1.5 * mean, *before, 0.0)
     tiny = np.finfo(float).tiny
     return np.where(stress > 0, stress, tiny), speed if speed > 0 else tiny
+
+
+def _accelerations(problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray) -> np.ndarray:
+    """Least acceleration (P, 2) of each wall against the fluid at both ends of every piece, m/s^2."""
+    piece = np.arange(len(length))
+    out = np.empty((len(length), 2))
+    for end in (0, 1):
+        at = [rows[end].at(piece, share * length, 1) * lever[end] for share in (0.0, 1.0)]
+        if problem.flow is not None:
+            at = [a - rows[PRESSURE].at(piece, share * length, 1) for a, share in zip(at, (0.0, 1.0), strict=True)]
+        else:
+            at = [a - rows[PRESSURE].at(piece, share * length) / problem.density
+                  for a, share in zip(at, (0.0, 1.0), strict=True)]  # fmt: skip
+        out[:, end] = np.minimum(np.abs(at[0]), np.abs(at[1]))
+    return out
 
 
 def _surface_speed(problem: Problem, end: int, sample: np.ndarray, lever: float, duration: float) -> np.ndarray:

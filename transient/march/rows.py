@@ -181,7 +181,8 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
         for share in (0.0, 0.5, 1.0):
             bend = np.abs(row.at(history.piece[low], history.offset[low] + share * step, 2)) * step**2 / 8.0
             need = np.maximum(need, bend / (STRAIGHT * accuracy * size))
-    parts = np.clip(np.ceil(np.sqrt(need)), 1, MOST_PARTS)
+    # right at a break the curve is a root: there twice as many parts only halve the error
+    parts = np.clip(np.ceil(np.where(history.offset[low] == 0.0, need, np.sqrt(need))), 1, MOST_PARTS)
     parts[np.isnan(history.stress[low]).any(axis=1)] = 1  # or an infinite stress would spread over rows of its own
     if parts.sum() > MOST_ROWS:
         parts = np.maximum(np.floor(parts * (MOST_ROWS / parts.sum())), 1)
@@ -221,34 +222,6 @@ def denser(problem: Problem, layers: tuple[float, float], cells: int) -> tuple[i
         parts *= 2
     low, high = spacing(cells * parts, *layers)
     return parts, np.where(low < 0.5, problem.inner + problem.gap * low, problem.outer - problem.gap * high)
-
-
-def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray:
-    """Profiles (k, N) with ``parts`` - 1 values added in each interval, (k, (N-1) x parts + 1).
-
-    The grid is smooth in the node's number, so a polynomial in that number through six neighbours serves; it is kept
-    within the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
-    are joined linearly.
-    """
-    if parts == 1:
-        return profile
-    nodes = profile.shape[1]
-    at = np.arange((nodes - 1) * parts + 1) / parts
-    low = np.minimum(at.astype(int), nodes - 2)
-    points = min(6, nodes)
-    start = np.clip(low - points // 2 + 1, 0, nodes - points)
-    window = start[:, None] + np.arange(points)
-    weight = np.ones((len(at), points))
-    for i in range(points):
-        for j in range(points):
-            if i != j:
-                weight[:, i] *= (at - window[:, j]) / (i - j)
-    out = np.einsum("gq,kgq->kg", weight, profile[:, window])
-    near = np.stack([profile[:, np.clip(low + k, 0, nodes - 1)] for k in (-1, 0, 1, 2)])
-    out = np.clip(out, near.min(axis=0), near.max(axis=0))
-    share = at - low
-    line = profile[:, low] * (1.0 - share) + profile[:, low + 1] * share
-    return np.where(straight[:, None], line, out)
 
 
 def profile_times(history: History, count: int) -> np.ndarray:

@@ -3,13 +3,25 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
 from transient.result.curve import Curve
 
 STENCIL = 5
+PARTS = 12  # into which a step is cut in which the place of the largest velocity moves
 LOOK = np.linspace(0.0, 1.0, 33)  # where between the neighbours of the largest node its polynomial is looked at
+
+
+@dataclass(frozen=True, eq=False)
+class Largest:
+    """``curve`` over j instants ``piece``, ``offset`` (j,); ``owner`` (j,) the kept profile at or before each."""
+
+    curve: Curve
+    piece: np.ndarray
+    offset: np.ndarray
+    owner: np.ndarray
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,12 +87,58 @@ class History:
         plain = np.diff(self.time[self.profile_row])
         return np.where(piece[1:] == piece[:-1], np.diff(offset), plain)
 
-    def largest_curve(self) -> Curve:
-        """The largest |profile| over the gap as a curve over the kept profiles."""
-        value, rate = largest(self.position, self.profile, self.profile_rate)
+    @cached_property
+    def largest(self) -> Largest:
+        """The largest |profile| over the gap as a curve over the kept profiles, and over more instants where the place
+        of the largest moves from one part of the gap to another: such a curve has a corner there."""
         piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
-        begins = np.where(piece[1:] == piece[:-1], offset[:-1], 0.0)
-        return Curve(self.time[self.profile_row], value, rate, self.profile_step(), begins)
+        value, rate = largest(self.position, self.profile, self.profile_rate)
+        at = np.abs(self.profile).argmax(axis=1)
+        side = self.profile[np.arange(len(at)), at] < 0.0
+        moves = (np.abs(np.diff(at)) > 1) | (side[1:] != side[:-1])
+        moves &= (piece[1:] == piece[:-1]) & (self.profile_step() > 0.0)
+        owner = np.arange(len(at))
+        if moves.any():
+            inside = np.repeat(np.flatnonzero(moves), PARTS - 1)
+            share = np.tile(np.arange(1, PARTS) / PARTS, int(moves.sum()))
+            low, high = np.sqrt(offset[inside]), np.sqrt(offset[inside + 1])
+            when = (low + share * (high - low)) ** 2
+            more = largest(self.position, *self._profile_between(inside, when - offset[inside]))
+            order = np.argsort(np.concatenate([owner, inside + share]), kind="stable")
+            owner = np.concatenate([owner, inside])[order]
+            piece = np.concatenate([piece, piece[inside]])[order]
+            offset = np.concatenate([offset, when])[order]
+            value, rate = np.concatenate([value, more[0]])[order], np.concatenate([rate, more[1]])[order]
+        base = self.time[self.profile_row] - self.offset[self.profile_row]
+        time = base[owner] + offset
+        if moves.any():
+            # where the corner itself lies the curve is a straight line, between rows of their own
+            lower = np.flatnonzero(moves[owner[:-1]] & (np.diff(time) > 0.0))
+            twice = np.sort(np.concatenate([np.arange(len(time)), lower, lower + 1]))
+            slope = np.diff(value)[lower] / np.diff(time)[lower]
+            first = np.searchsorted(twice, lower, side="right") - 1
+            last = np.searchsorted(twice, lower + 1, side="left")
+            piece, offset, owner, time, value, rate = (of[twice] for of in (piece, offset, owner, time, value, rate))
+            rate[first], rate[last] = slope, slope
+        same = piece[1:] == piece[:-1]
+        step = np.where(same, np.diff(offset), np.diff(time))
+        begins = np.where(same, offset[:-1], 0.0)
+        return Largest(Curve(time, value, rate, step, begins), piece, offset, owner)
+
+    def largest_curve(self) -> Curve:
+        """The curve of ``largest``."""
+        return self.largest.curve
+
+    def _profile_between(self, interval: np.ndarray, passed: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """Profiles (m, N) and their rates ``passed`` s after the kept profiles ``interval`` (m,)."""
+        step = self.profile_step()[interval][:, None]
+        s = passed[:, None] / step
+        v0, v1 = self.profile[interval], self.profile[interval + 1]
+        r0, r1 = self.profile_rate[interval] * step, self.profile_rate[interval + 1] * step
+        rise = v1 - v0
+        bend, twist = 3.0 * rise - 2.0 * r0 - r1, r0 + r1 - 2.0 * rise
+        value = v0 + s * (r0 + s * (bend + s * twist))
+        return value, (r0 + s * (2.0 * bend + 3.0 * s * twist)) / step
 
     def profiles_at(self, time: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Velocity and travel (m, N) at absolute times (m,), by cubics between the kept profiles."""
@@ -135,3 +193,31 @@ def _lagrange(nodes: np.ndarray, x: np.ndarray) -> np.ndarray:
             if i != j:
                 out[..., i] *= (x - nodes[:, j, None]) / (nodes[:, i] - nodes[:, j])[:, None]
     return out
+
+
+def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray:
+    """Profiles (k, N) with ``parts`` - 1 values added in each interval, (k, (N-1) x parts + 1).
+
+    The grid is smooth in the node's number, so a polynomial in that number through six neighbours serves; it is kept
+    within the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
+    are joined linearly.
+    """
+    if parts == 1:
+        return profile
+    nodes = profile.shape[1]
+    at = np.arange((nodes - 1) * parts + 1) / parts
+    low = np.minimum(at.astype(int), nodes - 2)
+    points = min(6, nodes)
+    start = np.clip(low - points // 2 + 1, 0, nodes - points)
+    window = start[:, None] + np.arange(points)
+    weight = np.ones((len(at), points))
+    for i in range(points):
+        for j in range(points):
+            if i != j:
+                weight[:, i] *= (at - window[:, j]) / (i - j)
+    out = np.einsum("gq,kgq->kg", weight, profile[:, window])
+    near = np.stack([profile[:, np.clip(low + k, 0, nodes - 1)] for k in (-1, 0, 1, 2)])
+    out = np.clip(out, near.min(axis=0), near.max(axis=0))
+    share = at - low
+    line = profile[:, low] * (1.0 - share) + profile[:, low + 1] * share
+    return np.where(straight[:, None], line, out)

@@ -8,7 +8,6 @@ condition is the same function as in ``modes``.
 from __future__ import annotations
 
 import numpy as np
-from scipy.optimize import brentq
 from scipy.special import jv, yv
 
 from transient.series.gapshape import FREE, GapShape
@@ -19,6 +18,8 @@ WEAK = 1.0
 
 def weak_root(shape: GapShape, below: float) -> tuple[float, float]:
     """(the one root below ``below``, its relative error)."""
+    from scipy.optimize import brentq  # rarely needed, and slow to load
+
     log_root = brentq(lambda v: _balance(shape, np.exp(v)), np.log(1e-12), np.log(below), xtol=1e-16, rtol=9e-16)
     root = float(np.exp(log_root))
     for _ in range(3):

@@ -96,7 +96,10 @@ def _peak(run: Run, end: int) -> float:
 def _means(run: Run, accuracy: float) -> Iterator[Demand]:
     if run.flow_given:  # the mean is what was asked for, to round-off; of none at all that would be no accuracy
         return
-    largest = float(np.abs(run.history.mean).max(initial=0.0))
+    # a flow that hardly is one, as in a sealed gap, is judged beside the speeds
+    lever = run.history.position if run.rotating else 1.0
+    moving = float(np.abs(run.history.profile * lever).max(initial=0.0))
+    largest = max(float(np.abs(run.history.mean).max(initial=0.0)), HARDLY * moving)
     worst = float(run.errors.mean.max(initial=0.0))
     yield Demand("mean velocity history", worst, HISTORY_SHARE * accuracy * largest)
     yield Demand("peak mean velocity", run.errors.mean_peak, accuracy * largest)

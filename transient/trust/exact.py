@@ -58,9 +58,7 @@ def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
     piece = np.concatenate([history.piece, history.piece[inside]])
     offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
     value = np.stack([np.concatenate([curve.value, curve.at(inside, half)]) for curve in curves], axis=1)
-    true, bound = exact.stress(piece, offset)
-    mean, mean_bound = exact.mean(piece, offset)
-    true, bound = np.column_stack([true, mean]), np.column_stack([bound, mean_bound])
+    true, bound = exact.stress_and_mean(piece, offset)
     with np.errstate(invalid="ignore"):
         off = np.abs(value - true) + bound
     off = np.where(np.isfinite(value), np.where(np.isfinite(off), off, np.inf), 0.0)
@@ -83,21 +81,20 @@ def _steady_end(problem: Problem, ladder: Ladder) -> Callable[[np.ndarray], np.n
 
 
 def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], np.ndarray]) -> np.ndarray:
-    """|largest of the march - largest of the series| + bound (k,) over the gap at the kept profiles and half-way.
+    """|largest of the march - largest of the series| + bound (j,) over the gap at the curve's instants and half-way.
 
     ``away`` holds the deviation whose largest value is judged; the series gives it plus ``end`` (a function of the
     coordinate).  It is looked at between the nodes too, where the march only interpolates.
     """
-    rows = away.profile_row
     nodes = np.arange(2 * len(away.position) - 1) / 2.0
     dense = np.interp(nodes, np.arange(len(away.position)), away.position)
     shift = end(dense)
-    curve = away.largest_curve()
-    same = away.piece[rows][1:] == away.piece[rows][:-1]
-    inside = np.flatnonzero((curve.step > 0.0) & same)
+    told = away.largest
+    curve = told.curve
+    inside = np.flatnonzero((curve.step > 0.0) & (told.piece[1:] == told.piece[:-1]))
     half = np.full(len(inside), 0.5)
-    piece = np.concatenate([away.piece[rows], away.piece[rows][inside]])
-    offset = np.concatenate([away.offset[rows], away.offset[rows][inside] + curve.passed(inside, half)])
+    piece = np.concatenate([told.piece, told.piece[inside]])
+    offset = np.concatenate([told.offset, told.offset[inside] + curve.passed(inside, half)])
     value = np.concatenate([curve.value, curve.at(inside, half)])
     off = np.empty(len(piece))
     chunk = max(1, MOST_AT_ONCE // len(dense))
@@ -106,7 +103,7 @@ def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], n
         true, bound = exact.velocity(piece[part], offset[part], dense)
         true = true - shift
         off[part] = np.abs(value[part] - largest(dense, true, np.zeros_like(true))[0]) + bound
-    return _beside(off[:, None], inside, len(rows))[:, 0]
+    return _beside(off[:, None], inside, len(told.piece))[:, 0]
 
 
 def _peak_error(curve: Curve, history: History, exact: Solution, end: int | None, rows: np.ndarray) -> float:

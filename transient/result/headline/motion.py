@@ -6,9 +6,11 @@ from typing import Any
 
 import numpy as np
 
+from transient.result.history import between
 from transient.result.run import Run
 
 FELT = 0.01  # a layer ends where the change falls to this share of the largest change so far ("1 % depth")
+DENSER = 8  # parts into which an interval between nodes is cut to find the edge of a layer
 UNTOUCHED = 0.02  # the layers have met when no more than this share of the gap is left between them
 
 
@@ -40,17 +42,21 @@ def reach(run: Run) -> np.ndarray:
     wall inwards, as long as that difference is above 1 % of its largest value so far.
     """
     history = run.history
+    # between the nodes too: a layer's edge is thinner than a cell of the core
+    position = between(history.position[None, :], DENSER, np.zeros(1, bool))[0]
+    linear = np.isnan(history.stress[history.profile_row]).any(axis=1)
     start = history.profile[0].copy()
     if len(start) > 2:  # walls that jumped at t = 0 have moved already; the fluid beside them has not
         start[0], start[-1] = _before(history.profile[0], 0), _before(history.profile[0], -1)
-    change = np.abs(history.profile - start - run.fluid_impulse[:, None])
+    moved = history.profile - start - run.fluid_impulse[:, None]
+    change = np.abs(between(moved, DENSER, linear))
     largest = np.maximum.accumulate(change.max(axis=1))
     felt = change >= FELT * np.where(largest > 0, largest, np.inf)[:, None]
     level = FELT * largest[:, None]
     return np.stack(
         [
-            _depth(history.position, change, felt, level),
-            _depth(-history.position[::-1], change[:, ::-1], felt[:, ::-1], level),
+            _depth(position, change, felt, level),
+            _depth(-position[::-1], change[:, ::-1], felt[:, ::-1], level),
         ],
         axis=1,
     )
