@@ -12,7 +12,7 @@ from chebyshev import differentiation
 from problems import ramp, step, trapezoid
 from scipy.integrate import solve_ivp
 
-from transient.answer import solve
+from transient.answer import run, solve
 from transient.case.read import read_case
 from transient.gap.system import assemble
 from transient.march.coupled import dense, operator, slowest
@@ -266,3 +266,46 @@ def test_a_prescribed_pressure_keeps_its_own_numbers():
 def test_every_number_is_finite_or_null():
     parts = headlines(1e-2, upper={"mass": 0.2, "initial_speed": 0.5}, duration=1.0)
     json.dumps(parts, allow_nan=False)
+
+
+CARRIAGE = """title = "Carriage"
+[gap]
+shape = "plates"
+height = "1 mm"
+[fluid]
+density = "870 kg/m^3"
+viscosity = "40 mPa*s"
+[wall.upper.body]
+mass = "2 kg"
+area = "200 cm^2"
+force = { kind = "step", to = "3 N", at = "0.2 s" }
+force_curve = { speeds = ["0 m/s", "5 m/s"], values = ["4 N", "0 N"] }
+[run]
+duration = "1 s"
+"""
+
+
+def test_what_moves_the_walls_is_stored(tmp_path):
+    file = tmp_path / "carriage.toml"
+    file.write_text(CARRIAGE)
+    result = run(read_case(file), "refinement")
+    units = {name: variable.units for name, variable in result.variables.items()}
+    assert units["wall_position"] == "m"
+    assert units["wall_acceleration"] == "m/s^2"
+    assert units["drive_load"] == units["wall_force"] == "N"  # the fixed wall faces the body's area
+    t, upper = result.time, 1
+    speed, acceleration = result.wall_speed[:, upper], result.wall_acceleration[:, upper]
+    load, film = result.drive_load[:, upper], result.wall_force[:, upper]
+    assert load == pytest.approx(np.where(t < 0.2, 0.0, 3.0) + 4.0 - 0.8 * speed, abs=1e-9)
+    # Newton's second law row by row
+    assert 2.0 * acceleration == pytest.approx(load + film, abs=2e-3 * 7.0)
+    # straight lines between the rows: their integrals are the next quantity
+    for rate, value in ((acceleration, speed), (speed, result.wall_position[:, upper])):
+        gained = np.concatenate([[0.0], np.cumsum(0.5 * np.diff(t) * (rate[1:] + rate[:-1]))])
+        assert value - value[0] == pytest.approx(gained, abs=1e-3 * np.abs(value).max())
+    # the load's jump, and with it the acceleration's, is two neighbouring rows
+    (jump,) = np.flatnonzero(np.diff(acceleration) > 0.5)
+    assert t[jump + 1] == 0.2
+    assert t[jump + 1] - t[jump] < 1e-12
+    assert result.summary["energy"]["bodies"]["upper"]["drive_work"] > 0.0
+    assert set(result.summary["quasi_steady"]["bodies"]["upper"]) == {"massless_film", "film_inertia"}

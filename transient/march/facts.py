@@ -38,13 +38,13 @@ def run_of(problem: Problem, ahead: Outlook, ladder: Ladder, errors: Errors) -> 
         unbounded,
         when,
         _free_motion(problem, best.flow),
-        tuple(_body(problem, ladder, end) for end, wall in enumerate(problem.walls) if wall.body is not None),
+        tuple(body_facts(problem, ladder, end) for end, wall in enumerate(problem.walls) if wall.body is not None),
         problem.flow is not None,
         _pressure_jump(problem, ladder),
     )
 
 
-def _body(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
+def body_facts(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
     """A body's loads and motion on the history's rows."""
     body = problem.walls[end].body
     assert body is not None
@@ -122,6 +122,8 @@ def _largest_steady(problem: Problem, ladder: Ladder) -> float:
     speeds, gradient = ladder.best.steady_speeds, ladder.best.steady_gradient
     system = assemble(problem, DENSE * ladder.cells, ladder.layers)
     profile = system.nodes(steady(system, speeds, gradient), speeds)[None, :]
+    if problem.rotating:
+        profile = profile * system.grid.radius
     return float(largest(system.grid.radius, profile, np.zeros_like(profile))[0][0])
 
 
