@@ -16,10 +16,9 @@ from transient.march.march import SolveError
 from transient.march.regime import Outlook, outlook
 from transient.result.headline import headlines
 from transient.result.result import Result
-from transient.result.run import Errors
 from transient.series.gapshape import SeriesError
 from transient.trust.demand import demands, unmet
-from transient.trust.exact import compare
+from transient.trust.exact import Exact, compare, exact_of, sharpened
 from transient.trust.refine import estimate
 
 MOST_ATTEMPTS = 6
@@ -76,20 +75,25 @@ def look(problem: Problem) -> Outlook:
 
 def _attempt(problem: Problem, ahead: Outlook, refine: float, levels: int, judge: str) -> Solved:
     ladder = climb(problem, ahead, problem.accuracy, refine, levels)
-    errors = _errors(problem, ahead, ladder, judge)
+    series = _series(problem, ahead, ladder, judge)
+    errors = estimate(ladder) if series is None else compare(problem, ahead, ladder, series)
     run = run_of(problem, ahead, ladder, errors)
     parts = headlines(run)
+    if series is not None and run.regime.deviation is not None:
+        names = {wall.name: wall.end for wall in run.walls}
+        parts["settling"] = sharpened(parts["settling"], series, run.regime.deviation, errors, names)
     calm = ladder.best.steady_stress if ahead.kind == "steady" else None
     return Solved(ahead, ladder, run, parts, demands(run, parts, problem.accuracy, calm))
 
 
-def _errors(problem: Problem, ahead: Outlook, ladder: Ladder, judge: str) -> Errors:
-    if judge == "refinement":
-        return estimate(ladder)
+def _series(problem: Problem, ahead: Outlook, ladder: Ladder, judge: str) -> Exact | None:
+    """The exact solution, None where there is none or it is not to be used."""
+    if judge == "refinement" or problem.closed:
+        return None
     try:
-        return compare(problem, ahead, ladder)
+        return exact_of(problem, ahead, ladder)
     except SeriesError:
-        return estimate(ladder)
+        return None
 
 
 def _worst(solved: Solved) -> float:

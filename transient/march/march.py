@@ -338,6 +338,7 @@ def history(
     return History(
         time, trace.piece, trace.offset, stress, stress_rate, value[:2].T, slope[:2].T, mean, mean_rate,
         value[PRESSURE], slope[PRESSURE], place, system.grid.radius[::every], at, profile, profile_rate, travel,
+        system.grid.radius[::every] if problem.rotating else None,
     )  # fmt: skip
 
 
@@ -440,7 +441,7 @@ def extrapolate(coarse: History, fine: History) -> History:
         name: getattr(fine, name) + (getattr(fine, name) - getattr(coarse, name)) / 3.0
         for name in EXTRAPOLATED
     }
-    return with_rates(replace(fine, position=coarse.position, **mixed))
+    return with_rates(replace(fine, position=coarse.position, lever=coarse.lever, **mixed))
 
 
 def with_rates(rows: History) -> History:

@@ -39,7 +39,7 @@ class History:
     where infinite); ``place`` (n, 2) displacement of the walls since t = 0, m or rad (a body's from its own zero).
     ``position`` (N,) m, coordinate r; ``profile_row`` (k,) the rows at which profiles were kept;
     ``profile``, ``profile_rate``, ``travel`` (k, N) velocity w, its rate, and its integral since t = 0
-    (in a rotating gap: angular).
+    (in a rotating gap: angular); ``lever`` (N,) what makes velocities in m/s of them where that is not 1.
     """
 
     time: np.ndarray
@@ -59,6 +59,7 @@ class History:
     profile: np.ndarray
     profile_rate: np.ndarray
     travel: np.ndarray
+    lever: np.ndarray | None = None
 
     @property
     def step(self) -> np.ndarray:
@@ -84,16 +85,17 @@ class History:
     def profile_step(self) -> np.ndarray:
         """Lengths of the intervals between kept profiles (k-1,) s."""
         piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
-        plain = np.diff(self.time[self.profile_row])
+        plain = np.maximum(np.diff(self.time[self.profile_row]), 0.0)
         return np.where(piece[1:] == piece[:-1], np.diff(offset), plain)
 
     @cached_property
     def largest(self) -> Largest:
-        """The largest |profile| over the gap as a curve over the kept profiles, and over more instants where the place
-        of the largest moves from one part of the gap to another: such a curve has a corner there."""
+        """The largest speed over the gap, m/s, as a curve over the kept profiles, and over more instants where the
+        place of the largest moves from one part of the gap to another: such a curve has a corner there."""
         piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
-        value, rate = largest(self.position, self.profile, self.profile_rate)
-        at = np.abs(self.profile).argmax(axis=1)
+        lever = 1.0 if self.lever is None else self.lever
+        value, rate = largest(self.position, self.profile * lever, self.profile_rate * lever)
+        at = np.abs(self.profile * lever).argmax(axis=1)
         side = self.profile[np.arange(len(at)), at] < 0.0
         moves = (np.abs(np.diff(at)) > 1) | (side[1:] != side[:-1])
         moves &= (piece[1:] == piece[:-1]) & (self.profile_step() > 0.0)
@@ -103,7 +105,8 @@ class History:
             share = np.tile(np.arange(1, PARTS) / PARTS, int(moves.sum()))
             low, high = np.sqrt(offset[inside]), np.sqrt(offset[inside + 1])
             when = (low + share * (high - low)) ** 2
-            more = largest(self.position, *self._profile_between(inside, when - offset[inside]))
+            profile, change = self._profile_between(inside, when - offset[inside])
+            more = largest(self.position, profile * lever, change * lever)
             order = np.argsort(np.concatenate([owner, inside + share]), kind="stable")
             owner = np.concatenate([owner, inside])[order]
             piece = np.concatenate([piece, piece[inside]])[order]
@@ -121,7 +124,7 @@ class History:
             piece, offset, owner, time, value, rate = (of[twice] for of in (piece, offset, owner, time, value, rate))
             rate[first], rate[last] = slope, slope
         same = piece[1:] == piece[:-1]
-        step = np.where(same, np.diff(offset), np.diff(time))
+        step = np.where(same, np.maximum(np.diff(offset), 0.0), 0.0)  # across a break nothing is known between
         begins = np.where(same, offset[:-1], 0.0)
         return Largest(Curve(time, value, rate, step, begins), piece, offset, owner)
 
@@ -138,7 +141,17 @@ class History:
         rise = v1 - v0
         bend, twist = 3.0 * rise - 2.0 * r0 - r1, r0 + r1 - 2.0 * rise
         value = v0 + s * (r0 + s * (bend + s * twist))
-        return value, (r0 + s * (2.0 * bend + 3.0 * s * twist)) / step
+        rate = (r0 + s * (2.0 * bend + 3.0 * s * twist)) / step
+        begins = self._begins(interval)[:, None]
+        root = np.sqrt(s)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            early = rise / (2.0 * np.where(root > 0.0, root, 1.0)) / step
+        return np.where(begins, v0 + root * rise, value), np.where(begins, early, rate)
+
+    def _begins(self, interval: np.ndarray) -> np.ndarray:
+        """Whether intervals between kept profiles (m,) begin at a break: rates there may be those of a layer without
+        thickness, and what follows goes with the root of the time."""
+        return self.offset[self.profile_row[interval]] == 0.0
 
     def profiles_at(self, time: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Velocity and travel (m, N) at absolute times (m,), by cubics between the kept profiles."""
@@ -148,12 +161,17 @@ class History:
         safe = np.where(step > 0, step, 1.0)
         share = np.clip(np.where(step > 0, (time - kept[interval])[:, None] / safe, 1.0), 0.0, 1.0)
         low, high = interval, np.minimum(interval + 1, len(kept) - 1)
+        begins = self._begins(low)[:, None]
+        piece = self.piece[self.profile_row]
+        apart = (piece[low] != piece[high])[:, None]  # profiles kept far apart, with a break between them
 
         def between(value: np.ndarray, rate: np.ndarray) -> np.ndarray:
             v0, v1, r0, r1 = value[low], value[high], rate[low] * step, rate[high] * step
             rise = v1 - v0
             bend, twist = 3.0 * rise - 2.0 * r0 - r1, r0 + r1 - 2.0 * rise
-            return v0 + share * (r0 + share * (bend + share * twist))
+            value = v0 + share * (r0 + share * (bend + share * twist))
+            value = np.where(begins, v0 + np.sqrt(share) * rise, value)
+            return np.where(apart, v0 + share * rise, value)
 
         return between(self.profile, self.profile_rate), between(self.travel, self.profile)
 
@@ -199,7 +217,7 @@ def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray
     """Profiles (k, N) with ``parts`` - 1 values added in each interval, (k, (N-1) x parts + 1).
 
     The grid is smooth in the node's number, so a polynomial in that number through six neighbours serves; it is kept
-    within the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
+    near the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
     are joined linearly.
     """
     if parts == 1:
@@ -217,7 +235,9 @@ def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray
                 weight[:, i] *= (at - window[:, j]) / (i - j)
     out = np.einsum("gq,kgq->kg", weight, profile[:, window])
     near = np.stack([profile[:, np.clip(low + k, 0, nodes - 1)] for k in (-1, 0, 1, 2)])
-    out = np.clip(out, near.min(axis=0), near.max(axis=0))
+    low_most, high_most = near.min(axis=0), near.max(axis=0)
+    room = 0.25 * (high_most - low_most)
+    out = np.clip(out, low_most - room, high_most + room)
     share = at - low
     line = profile[:, low] * (1.0 - share) + profile[:, low + 1] * share
     return np.where(straight[:, None], line, out)

@@ -34,7 +34,10 @@ class EarlyTable:
 
 def early_table(contour: np.ndarray, age: float, orders: int) -> EarlyTable:
     """Invert the transfer function ``contour`` (NODES, 3, Q), given on the nodes for ages from ``age`` to 2 ``age``."""
-    power = (NODE[:, None] / age) ** -np.arange(float(orders)) / age
+    # only orders whose power is in range are asked for at so small an age
+    with np.errstate(over="ignore", invalid="ignore"):
+        power = (NODE[:, None] / age) ** -np.arange(float(orders)) / age
+    power = np.where(np.isfinite(power), power, 0.0)
     parts = np.einsum("ko,kiq->koiq", power, contour).reshape(len(NODE), -1)
     shape = (orders, *contour.shape[1:])
     # Real arithmetic halves the work: only the imaginary part is wanted.

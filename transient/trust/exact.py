@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -18,28 +20,117 @@ from transient.trust.quasi_steady import steady_profile
 
 # Bisections of the interval around a peak at which the exact curve is looked at; its error is then 4^-n of the
 # curve's sagitta over one step.
-NARROWINGS = 4
+NARROWINGS = 5
+PEAK_MARGIN = 1.02  # for what is compared point by point
+BETWEEN_MARGIN = 1.5  # see ``_looks``
 AROUND = np.linspace(-1.0, 1.0, 9)
 MOST_AT_ONCE = 4_000_000  # velocities compared in one go
 
 
-def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
+@dataclass(frozen=True, eq=False)
+class Exact:
+    """The series of a case: of the ``flow``, and of its ``deviation`` from what it ends in (a series of its own where
+    that is periodic, None without): the deviation series less ``stress`` (2,), ``mean`` and ``velocity`` (a function
+    of the coordinate)."""
+
+    flow: Solution
+    deviation: Solution | None
+    stress: np.ndarray
+    mean: float
+    velocity: Callable[[np.ndarray], np.ndarray]
+
+    def away(self, time: np.ndarray, position: np.ndarray, lever: np.ndarray | float) -> np.ndarray:
+        """Magnitudes (m, 4) of the deviation at absolute times (m,): largest speed, mean, stresses of both walls."""
+        assert self.deviation is not None
+        piece, offset = self.deviation.locate(time)
+        walls, _ = self.deviation.stress_and_mean(piece, offset)
+        field, _ = self.deviation.velocity(piece, offset, position)
+        field = (field - self.velocity(position)) * lever
+        largest_speed = largest(position, field, np.zeros_like(field))[0]
+        return np.column_stack([largest_speed, np.abs(walls[:, 2] - self.mean), np.abs(walls[:, :2] - self.stress)])
+
+
+def exact_of(problem: Problem, ahead: Outlook, ladder: Ladder) -> Exact:
+    """The series of a case.  Raises ``SeriesError`` where it has none."""
+    flow = solve(problem, ahead.until)
+    best = ladder.best
+    if best.deviation is None:
+        return Exact(flow, None, np.zeros(2), 0.0, np.zeros_like)
+    if ahead.kind == "steady":
+        return Exact(flow, flow, best.steady_stress, best.steady_mean, _steady_end(problem, ladder))
+    return Exact(flow, deviation(problem, ahead.until), np.zeros(2), 0.0, np.zeros_like)
+
+
+def sharpened(
+    settling: dict[str, Any], exact: Exact, away: History, errors: Errors, names: dict[str, int]
+) -> dict[str, Any]:
+    """The settling part of a summary with errors that include the exact crossing beside each stated time.
+
+    ``names``: walls and their ends.  The exact deviation is looked for its last passage of the band near the time.
+    """
+    if exact.deviation is None:
+        return settling
+    nodes = np.arange(2 * len(away.position) - 1) / 2.0
+    dense = np.interp(nodes, np.arange(len(away.position)), away.position)
+    lever = 1.0 if away.lever is None else dense
+    said, size, spread = settling, settling["relative_to"], settling["errors"]
+    # the size of a periodic regime, or a peak that stands in for a size, is a computed one too
+    unsure = [float(errors.level_profile.max(initial=0.0)), errors.mean_peak, *errors.peak]
+    rows = [("velocity", said["velocity"], spread["velocity"], size["velocity"], 0)]
+    rows.append(("flow", said["flow"], spread["flow"], size["flow"], 1))
+    rows += [(n, said["stress"][n], spread["stress"][n], size["stress"][n], 2 + end) for n, end in names.items()]
+    found = {}
+    for name, time, error, scale, column in rows:
+        found[name] = error
+        if time is None or error is None or not time or not scale:
+            continue
+        share = unsure[column] / scale if said["regime"] == "periodic" else 0.0
+        for band in {said["within"] * scale * (1.0 + side * share) for side in (-1.0, 1.0)}:
+            off = _exact_passage(exact, away, time, error, band, column, dense, lever)
+            found[name] = max(found[name], float(PEAK_MARGIN * off))
+    told = {"velocity": found["velocity"], "flow": found["flow"], "stress": {n: found[n] for n in names}}
+    return {**settling, "error": found["velocity"], "errors": told}
+
+
+def _exact_passage(
+    exact: Exact, away: History, time: float, error: float, band: float, column: int, dense: np.ndarray,
+    lever: np.ndarray | float,
+) -> float:  # fmt: skip
+    """How far from ``time`` the exact deviation last falls below ``band`` within a step of it; 0 if it does not."""
+    i = int(np.clip(np.searchsorted(away.time, time), 1, len(away.time) - 1))
+    wide = max(3.0 * error, away.time[i] - away.time[max(i - 1, 0)])
+    low, high = max(time - wide, 0.0), min(time + wide, float(away.time[-1]))
+    where = 0.0
+    for _ in range(3):
+        t = np.linspace(low, high, 25)
+        above = exact.away(t, dense, lever)[:, column] > band
+        crossing = np.flatnonzero(above[:-1] & ~above[1:])
+        if len(crossing) == 0:
+            return where
+        low, high = t[crossing[-1]], t[crossing[-1] + 1]
+        where = max(abs(low - time), abs(high - time))
+    return where
+
+
+def compare(problem: Problem, ahead: Outlook, ladder: Ladder, series: Exact | None = None) -> Errors:
     """Errors of the ladder's best histories against the series (``kind`` "exact"), series' own bounds included.
 
-    A row's error covers the halves of the steps beside it, where the march only interpolates.
-    Raises ``SeriesError`` where the case has no series solution.
+    A row's error covers the parts of the steps beside it, where the march only interpolates.
+    ``series`` default: that of the case; raises ``SeriesError`` where it has none.
     """
+    series = exact_of(problem, ahead, ladder) if series is None else series
     flow = ladder.best.flow
-    exact = solve(problem, ahead.until)
+    exact = series.flow
     stress, mean = _errors(flow, exact)
     away = ladder.best.deviation
     if away is None:
         level_stress, level_mean, level_profile = stress, mean, np.zeros(len(flow.profile_row))
     elif ahead.kind == "steady":
         level_stress, level_mean = stress, mean
-        level_profile = _profile_error(away, exact, _steady_end(problem, ladder))
+        level_profile = _profile_error(away, exact, series.velocity)
     else:
-        apart = deviation(problem, ahead.until)
+        apart = series.deviation
+        assert apart is not None
         level_stress, level_mean = _errors(away, apart)
         level_profile = _profile_error(away, apart, np.zeros_like)
     peak = np.array([_peak_error(flow.stress_curve(end), flow, exact, end, stress[:, end]) for end in (0, 1)])
@@ -48,13 +139,13 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder) -> Errors:
 
 
 def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
-    """|march - series| + bound of the stresses (n, 2) and of the mean velocity (n,), at rows and half-way between.
+    """|march - series| + bound of the stresses (n, 2) and of the mean velocity (n,), at rows and between them.
 
     0 where the march itself says infinite.
     """
     inside = np.flatnonzero(history.step > 0.0)
     curves = [history.stress_curve(0), history.stress_curve(1), history.mean_curve()]
-    half = np.full(len(inside), 0.5)
+    half = _looks(inside)
     piece = np.concatenate([history.piece, history.piece[inside]])
     offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
     value = np.stack([np.concatenate([curve.value, curve.at(inside, half)]) for curve in curves], axis=1)
@@ -66,9 +157,15 @@ def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
     return np.where(np.isfinite(history.stress), rows[:, :2], 0.0), rows[:, 2]
 
 
+def _looks(inside: np.ndarray) -> np.ndarray:
+    """Where in each interval the march is compared: at 0.3 and 0.7 by turns.  Half-way, the error that wrong slopes
+    make would vanish; at these places both that one and the cubic's own are above two thirds of their largest."""
+    return np.where(inside % 2 == 0, 0.3, 0.7)
+
+
 def _beside(off: np.ndarray, inside: np.ndarray, rows: int) -> np.ndarray:
-    """Errors at the rows (n, c), each at least those half-way to its neighbours; ``off`` holds rows, then halves."""
-    out, between = off[:rows].copy(), off[rows:]
+    """Errors at the rows (n, c), each at least those towards its neighbours; ``off`` holds rows, then looks."""
+    out, between = off[:rows].copy(), BETWEEN_MARGIN * off[rows:]
     out[inside] = np.maximum(out[inside], between)
     out[inside + 1] = np.maximum(out[inside + 1], between)
     return out
@@ -81,7 +178,7 @@ def _steady_end(problem: Problem, ladder: Ladder) -> Callable[[np.ndarray], np.n
 
 
 def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], np.ndarray]) -> np.ndarray:
-    """|largest of the march - largest of the series| + bound (j,) over the gap at the curve's instants and half-way.
+    """|largest of the march - largest of the series| + bound (j,) over the gap, at the curve's instants and between.
 
     ``away`` holds the deviation whose largest value is judged; the series gives it plus ``end`` (a function of the
     coordinate).  It is looked at between the nodes too, where the march only interpolates.
@@ -89,10 +186,11 @@ def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], n
     nodes = np.arange(2 * len(away.position) - 1) / 2.0
     dense = np.interp(nodes, np.arange(len(away.position)), away.position)
     shift = end(dense)
+    lever = 1.0 if away.lever is None else dense
     told = away.largest
     curve = told.curve
     inside = np.flatnonzero((curve.step > 0.0) & (told.piece[1:] == told.piece[:-1]))
-    half = np.full(len(inside), 0.5)
+    half = _looks(inside)
     piece = np.concatenate([told.piece, told.piece[inside]])
     offset = np.concatenate([told.offset, told.offset[inside] + curve.passed(inside, half)])
     value = np.concatenate([curve.value, curve.at(inside, half)])
@@ -101,7 +199,7 @@ def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], n
     for first in range(0, len(piece), chunk):
         part = slice(first, first + chunk)
         true, bound = exact.velocity(piece[part], offset[part], dense)
-        true = true - shift
+        true = (true - shift) * lever
         off[part] = np.abs(value[part] - largest(dense, true, np.zeros_like(true))[0]) + bound
     return _beside(off[:, None], inside, len(told.piece))[:, 0]
 
@@ -118,6 +216,7 @@ def _peak_error(curve: Curve, history: History, exact: Solution, end: int | None
     sign = float(np.sign(value))
     best = -np.inf
     bound_there = 0.0
+    reached = -np.inf
     for _ in range(NARROWINGS):
         at = np.clip(offset[:, None] + half[:, None] * AROUND, 0.0, _lengths(history, piece)[:, None])
         found, bound = _values(exact, np.repeat(piece, len(AROUND)), at.ravel(), end)
@@ -125,11 +224,13 @@ def _peak_error(curve: Curve, history: History, exact: Solution, end: int | None
         top = found.argmax(axis=1)
         rows_at = np.arange(len(at))
         winner = found[rows_at, top]
+        reached = best
         if winner.max() >= best:
             best = float(winner.max())
             bound_there = float(bound.reshape(at.shape)[rows_at, top].max())
         offset, half = at[rows_at, top], half / 4.0
-    return abs(abs(value) - best) + bound_there
+    # what the last narrowing still added stands for what the next ones would
+    return PEAK_MARGIN * (abs(abs(value) - best) + bound_there + max(best - reached, 0.0))
 
 
 def _candidates(

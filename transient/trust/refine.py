@@ -31,7 +31,8 @@ def estimate(ladder: Ladder) -> Errors:
     else:
         level_stress = spread(away.stress, other_away.stress)
         level_mean = spread(away.mean, other_away.mean)
-        profile = spread(away.profile, other_away.profile).max(axis=1)
+        lever = 1.0 if away.lever is None else away.lever
+        profile = (spread(away.profile, other_away.profile) * lever).max(axis=1)
         owner = away.largest.owner
         level_profile = np.maximum(profile[owner], profile[np.minimum(owner + 1, len(profile) - 1)])
     # what no level tells, since all share the rows: how far off the cubic between rows may be

@@ -21,6 +21,8 @@ def settling(run: Run) -> dict[str, Any]:
     Relative to the steady value, over one period to the largest magnitude; where that is zero to the quantity's own
     peak.  The error is the spread of the time when the deviation's own error is added and taken away.
     """
+    from transient.result.headline import plain
+
     within = run.settle_within
     names = [wall.name for wall in run.walls]
     if run.regime.deviation is None:
@@ -39,6 +41,11 @@ def settling(run: Run) -> dict[str, Any]:
         **main,
         "errors": spread,
         "grazing": _grazing(judges, within, main, spread, names),
+        "relative_to": {
+            "velocity": plain(judges["velocity"].size),
+            "flow": plain(judges["flow"].size),
+            "stress": {name: plain(judges["stress"][name].size) for name in names},
+        },
         "error_kind": run.errors.kind,
         "regime": run.regime.kind,
         "period": run.regime.period,
@@ -79,7 +86,6 @@ class Judge:
         late = _later(self.higher.last_over(band, 1.0), self.lower.last_over(band, -1.0), end)
         early = _later(self.lower.last_over(band, 1.0), self.higher.last_over(band, -1.0), end)
         return max(late - time, time - early, 4e-16 * time, 0.0)
-
 
     def grazes(self, level: float, time: float | None, spread: float | None) -> bool:
         """Whether the deviation runs along the band: a share of it moves the time by ``GRAZE`` times that share.

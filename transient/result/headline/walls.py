@@ -8,6 +8,8 @@ import numpy as np
 
 from transient.result.run import Run, WallFacts
 
+TIME_MARGIN = 1.1  # the thresholds are crossed by the curve, not by the exact one
+
 
 def walls(run: Run) -> dict[str, Any]:
     """Summary of every wall by name; all SI."""
@@ -38,7 +40,7 @@ def _wall(run: Run, wall: WallFacts) -> dict[str, Any]:
         error = float(run.errors.peak[wall.end])
         first = _plateau_start(curve, peak, error, at)
         out |= {"peak_stress": peak, "peak_stress_error": error, "peak_time": first}
-        out["peak_time_error"] = _time_error(curve, peak, error, first)
+        out["peak_time_error"] = _time_error(curve, peak, error, first, run.errors.stress[:, wall.end])
     load = _load_factor(run, wall)
     name = "peak_torque" if run.rotating else "peak_force"
     out |= {
@@ -79,14 +81,22 @@ def _plateau_start(curve, peak: float, error: float, at: float) -> float:
     return at if np.isnan(first) else min(first, at)
 
 
-def _time_error(curve, peak: float, error: float, first: float) -> float:
-    """How far the time moves when |stress| is off by the peak's error either way."""
-    if peak == 0.0 or error == 0.0:
+def _time_error(curve, peak: float, error: float, first: float, rows: np.ndarray) -> float:
+    """How far the time moves when peak and curve are off by their errors, either way.
+
+    ``rows`` (n,) the curve's own errors: those of all rows that come near the peak count.
+    """
+    if peak == 0.0:
         return 0.0
     sign = float(np.sign(peak))
-    early = curve.first_at(abs(peak) - 2.0 * error, sign)
-    late = curve.first_at(abs(peak), sign)
-    return float(max(first - early, (late if np.isfinite(late) else first) - first, 0.0))
+    near = sign * curve.value >= abs(peak) - 3.0 * error - 2.0 * float(rows.max(initial=0.0))
+    off = error + float(rows[near].max(initial=0.0))
+    early = curve.first_at(abs(peak) - error - off, sign)
+    late = curve.first_at(abs(peak) - error + off, sign)
+    if not np.isfinite(late):  # the top itself is within the errors: so is all of it
+        late = curve.last_over(abs(peak) - error - off, sign)
+        late = float(curve.time[-1]) if not np.isfinite(late) else late
+    return TIME_MARGIN * float(max(first - early, late - first, 0.0))
 
 
 def _overshoot(peak: float | None, final: float) -> float | None:
