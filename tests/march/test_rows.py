@@ -209,12 +209,17 @@ def test_a_profile_with_a_layer_of_no_thickness_is_joined_by_straight_lines():
     assert not out[0, :-5].any()
 
 
-def test_no_profile_between_nodes_leaves_their_range():
+def test_no_profile_between_nodes_goes_far_beyond_its_neighbours():
+    """A smooth maximum lies above its nodes; a rough profile must not be carried away by its polynomial."""
     random = np.random.default_rng(3)
     profile = random.normal(size=(5, 12))
     out = between(profile, 8, np.zeros(5, bool))
-    assert out.max() <= profile.max()
-    assert out.min() >= profile.min()
+    room = 0.25 * np.ptp(profile)
+    assert out.max() <= profile.max() + room
+    assert out.min() >= profile.min() - room
+    x = np.linspace(0.0, 1.0, 9)
+    top = between(1.0 - (x - 0.45)[None, :] ** 2, 8, np.zeros(1, bool))
+    assert top.max() == pytest.approx(1.0, abs=1e-4)
 
 
 def test_a_history_that_is_told_to_be_wrong_keeps_its_rows(tmp_path):

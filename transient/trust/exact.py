@@ -21,6 +21,7 @@ from transient.trust.quasi_steady import steady_profile
 # Bisections of the interval around a peak at which the exact curve is looked at; its error is then 4^-n of the
 # curve's sagitta over one step.
 NARROWINGS = 5
+RESOLVED = 3e-9  # of a settling time: how closely the exact passage is found
 PEAK_MARGIN = 1.02  # for what is compared point by point
 BETWEEN_MARGIN = 1.5  # see ``_looks``
 AROUND = np.linspace(-1.0, 1.0, 9)
@@ -101,8 +102,8 @@ def _exact_passage(
     wide = max(3.0 * error, away.time[i] - away.time[max(i - 1, 0)])
     low, high = max(time - wide, 0.0), min(time + wide, float(away.time[-1]))
     where = 0.0
-    for _ in range(3):
-        t = np.linspace(low, high, 25)
+    while high - low > RESOLVED * time:
+        t = np.linspace(low, high, 13)
         above = exact.away(t, dense, lever)[:, column] > band
         crossing = np.flatnonzero(above[:-1] & ~above[1:])
         if len(crossing) == 0:

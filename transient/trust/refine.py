@@ -16,7 +16,8 @@ from transient.result.run import Errors
 # difference alone covers both, the margin the luck of two errors of one sign.  Measured, see the experiment.
 MARGIN = 1.5
 ROUNDING = 2e-13
-DOUBLED = 8.0
+DOUBLED = 5.0
+AROUND = 2  # rows to either side whose differences count too: where two levels' errors cross, one row says nothing
 
 
 def estimate(ladder: Ladder) -> Errors:
@@ -73,7 +74,12 @@ def spread(best: np.ndarray, other: np.ndarray) -> np.ndarray:
     """Bound of the error of ``best``: its distance to ``other`` with the margin, never below round-off."""
     finite = np.isfinite(best)
     size = np.abs(best[finite]).max(initial=0.0)
-    return np.where(finite, MARGIN * np.abs(np.where(finite, best - other, 0.0)) + ROUNDING * size, 0.0)
+    off = np.abs(np.where(finite, best - other, 0.0))
+    wide = off.copy()
+    for shift in range(1, AROUND + 1):
+        wide[shift:] = np.maximum(wide[shift:], off[:-shift])
+        wide[:-shift] = np.maximum(wide[:-shift], off[shift:])
+    return np.where(finite, MARGIN * wide + ROUNDING * size, 0.0)
 
 
 def _peak(best, other, rows: np.ndarray) -> float:
