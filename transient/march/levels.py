@@ -221,9 +221,12 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     walls = kernel.WALLS
     moved = trace.fields[0, walls : walls + 6].reshape(3, 2) - orbit.fields[0, walls : walls + 6].reshape(3, 2)
     gone = away.level(number, State(begin, rates_of(system, begin, away.inputs), moved[0], moved[2]))
+    apart = history(problem, away.inputs, gone, None, every)
+    # where the flow begins with an infinite stress, so does its deviation
+    apart.stress[0, np.isnan(main.stress[0])] = np.nan
     return Histories(
         main,
-        history(problem, away.inputs, gone, None, every),
+        apart,
         history(problem, around.inputs, orbit, None, every),
         None,
         0.0,
