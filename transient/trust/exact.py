@@ -22,6 +22,7 @@ from transient.trust.quasi_steady import steady_profile
 # curve's sagitta over one step.
 NARROWINGS = 5
 RESOLVED = 3e-9  # of a settling time: how closely the exact passage is found
+ROUNDING = 1e-13  # of the largest stress, or mean velocity, about
 PEAK_MARGIN = 1.02  # for what is compared point by point
 BETWEEN_MARGIN = 1.5  # see ``_looks``
 AROUND = np.linspace(-1.0, 1.0, 9)
@@ -75,7 +76,10 @@ def sharpened(
     dense = np.interp(nodes, np.arange(len(away.position)), away.position)
     lever = 1.0 if away.lever is None else dense
     said, size, spread = settling, settling["relative_to"], settling["errors"]
-    # the size of a periodic regime, or a peak that stands in for a size, is a computed one too
+    # the size of a periodic regime, or a peak that stands in for a size, is a computed one too; a steady one is exact
+    known = {0: size["velocity"], 1: abs(exact.mean), 2: abs(exact.stress[0]), 3: abs(exact.stress[1])}
+    if said["regime"] == "periodic":
+        known = {}
     unsure = [float(errors.level_profile.max(initial=0.0)), errors.mean_peak, *errors.peak]
     rows = [("velocity", said["velocity"], spread["velocity"], size["velocity"], 0)]
     rows.append(("flow", said["flow"], spread["flow"], size["flow"], 1))
@@ -85,7 +89,7 @@ def sharpened(
         found[name] = error
         if time is None or error is None or not time or not scale:
             continue
-        share = unsure[column] / scale if said["regime"] == "periodic" else 0.0
+        share = 0.0 if column in known and abs(known[column] - scale) <= 1e-9 * scale else unsure[column] / scale
         for band in {said["within"] * scale * (1.0 + side * share) for side in (-1.0, 1.0)}:
             off = _exact_passage(exact, away, time, error, band, column, dense, lever)
             found[name] = max(found[name], float(PEAK_MARGIN * off))
@@ -153,7 +157,9 @@ def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
     true, bound = exact.stress_and_mean(piece, offset)
     with np.errstate(invalid="ignore"):
         off = np.abs(value - true) + bound
-    off = np.where(np.isfinite(value), np.where(np.isfinite(off), off, np.inf), 0.0)
+    size = np.abs(np.where(np.isfinite(value), value, 0.0)).max(axis=0, initial=0.0)
+    size[:2] = size[:2].max()
+    off = np.where(np.isfinite(value), np.where(np.isfinite(off), off + ROUNDING * size, np.inf), 0.0)
     rows = _beside(off, inside, len(history.time))
     return np.where(np.isfinite(history.stress), rows[:, :2], 0.0), rows[:, 2]
 
@@ -230,8 +236,10 @@ def _peak_error(curve: Curve, history: History, exact: Solution, end: int | None
             best = float(winner.max())
             bound_there = float(bound.reshape(at.shape)[rows_at, top].max())
         offset, half = at[rows_at, top], half / 4.0
-    # what the last narrowing still added stands for what the next ones would
-    return PEAK_MARGIN * (abs(abs(value) - best) + bound_there + max(best - reached, 0.0))
+    # what the last narrowing still added stands for what the next ones would; the rows beside the peak know as much
+    top = int(np.nanargmax(height))
+    beside = float(rows[max(top - 1, 0) : top + 2].max())
+    return max(PEAK_MARGIN * (abs(abs(value) - best) + bound_there + max(best - reached, 0.0)), beside)
 
 
 def _candidates(
