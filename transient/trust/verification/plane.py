@@ -9,7 +9,7 @@ from transient.gap.problem import Problem
 from transient.trust.verification.unit_jump import StartUp, startup
 
 COUETTE = "start-up of plane Couette flow: Christov (2013), arXiv 1305.5999"
-POISEUILLE = "start-up between plates: Szymanski (1932), J. Math. Pures Appl. 11, 67"
+POISEUILLE = "start-up between plates: sine series (from memory; the plane case of Szymanski 1932)"
 FREE = "film with a free surface: Carslaw & Jaeger, Conduction of Heat in Solids, 3.4 (from memory)"
 SLIP = "surface resistance on both sides: Carslaw & Jaeger, Conduction of Heat in Solids, 3.11 (from memory)"
 

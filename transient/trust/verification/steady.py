@@ -40,7 +40,7 @@ def steadies(bench: Bench) -> Iterator[Row]:
     yield _pipe(bench)
     yield from _axial(bench)
     yield _rotating(bench)
-    yield row("all round gaps: friction factor of steady flow, 12 ratios of radii", _friction(bench), 6e-5, WHITE)
+    yield row("pipe, axial annuli, plates: friction factor of steady flow at 12 ratios of radii", _friction(bench), 6e-5, WHITE)
 
 
 def _held(values: dict[int, float]) -> dict:
