@@ -81,7 +81,7 @@ def _attempt(problem: Problem, ahead: Outlook, refine: float, levels: int, judge
     parts = headlines(run)
     if series is not None and run.regime.deviation is not None:
         names = {wall.name: wall.end for wall in run.walls}
-        parts["settling"] = sharpened(parts["settling"], series, run.regime.deviation, errors, names)
+        parts["settling"] = sharpened(parts["settling"], series, ladder, errors, names)
     calm = ladder.best.steady_stress if ahead.kind == "steady" else None
     return Solved(ahead, ladder, run, parts, demands(run, parts, problem.accuracy, calm))
 

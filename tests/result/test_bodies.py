@@ -94,7 +94,7 @@ def test_a_rotor_s_terminal_speed_is_that_of_concentric_cylinders():
         lower={"mass": 4.0, "load": torque, "area": 2.0 * math.pi * inner * length},
     )  # fmt: skip
     hold = 4.0 * math.pi * mu * inner**2 * outer**2 * length / (outer**2 - inner**2)
-    assert said["terminal_speed"] == pytest.approx(torque / hold, rel=1e-12)
+    assert said["terminal_speed"] == pytest.approx(torque / hold, rel=1e-11)
     assert said["peak_film_load"] == pytest.approx(-torque, rel=2e-3)
 
 

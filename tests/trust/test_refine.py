@@ -10,7 +10,7 @@ from problems import SHAPES, problem, ramp, smooth_ramp, trapezoid
 
 from transient.answer import look, solve
 from transient.march.levels import climb
-from transient.trust.exact import compare
+from transient.trust.exact import BETWEEN_MARGIN, compare
 from transient.trust.refine import AROUND, MARGIN, ROUNDING, estimate, spread
 
 DRIVES = {
@@ -33,7 +33,8 @@ def test_estimates_cover_the_difference_to_the_series(shape, drive):
     said, true = estimate(ladder), compare(flow, look(flow), ladder)
     assert said.kind == "estimate"
     finite = [end for end in (0, 1) if np.isfinite(ladder.best.flow.stress[:, end]).all()]
-    assert (true.peak[finite] <= said.peak[finite] + 1e-9).all()
+    # the series' own statement carries a margin for what lies between the places compared
+    assert (true.peak[finite] / BETWEEN_MARGIN <= said.peak[finite] + 1e-9).all()
     assert true.mean_peak <= said.mean_peak + 1e-9
     # row by row: all but a few, where the two levels' errors happen to cross (nine tenths: a regression value)
     late = ladder.best.flow.offset > 1e-3

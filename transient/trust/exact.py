@@ -10,6 +10,7 @@ import numpy as np
 
 from transient.gap.problem import Problem
 from transient.march.levels import Ladder
+from transient.march.march import with_rates
 from transient.march.regime import Outlook
 from transient.result.curve import Curve
 from transient.result.history import History, largest
@@ -22,7 +23,7 @@ from transient.trust.quasi_steady import steady_profile
 # curve's sagitta over one step.
 NARROWINGS = 5
 RESOLVED = 3e-9  # of a settling time: how closely the exact passage is found
-ROUNDING = 1e-13  # of the largest stress, or mean velocity, about
+ROUNDING = 1e-13  # of the usual stress, or mean velocity, about
 PEAK_MARGIN = 1.02  # for what is compared point by point
 BETWEEN_MARGIN = 1.5  # see ``_looks``
 AROUND = np.linspace(-1.0, 1.0, 9)
@@ -64,13 +65,14 @@ def exact_of(problem: Problem, ahead: Outlook, ladder: Ladder) -> Exact:
 
 
 def sharpened(
-    settling: dict[str, Any], exact: Exact, away: History, errors: Errors, names: dict[str, int]
+    settling: dict[str, Any], exact: Exact, ladder: Ladder, errors: Errors, names: dict[str, int]
 ) -> dict[str, Any]:
     """The settling part of a summary with errors that include the exact crossing beside each stated time.
 
     ``names``: walls and their ends.  The exact deviation is looked for its last passage of the band near the time.
     """
-    if exact.deviation is None:
+    away = ladder.best.deviation
+    if exact.deviation is None or away is None:
         return settling
     nodes = np.arange(2 * len(away.position) - 1) / 2.0
     dense = np.interp(nodes, np.arange(len(away.position)), away.position)
@@ -78,9 +80,9 @@ def sharpened(
     said, size, spread = settling, settling["relative_to"], settling["errors"]
     # the size of a periodic regime, or a peak that stands in for a size, is a computed one too; a steady one is exact
     known = {0: size["velocity"], 1: abs(exact.mean), 2: abs(exact.stress[0]), 3: abs(exact.stress[1])}
+    unsure = [float(errors.level_profile[away.largest.curve.value.argmax()]), errors.mean_peak, *errors.peak]
     if said["regime"] == "periodic":
-        known = {}
-    unsure = [float(errors.level_profile.max(initial=0.0)), errors.mean_peak, *errors.peak]
+        known, unsure = {}, _orbit_errors(ladder)
     rows = [("velocity", said["velocity"], spread["velocity"], size["velocity"], 0)]
     rows.append(("flow", said["flow"], spread["flow"], size["flow"], 1))
     rows += [(n, said["stress"][n], spread["stress"][n], size["stress"][n], 2 + end) for n, end in names.items()]
@@ -95,6 +97,18 @@ def sharpened(
             found[name] = max(found[name], float(PEAK_MARGIN * off))
     told = {"velocity": found["velocity"], "flow": found["flow"], "stress": {n: found[n] for n in names}}
     return {**settling, "error": found["velocity"], "errors": told}
+
+
+def _orbit_errors(ladder: Ladder) -> list[float]:
+    """How far the sizes of a periodic regime (largest speed, mean, stresses) are from those of the next best answer,
+    which is their error's bound: extrapolation has removed most of it."""
+    best, other = ladder.best.orbit, ladder.next_best.orbit
+    assert best is not None
+    assert other is not None
+    pairs = [(best.largest_curve(), other.largest_curve()), (best.mean_curve(), with_rates(other).mean_curve())]
+    pairs += [(best.stress_curve(end), with_rates(other).stress_curve(end)) for end in (0, 1)]
+    sizes = [[abs(curve.magnitude()[0]) for curve in pair] for pair in pairs]
+    return [abs(a - b) if np.isfinite(a) and np.isfinite(b) else 0.0 for a, b in sizes]
 
 
 def _exact_passage(
@@ -157,9 +171,11 @@ def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
     true, bound = exact.stress_and_mean(piece, offset)
     with np.errstate(invalid="ignore"):
         off = np.abs(value - true) + bound
-    size = np.abs(np.where(np.isfinite(value), value, 0.0)).max(axis=0, initial=0.0)
-    size[:2] = size[:2].max()
-    off = np.where(np.isfinite(value), np.where(np.isfinite(off), off + ROUNDING * size, np.inf), 0.0)
+    shown = np.abs(np.where(np.isfinite(value), value, 0.0))
+    # the usual size, not the largest: that may be what an infinite stress left behind
+    usual = np.median(shown, axis=0)
+    usual[:2] = usual[:2].max()
+    off = np.where(np.isfinite(value), np.where(np.isfinite(off), off + ROUNDING * (usual + shown), np.inf), 0.0)
     rows = _beside(off, inside, len(history.time))
     return np.where(np.isfinite(history.stress), rows[:, :2], 0.0), rows[:, 2]
 
