@@ -19,7 +19,7 @@ ROWS = [
 def rows(monkeypatch: pytest.MonkeyPatch) -> list[Row]:
     """The rows that the verification set returns; a test may spoil them."""
     made = list(ROWS)
-    monkeypatch.setattr(verification, "verify", lambda: made)
+    monkeypatch.setattr(verification, "verify", lambda solver: made)
     return made
 
 

@@ -8,21 +8,22 @@ import numpy as np
 import pytest
 from scipy.special import erfc
 
+from transient.answer import solve
 from transient.drive import KINDS
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Law
 from transient.march import march as room
 from transient.trust import verification
 from transient.trust.verification import gaps, kinds, motion, order, starting, steady
 from transient.trust.verification.row import row
-from transient.trust.verification.solved import Bench, attempts
+from transient.trust.verification.solved import Bench
 from transient.trust.verification.textbook import SERIES, Textbook
 
-BENCH = Bench(attempts)
+BENCH = Bench(solve)
 
 
 @pytest.fixture(scope="module")
 def rows():
-    return verification.verify()
+    return verification.verify(solve)
 
 
 def test_everything_passes(rows):
@@ -75,7 +76,7 @@ def test_a_wrong_history_is_seen(monkeypatch):
 
 def test_errors_stated_too_small_are_seen():
     def boastful(problem, judge):
-        found = attempts(problem, judge)
+        found = solve(problem, judge)
         errors = found.run.errors
         small = replace(errors, stress=errors.stress / 3.0, mean=errors.mean / 3.0, peak=errors.peak / 3.0)
         return replace(found, run=replace(found.run, errors=small))

@@ -11,7 +11,7 @@ from transient.trust.verification.everykind import every_kind
 from transient.trust.verification.order import balances, orders
 from transient.trust.verification.oscillation import oscillations
 from transient.trust.verification.row import Row
-from transient.trust.verification.solved import Bench, Solver, attempts
+from transient.trust.verification.solved import Bench, Solver
 from transient.trust.verification.starting import refined_alone, startups
 from transient.trust.verification.steady import steadies
 from transient.trust.verification.walls import other_walls
@@ -28,7 +28,7 @@ FAMILIES: dict[str, Callable[[Bench], Iterator[Row]]] = {
 }
 
 
-def verify(solver: Solver = attempts) -> list[Row]:
+def verify(solver: Solver) -> list[Row]:
     """All rows of a ``solver``: a function of a problem and of where errors come from ("series", "refinement")."""
     bench = Bench(solver)
     return [row for family in FAMILIES.values() for row in family(bench)]

@@ -34,7 +34,7 @@ def _shape(bench: Bench, shape: str, number: int) -> Iterator[Row]:
     for turn in range(half):
         pair = {first: TWINS[turn], second: TWINS[turn + half]}
         twins = {index: twin.build(size(shape, index), time) for index, twin in pair.items()}
-        start = ("rest", "steady")[(turn + number) % 2] if turn else "steady"
+        start = ("rest", "steady")[(turn + number) % 2]
         drives = {index: drive for index, (drive, _) in twins.items()}
         motions = {index: restated for index, (_, restated) in twins.items()}
         problem = gap(shape, drives, start=start, duration=until, accuracy=ACCURACY)
