@@ -26,6 +26,7 @@ MOST_ATTEMPTS = 6
 AIM = 0.5
 FINEST = 4000.0  # refinement over the first guess beyond which no attempt is made
 MOST_WORK = 4e9  # cells x steps of the finest level of an attempt
+MOST_WORK_UNJUDGED = 3e7  # the same with three levels and bodies or flow closed in every step
 
 
 def run(case: Case, judge: str = "series") -> Result:
@@ -57,7 +58,7 @@ def solve(problem: Problem, judge: str = "series") -> Solved:
         # errors fall with the square of refine (the extrapolated ones of a smooth flow)
         factor = float(np.clip(np.sqrt(missing[0].ratio / AIM), 1.5, 8.0))
         work = attempt.ladder.cells * attempt.ladder.steps * factor**1.5
-        if refine * factor > FINEST or work > MOST_WORK:
+        if refine * factor > FINEST or work > (MOST_WORK if judged else MOST_WORK_UNJUDGED):
             break
         refine *= factor
     assert best is not None
@@ -66,7 +67,10 @@ def solve(problem: Problem, judge: str = "series") -> Solved:
 
 def look(problem: Problem) -> Outlook:
     """The outlook with a run long enough for every profile that was asked for."""
-    ahead = outlook(problem)
+    try:
+        ahead = outlook(problem)
+    except ValueError as error:
+        raise SolveError(f"{error}, such as run.duration = \"2 s\"") from None
     latest = max(problem.profile_times or (0.0,))
     if problem.duration is None and latest > ahead.until:
         return replace(ahead, until=latest)

@@ -6,6 +6,7 @@ import json
 from dataclasses import replace
 
 import pytest
+
 import transient.trust.verification as verification
 from transient.trust.verification import Row
 

@@ -135,10 +135,14 @@ def equilibrium(
     """The steady state of constant inputs ``values`` (3,), None where there is none.
 
     ``held``: bodies kept at a given speed; ``friction``: constant extra force on each body (dry friction in its mode).
-    Force-speed curves are solved by Newton from standstill, so the lowest of several crossings is found.
+    Of several crossings of a force-speed curve with its loads the one is found that a start from standstill meets.
     """
     held = held or {}
     guess = np.zeros(2)
+    curved = [end for end, wall in enumerate(problem.walls) if wall.body is not None and wall.body.curve[0]]
+    free = [end for end in curved if end not in held]
+    if len(free) == 1:
+        guess[free[0]] = _first_crossing(problem, system, values, free[0], held, np.asarray(friction))
     for _ in range(MOST_ITERATIONS):
         loads, slopes = _curves(problem, guess)
         found = _linear_equilibrium(problem, system, values, held, loads + np.asarray(friction), slopes)
@@ -150,6 +154,42 @@ def equilibrium(
             return found
         guess = found.speeds
     return None
+
+
+def _first_crossing(
+    problem: Problem, system: System, values: np.ndarray, end: int, held: dict[int, float], friction: np.ndarray
+) -> float:
+    """Speed at which the net load on a body with a force-speed curve first vanishes on the way from standstill.
+
+    Film and damper are linear in the speed and the curve is straight between its points, so the root is exact.
+    """
+    body = problem.walls[end].body
+    assert body is not None
+    link = links(problem, system).link[end, 0]
+    at, load = (np.array(part) for part in body.curve)
+
+    def short_of_curve(speed: float) -> float:
+        found = _linear_equilibrium(problem, system, values, {**held, end: speed}, np.zeros(2), np.zeros(2))
+        if found is None:
+            return np.nan
+        film = link[closure.GRIP] * system.end_conductance[end] * (found.velocity[-1 if end else 0] - speed)
+        return float(values[end] + friction[end] - body.damping * speed + film + link[closure.PUSH] * found.gradient)
+
+    unit = max(float(np.abs(at).max()), 1e-300)
+    still = short_of_curve(0.0)
+    slope = (short_of_curve(unit) - still) / unit
+    if not np.isfinite(slope) or body.stiffness > 0.0:
+        return 0.0
+    way = np.sign(still + np.interp(0.0, at, load))
+    if way == 0.0:
+        return 0.0
+    beyond = np.sort(at[way * at > 0.0] * way) * way
+    corners = np.concatenate([[0.0], beyond])
+    net = still + slope * corners + np.interp(corners, at, load)
+    for low, high, first, last in zip(corners[:-1], corners[1:], net[:-1], net[1:], strict=True):
+        if way * last <= 0.0:
+            return float(low + (high - low) * first / (first - last))
+    return float(corners[-1] - net[-1] / slope) if slope < 0.0 else 0.0
 
 
 def settled_state(problem: Problem, system: System, values: np.ndarray, mode: np.ndarray) -> Equilibrium | None:

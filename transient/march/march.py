@@ -390,7 +390,12 @@ def _join_breaks(
         # a massless plate takes its load at once: there the stress itself jumps
         body = problem.walls[end].body
         if body is None or body.mass > 0.0:
-            stress[enters, end] = np.where(sudden[:, end] != 0.0, np.nan, left)
+            own = sudden[:, end] != 0.0
+            if problem.flow is not None:
+                # the pressure answers a sudden motion elsewhere like 1/sqrt(t), and the stress jumps by a finite amount
+                felt = (sudden != 0.0).any(axis=1) & ~own
+                left = np.where(felt, stress[np.minimum(enters + 1, len(stress) - 1), end], left)
+            stress[enters, end] = np.where(own, np.nan, left)
     if problem.flow is not None:
         gradient[enters[(sudden != 0.0).any(axis=1)]] = np.nan
 

@@ -37,7 +37,9 @@ def outlook(problem: Problem) -> Outlook:
     """Look ahead; raises ``ValueError`` where the duration is "auto" and the drive ends in no regime."""
     ends = [drive.eventual for drive in problem.drives]
     fluid = slowest_decay(problem)
-    if not problem.linear and any(end.period is not None for end in ends):
+    repeats = any(end.period is not None for end in ends)
+    if repeats and (not problem.linear or problem.flow is not None):
+        # the periodic end of such a case is not worked out: it is run as given, and settling is not said
         return _endless(problem, fluid)
     if any(end.drive is None for end in ends):
         return _endless(problem, fluid)
