@@ -10,6 +10,7 @@ import pytest
 
 from transient.cli import main
 
+COMPILING = "first run: preparing the compiled solver"
 CASES = Path(__file__).resolve().parents[2] / "cases"
 
 
@@ -30,7 +31,9 @@ def call(capsys: pytest.CaptureFixture[str]) -> Callable[..., Said]:
         capsys.readouterr()
         status = main([str(argument) for argument in arguments])
         captured = capsys.readouterr()
-        return Said(status, captured.out, captured.err)
+        # whichever test comes first in a fresh checkout finds the compiler at work, and is told so
+        lines = captured.err.splitlines(keepends=True)
+        return Said(status, captured.out, "".join(line for line in lines if not line.startswith(COMPILING)))
 
     return once
 

@@ -75,9 +75,10 @@ def test_two_runs_at_once_both_succeed(tmp_path):
     assert [path.name for path in (tmp_path / "same").iterdir()] == ["flow_cell.h5"]
 
 
-def test_compiling_is_announced_once_and_only_when_it_happens(capsys):
+def test_compiling_is_announced_once_and_only_when_it_happens(capsys, monkeypatch):
     import numba
 
+    monkeypatch.setattr("transient.cli.progress._SAID", [])  # as in a process that has said nothing yet
     announce_compiling(Bar())
     assert capsys.readouterr().err == ""
     for factor in (2.0, 3.0):

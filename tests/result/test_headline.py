@@ -14,7 +14,7 @@ from scipy.interpolate import CubicSpline
 from scipy.optimize import brentq
 from scipy.special import erfc, jn_zeros
 
-from transient.answer import solve
+from transient.answer import SolveError, solve
 from transient.drive.pieces import Drive, Eventual
 
 
@@ -268,7 +268,7 @@ def test_a_drive_that_ends_in_nothing_never_settles():
     assert said["regime"] == "none"
     assert said["time"] is None
     assert said["levels"]["10 %"]["stress"] == {"lower": None, "upper": None}
-    with pytest.raises(ValueError, match="a duration is needed"):
+    with pytest.raises(SolveError, match="a duration is needed"):
         solve(problem(upper=endless))
 
 

@@ -9,6 +9,9 @@ from typing import Any
 
 from transient.cli.words import note
 
+_SAID: list[bool] = []  # said once, it need not be said again in this process
+_PENDING: list[bool] = []  # and one listener is enough
+
 
 class Bar:
     """Nothing to see: one case, no terminal, or --quiet."""
@@ -68,11 +71,17 @@ def announce_compiling(bar: Bar) -> None:
     """From now on say, once, why a run takes longer, at the moment when the compiler sets to work."""
     from numba.core import event
 
+    if _SAID or _PENDING:
+        return
+    _PENDING.append(True)
+
     class Announcement(event.Listener):
         """Heard when nothing usable is in the compiler's cache: first run, new version, or no place for a cache."""
 
         def on_start(self, event_: event.Event) -> None:
             event.unregister("numba:compile", self)
+            _PENDING.clear()
+            _SAID.append(True)
             with bar.aside():
                 note("first run: preparing the compiled solver, once, about 15 s")
 

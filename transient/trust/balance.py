@@ -29,7 +29,7 @@ from transient.trust.nodes import (
 from transient.trust.quasi_steady import lever, quasi_steady_stress, section_measure, steady_drop
 
 SOURCE = "the accuracy asked for"
-HARDLY_FLOWS = 0.5  # of the largest speed: a mean velocity much below it is judged beside it
+HARDLY_FLOWS = 1e-3  # of the largest speed: a mean velocity below it is judged beside it
 
 
 def increments(piece: np.ndarray, offset: np.ndarray, value: np.ndarray, rate: np.ndarray) -> np.ndarray:
