@@ -25,6 +25,7 @@ NARROWINGS = 5
 RESOLVED = 3e-9  # of a settling time: how closely the exact passage is found
 ROUNDING = 1e-13  # of the usual stress, or mean velocity, about
 PEAK_MARGIN = 1.02  # for what is compared point by point
+PASSAGE_MARGIN = 1.1  # for the exact deviation's own largest place, which lies between the places looked at
 BETWEEN_MARGIN = 1.5  # see ``_looks``
 AROUND = np.linspace(-1.0, 1.0, 9)
 MOST_AT_ONCE = 4_000_000  # velocities compared in one go
@@ -42,15 +43,18 @@ class Exact:
     mean: float
     velocity: Callable[[np.ndarray], np.ndarray]
 
-    def away(self, time: np.ndarray, position: np.ndarray, lever: np.ndarray | float) -> np.ndarray:
-        """Magnitudes (m, 4) of the deviation at absolute times (m,): largest speed, mean, stresses of both walls."""
+    def away(self, time: np.ndarray, column: int, position: np.ndarray, lever: np.ndarray | float) -> np.ndarray:
+        """Magnitude (m,) of the deviation at absolute times (m,): 0 largest speed, 1 mean, 2 and 3 the wall stresses."""
         assert self.deviation is not None
         piece, offset = self.deviation.locate(time)
+        if column == 0:
+            field, _ = self.deviation.velocity(piece, offset, position)
+            field = (field - self.velocity(position)) * lever
+            return largest(position, field, np.zeros_like(field))[0]
         walls, _ = self.deviation.stress_and_mean(piece, offset)
-        field, _ = self.deviation.velocity(piece, offset, position)
-        field = (field - self.velocity(position)) * lever
-        largest_speed = largest(position, field, np.zeros_like(field))[0]
-        return np.column_stack([largest_speed, np.abs(walls[:, 2] - self.mean), np.abs(walls[:, :2] - self.stress)])
+        if column == 1:
+            return np.abs(walls[:, 2] - self.mean)
+        return np.abs(walls[:, column - 2] - self.stress[column - 2])
 
 
 def exact_of(problem: Problem, ahead: Outlook, ladder: Ladder) -> Exact:
@@ -94,7 +98,7 @@ def sharpened(
         share = 0.0 if column in known and abs(known[column] - scale) <= 1e-9 * scale else unsure[column] / scale
         for band in {said["within"] * scale * (1.0 + side * share) for side in (-1.0, 1.0)}:
             off = _exact_passage(exact, away, time, error, band, column, dense, lever)
-            found[name] = max(found[name], float(PEAK_MARGIN * off))
+            found[name] = max(found[name], float(PASSAGE_MARGIN * off))
     told = {"velocity": found["velocity"], "flow": found["flow"], "stress": {n: found[n] for n in names}}
     return {**settling, "error": found["velocity"], "errors": told}
 
@@ -117,18 +121,22 @@ def _exact_passage(
 ) -> float:  # fmt: skip
     """How far from ``time`` the exact deviation last falls below ``band`` within a step of it; 0 if it does not."""
     i = int(np.clip(np.searchsorted(away.time, time), 1, len(away.time) - 1))
-    wide = max(3.0 * error, away.time[i] - away.time[max(i - 1, 0)])
-    low, high = max(time - wide, 0.0), min(time + wide, float(away.time[-1]))
-    where = 0.0
-    while high - low > RESOLVED * time:
-        t = np.linspace(low, high, 13)
-        above = exact.away(t, dense, lever)[:, column] > band
-        crossing = np.flatnonzero(above[:-1] & ~above[1:])
-        if len(crossing) == 0:
+    step = float(away.time[i] - away.time[max(i - 1, 0)])
+    # where the stated error is right the passage lies within a few of it; else anywhere in the step
+    for wide in (3.0 * error, max(3.0 * error, step)):
+        low, high = max(time - wide, 0.0), min(time + wide, float(away.time[-1]))
+        where = 0.0
+        while high - low > max(RESOLVED * time, 0.02 * error):
+            t = np.linspace(low, high, 13)
+            above = exact.away(t, column, dense, lever) > band
+            crossing = np.flatnonzero(above[:-1] & ~above[1:])
+            if len(crossing) == 0:
+                break
+            low, high = float(t[crossing[-1]]), float(t[crossing[-1] + 1])
+            where = max(abs(low - time), abs(high - time))
+        if where > 0.0:
             return where
-        low, high = t[crossing[-1]], t[crossing[-1] + 1]
-        where = max(abs(low - time), abs(high - time))
-    return where
+    return 0.0
 
 
 def compare(problem: Problem, ahead: Outlook, ladder: Ladder, series: Exact | None = None) -> Errors:
