@@ -44,7 +44,7 @@ class Exact:
     velocity: Callable[[np.ndarray], np.ndarray]
 
     def away(self, time: np.ndarray, column: int, position: np.ndarray, lever: np.ndarray | float) -> np.ndarray:
-        """Magnitude (m,) of the deviation at absolute times (m,): 0 largest speed, 1 mean, 2 and 3 the wall stresses."""
+        """Magnitude (m,) of the deviation at absolute times (m,): 0 largest speed, 1 mean, 2 and 3 walls' stress."""
         assert self.deviation is not None
         piece, offset = self.deviation.locate(time)
         if column == 0:
