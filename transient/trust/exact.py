@@ -120,8 +120,9 @@ def _exact_passage(
     lever: np.ndarray | float,
 ) -> float:  # fmt: skip
     """How far from ``time`` the exact deviation last falls below ``band`` within a step of it; 0 if it does not."""
-    i = int(np.clip(np.searchsorted(away.time, time), 1, len(away.time) - 1))
-    step = float(away.time[i] - away.time[max(i - 1, 0)])
+    rows = away.time[away.profile_row] if column == 0 else away.time  # long runs keep few profiles
+    i = int(np.clip(np.searchsorted(rows, time), 1, max(len(rows) - 1, 1)))
+    step = float(rows[min(i, len(rows) - 1)] - rows[i - 1])
     # where the stated error is right the passage lies within a few of it; else anywhere in the step
     for wide in (3.0 * error, max(3.0 * error, step)):
         low, high = max(time - wide, 0.0), min(time + wide, float(away.time[-1]))
