@@ -38,7 +38,7 @@ CASES = {
 @pytest.mark.parametrize("accuracy", [1e-3, 1e-5])
 @pytest.mark.parametrize("name", CASES)
 def test_marches_close(name, accuracy):
-    case = replace(CASES[name], accuracy=accuracy, duration=0.012)
+    case = replace(CASES[name], accuracy=accuracy, duration=0.02)
     history = climb(case, outlook(case), accuracy, 1.0, 2).best.flow
     for check in balance.BALANCES:
         found = check(case, history)

@@ -61,30 +61,6 @@ def difference(poly, coeff, exponent, left, j, base, offset, cubic, terms, rates
 
 
 @compiled
-def _terms(poly, coeff, exponent, left, j, base, offset, i, order):  # type: ignore[no-untyped-def]
-    """Sum of the magnitudes that the ``order``-th derivative's jump at piece j is the difference of."""
-    size = abs(left[i]) if (base < 0 and order == 0) else 0.0
-    factor = 1.0
-    for d in range(2, order + 1):
-        factor *= d
-    if order < 4:
-        size += factor * abs(poly[j, i, order])
-    for k in range(coeff.shape[2]):
-        if coeff[j, i, k] != 0.0:
-            size += abs(coeff[j, i, k]) * abs(exponent[j, i, k]) ** order
-    if base >= 0:
-        power = factor
-        for d in range(order, 4):
-            size += power * abs(poly[base, i, d])
-            power *= offset * (d + 1) / (d + 1 - order)
-        for k in range(coeff.shape[2]):
-            if coeff[base, i, k] != 0.0:
-                s = exponent[base, i, k]
-                size += abs(coeff[base, i, k]) * abs(s) ** order * np.exp(s.real * offset)
-    return size
-
-
-@compiled
 def _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order):  # type: ignore[no-untyped-def]
     """Sum of the magnitudes that the ``order``-th derivative's jump at piece j is the difference of.
 
