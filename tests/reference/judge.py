@@ -258,11 +258,29 @@ class Judge:
             if channel < 2 and self._jumps_for_ever(channel):
                 return np.inf
             own = self._largest(lambda x: np.abs(self.settled(x)[channel]), self._one_period())
+            own = max([own, *self._repeated_limits(channel)])
         if unbounded:
             other = np.abs(self.settled(np.array([self.until]))[:2]).max()
             return own if own > ZERO * other else np.inf
         peak = abs(self.peak(channel)[0])
         return own if own > ZERO * peak else peak
+
+    def _repeated_limits(self, channel: int) -> list[float]:
+        """Magnitudes just after each jump that a slipping wall's speed repeats for ever, as in ``_limits``."""
+        if channel > 1 or not self.gap.slip[channel]:
+            return []
+        radius = (self.gap.ri, self.gap.ro)[channel] if self.gap.kind == "rotating" else 1.0
+        stiff = self.gap.mu * radius / self.gap.slip[channel]
+        out = []
+        for atom in self.signals[channel].atoms:
+            if atom.every is None:
+                continue
+            ends = [float(atom.pieces[k].value(np.array(at))) for k, at in ((0, 0.0), (-1, atom.every))]
+            inner = [j for j in Signal((atom,)).jumps(atom.every * (1 - 1e-9), atom.before) if j[0] > 0.0]
+            for t, jump in [(atom.every, ends[0] - ends[1]), *inner]:
+                was = float(self.settled(np.array([t * (1.0 - 1e-15)]))[channel, 0])
+                out.append(abs(was - stiff * jump))
+        return out
 
     def velocity_size(self) -> float:
         """What the profile's deviation is relative to."""
