@@ -18,7 +18,8 @@ from transient.result.headline import headlines
 from transient.result.result import Result
 from transient.series.gapshape import SeriesError
 from transient.trust.demand import demands, unmet
-from transient.trust.exact import Exact, compare, exact_of, sharpened
+from transient.trust.exact import Exact, compare, exact_of
+from transient.trust.passage import sharpened
 from transient.trust.refine import estimate
 
 MOST_ATTEMPTS = 6

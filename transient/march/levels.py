@@ -26,7 +26,14 @@ from transient.march.march import (
     with_rates,
 )
 from transient.march.plan import Features, Resolution, features, on_one_grid, resolve, tightened
-from transient.march.regime import Outlook, deviation_inputs, periodic_inputs, periodic_state, rates_of
+from transient.march.regime import (
+    Outlook,
+    deviation_breaks,
+    deviation_inputs,
+    periodic_inputs,
+    periodic_state,
+    rates_of,
+)
 from transient.result.history import History
 
 EVENT_LEVELS = 3
@@ -68,8 +75,8 @@ class _Climb:
     found: Features
     resolution: Resolution
 
-    def __init__(self, problem: Problem, inputs: Inputs, until: float):
-        self.problem, self.inputs, self.until = problem, inputs, until
+    def __init__(self, problem: Problem, inputs: Inputs, until: float, first: np.ndarray | None = None):
+        self.problem, self.inputs, self.until, self.first = problem, inputs, until, first
         self.base: Trace | None = None
         self.steps = self.solves = 0
 
@@ -102,7 +109,7 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
         runs += [
             _Climb(problem, once, ahead.period),
             _Climb(problem, once, ahead.period),
-            _Climb(problem, away, ahead.until),
+            _Climb(problem, away, ahead.until, deviation_breaks(inputs, once, ahead.period)),
         ]
     _prepare(problem, runs, ahead, accuracy, refine)
     flow = runs[0]
@@ -155,13 +162,15 @@ def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:
     """Features and resolutions of all marches of a problem: one grid, one measure of what is large."""
     least = 0.1 * min(problem.settle_within, 0.001, accuracy)
-    found = [features(problem, run.inputs, run.until) for run in runs]
+    found = [features(problem, run.inputs, run.until, run.first) for run in runs]
     stress = np.max([f.stress for f in found], axis=0)
     speed = max(f.speed for f in found)
     resolutions = []
     for run, own in zip(runs, found, strict=True):
         run.found = replace(own, stress=own.stress if run is runs[0] else stress, speed=speed)
-        resolutions.append(resolve(problem, run.inputs, run.found, accuracy, ahead.slowest, least, refine))
+        # with a periodic end it is the last march, the deviation's, that settling is read from
+        slowest = ahead.slowest if run is runs[-1] else np.inf
+        resolutions.append(resolve(problem, run.inputs, run.found, accuracy, slowest, least, refine))
     for run, resolution in zip(runs, on_one_grid(resolutions), strict=True):
         run.resolution = resolution
 

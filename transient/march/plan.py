@@ -94,12 +94,17 @@ def _cells(layers: tuple[float, ...], growth: float) -> int:
     return int(np.clip(np.ceil(along / growth), FEWEST_CELLS, MOST_CELLS))
 
 
-def features(problem: Problem, inputs: Inputs, until: float) -> Features:
-    """Read the inputs' breaks and sizes off their pieces."""
+def features(problem: Problem, inputs: Inputs, until: float, first: np.ndarray | None = None) -> Features:
+    """Read the inputs' breaks and sizes off their pieces.
+
+    ``first`` (3, 3): changes of the inputs' value, slope and bend at t = 0, default those against a constant past.
+    """
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
     lever = _levers(problem)
     length = np.diff(np.append(inputs.starts, until))
     jumps = np.abs([[row.jumps(order) for order in range(3)] for row in rows])  # (3, 3, P)
+    if first is not None:
+        jumps[:, :, 0] = np.abs(first)
     walls = np.stack([_wall_breaks(problem, end, jumps[end], lever[end]) for end in (0, 1)], axis=2)  # (3, P, 2)
     core = jumps[PRESSURE]
     if problem.flow is not None:
@@ -220,7 +225,7 @@ def resolve(
     """The base level for ``accuracy``; ``refine`` > 1 divides the expected error by its square.
 
     ``slowest`` s: time constant with which the flow settles after the last break, followed until what is left is
-    the share ``least``.
+    the share ``least``; infinite where that is no question of this march.
     """
     growth = GROWTH * (accuracy / 1e-3) ** 0.25 / refine**0.5
     tolerance = TOLERANCE * (accuracy / 1e-3) ** 0.75 / refine**1.5
@@ -228,14 +233,23 @@ def resolve(
     layers = tuple(_layer(problem, found, end, growth, share) for end in (0, 1))
     cells = _cells(layers, growth)
     first = _first_steps(problem, found, growth, share, layers)
-    longest = np.full(len(first), np.inf)
-    calm = np.zeros(len(first))
-    longest[-1] = growth * slowest
-    calm[-1] = np.log(1.0 / least) * slowest
+    longest, calm = _settling(inputs, found, growth * slowest, np.log(1.0 / least) * slowest)
     swift, lasts = _courses(inputs, found, accuracy, refine)
     first = np.minimum(first, swift)
     event = _event_step(problem, found, share)
     return Resolution(cells, layers, tolerance, first, longest, calm, swift, lasts, growth, event)
+
+
+def _settling(inputs: Inputs, found: Features, step: float, lasts: float) -> tuple[np.ndarray, np.ndarray]:
+    """(longest step, from which offset on longer ones may follow) of each piece (P,): ``step`` over the time ``lasts``
+    after the last break at which anything changes."""
+    changes = (found.jump + found.kink + found.bend).sum(axis=1) > 0.0
+    last = int(np.flatnonzero(changes)[-1]) if changes.any() else 0
+    longest, calm = np.full(len(changes), np.inf), np.zeros(len(changes))
+    if np.isfinite(step):
+        longest[last:] = step
+        calm[last:] = np.maximum(lasts - (inputs.starts[last:] - inputs.starts[last]), 0.0)
+    return longest, calm
 
 
 def _courses(inputs: Inputs, found: Features, accuracy: float, refine: float) -> tuple[np.ndarray, np.ndarray]:

@@ -11,6 +11,7 @@ from transient.gap.problem import PRESSURE, Inputs, Problem, join
 from transient.gap.system import System, assemble
 from transient.march.coupled import dense, settled_slopes, slowest
 
+SAME = 1e-11  # of the terms: changes below this are round-off
 COARSE_CELLS = 24  # enough for the slowest decay rate to a percent
 
 
@@ -119,6 +120,24 @@ def periodic_inputs(ahead: Outlook) -> Inputs:
     last = np.array([len(once.starts) - 1]), np.array([ahead.period - once.starts[-1]])
     before = np.array([float(once.row(i).at(*last)[0]) for i in range(3)])
     return Inputs(once.starts, once.poly, once.coeff, once.rate, before)
+
+
+def deviation_breaks(actual: Inputs, once: Inputs, period: float) -> np.ndarray:
+    """(3, 3) changes at t = 0 of the deviation's value, slope and bend: ``actual`` inputs, held until then, less the
+    periodic ones (``once``), which have been going on.  What the two have in common does not change."""
+    begin = np.zeros(1, int), np.zeros(1)
+    last = np.array([len(once.starts) - 1]), np.array([period - once.starts[-1]])
+    out = np.zeros((3, 3))
+    for i in range(3):
+        for order in range(3):
+            now, regime, gone = (
+                float(of.row(i).at(*when, order)[0]) for of, when in ((actual, begin), (once, begin), (once, last))
+            )
+            was = float(actual.before[i]) if order == 0 else 0.0
+            change = (now - was) - (regime - gone)
+            size = max(float(of.row(i).size(order).max()) for of in (actual, once))
+            out[i, order] = change if abs(change) > SAME * size else 0.0
+    return out
 
 
 def deviation_inputs(problem: Problem, ahead: Outlook, until: float) -> Inputs:
