@@ -21,7 +21,7 @@ def test_help_lists_every_command_and_none_that_is_missing(call):
     assert said.status == 0
     listed = said.out.split("Commands:")[1].split()
     assert [word for word in listed if word in NAMES] == NAMES
-    assert not {"sweep", "size", "sheet", "fluid"} & set(listed)
+    assert not {"sweep", "size", "fluid"} & set(listed)
 
 
 def test_without_a_command_the_help_is_printed(call):
@@ -34,7 +34,7 @@ def test_version_everywhere(call, command):
     assert (said.status, said.out, said.err) == (0, f"transient {version('transient')}\n", "")
 
 
-@pytest.mark.parametrize("name", ["sweep", "size", "sheet", "fluid", "rum"])
+@pytest.mark.parametrize("name", ["sweep", "size", "fluid", "rum"])
 def test_a_command_of_another_version_is_refused_in_one_line(call, name):
     said = call(name, "x.toml")
     assert said.status == 2
@@ -47,7 +47,8 @@ def test_a_command_of_another_version_is_refused_in_one_line(call, name):
     [
         (["run"], "transient: Missing argument 'CASE.toml' (see transient --help)\n"),
         (["run", "--out"], "transient: Option '--out' requires an argument (see transient --help)\n"),
-        (["run", "a.toml", "--sheet"], "--sheet: this version does not write calculation sheets; run without it\n"),
+        (["sheet", "a.h5", "--factor", "0"], "--factor 0: a number above zero without unit is needed, such as 1.5\n"),
+        (["sheet", "a.h5", "--out", "a.doc"], "--out a.doc: a sheet ends in .html, such as a.html\n"),
         (
             ["run", "a.toml", "--set", "gap.height"],
             '--set gap.height: a key and a value are needed, such as --set gap.height="0.5 mm"\n',

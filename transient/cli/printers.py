@@ -28,6 +28,11 @@ class Printer:
         """A case was solved and written to ``path``."""
         self.bar.end()
 
+    def wrote(self, path: Path) -> None:
+        """Another file was written beside the result."""
+        with self.bar.aside():
+            note(f"wrote {path}")
+
     def stopped(self, case: str, outcome: str, message: str) -> None:
         """A case was not solved: the message goes to standard error."""
         self.bar.end()
@@ -37,6 +42,9 @@ class Printer:
 
 class Quiet(Printer):
     """Errors only."""
+
+    def wrote(self, path: Path) -> None:
+        pass
 
 
 class Json(Printer):

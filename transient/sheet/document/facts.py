@@ -1,0 +1,108 @@
+"""What the sections of a sheet are written from: a result, its case read again, and what the reader asked for."""
+
+from __future__ import annotations
+
+import tomllib
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+from transient.case.model import Case, CaseError
+from transient.result.result import Result
+from transient.result.said import plain, stated
+
+
+@dataclass(frozen=True, eq=False)
+class Facts:
+    """``name`` of the result's file; ``factor`` on loads or None; ``note`` a user's own words or ""."""
+
+    result: Result
+    name: str
+    factor: float | None = None
+    note: str = ""
+
+    @property
+    def summary(self) -> dict[str, Any]:
+        """The result's summary."""
+        return self.result.summary
+
+    @cached_property
+    def case(self) -> Case | None:
+        """The case as stated, None where this version does not read it."""
+        try:
+            return Case(tomllib.loads(self.result.case_text))
+        except (CaseError, ValueError):
+            return None
+
+    @property
+    def stem(self) -> str:
+        """The file's name without its ending."""
+        return self.name.rsplit(".", 1)[0] or "case"
+
+    @property
+    def speed_unit(self) -> str:
+        """Unit of the wall speeds."""
+        speeds = self.result.variables.get("wall_speed")
+        return speeds.units if speeds is not None else "m/s"
+
+    @property
+    def rotating(self) -> bool:
+        """Whether the walls turn."""
+        return self.speed_unit == "rad/s"
+
+    @property
+    def walls(self) -> dict[str, Any]:
+        """Headline numbers by wall."""
+        return self.summary.get("walls") or {}
+
+    @property
+    def load_word(self) -> str:
+        """What a wall's stress adds up to."""
+        return "torque" if self.rotating else "force"
+
+    @property
+    def load_unit(self) -> str:
+        """Its unit."""
+        return "N*m" if self.rotating else "N"
+
+    @property
+    def periodic(self) -> bool:
+        """Whether the run ends in a periodic state."""
+        return (self.summary.get("settling") or {}).get("regime") == "periodic"
+
+
+def said(value: float | None, error: float | None, unit: str) -> str:
+    """``value ± error`` in words, a dash for a number that does not exist."""
+    return "–" if value is None else printed(stated(value, error, unit))
+
+
+def brief(value: float | None, unit: str) -> str:
+    """``value`` to four digits, a dash for a number that does not exist."""
+    return "–" if value is None else printed(plain(value, unit))
+
+
+def printed(text: str) -> str:
+    """With the minus sign of print before digits."""
+    return text.replace("-", "−") if text[:1] == "-" else text
+
+
+def share(part: float) -> str:
+    """A fraction as per cent, small ones as a power of ten."""
+    if part != 0.0 and abs(part) < 1e-4:
+        mantissa, exponent = f"{100.0 * part:.1e}".split("e")
+        return f"{mantissa}·10{_raised(int(exponent))} %"
+    return printed(f"{100.0 * part:.3g} %")
+
+
+def number(value: float | None) -> str:
+    """A pure number to three digits, very small and large ones as powers of ten."""
+    if value is None:
+        return "–"
+    if value != 0.0 and not 1e-3 <= abs(value) < 1e5:
+        mantissa, exponent = f"{value:.2e}".split("e")
+        return printed(f"{mantissa}·10{_raised(int(exponent))}")
+    return printed(f"{value:.3g}" if abs(value) < 1e3 else f"{value:.0f}")
+
+
+def _raised(exponent: int) -> str:
+    return str(exponent).translate(str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹"))

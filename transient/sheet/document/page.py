@@ -1,0 +1,76 @@
+"""A sheet as one HTML page: no network, no scripts; every text is escaped, every figure an inline drawing."""
+
+from __future__ import annotations
+
+import io
+import re
+import warnings
+from functools import lru_cache
+from importlib.resources import files
+from typing import TYPE_CHECKING
+
+from transient.result.result import Result
+from transient.sheet.document.blocks import Picture, Sheet
+from transient.sheet.document.compose import compose
+from transient.sheet.document.facts import Facts
+from transient.sheet.style import drawing
+
+if TYPE_CHECKING:
+    from jinja2 import Template
+    from markupsafe import Markup
+    from matplotlib.figure import Figure
+
+# What matplotlib puts around the drawing itself, and comments, which repeat every text.
+_AROUND = re.compile(r"<\?xml.*?\?>|<!DOCTYPE.*?>|<metadata>.*?</metadata>|<!--.*?-->", re.DOTALL)
+_IDS = re.compile(r'(\bid="|(?:xlink:)?href="#|url\(#)')
+_PATH = re.compile(r' d="[^"]*"')
+# Digits beyond a hundredth of a point are nothing that print shows.
+_DIGITS = re.compile(r"(-?\d+\.\d{2})\d+")
+
+
+def html(facts: Facts) -> str:
+    """The page of a result."""
+    return render(compose(facts))
+
+
+def render(sheet: Sheet) -> str:
+    """The page of a sheet."""
+    pictures = [block for section in sheet.sections for block in section.blocks if isinstance(block, Picture)]
+    drawn = {picture.name: inline(picture.figure, picture.name) for picture in pictures}
+    return _template().render(sheet=sheet, drawn=drawn, style=_style(), generator="transient")
+
+
+def inline(figure: Figure, name: str) -> Markup:
+    """The figure as an SVG element whose ids begin with ``name``, so that several fit one page."""
+    from markupsafe import Markup
+
+    out = io.StringIO()
+    with drawing(), warnings.catch_warnings():
+        warnings.filterwarnings("ignore", message="Glyph .* missing from")
+        figure.savefig(out, format="svg", metadata={"Date": None})
+    text = _AROUND.sub("", out.getvalue())
+    text = _PATH.sub(lambda path: _DIGITS.sub(r"\1", path[0]), text)
+    return Markup(_IDS.sub(rf"\g<1>{name}-", text).strip())
+
+
+@lru_cache(maxsize=1)
+def _template() -> Template:
+    from jinja2 import Environment, PackageLoader, StrictUndefined
+
+    loader = PackageLoader("transient.sheet.document")
+    environment = Environment(
+        loader=loader, autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True
+    )
+    return environment.get_template("sheet.html")
+
+
+@lru_cache(maxsize=1)
+def _style() -> Markup:
+    from markupsafe import Markup
+
+    return Markup((files("transient.sheet.document") / "templates" / "sheet.css").read_text(encoding="utf-8"))
+
+
+def facts_of(result: Result, name: str, factor: float | None = None, note: str = "") -> Facts:
+    """What a sheet of ``result``, read from a file of that ``name``, is written from."""
+    return Facts(result, name, factor, note)
