@@ -1,1 +1,1 @@
-"""Many cases: which (``plan``), where (``run``, ``places``, ``cluster``), what comes out (``table``, ``says``, ``size``)."""
+"""Many cases: which (``plan``), where they are solved (``places``), what comes of it (``table``, ``says``); ``size``."""

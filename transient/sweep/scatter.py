@@ -1,0 +1,157 @@
+"""[scatter]: random samples of toleranced keys, the same at every combination of [vary] and on every machine."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from transient.sweep.facts import Facts
+from transient.sweep.keys import Varied
+from transient.sweep.stated import DRAWN, Stated, table_of
+from transient.units import DIMENSIONS, QuantityError, quantity, si_unit, typed
+
+EXAMPLE = '{ normal = ["25 mm", "0.05 mm"] }'
+POINTS = ("sobol", "random")
+MOST_SAMPLES = 10**9
+# A Sobol point may be 0 exactly, where a normal distribution has no value.
+SMALLEST = 2.0**-53
+
+
+def _normal(u: np.ndarray, mean: float, deviation: float) -> np.ndarray:
+    """Inverse of the normal distribution function."""
+    from scipy.special import ndtri
+
+    return mean + deviation * ndtri(u)
+
+
+def _uniform(u: np.ndarray, low: float, high: float) -> np.ndarray:
+    return low + (high - low) * u
+
+
+def _triangular(u: np.ndarray, low: float, mode: float, high: float) -> np.ndarray:
+    """Inverse of the triangular distribution function."""
+    turn = (mode - low) / (high - low)
+    rising = low + np.sqrt(u * (high - low) * (mode - low))
+    return np.where(u < turn, rising, high - np.sqrt((1.0 - u) * (high - low) * (high - mode)))
+
+
+@dataclass(frozen=True)
+class Distribution:
+    """``inverse(u, *parameters)`` maps (0, 1) to values; ``names`` of its parameters, as said to a user."""
+
+    inverse: Callable[..., np.ndarray]
+    names: tuple[str, ...]
+
+
+DISTRIBUTIONS = {
+    "normal": Distribution(_normal, ("mean", "standard deviation")),
+    "uniform": Distribution(_uniform, ("least", "greatest")),
+    "triangular": Distribution(_triangular, ("least", "most likely", "greatest")),
+}
+
+
+@dataclass(frozen=True)
+class Tolerance:
+    """How one key scatters, as typed: the ``kind`` of distribution and its parameters."""
+
+    kind: str
+    stated: tuple[Any, ...]
+
+    @property
+    def candidates(self) -> tuple[Any, ...]:
+        """Values as typed, from which the case tells what kind of key it is: never the standard deviation."""
+        return self.stated[:1] if self.kind == "normal" else self.stated
+
+
+@dataclass(frozen=True, eq=False)
+class Scatter:
+    """``samples`` points in ``points`` ("sobol", "random"), from ``seed``; ``drawn`` (kind, SI parameters) per key."""
+
+    samples: int
+    seed: int
+    points: str
+    keys: tuple[Varied, ...]
+    drawn: tuple[tuple[str, tuple[float, ...]], ...]
+
+    def values(self) -> tuple[np.ndarray, ...]:
+        """The samples (n,) of each key in SI."""
+        unit = np.clip(_points(self.points, self.samples, len(self.keys), self.seed), SMALLEST, 1.0 - SMALLEST)
+        return tuple(
+            DISTRIBUTIONS[kind].inverse(unit[:, i], *parameters) for i, (kind, parameters) in enumerate(self.drawn)
+        )
+
+
+def _points(points: str, samples: int, dimensions: int, seed: int) -> np.ndarray:
+    """Points (samples, dimensions) of the unit cube."""
+    if points == "random":
+        return np.random.default_rng(seed).random((samples, dimensions))
+    from scipy.stats import qmc
+
+    # Whole powers of two keep the sequence balanced; what is not asked for is left out.
+    exponent = max(samples - 1, 0).bit_length()
+    return qmc.Sobol(dimensions, scramble=True, rng=np.random.default_rng(seed)).random_base2(exponent)[:samples]
+
+
+def read_tolerance(stated: Stated, key: str, spec: Any) -> Tolerance:
+    """How a key scatters, from its specification; raises ``CaseError``."""
+    table = table_of(stated, key, spec, DRAWN, EXAMPLE)
+    kind, given = next(iter(table.items()))
+    if len(table) > 1:
+        raise stated.refuse(key, f"has {' and '.join(table)}; one of them is needed")
+    names = DISTRIBUTIONS[kind].names
+    if not isinstance(given, list | tuple) or len(given) != len(names):
+        raise stated.refuse(key, f"{typed(given)} does not fit; [{', '.join(names)}] is needed, such as {EXAMPLE}", kind)
+    return Tolerance(kind, tuple(given))
+
+
+def read_settings(stated: Stated) -> tuple[int, int, str]:
+    """(samples, seed, points); raises ``CaseError``."""
+    source, given = stated.source, stated.settings
+    samples, seed, points = given.get("samples", 0), given.get("seed", 0), given.get("points", "sobol")
+    for name, value, least in (("samples", samples, 1), ("seed", seed, 0)):
+        if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= MOST_SAMPLES:
+            need = f"a whole number from {least} is needed, such as {name} = {500 if name == 'samples' else 7}"
+            if name not in given:
+                raise source.refuse(("scatter",), f"{name} is missing; {need}")
+            raise source.fault(("scatter", name), value, "does not fit", need)
+    if points not in POINTS:
+        raise source.fault(("scatter", "points"), points, "is not known here", '"sobol" or "random" is needed')
+    return samples, seed, points
+
+
+def scatter(stated: Stated, given: dict[str, Tolerance], facts: dict[str, Facts]) -> Scatter | None:
+    """The samples of all toleranced keys, None where there are none; raises ``CaseError``."""
+    if not given:
+        if stated.settings:
+            raise stated.source.refuse(("scatter",), f'names no key that scatters; one is needed, such as "gap.width" = {EXAMPLE}')
+        return None
+    samples, seed, points = read_settings(stated)
+    keys, drawn = [], []
+    for key, tolerance in given.items():
+        dimension = facts[key].dimension
+        if facts[key].kind != "quantity":
+            raise stated.refuse(key, "is no quantity that could scatter; list its values in [vary]")
+        keys.append(Varied(key, "quantity", dimension, si_unit(dimension)))
+        drawn.append((tolerance.kind, _parameters(stated, key, tolerance, dimension)))
+    return Scatter(samples, seed, points, tuple(keys), tuple(drawn))
+
+
+def _parameters(stated: Stated, key: str, tolerance: Tolerance, dimension: str) -> tuple[float, ...]:
+    out = []
+    for i, (name, value) in enumerate(zip(DISTRIBUTIONS[tolerance.kind].names, tolerance.stated, strict=True)):
+        own = dimension
+        if name == "standard deviation" and f"{dimension}_difference" in DIMENSIONS:
+            own = f"{dimension}_difference"
+        try:
+            out.append(quantity(value, own))
+        except QuantityError as error:
+            raise stated.refuse(key, f"{name}: {error}", tolerance.kind, i) from None
+    if tolerance.kind == "normal" and out[1] <= 0.0:
+        raise stated.refuse(key, f"{typed(tolerance.stated[1])} is no standard deviation; one above zero is needed", "normal")
+    if tolerance.kind != "normal" and not (out == sorted(out) and out[0] < out[-1]):
+        order = ", ".join(DISTRIBUTIONS[tolerance.kind].names)
+        raise stated.refuse(key, f"its values do not rise; [{order}] is needed", tolerance.kind)
+    return tuple(out)
