@@ -54,7 +54,7 @@ def test_a_planted_difference_is_seen_row_by_row():
     clean = estimate(ladder)
     other = replace(ladder.next_best.flow, stress=ladder.next_best.flow.stress.copy())
     other.stress[7, 1] += 0.25
-    seen = estimate(replace(ladder, next_best=replace(ladder.next_best, flow=other)))
+    seen = estimate(replace(ladder, others=(replace(ladder.next_best, flow=other),)))
     assert seen.stress[7, 1] == pytest.approx(MARGIN * 0.25, rel=0.05)
     assert clean.stress[7, 1] < 0.01
     # its neighbours are judged with it, the others are not

@@ -110,6 +110,8 @@ class Pieces:
         return {}
 
     def _find_jumps(self, order: int) -> np.ndarray:
+        if self.before == 0.0 and not self.poly.any() and not self.coeff.any():
+            return np.zeros(len(self.starts))
         lengths = np.diff(self.starts)
         count = np.arange(len(self.starts))
         right = self.at(count, np.zeros(len(count)), order)

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from functools import cached_property
+from typing import Any
 
 import numpy as np
 
@@ -56,17 +58,22 @@ class Histories:
 
 @dataclass(frozen=True, eq=False)
 class Ladder:
-    """``best`` the extrapolation of the two finest levels, ``next_best`` what it is compared with where there is
-    no series; cells and steps of the finest level, solves of all."""
+    """``best`` the extrapolation of the two finest levels, ``others`` what its rival is made of; cells and steps of
+    the finest level, solves of all."""
 
     best: Histories
-    next_best: Histories
+    others: tuple[Histories, ...]
     inputs: Inputs
     speed_before: np.ndarray
     layers: tuple[float, float]
     cells: int
     steps: int
     solves: int
+
+    @cached_property
+    def next_best(self) -> Histories:
+        """What the best is compared with where there is no series: the extrapolation before it, or a single level."""
+        return _rated(self.others[0]) if len(self.others) == 1 else _mix(*self.others)
 
 
 class _Climb:
@@ -125,10 +132,10 @@ def climb(problem: Problem, ahead: Outlook, accuracy: float, refine: float, leve
         else:
             answers.append(Histories(main, None, None, None, 0.0, np.zeros(2)))
     best = _mix(answers[-2], answers[-1])
-    other = _rated(answers[-1]) if levels == 2 else _mix(answers[-3], answers[-2])
+    others = (answers[-1],) if levels == 2 else (answers[-3], answers[-2])
     cells = flow.resolution.cells * 2 ** (levels - 1)
     solves = sum(run.solves for run in runs)
-    return Ladder(best, other, inputs, before.speed, flow.resolution.layers, cells, flow.steps, solves)
+    return Ladder(best, others, inputs, before.speed, flow.resolution.layers, cells, flow.steps, solves)
 
 
 def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: float) -> Ladder:
@@ -156,7 +163,7 @@ def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: 
     if best.deviation is not None and other.deviation is not None:
         away = resampled(other.deviation, best.deviation)
     other = replace(other, flow=again, deviation=away)
-    return Ladder(best, other, own, before.speed, base.resolution.layers, run.resolution.cells, run.steps, base.solves)
+    return Ladder(best, (other,), own, before.speed, base.resolution.layers, run.resolution.cells, run.steps, base.solves)
 
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:
@@ -188,7 +195,33 @@ def _mix(coarse: Histories, fine: Histories) -> Histories:
 
     flow = pair("flow")
     assert flow is not None
-    return replace(fine, flow=flow, deviation=pair("deviation"), orbit=pair("orbit"))
+    away = pair("deviation") if fine.steady_velocity is None else None
+    if fine.steady_velocity is not None:
+        assert coarse.steady_velocity is not None
+        fine = replace(
+            fine,
+            steady_velocity=_third(coarse.steady_velocity, fine.steady_velocity),
+            steady_mean=_third(coarse.steady_mean, fine.steady_mean),
+            steady_stress=_third(coarse.steady_stress, fine.steady_stress),
+            steady_speeds=_third(coarse.steady_speeds, fine.steady_speeds),
+            steady_gradient=_third(coarse.steady_gradient, fine.steady_gradient),
+        )
+        away = _less_steady(flow, fine)
+    return replace(fine, flow=flow, deviation=away, orbit=pair("orbit"))
+
+
+def _third(coarse: Any, fine: Any) -> Any:
+    """Richardson's extrapolation of two levels."""
+    return fine + (fine - coarse) / 3.0
+
+
+def _less_steady(flow: History, end: Histories) -> History:
+    """A flow less the steady state that it ends in."""
+    return replace(
+        flow, stress=flow.stress - end.steady_stress, mean=flow.mean - end.steady_mean,
+        profile=flow.profile - end.steady_velocity, speed=flow.speed - end.steady_speeds,
+        gradient=flow.gradient - end.steady_gradient,
+    )  # fmt: skip
 
 
 def _steady_answer(problem: Problem, ahead: Outlook, trace: Trace, main: History, every: int) -> Histories:
@@ -207,11 +240,8 @@ def _steady_answer(problem: Problem, ahead: Outlook, trace: Trace, main: History
     mean = float(system.grid.mean_weight @ velocity)
     stress = steady_stress(system, unknown, speeds, gradient)
     shown = velocity[::every]
-    deviation = replace(
-        main, stress=main.stress - stress, mean=main.mean - mean, profile=main.profile - shown,
-        speed=main.speed - speeds, gradient=main.gradient - gradient,
-    )  # fmt: skip
-    return Histories(main, deviation, None, shown, mean, stress, speeds, gradient)
+    answer = Histories(main, None, None, shown, mean, stress, speeds, gradient)
+    return replace(answer, deviation=_less_steady(main, answer))
 
 
 def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: Trace, main: History) -> Histories:

@@ -10,6 +10,8 @@ from __future__ import annotations
 
 import numpy as np
 
+from transient.compiled import compiled
+
 STENCIL = 5
 
 
@@ -55,13 +57,27 @@ def _rates(
 
 def _slope(x: np.ndarray, at: np.ndarray, value: np.ndarray) -> np.ndarray:
     """Derivative (m,) at ``at`` (m,) of the polynomial through ``value`` at ``x`` (m, q), distinct nodes."""
+    out = np.empty(len(at))
+    _fill_slope(x, at, value, out)
+    return out
+
+
+@compiled
+def _fill_slope(x, at, value, out):  # type: ignore[no-untyped-def]
     q = x.shape[1]
-    scale = x[:, -1] - x[:, 0]
-    x = (x - at[:, None]) / scale[:, None]
-    total = np.zeros(len(at))
-    for i in range(q):
-        others = [j for j in range(q) if j != i]
-        bottom = np.prod([x[:, i] - x[:, j] for j in others], axis=0)
-        top = sum(np.prod([-x[:, k] for k in others if k != j], axis=0) if q > 2 else 1.0 for j in others)
-        total += value[:, i] * top / bottom
-    return total / scale
+    for m in range(len(at)):
+        scale = x[m, q - 1] - x[m, 0]
+        total = 0.0
+        for i in range(q):
+            bottom, top = 1.0, 0.0
+            for j in range(q):
+                if j == i:
+                    continue
+                bottom *= (x[m, i] - x[m, j]) / scale
+                part = 1.0
+                for k in range(q):
+                    if k not in (i, j):
+                        part *= (at[m] - x[m, k]) / scale
+                top += part
+            total += value[m, i] * top / bottom
+        out[m] = total / scale

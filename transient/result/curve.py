@@ -130,6 +130,20 @@ class Curve:
         high, low = self.extreme(1.0), self.extreme(-1.0)
         return high if not abs(low[0]) > abs(high[0]) else low
 
+    @cached_property
+    def _highest(self) -> dict[float, np.ndarray]:
+        return {}
+
+    def _tops(self, sign: float) -> np.ndarray:
+        """Largest sign x value of each interval (n-1,), its first row included and its last left out; infinite where
+        that row is not finite."""
+        if sign not in self._highest:
+            _, value, interval = self.turning
+            top = np.where(np.isfinite(self.value[:-1]), sign * self.value[:-1], np.inf)
+            np.maximum.at(top, interval, sign * value)
+            self._highest[sign] = top
+        return self._highest[sign]
+
     def _interval(self, i: int, sign: float) -> tuple[float, ...]:
         """Coefficients of one interval times ``sign``, as plain floats."""
         return tuple(sign * float(c[i]) for c in self.cubic)
@@ -166,14 +180,10 @@ class Curve:
     def last_over(self, level: float, sign: float) -> float:
         """Time after which sign x value stays at or below ``level``: 0 if always, nan if not by the end."""
         time, value, interval = self.turning
-        high = np.full(len(self.step), -np.inf)
-        np.maximum.at(high, interval, sign * value)
-        with np.errstate(invalid="ignore"):
-            rows = ~(sign * self.value <= level)  # a value that is not finite is above
-            over = rows[:-1] | (high > level)
-        if rows[-1]:
+        last = float(sign * self.value[-1])
+        if not last <= level:  # a value that is not finite is above
             return np.nan
-        above = np.flatnonzero(over)
+        above = np.flatnonzero(self._tops(sign) > level)
         if len(above) == 0:
             return 0.0
         i = int(above[-1])

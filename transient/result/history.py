@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 
 import numpy as np
 
+from transient.compiled import compiled
 from transient.result.curve import Curve
 
 STENCIL = 5
+NEIGHBOURS = 6
+ROOM = 0.25  # of the range of its neighbours: so far a value between nodes may leave that range
 PARTS = 12  # into which a step is cut in which the place of the largest velocity moves
 LOOK = np.linspace(0.0, 1.0, 33)  # where between the neighbours of the largest node its polynomial is looked at
 
@@ -61,14 +65,27 @@ class History:
     travel: np.ndarray
     lever: np.ndarray | None = None
 
-    @property
+    @cached_property
     def step(self) -> np.ndarray:
         """Lengths of the intervals between rows (n-1,) s, exact also long after t = 0; 0 across a break."""
         return np.where(self.piece[1:] == self.piece[:-1], np.diff(self.offset), 0.0)
 
+    @cached_property
+    def _curves(self) -> dict[str, Curve]:
+        return {}
+
+    def _curve(self, name: str, make: Callable[[], Curve]) -> Curve:
+        """A curve made once, with all that it finds out about itself."""
+        if name not in self._curves:
+            self._curves[name] = make()
+        return self._curves[name]
+
     def stress_curve(self, wall: int) -> Curve:
         """The stress on one wall over time."""
-        return Curve(self.time, self.stress[:, wall], self.stress_rate[:, wall], self.step, self.offset[:-1])
+        return self._curve(
+            f"stress {wall}",
+            lambda: Curve(self.time, self.stress[:, wall], self.stress_rate[:, wall], self.step, self.offset[:-1]),
+        )
 
     def speed_curve(self, wall: int) -> Curve:
         """The speed of one wall over time."""
@@ -80,7 +97,7 @@ class History:
 
     def mean_curve(self) -> Curve:
         """The mean velocity over time."""
-        return Curve(self.time, self.mean, self.mean_rate, self.step, self.offset[:-1])
+        return self._curve("mean", lambda: Curve(self.time, self.mean, self.mean_rate, self.step, self.offset[:-1]))
 
     def profile_step(self) -> np.ndarray:
         """Lengths of the intervals between kept profiles (k-1,) s."""
@@ -181,63 +198,97 @@ def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tupl
 
     Around the largest node the profile is the polynomial through it and its four neighbours.
     """
-    rows = np.arange(len(profile))
-    at = np.abs(profile).argmax(axis=1)
-    sign = np.where(profile[rows, at] < 0.0, -1.0, 1.0)
-    nodes = len(position)
-    if nodes < STENCIL:
-        return np.abs(profile[rows, at]), sign * rate[rows, at]
-    window = np.clip(at - STENCIL // 2, 0, nodes - STENCIL)[:, None] + np.arange(STENCIL)
-    x = position[window] - position[at][:, None]
-    low, high = position[np.maximum(at - 1, 0)] - position[at], position[np.minimum(at + 1, nodes - 1)] - position[at]
-    where = low[:, None] + (high - low)[:, None] * LOOK
-    basis = _lagrange(x, where)
-    height = sign[:, None] * np.einsum("kgq,kq->kg", basis, profile[rows[:, None], window])
-    best = height.argmax(axis=1)
-    inner = np.clip(best, 1, len(LOOK) - 2)
-    before, middle, after = (height[rows, inner + k] for k in (-1, 0, 1))
-    bend = before - 2.0 * middle + after
-    with np.errstate(all="ignore"):
-        top = np.where((best == inner) & (bend < 0), middle - (after - before) ** 2 / (8.0 * bend), height[rows, best])
-    change = sign * np.einsum("kq,kq->k", basis[rows, best], rate[rows[:, None], window])
-    return np.maximum(top, np.abs(profile[rows, at])), change
+    value, change = np.empty(len(profile)), np.empty(len(profile))
+    _fill_largest(np.ascontiguousarray(position), np.ascontiguousarray(profile), np.ascontiguousarray(rate), LOOK,
+                  value, change)  # fmt: skip
+    return value, change
 
 
-def _lagrange(nodes: np.ndarray, x: np.ndarray) -> np.ndarray:
-    """Values (k, g, q) at ``x`` (k, g) of the Lagrange polynomials on ``nodes`` (k, q)."""
-    out = np.ones((*x.shape, nodes.shape[1]))
-    for i in range(nodes.shape[1]):
-        for j in range(nodes.shape[1]):
-            if i != j:
-                out[..., i] *= (x - nodes[:, j, None]) / (nodes[:, i] - nodes[:, j])[:, None]
-    return out
+@compiled
+def _fill_largest(position, profile, rate, look, value, change):  # type: ignore[no-untyped-def]
+    nodes, points = len(position), min(STENCIL, len(position))
+    basis, best_basis, height = np.empty(points), np.empty(points), np.empty(len(look))
+    for k in range(len(profile)):
+        at = 0
+        for i in range(nodes):
+            if abs(profile[k, i]) > abs(profile[k, at]):
+                at = i
+        sign = -1.0 if profile[k, at] < 0.0 else 1.0
+        value[k], change[k] = abs(profile[k, at]), sign * rate[k, at]
+        if nodes < STENCIL:
+            continue
+        start = min(max(at - STENCIL // 2, 0), nodes - STENCIL)
+        low, high = position[max(at - 1, 0)] - position[at], position[min(at + 1, nodes - 1)] - position[at]
+        best = 0
+        for g in range(len(look)):
+            x = low + (high - low) * look[g]
+            height[g] = 0.0
+            for i in range(points):
+                basis[i] = 1.0
+                for j in range(points):
+                    if i != j:
+                        node = position[start + j] - position[at]
+                        basis[i] *= (x - node) / (position[start + i] - position[start + j])
+                height[g] += sign * basis[i] * profile[k, start + i]
+            if g == 0 or height[g] > height[best]:
+                best = g
+                best_basis[:] = basis
+        change[k] = 0.0
+        for i in range(points):
+            change[k] += sign * best_basis[i] * rate[k, start + i]
+        top = height[best]
+        if 0 < best < len(look) - 1:
+            bend = height[best - 1] - 2.0 * height[best] + height[best + 1]
+            if bend < 0.0:
+                top -= (height[best + 1] - height[best - 1]) ** 2 / (8.0 * bend)
+        value[k] = max(top, value[k])
 
 
 def between(profile: np.ndarray, parts: int, straight: np.ndarray) -> np.ndarray:
     """Profiles (k, N) with ``parts`` - 1 values added in each interval, (k, (N-1) x parts + 1).
 
-    The grid is smooth in the node's number, so a polynomial in that number through six neighbours serves; it is kept
+    The grid is smooth in the node's number, so a polynomial in that number through ``NEIGHBOURS`` serves; it is kept
     near the range of the four nearest.  Rows marked ``straight`` (k,) have a layer without thickness at a wall and
     are joined linearly.
     """
     if parts == 1:
         return profile
-    nodes = profile.shape[1]
+    out = np.empty((len(profile), (profile.shape[1] - 1) * parts + 1))
+    _fill_between(np.ascontiguousarray(profile), parts, straight, _weights(profile.shape[1], parts), out)
+    return out
+
+
+@lru_cache(maxsize=8)
+def _weights(nodes: int, parts: int) -> np.ndarray:
+    """(points, q) weights of the q nearest of ``nodes`` at every ``parts``-th of the intervals between them."""
     at = np.arange((nodes - 1) * parts + 1) / parts
-    low = np.minimum(at.astype(int), nodes - 2)
-    points = min(6, nodes)
-    start = np.clip(low - points // 2 + 1, 0, nodes - points)
-    window = start[:, None] + np.arange(points)
+    points = min(NEIGHBOURS, nodes)
+    start = np.clip(np.minimum(at.astype(int), nodes - 2) - points // 2 + 1, 0, nodes - points)
     weight = np.ones((len(at), points))
     for i in range(points):
         for j in range(points):
             if i != j:
-                weight[:, i] *= (at - window[:, j]) / (i - j)
-    out = np.einsum("gq,kgq->kg", weight, profile[:, window])
-    near = np.stack([profile[:, np.clip(low + k, 0, nodes - 1)] for k in (-1, 0, 1, 2)])
-    low_most, high_most = near.min(axis=0), near.max(axis=0)
-    room = 0.25 * (high_most - low_most)
-    out = np.clip(out, low_most - room, high_most + room)
-    share = at - low
-    line = profile[:, low] * (1.0 - share) + profile[:, low + 1] * share
-    return np.where(straight[:, None], line, out)
+                weight[:, i] *= (at - start - j) / (i - j)
+    return weight
+
+
+@compiled
+def _fill_between(profile, parts, straight, weight, out):  # type: ignore[no-untyped-def]
+    nodes, points = profile.shape[1], weight.shape[1]
+    for k in range(len(profile)):
+        for low in range(nodes - 1):
+            start = min(max(low - points // 2 + 1, 0), nodes - points)
+            least = most = profile[k, low]
+            for i in range(max(low - 1, 0), min(low + 2, nodes - 1) + 1):
+                least, most = min(least, profile[k, i]), max(most, profile[k, i])
+            room = ROOM * (most - least)
+            for part in range(parts + 1 if low == nodes - 2 else parts):
+                g = low * parts + part
+                value = 0.0
+                if straight[k]:
+                    value = profile[k, low] + (profile[k, low + 1] - profile[k, low]) * part / parts
+                else:
+                    for i in range(points):
+                        value += weight[g, i] * profile[k, start + i]
+                    value = min(max(value, least - room), most + room)
+                out[k, g] = value

@@ -16,6 +16,7 @@ from transient.series.transfer import NODE, sudden_limit, velocity_transfer, wal
 # Points of the Cauchy integrals: the remainder is analytic to four times the circle, which leaves 4^-32.
 _CIRCLE = 32
 _TAYLOR = 8
+MOST_RESPONSES = 16  # kept of one gap's answer
 # Exponentials slower than this share of the last kept rate use the power series of the remainder: leaves 0.01^8.
 _NEAR = 0.01
 # Exponentials this near the negative axis are held by the contours; nearer than _BESIDE they may meet eigenvalues.
@@ -43,6 +44,7 @@ class Answer:
     sudden: np.ndarray
     contours: dict[int, np.ndarray] = field(default_factory=dict)
     tables: dict[tuple[int, int], EarlyTable] = field(default_factory=dict)
+    responses: dict[bytes, tuple[np.ndarray, np.ndarray]] = field(default_factory=dict)
 
     def transfer(self, s: np.ndarray) -> np.ndarray:
         """(S, 3, Q) at complex ``s`` (S,)."""
@@ -67,6 +69,14 @@ class Answer:
 
         The first is exact also where a rate meets an eigenvalue; the second is used off the negative axis only.
         """
+        key = rates.tobytes()
+        if key not in self.responses:
+            if len(self.responses) >= MOST_RESPONSES:
+                self.responses.clear()
+            self.responses[key] = self._steady_response(rates)
+        return self.responses[key]
+
+    def _steady_response(self, rates: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         near = np.abs(rates) <= _NEAR * self.modes.rate[-1]
         decaying = _beside_axis(rates, _BESIDE) & ~near
         gone = decaying & (np.abs(rates) > 0.5 * self.modes.rate[-1])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -41,10 +42,17 @@ class Timeline:
     before: np.ndarray
     quiet: np.ndarray
 
-    @property
+    @cached_property
     def lengths(self) -> np.ndarray:
         """(P - 1,) lengths of all pieces but the last."""
         return np.diff(self.starts)
+
+    @cached_property
+    def exponents(self) -> tuple[np.ndarray, np.ndarray]:
+        """Different exponents (R,) and which of them each term has (P, 3, K)."""
+        used = np.where(self.coeff == 0, 0, self.exponent)
+        rates, index = np.unique(used.ravel(), return_inverse=True)
+        return rates, index.reshape(used.shape)
 
     def window(self) -> float:
         """Age up to which breaks are answered one by one: what costs least, few modes or few young breaks."""
@@ -61,8 +69,11 @@ class Timeline:
 
 def timeline(inputs: Inputs, problem: Problem) -> Timeline:
     """The problem's inputs in diffusion times; the pressure drop per length G becomes the speed G gap^2 / mu."""
-    scale = np.array([1.0, 1.0, problem.gap**2 / problem.viscosity])
-    time = problem.diffusion_time
+    return scaled(inputs, problem.diffusion_time, np.array([1.0, 1.0, problem.gap**2 / problem.viscosity]))
+
+
+def scaled(inputs: Inputs, time: float, scale: np.ndarray) -> Timeline:
+    """Inputs in units of ``time`` and times ``scale`` (3,)."""
     poly = inputs.poly * scale[None, :, None] * time ** np.arange(4.0)
     coeff = inputs.coeff * scale[None, :, None]
     return Timeline(
@@ -113,8 +124,7 @@ def evaluate(line: Timeline, at: States, answer: Answer, piece: np.ndarray, offs
     """(outputs (n, Q), size of the terms they are the sum of (n, Q)) at ``piece``, ``offset`` (n,)."""
     out = np.empty((len(piece), answer.weight.shape[1]))
     size = np.empty_like(out)
-    rates, index = np.unique(np.where(line.coeff == 0, 0, line.exponent).ravel(), return_inverse=True)
-    index = index.reshape(line.exponent.shape)
+    rates, index = line.exponents
     rest, whole = answer.steady_response(rates)
     for first in range(0, len(piece), _CHUNK):
         part = slice(first, first + _CHUNK)
