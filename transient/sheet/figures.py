@@ -20,6 +20,7 @@ from transient.sheet.motion import motion
 from transient.sheet.overview import overview
 from transient.sheet.profiles import profiles
 from transient.sheet.reach import reach
+from transient.sheet.sketch import sketch
 from transient.sheet.stress import stress
 from transient.sheet.style import drawing
 
@@ -33,6 +34,7 @@ FIGURES: dict[str, Callable[[Result], Figure]] = {
     "flow": flow,
     "reach": reach,
     "motion": motion,
+    "sketch": sketch,
 }
 DEFAULT = "overview"
 # File endings, with what keeps a picture of the same result the same file.

@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-import tomllib
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
-from transient.case.model import Case, CaseError
+from transient.case.model import Case
 from transient.result.result import Result
 from transient.result.said import plain, stated
+from transient.sheet.stated import case_of
 
 
 @dataclass(frozen=True, eq=False)
@@ -29,10 +29,7 @@ class Facts:
     @cached_property
     def case(self) -> Case | None:
         """The case as stated, None where this version does not read it."""
-        try:
-            return Case(tomllib.loads(self.result.case_text))
-        except (CaseError, ValueError):
-            return None
+        return case_of(self.result)
 
     @property
     def stem(self) -> str:

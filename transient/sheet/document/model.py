@@ -9,8 +9,8 @@ from transient.case.inputs import WallInput
 from transient.case.model import Case
 from transient.fluid import LAWS
 from transient.sheet.document.blocks import Block, Formula, Points, Words
-from transient.sheet.document.drives import drive_words, shortened
 from transient.sheet.document.facts import Facts
+from transient.sheet.drives import drive_words, shortened
 
 # By the metric m of the one equation r^m: its form, its letters, the stress.
 EQUATIONS = {
