@@ -1,1 +1,1 @@
-"""Many cases: which (``plan``), where they are solved (``places``), what comes of it (``table``, ``says``); ``size``."""
+"""Many cases: which (``plan``), where they are solved (``places``), what comes of it (``table``); ``size``."""

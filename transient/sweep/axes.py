@@ -83,7 +83,8 @@ def _listed(stated: Stated, key: str, table: dict[str, Any]) -> Range:
         raise stated.refuse(key, f"{beside} is given beside values; a range or a list is needed, not both", beside)
     values = table["values"]
     if not isinstance(values, list | tuple | np.ndarray) or not len(values):
-        raise stated.refuse(key, f'{typed(values)} is no grid; a list is needed, such as ["0.4 mm", "0.8 mm"]', "values")
+        need = 'a list is needed, such as ["0.4 mm", "0.8 mm"]'
+        raise stated.refuse(key, f"{typed(values)} is no grid; {need}", "values")
     return Range(tuple(v.item() if isinstance(v, np.generic) else v for v in values))
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -11,7 +11,7 @@ import numpy as np
 from transient.case.model import Case
 from transient.result.result import Result
 from transient.sweep import each
-from transient.sweep.columns import OPEN, REFUSED, Column, Columns, blank
+from transient.sweep.columns import FAILED, OPEN, REFUSED, Column, Columns, blank
 from transient.sweep.keys import Values, Varied
 from transient.sweep.runners import runners
 
@@ -70,6 +70,26 @@ def solve_rows(frame: Frame, values: Values, faults: Mapping[int, str]) -> Piece
             part = {name: column[left] for name, column in values.items()}
             _put(out, left, runner.solve(base, frame.keys, part, frame.columns))
     return Piece(out)
+
+
+def unsolved(frame: Frame, rows: int, message: str) -> Piece:
+    """A piece of rows that failed, all for one reason."""
+    out = blank(frame.columns, rows)
+    out["status"][:] = FAILED
+    out["message"][:] = message
+    if not frame.histories:
+        return Piece(out)
+    return Piece(out, Histories(np.zeros(rows, np.int64), np.empty(0), np.empty((0, len(frame.walls)))))
+
+
+def joined(pieces: Sequence[Piece]) -> Piece:
+    """Pieces end to end."""
+    columns = {name: np.concatenate([one.columns[name] for one in pieces]) for name in pieces[0].columns}
+    kept = [one.histories for one in pieces if one.histories is not None]
+    if not kept:
+        return Piece(columns)
+    parts = {name: np.concatenate([getattr(one, name) for one in kept]) for name in ("rows", "time", "stress")}
+    return Piece(columns, Histories(**parts))
 
 
 def _put(out: Columns, rows: np.ndarray, part: Columns) -> None:

@@ -16,9 +16,9 @@ Values = Mapping[str, np.ndarray]
 class Varied:
     """One varied key of the case file, by its dotted ``name`` ("gap.height", "wall.upper.speed.over").
 
-    ``kind`` says what its array in ``Values`` holds: "quantity" SI values (float64, of ``dimension`` and ``unit``, "1" for
-    a fraction or a bare number), "whole" whole numbers (int64), "choice" places in ``choices`` (int64), which are texts
-    or whole tables as the case file has them.
+    ``kind`` says what its array in ``Values`` holds: "quantity" SI values (float64, of ``dimension`` and ``unit``, "1"
+    for a fraction or a bare number), "whole" whole numbers (int64), "choice" places in ``choices`` (int64), which are
+    texts or whole tables as the case file has them.
     """
 
     name: str

@@ -153,7 +153,8 @@ def _numbers(rows: Listed, key: str, dimension: str, unit: str, faults: dict[int
         except ValueError:
             out[i] = np.nan
         if not np.isfinite(out[i]):
-            faults.setdefault(i, _fault(rows, key, i, f"{typed(cell)} is no number; a plain number in {unit} is needed"))
+            need = f"a plain number in {unit} is needed"
+            faults.setdefault(i, _fault(rows, key, i, f"{typed(cell)} is no number; {need}"))
     return convert(out, unit, dimension)
 
 

@@ -119,7 +119,8 @@ def _plan(stated: Stated, base: Case) -> Plan:
     ranges = {key: read_range(stated, key, spec) for key, spec in stated.vary.items()}
     tolerances = {key: read_tolerance(stated, key, spec) for key, spec in stated.scatter.items()}
     if rows is None and not ranges and not tolerances:
-        raise stated.source.refuse((), 'varies nothing; [vary] is needed, such as "gap.height" = { values = ["0.4 mm"] }')
+        example = '"gap.height" = { values = ["0.4 mm", "0.8 mm"] }'
+        raise stated.source.refuse((), f"varies nothing; [vary] is needed, such as {example}")
     _each_once(stated, rows, [*ranges, *tolerances])
     facts, reads = _learn(stated, base, rows, ranges, tolerances)
     axes = [] if rows is None else [listed.axis(stated, rows, facts, reads.alone)]

@@ -103,7 +103,8 @@ def read_tolerance(stated: Stated, key: str, spec: Any) -> Tolerance:
         raise stated.refuse(key, f"has {' and '.join(table)}; one of them is needed")
     names = DISTRIBUTIONS[kind].names
     if not isinstance(given, list | tuple) or len(given) != len(names):
-        raise stated.refuse(key, f"{typed(given)} does not fit; [{', '.join(names)}] is needed, such as {EXAMPLE}", kind)
+        need = f"[{', '.join(names)}] is needed, such as {EXAMPLE}"
+        raise stated.refuse(key, f"{typed(given)} does not fit; {need}", kind)
     return Tolerance(kind, tuple(given))
 
 
@@ -126,7 +127,8 @@ def scatter(stated: Stated, given: dict[str, Tolerance], facts: dict[str, Facts]
     """The samples of all toleranced keys, None where there are none; raises ``CaseError``."""
     if not given:
         if stated.settings:
-            raise stated.source.refuse(("scatter",), f'names no key that scatters; one is needed, such as "gap.width" = {EXAMPLE}')
+            need = f'one is needed, such as "gap.width" = {EXAMPLE}'
+            raise stated.source.refuse(("scatter",), f"names no key that scatters; {need}")
         return None
     samples, seed, points = read_settings(stated)
     keys, drawn = [], []
@@ -150,7 +152,8 @@ def _parameters(stated: Stated, key: str, tolerance: Tolerance, dimension: str) 
         except QuantityError as error:
             raise stated.refuse(key, f"{name}: {error}", tolerance.kind, i) from None
     if tolerance.kind == "normal" and out[1] <= 0.0:
-        raise stated.refuse(key, f"{typed(tolerance.stated[1])} is no standard deviation; one above zero is needed", "normal")
+        fault = f"{typed(tolerance.stated[1])} is no standard deviation; one above zero is needed"
+        raise stated.refuse(key, fault, "normal")
     if tolerance.kind != "normal" and not (out == sorted(out) and out[0] < out[-1]):
         order = ", ".join(DISTRIBUTIONS[tolerance.kind].names)
         raise stated.refuse(key, f"its values do not rise; [{order}] is needed", tolerance.kind)

@@ -1,0 +1,130 @@
+"""Which inputs matter: shares of the variance and standardised slopes, from the rows at hand."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from transient.sweep.keys import Varied
+from transient.sweep.plan import Plan
+
+MOST_ROWS = 1_000_000  # more rows than these tell no more; they are taken evenly
+MOST_LEVELS = 40  # an input with more values is put into classes
+LEAST_IN_CLASS = 8
+
+
+@dataclass(frozen=True, eq=False)
+class Factor:
+    """One input over the rows taken: ``values`` (n,) standardised, None for texts; ``classes`` (n,) from 0."""
+
+    key: Varied
+    values: np.ndarray | None
+    classes: np.ndarray
+
+
+class Inputs:
+    """The varied inputs of a plan."""
+
+    def __init__(self, plan: Plan):
+        self.plan = plan
+        step = -(-plan.rows // MOST_ROWS)
+        self.rows = slice(None, None, step)
+        values = plan.values(0, plan.rows) if step == 1 else _every(plan, step)
+        self.factors = [one for key in plan.frame.keys if (one := _factor(key, values[key.name])) is not None]
+
+    def of(self, row: int) -> dict[str, Any]:
+        """The inputs of one row, in SI, texts and tables as the case file has them."""
+        values = self.plan.values(row, row + 1)
+        return {key.name: _plain(key, values[key.name][0]) for key in self.plan.frame.keys}
+
+
+def _plain(key: Varied, value: Any) -> Any:
+    if key.kind == "choice":
+        return key.choices[int(value)]
+    return int(value) if key.kind == "whole" else float(value)
+
+
+def _every(plan: Plan, step: int) -> dict[str, np.ndarray]:
+    """Values of every ``step``-th row, without those between."""
+    parts = []
+    for first in range(0, plan.rows, step * 65536):
+        behind = min(first + step * 65536, plan.rows)
+        parts.append({name: column[::step] for name, column in plan.values(first, behind).items()})
+    return {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
+
+
+def _factor(key: Varied, values: np.ndarray) -> Factor | None:
+    """The input as a factor; None where it has one value only, or rows that are no case."""
+    if key.kind == "choice":
+        return Factor(key, None, values) if np.ptp(values) else None
+    numbers = values.astype(float)
+    if not np.isfinite(numbers).any() or np.nanmax(numbers) == np.nanmin(numbers):
+        return None
+    spread = np.nanstd(numbers)
+    return Factor(key, (numbers - np.nanmean(numbers)) / spread, _classes(numbers))
+
+
+def _classes(values: np.ndarray) -> np.ndarray:
+    """Levels of an input with few values, else classes of equal numbers of rows."""
+    levels, places = np.unique(values, return_inverse=True)
+    if len(levels) <= MOST_LEVELS:
+        return places
+    number = int(np.clip(round(len(values) ** (1 / 3)), 2, min(MOST_LEVELS, max(len(values) // LEAST_IN_CLASS, 2))))
+    # By the place among the levels, so that equal values never part.
+    order = np.searchsorted(np.sort(places), places)
+    return order * number // len(values)
+
+
+def influence(inputs: Inputs, values: np.ndarray) -> dict[str, Any]:
+    """``sensitivities`` ranked by share, and ``linear``, the share of the variance that straight lines explain (R^2).
+
+    ``share`` is the first-order index Var(E[y|x]) / Var(y) (Sobol 1993), from means over the input's levels or classes
+    less what chance alone would give them (the epsilon squared of Kelley 1935, from memory); ``slope`` the
+    standardised regression coefficient, whose sign says in which direction the number goes.
+    """
+    taken = values[inputs.rows]
+    have = np.isfinite(taken)
+    y = taken[have]
+    if len(y) < 2 or not inputs.factors or np.ptp(y) <= 1e-12 * np.abs(y).max():
+        return {"linear": None, "sensitivities": []}
+    y = (y - y.mean()) / y.std()
+    slopes, linear = _regression([one.values[have] for one in inputs.factors if one.values is not None], y)
+    steep = iter(slopes)
+    found = [
+        {
+            "key": one.key.name,
+            "share": _share(one.classes[have], y),
+            "slope": None if one.values is None else float(next(steep)),
+        }
+        for one in inputs.factors
+    ]
+    return {"linear": linear, "sensitivities": sorted(found, key=lambda one: -one["share"])}
+
+
+def _share(classes: np.ndarray, y: np.ndarray) -> float:
+    """Share of the variance of standardised ``y`` (n,) that the means of its ``classes`` (n,) explain."""
+    counts = np.bincount(classes)
+    sums = np.bincount(classes, y)
+    used = counts > 0
+    between = float((sums[used] ** 2 / counts[used]).sum())
+    groups, rows = int(used.sum()), len(y)
+    if groups == rows:
+        return 1.0
+    chance = (groups - 1) * (rows - between) / (rows - groups)
+    return float(np.clip((between - chance) / rows, 0.0, 1.0))
+
+
+def _regression(columns: list[np.ndarray], y: np.ndarray) -> tuple[np.ndarray, float | None]:
+    """(standardised coefficients, R^2) of ``y`` (standardised) on the columns."""
+    if not columns or len(y) <= len(columns) + 1:
+        return np.full(len(columns), 0.0), None
+    x = np.stack(columns, axis=1)
+    x = x - x.mean(axis=0)
+    spread = x.std(axis=0)
+    x = x / np.where(spread > 0.0, spread, 1.0)
+    # Through the small normal equations: rows may be a million, inputs are few.
+    slopes = np.linalg.lstsq(x.T @ x, x.T @ y, rcond=1e-10)[0]
+    left = y - x @ slopes
+    return slopes, float(1.0 - (left @ left) / (y @ y))

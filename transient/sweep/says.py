@@ -1,0 +1,139 @@
+"""What the map says: for each headline number its spread, its worst case with the inputs, and which inputs matter."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+
+from transient.sweep.columns import SOLVED, STATUS, VERDICTS
+from transient.sweep.influence import Inputs, influence
+from transient.sweep.keys import Varied
+from transient.sweep.plan import Plan
+
+# Headline numbers in the order in which they are said; "_*" stands for each wall.
+NAMES = ("settling_time", "peak_stress_*", "peak_force_*", "peak_torque_*", "final_stress_*", "final_mean_velocity")
+ERRORS = {"settling_time": "settling_error"}
+PERCENTILES = (1, 5, 25, 50, 75, 95, 99)
+MOST_MESSAGES = 3
+
+
+class Data:
+    """A finished sweep's columns, read one at a time: ``get(name)`` is the array of a variable."""
+
+    def __init__(self, plan: Plan, get: Callable[[str], np.ndarray]):
+        self.plan, self.get = plan, get
+
+    def names(self) -> list[str]:
+        """The headline numbers that this sweep has."""
+        have = [column.name for column in self.plan.frame.columns]
+        walls = self.plan.frame.walls
+        wanted = [name.replace("*", wall) for name in NAMES for wall in (walls if "*" in name else ("",))]
+        return [name for name in wanted if name in have]
+
+    def unit(self, name: str) -> str:
+        """Unit of a column."""
+        return next(column.unit for column in self.plan.frame.columns if column.name == name)
+
+
+def summary(data: Data) -> dict[str, Any]:
+    """The closing summary, all in SI: plain values that JSON keeps."""
+    plan = data.plan
+    status = np.asarray(data.get("status"))
+    verdict = np.asarray(data.get("verdict"))
+    solved = status == STATUS[SOLVED]
+    inputs = Inputs(plan)
+    scatter = plan.scatter
+    return {
+        "title": plan.title,
+        "cases": plan.rows,
+        "status": {name: int(np.count_nonzero(status == name)) for name in STATUS[:3]},
+        "verdicts": {name: int(np.count_nonzero(verdict[solved] == name)) for name in VERDICTS[1:]},
+        "messages": [] if solved.all() else _messages(data, ~solved),
+        "varied": {key.name: _varied(key, plan) for key in plan.frame.keys},
+        "samples": None if scatter is None else scatter.samples,
+        "seed": None if scatter is None else scatter.seed,
+        "headlines": {name: one for name in data.names() if (one := _headline(data, name, inputs, verdict))},
+    }
+
+
+def _messages(data: Data, unsolved: np.ndarray) -> list[dict[str, Any]]:
+    """The most frequent reasons for rows without an answer, each with its first case."""
+    rows = np.flatnonzero(unsolved)
+    texts = np.asarray(data.get("message"))[rows].tolist()
+    first = {text: int(row) for text, row in zip(reversed(texts), rows[::-1], strict=True)}
+    common = Counter(texts).most_common(MOST_MESSAGES)
+    return [{"message": text, "cases": count, "first": first[text]} for text, count in common]
+
+
+def _varied(key: Varied, plan: Plan) -> dict[str, Any]:
+    scatter = plan.scatter
+    if scatter is not None and key in scatter.keys:
+        kind, parameters = scatter.drawn[scatter.keys.index(key)]
+        return {"unit": key.unit, "dimension": key.dimension, kind: list(parameters)}
+    values = next(v for one in plan.axes for k, v in zip(one.keys, one.values, strict=True) if k == key)
+    if key.kind == "choice":
+        return {"choices": len(key.choices), "count": len(values)}
+    ends = {"least": float(np.nanmin(values)), "greatest": float(np.nanmax(values))}
+    return {"unit": key.unit, "dimension": key.dimension, "count": len(values), **ends}
+
+
+def _headline(data: Data, name: str, inputs: Inputs, verdict: np.ndarray) -> dict[str, Any] | None:
+    """One headline number over all cases that have it; None where none has."""
+    values = np.asarray(data.get(name), dtype=float)
+    have = np.isfinite(values)
+    if not have.any():
+        return None
+    some = values[have]
+    out: dict[str, Any] = {
+        "unit": data.unit(name),
+        "cases": int(np.count_nonzero(have)),
+        "error": _largest_error(data, name),
+        "mean": float(some.mean()),
+        "deviation": float(some.std()),
+        "least": float(some.min()),
+        "median": float(np.median(some)),
+        "greatest": float(some.max()),
+    }
+    if data.plan.scatter is not None:
+        out["percentiles"] = _percentiles(some)
+        out["combination"] = _combination(data.plan, values, inputs)
+    worst = int(np.argmax(np.where(have, np.abs(values), -1.0)))
+    out["worst"] = {
+        "case": worst, "value": float(values[worst]), "verdict": str(verdict[worst]), "inputs": inputs.of(worst),
+    }  # fmt: skip
+    return out | influence(inputs, values)
+
+
+def _largest_error(data: Data, name: str) -> float | None:
+    """The largest stated error of a column; None where none is stated."""
+    error = ERRORS.get(name)
+    for quantity in ("peak_stress", "final_stress", "final_mean_velocity"):
+        if name.startswith(quantity):
+            error = name.replace(quantity, f"{quantity}_error")
+    if error is None or error not in {column.name for column in data.plan.frame.columns}:
+        return None
+    values = np.asarray(data.get(error), dtype=float)
+    values = values[np.isfinite(values)]
+    return float(values.max()) if len(values) else None
+
+
+def _percentiles(values: np.ndarray) -> dict[str, float]:
+    """Percentiles by their number, linear between the values (Hyndman & Fan 1996, definition 7)."""
+    return {str(q): float(v) for q, v in zip(PERCENTILES, np.percentile(values, PERCENTILES), strict=True)}
+
+
+def _combination(plan: Plan, values: np.ndarray, inputs: Inputs) -> dict[str, Any] | None:
+    """Of all combinations of [vary], the one whose scatter reaches farthest (95 of 100 stay below in magnitude)."""
+    if plan.combinations == 1:
+        return None
+    grid = values.reshape(plan.combinations, plan.samples)
+    size = np.where(np.isfinite(grid), np.abs(grid), np.nan)
+    known = np.flatnonzero(np.isfinite(size).any(axis=1))
+    worst = int(known[np.argmax(np.nanpercentile(size[known], 95, axis=1))])
+    row = grid[worst][np.isfinite(grid[worst])]
+    drawn = {key.name for key in plan.scatter.keys} if plan.scatter is not None else set()
+    stated = {key: value for key, value in inputs.of(worst * plan.samples).items() if key not in drawn}
+    return {"inputs": stated, "percentiles": _percentiles(row)}
