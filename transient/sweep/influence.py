@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from transient.sweep.keys import Varied
+from transient.sweep.keys import Values, Varied
 from transient.sweep.plan import Plan
 
 MOST_ROWS = 1_000_000  # more rows than these tell no more; they are taken evenly
@@ -32,7 +32,7 @@ class Inputs:
         step = -(-plan.rows // MOST_ROWS)
         self.rows = slice(None, None, step)
         values = plan.values(0, plan.rows) if step == 1 else _every(plan, step)
-        self.factors = [one for key in plan.frame.keys if (one := _factor(key, values[key.name])) is not None]
+        self.factors = [one for key in plan.frame.keys if (one := _factor(plan, key, values)) is not None]
 
     def of(self, row: int) -> dict[str, Any]:
         """The inputs of one row, in SI, texts and tables as the case file has them."""
@@ -55,21 +55,25 @@ def _every(plan: Plan, step: int) -> dict[str, np.ndarray]:
     return {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
 
 
-def _factor(key: Varied, values: np.ndarray) -> Factor | None:
-    """The input as a factor; None where it has one value only, or rows that are no case."""
+def _factor(plan: Plan, key: Varied, columns: Values) -> Factor | None:
+    """The input as a factor; None where it has one value only."""
+    values = columns[key.name]
     if key.kind == "choice":
         return Factor(key, None, values) if np.ptp(values) else None
     numbers = values.astype(float)
     if not np.isfinite(numbers).any() or np.nanmax(numbers) == np.nanmin(numbers):
         return None
     spread = np.nanstd(numbers)
-    return Factor(key, (numbers - np.nanmean(numbers)) / spread, _classes(numbers))
+    # Rows that are no case have no answer either: any number will do.
+    numbers = np.where(np.isfinite(numbers), numbers, np.nanmean(numbers))
+    drawn = plan.scatter is not None and key in plan.scatter.keys
+    return Factor(key, (numbers - numbers.mean()) / spread, _classes(numbers, 0 if drawn else MOST_LEVELS))
 
 
-def _classes(values: np.ndarray) -> np.ndarray:
-    """Levels of an input with few values, else classes of equal numbers of rows."""
+def _classes(values: np.ndarray, most: int) -> np.ndarray:
+    """Levels of an input with at most ``most`` values, else classes of equal numbers of rows."""
     levels, places = np.unique(values, return_inverse=True)
-    if len(levels) <= MOST_LEVELS:
+    if len(levels) <= most:
         return places
     number = int(np.clip(round(len(values) ** (1 / 3)), 2, min(MOST_LEVELS, max(len(values) // LEAST_IN_CLASS, 2))))
     # By the place among the levels, so that equal values never part.

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import itertools
+import os
 import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import cached_property
 from math import prod
 from pathlib import Path as FilePath
 from typing import Any
@@ -23,10 +23,11 @@ from transient.sweep.columns import Column, layout, together
 from transient.sweep.facts import Facts, learn
 from transient.sweep.keys import Values, Varied
 from transient.sweep.runners import runners
-from transient.sweep.scatter import Scatter, Tolerance, read_tolerance, scatter
+from transient.sweep.scatter import Scatter, Tolerance, read_settings, read_tolerance, scatter
 from transient.sweep.stated import Stated, read_stated, state
 
 MOST_CASES = 10_000_000
+BYTES_SUMMED = 60  # of each case that the closing summary holds at once
 MOST_FORMS = 64  # combinations of choices that are looked at for the columns they bring
 # Rows of a chunk: what a kill may cost, against the cost of a file each.
 ALONE, TOGETHER = (16, 256), (256, 8192)
@@ -71,13 +72,10 @@ class Plan:
         """First row of a chunk, and the one behind its last."""
         return chunk * self.chunk, min((chunk + 1) * self.chunk, self.rows)
 
-    @cached_property
-    def _drawn(self) -> tuple[np.ndarray, ...]:
-        return () if self.scatter is None else self.scatter.values()
-
     def values(self, first: int, behind: int) -> Values:
         """The varied keys' values in rows ``first`` to ``behind`` - 1."""
-        combination, sample = np.divmod(np.arange(first, behind), self.samples)
+        rows = np.arange(first, behind)
+        combination = rows // self.samples
         places = np.unravel_index(combination, [one.size for one in self.axes]) if self.axes else ()
         out = {
             key.name: column[place]
@@ -85,7 +83,8 @@ class Plan:
             for key, column in zip(one.keys, one.values, strict=True)
         }
         if self.scatter is not None:
-            out |= {key.name: column[sample] for key, column in zip(self.scatter.keys, self._drawn, strict=True)}
+            drawn = self.scatter.values(rows)
+            out |= {key.name: column for key, column in zip(self.scatter.keys, drawn, strict=True)}
         return out
 
     def faults(self, first: int, behind: int) -> dict[int, str]:
@@ -122,6 +121,7 @@ def _plan(stated: Stated, base: Case) -> Plan:
         example = '"gap.height" = { values = ["0.4 mm", "0.8 mm"] }'
         raise stated.source.refuse((), f"varies nothing; [vary] is needed, such as {example}")
     _each_once(stated, rows, [*ranges, *tolerances])
+    _refuse_too_large(stated, [one.size for one in ranges.values()], len(tolerances))
     facts, reads = _learn(stated, base, rows, ranges, tolerances)
     axes = [] if rows is None else [listed.axis(stated, rows, facts, reads.alone)]
     axes += [axis(stated, key, one, facts[key], reads.alone) for key, one in ranges.items()]
@@ -141,6 +141,27 @@ def _each_once(stated: Stated, rows: listed.Listed | None, others: list[str]) ->
         if key in others:
             raise stated.refuse(key, f"stands in {rows.name} too; it is needed in one of them")  # type: ignore[union-attr]
         stated.at[key] = ("rows",)
+
+
+def _refuse_too_large(stated: Stated, sizes: list[int], scattered: int) -> None:
+    """The axes and the samples are held in memory, and their summary needs some columns at once."""
+    samples = read_settings(stated)[0] if scattered else 1
+    held = 8 * (sum(sizes) + samples * scattered) + BYTES_SUMMED * prod(sizes) * samples
+    free = _free_memory()
+    if held > free:
+        raise stated.source.refuse(
+            (),
+            f"{prod(sizes) * samples:,} cases need about {held / 1e9:.3g} GB of memory, and {free / 1e9:.3g} GB are "
+            "free; fewer cases are needed",
+        )
+
+
+def _free_memory() -> int:
+    """Bytes of memory that are to be had, as far as the system tells."""
+    try:
+        return os.sysconf("SC_AVPHYS_PAGES") * os.sysconf("SC_PAGE_SIZE")
+    except (AttributeError, ValueError, OSError):
+        return 2**62
 
 
 class _Reads:

@@ -1,9 +1,10 @@
-"""[scatter]: random samples of toleranced keys, the same at every combination of [vary] and on every machine."""
+"""[scatter]: random samples of toleranced keys, the same on every machine and for any number of workers."""
 
 from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -18,6 +19,7 @@ POINTS = ("sobol", "random")
 MOST_SAMPLES = 10**9
 # A Sobol point may be 0 exactly, where a normal distribution has no value.
 SMALLEST = 2.0**-53
+_STEP, _MIX = np.uint64(0x9E3779B97F4A7C15), (np.uint64(0xBF58476D1CE4E5B9), np.uint64(0x94D049BB133111EB))
 
 
 def _normal(u: np.ndarray, mean: float, deviation: float) -> np.ndarray:
@@ -76,23 +78,47 @@ class Scatter:
     keys: tuple[Varied, ...]
     drawn: tuple[tuple[str, tuple[float, ...]], ...]
 
-    def values(self) -> tuple[np.ndarray, ...]:
-        """The samples (n,) of each key in SI."""
-        unit = np.clip(_points(self.points, self.samples, len(self.keys), self.seed), SMALLEST, 1.0 - SMALLEST)
-        return tuple(
-            DISTRIBUTIONS[kind].inverse(unit[:, i], *parameters) for i, (kind, parameters) in enumerate(self.drawn)
-        )
+    @cached_property
+    def _sobol(self) -> np.ndarray:
+        """Scrambled Sobol points (samples, keys) of the unit cube."""
+        from scipy.stats import qmc
+
+        # Whole powers of two keep the sequence balanced; what is not asked for is left out.
+        exponent = max(self.samples - 1, 0).bit_length()
+        points = qmc.Sobol(len(self.keys), scramble=True, rng=np.random.default_rng(self.seed))
+        return points.random_base2(exponent)[: self.samples]
+
+    def values(self, rows: np.ndarray) -> tuple[np.ndarray, ...]:
+        """The samples of each key in the given rows (n,) of the sweep, in SI: of these and the seed alone.
+
+        Each combination of [vary] has the Sobol points turned round by a shift of its own (Cranley & Patterson 1976):
+        what scatters is then as much spread over the combinations as within each.
+        """
+        combination, sample = np.divmod(rows, self.samples)
+        out = []
+        for i, (kind, parameters) in enumerate(self.drawn):
+            if self.points == "random":
+                unit = _hashed(rows, self.seed, i)
+            else:
+                shift = np.where(combination > 0, _hashed(combination, self.seed, i), 0.0)
+                unit = np.mod(self._sobol[sample, i] + shift, 1.0)
+            out.append(DISTRIBUTIONS[kind].inverse(np.clip(unit, SMALLEST, 1.0 - SMALLEST), *parameters))
+        return tuple(out)
 
 
-def _points(points: str, samples: int, dimensions: int, seed: int) -> np.ndarray:
-    """Points (samples, dimensions) of the unit cube."""
-    if points == "random":
-        return np.random.default_rng(seed).random((samples, dimensions))
-    from scipy.stats import qmc
+def _hashed(numbers: np.ndarray, seed: int, stream: int) -> np.ndarray:
+    """Random numbers in [0, 1) that belong to whole ``numbers`` (n,), independent between streams.
 
-    # Whole powers of two keep the sequence balanced; what is not asked for is left out.
-    exponent = max(samples - 1, 0).bit_length()
-    return qmc.Sobol(dimensions, scramble=True, rng=np.random.default_rng(seed)).random_base2(exponent)[:samples]
+    SplitMix64 (Steele, Lea & Flood 2014; constants from memory), whose n-th number needs none of those before.
+    """
+    start = _mixed(_mixed(np.array([seed], np.uint64) + _STEP) + np.uint64(stream + 1) * _STEP)
+    return (_mixed(start + (numbers.astype(np.uint64) + np.uint64(1)) * _STEP) >> np.uint64(11)) * 2.0**-53
+
+
+def _mixed(z: np.ndarray) -> np.ndarray:
+    z = (z ^ (z >> np.uint64(30))) * _MIX[0]
+    z = (z ^ (z >> np.uint64(27))) * _MIX[1]
+    return z ^ (z >> np.uint64(31))
 
 
 def read_tolerance(stated: Stated, key: str, spec: Any) -> Tolerance:
