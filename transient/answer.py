@@ -45,8 +45,8 @@ def run(case: Case, judge: str = "series") -> Result:
 def solve(problem: Problem, judge: str = "series") -> Solved:
     """Refine until every headline number's error meets the accuracy, or no finer level is in reach."""
     ahead = look(problem)
-    # bodies and prescribed flow have no series yet: three levels must judge themselves there
-    judged = judge == "series" and not problem.closed
+    # without a series three levels must judge themselves
+    judged = judge == "series" and _has_series(problem, ahead)
     levels = 2 if judged else 3
     refine, best = 1.0 if judged else 0.5, None
     for _ in range(MOST_ATTEMPTS):
@@ -91,9 +91,15 @@ def _attempt(problem: Problem, ahead: Outlook, refine: float, levels: int, judge
     return Solved(ahead, ladder, run, parts, demands(run, parts, problem.accuracy, calm))
 
 
+def _has_series(problem: Problem, ahead: Outlook) -> bool:
+    """Whether an exact solution is to be had: not under force-speed curves and dry friction, nor of the periodic end of
+    a body."""
+    return not problem.closed or (problem.linear and ahead.kind != "periodic")
+
+
 def _series(problem: Problem, ahead: Outlook, ladder: Ladder, judge: str) -> Exact | None:
     """The exact solution, None where there is none or it is not to be used."""
-    if judge == "refinement" or problem.closed:
+    if judge == "refinement" or not _has_series(problem, ahead):
         return None
     try:
         return exact_of(problem, ahead, ladder)

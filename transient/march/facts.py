@@ -9,7 +9,7 @@ from transient.gap.problem import PRESSURE, Body, Problem
 from transient.gap.system import assemble, steady
 from transient.march.levels import Ladder
 from transient.march.march import sudden_motion
-from transient.march.rates import stress_rates
+from transient.march.rates import accelerations
 from transient.march.regime import Outlook
 from transient.result.history import History, largest
 from transient.result.run import BodyFacts, Errors, Regime, Run, WallFacts
@@ -50,7 +50,7 @@ def body_facts(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
     assert body is not None
     best, flow = ladder.best, ladder.best.flow
     row = ladder.inputs.row(end)
-    acceleration = np.where(np.isnan(flow.stress[:, end]), np.nan, flow.acceleration[:, end])
+    acceleration, jerk = accelerations(problem, ladder.inputs, flow, end)
     terminal = size = None
     if best.orbit is not None:
         size = abs(best.orbit.speed_curve(end).magnitude()[0])
@@ -65,7 +65,7 @@ def body_facts(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
         body.grip,
         body.displaced * (problem.length or 0.0),
         acceleration,
-        stress_rates(flow.piece, flow.offset, acceleration[:, None])[:, 0],
+        jerk,
         terminal,
         size,
         _released(body, row, float(flow.speed[0, end])),

@@ -11,6 +11,8 @@ from __future__ import annotations
 import numpy as np
 
 from transient.compiled import compiled
+from transient.gap.problem import Inputs, Problem
+from transient.result.history import History
 
 STENCIL = 5
 
@@ -26,6 +28,33 @@ def stress_rates(piece: np.ndarray, offset: np.ndarray, stress: np.ndarray) -> n
         out[:, end] = _rates(offset, stress[:, end], first + infinite, last, infinite, owner)
         out[first[infinite], end] = np.nan
     return out
+
+
+def accelerations(problem: Problem, inputs: Inputs, history: History, end: int) -> tuple[np.ndarray, np.ndarray]:
+    """A body's acceleration (n,), NaN where it is infinite, and its rate.
+
+    Infinite with the stress on its wall; of a body that weighs nothing, or on whose face the pressure acts, also where
+    anything else is.
+    """
+    body = problem.walls[end].body
+    assert body is not None
+    infinite = np.isnan(history.stress[:, end])
+    if body.mass == 0.0 or body.displaced:
+        infinite = infinite | np.isnan(history.stress).any(axis=1) | np.isnan(history.gradient)
+    if body.mass == 0.0:
+        infinite = infinite | _sudden_load(problem, inputs, history, end)
+    value = np.where(infinite, np.nan, history.acceleration[:, end])
+    return value, stress_rates(history.piece, history.offset, value[:, None])[:, 0]
+
+
+def _sudden_load(problem: Problem, inputs: Inputs, history: History, end: int) -> np.ndarray:
+    """Rows (n,) at which a body's load jumps."""
+    body = problem.walls[end].body
+    assert body is not None
+    jumps = inputs.row(end).jumps(0) != 0.0
+    if problem.start == "rest" and body.stiffness * body.initial_displacement != 0.0:
+        jumps[0] = True
+    return (history.offset == 0.0) & jumps[history.piece]
 
 
 def _rates(

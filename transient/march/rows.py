@@ -8,7 +8,7 @@ import numpy as np
 
 from transient.gap.grid import spacing
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
-from transient.march.rates import stress_rates
+from transient.march.rates import accelerations
 from transient.result.curve import Curve
 from transient.result.history import History
 
@@ -86,17 +86,11 @@ def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.
         for end in ends:
             motion.load[:, end] = speed[:, end]
             speed[:, end] = fill(history.speed[:, end], history.acceleration[:, end])[order]
-            motion.acceleration[:, end] = fill(*_accelerations(history, end))[order]
+            motion.acceleration[:, end] = fill(*accelerations(problem, inputs, history, end))[order]
     if problem.flow is not None:
         gradient = fill(history.gradient, history.gradient_rate)[order]
     time = inputs.starts[pieces] + offsets
     return _part_jumps(Rows(time, stress, speed, mean, gradient, motion), pieces)
-
-
-def _accelerations(history: History, end: int) -> tuple[np.ndarray, np.ndarray]:
-    """A body's acceleration (n,), NaN where the stress is infinite, and its rate."""
-    value = np.where(np.isnan(history.stress[:, end]), np.nan, history.acceleration[:, end])
-    return value, stress_rates(history.piece, history.offset, value[:, None])[:, 0]
 
 
 def _pairs(
@@ -152,7 +146,7 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
             given.append(end)
         else:
             columns.append((history.speed[:, end], history.acceleration[:, end]))
-            columns.append(_accelerations(history, end))
+            columns.append(accelerations(problem, inputs, history, end))
     for value, rate in columns:
         size = np.nanmax(np.abs(value), initial=0.0)
         scale = np.full(len(low), size)

@@ -92,6 +92,8 @@ def deviation(problem: Problem, until: float) -> Solution:
 
 
 def _need(problem: Problem) -> Regime:
+    if problem.closed:
+        raise SeriesError("no series is worked out yet for the periodic end of a body or a prescribed flow")
     steady_flow(shape_of(problem))
     end = regime(problem)
     if end is None:

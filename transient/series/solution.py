@@ -8,6 +8,7 @@ import numpy as np
 
 from transient.gap.problem import Problem
 from transient.series.answers import Answer, mode_count, velocity_answer, wall_answer
+from transient.series.coupled import ClosedSolution, solve_closed
 from transient.series.gapshape import GapShape, SeriesError, shape_of
 from transient.series.modes import modes
 from transient.series.timeline import States, Timeline, evaluate, states, timeline
@@ -98,13 +99,15 @@ class Solution:
         return value, trust * (size + 1e-10 * size.max(axis=1, keepdims=True))
 
 
-def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution | UniformFlow:
+def solve(problem: Problem, until: float, tolerance: float = 1e-9) -> Solution | UniformFlow | ClosedSolution:
     """The exact flow on [0, until).  Raises SeriesError where the case has no series solution.
 
     ``tolerance`` is what the caller needs, relative to the largest terms; below 1e-12 it is refused.
     """
     if tolerance < 1e-12:
         raise SeriesError(f"the series is summed in double precision; a tolerance of {tolerance:g} is out of its reach")
+    if problem.closed:
+        return solve_closed(problem, until)
     shape = shape_of(problem)
     inputs = problem.inputs(until)
     if shape.unrestrained:

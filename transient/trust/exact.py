@@ -13,8 +13,10 @@ from transient.march.regime import Outlook
 from transient.result.curve import Curve
 from transient.result.history import History, largest
 from transient.result.run import Errors
+from transient.series.coupled import ClosedSolution
 from transient.series.regime import deviation, periodic
 from transient.series.solution import Solution, solve
+from transient.trust.coupled import motion_errors, speed_errors
 from transient.trust.peaks import peak_errors, speed_error
 from transient.trust.quasi_steady import steady_profile
 
@@ -95,7 +97,20 @@ def compare(problem: Problem, ahead: Outlook, ladder: Ladder, series: Exact | No
         level_stress, level_mean = _errors(away, apart)
         level_profile = _profile_error(away, apart, np.zeros_like)
     peaks = peak_errors(_curves(flow), flow, exact, np.column_stack([stress, mean]))
-    return Errors("exact", stress, mean, level_stress, level_mean, level_profile, peaks[:2], float(peaks[2]))
+    more = _more(problem, ladder, series) if problem.closed else {}
+    return Errors("exact", stress, mean, level_stress, level_mean, level_profile, peaks[:2], float(peaks[2]), more)
+
+
+def _more(problem: Problem, ladder: Ladder, series: Exact) -> dict[str, np.ndarray]:
+    """Of what bodies and a prescribed flow make results, see ``Errors.more``."""
+    assert isinstance(series.flow, ClosedSolution)
+    more = motion_errors(problem, ladder.inputs, ladder.best.flow, series.flow)
+    if ladder.best.deviation is None:
+        return more
+    if series.deviation is series.flow:
+        return {**more, "level_speed": more["speed"]}
+    assert isinstance(series.deviation, ClosedSolution)
+    return {**more, "level_speed": speed_errors(problem, ladder.best.deviation, series.deviation)}
 
 
 def _curves(history: History) -> list[Curve]:

@@ -1,0 +1,80 @@
+"""What bodies and a prescribed flow make results, against the exact solution: motion of the walls and pressure."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from transient.gap.problem import Inputs, Problem
+from transient.march.rates import accelerations
+from transient.result.curve import Curve
+from transient.result.history import History
+from transient.series.coupled import ClosedSolution
+
+ROUNDING = 1e-13  # of the largest value
+BETWEEN_MARGIN = 1.5  # where the march only interpolates, see ``exact``
+_COLUMN = {"speed": 0, "acceleration": 2, "place": 4, "gradient": 6}  # of ``ClosedSolution.motion``, the lower wall's
+
+
+def motion_errors(
+    problem: Problem, inputs: Inputs, history: History, exact: ClosedSolution
+) -> dict[str, np.ndarray]:
+    """``Errors.more`` on the history's rows: |march - series| + bound at the rows, and between them beside each."""
+    rows = len(history.time)
+    out = {"speed": np.zeros((rows, 2)), "acceleration": np.zeros((rows, 2)), "place": np.zeros((rows, 2))}
+    out["gradient"] = np.zeros(rows)
+    bodies = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
+    curves: dict[tuple[str, int], Curve] = {}
+    for end in bodies:
+        value, rate = accelerations(problem, inputs, history, end)
+        curves["speed", end] = history.speed_curve(end)
+        curves["acceleration", end] = Curve(history.time, value, rate, history.step)
+        curves["place", end] = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
+    if curves:
+        found = _errors(history, exact, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
+        for (name, end), error in zip(curves, found.T, strict=True):
+            out[name][:, end] = error
+    if problem.flow is not None:
+        out["gradient"] = _errors(history, exact, [history.gradient_curve()], [_COLUMN["gradient"]])[:, 0]
+    return out
+
+
+def speed_errors(problem: Problem, history: History, exact: ClosedSolution) -> np.ndarray:
+    """Errors (n, 2) of the bodies' speeds alone, at the history's rows and between them."""
+    out = np.zeros((len(history.time), 2))
+    bodies = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
+    if bodies:
+        out[:, bodies] = _errors(history, exact, [history.speed_curve(end) for end in bodies], bodies)
+    return out
+
+
+def _errors(history: History, exact: ClosedSolution, curves: list[Curve], columns: list[int]) -> np.ndarray:
+    """Errors (n, c) of ``curves``, which share their measure of an interval's share, against the exact ``columns``."""
+    inside = np.flatnonzero(history.step > 0.0)
+    half = np.where(inside % 2 == 0, 0.3, 0.7)
+    piece = np.concatenate([history.piece, history.piece[inside]])
+    offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
+    true, bound = exact.motion(piece, offset)
+    out = []
+    for curve, column in zip(curves, columns, strict=True):
+        value = np.concatenate([curve.value, curve.at(inside, half)])
+        error = _beside(_off(value, true[:, column], bound[:, column]), inside, len(history.time))
+        out.append(np.where(np.isfinite(curve.value), error, 0.0))
+    return np.stack(out, axis=1)
+
+
+def _off(value: np.ndarray, true: np.ndarray, bound: np.ndarray) -> np.ndarray:
+    """Errors (m,), 0 where the march itself says infinite."""
+    finite = np.isfinite(value)
+    size = np.median(np.abs(value[finite])) if finite.any() else 0.0
+    with np.errstate(invalid="ignore"):
+        off = np.abs(value - true) + bound
+    off = np.where(np.isfinite(off), off + ROUNDING * (size + np.abs(np.where(finite, value, 0.0))), np.inf)
+    return np.where(finite, off, 0.0)
+
+
+def _beside(off: np.ndarray, inside: np.ndarray, rows: int) -> np.ndarray:
+    """Errors at the rows (n,), each at least those towards its neighbours; ``off`` holds rows, then looks."""
+    out, between = off[:rows].copy(), BETWEEN_MARGIN * off[rows:]
+    out[inside] = np.maximum(out[inside], between)
+    out[inside + 1] = np.maximum(out[inside + 1], between)
+    return out
