@@ -17,13 +17,14 @@ from transient.cli.loads import loads
 from transient.cli.run import run
 from transient.cli.schema import schema
 from transient.cli.sheet import sheet
+from transient.cli.size import size
 from transient.cli.sweep import sweep
 from transient.cli.table import table
 from transient.cli.template import template
 from transient.cli.verify import verify
 from transient.cli.words import FAILED, INTERRUPTED, REFUSED, Stop, Version, note, one_line, own_error
 
-COMMANDS = (run, sweep, check, sheet, table, loads, figure, template, schema, verify)
+COMMANDS = (run, sweep, size, check, sheet, table, loads, figure, template, schema, verify)
 
 app = typer.Typer(
     add_completion=False,

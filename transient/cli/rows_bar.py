@@ -47,9 +47,9 @@ def rows_progress(total: int, done: int, quiet: bool) -> Iterator[Rows]:
         def render(self, task: Any) -> Text:
             return Text("" if not task.speed else f"{task.speed:,.3g} cases/s")
 
-    columns = (TextColumn("cases"), BarColumn(), MofNCompleteColumn(), Rate(), TimeRemainingColumn(), TextColumn("left"))
+    ends = (TimeRemainingColumn(), TextColumn("left"))
     progress = Progress(
-        *columns, console=Console(stderr=True), transient=True, auto_refresh=False, redirect_stdout=False,
+        TextColumn("cases"), BarColumn(), MofNCompleteColumn(), Rate(), *ends, console=Console(stderr=True), transient=True, auto_refresh=False, redirect_stdout=False,
         redirect_stderr=False, speed_estimate_period=60.0,
     )  # fmt: skip
     with progress:

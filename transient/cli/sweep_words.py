@@ -49,7 +49,7 @@ def _cases(said: dict[str, Any]) -> list[str]:
     if marked:
         text += f" ({listed(marked)})"
     out = entry("Cases", text)
-    for one in said["messages"]:
+    for one in [*said["messages"], *said["cautions"][:1]]:
         out += entry("", f"{one['cases']:,} such as case {one['first']}: {one['message']}")
     label = "Varied"
     for key, one in said["varied"].items():

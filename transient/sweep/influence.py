@@ -82,7 +82,7 @@ def _classes(values: np.ndarray, most: int) -> np.ndarray:
 
 
 def influence(inputs: Inputs, values: np.ndarray) -> dict[str, Any]:
-    """``sensitivities`` ranked by share, and ``linear``, the share of the variance that straight lines explain (R^2).
+    """``sensitivities`` of values (n,) ranked by share; ``linear``, the share of the variance that lines explain (R^2).
 
     ``share`` is the first-order index Var(E[y|x]) / Var(y) (Sobol 1993), from means over the input's levels or classes
     less what chance alone would give them (the epsilon squared of Kelley 1935, from memory); ``slope`` the

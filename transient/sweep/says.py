@@ -51,7 +51,8 @@ def summary(data: Data) -> dict[str, Any]:
         "cases": plan.rows,
         "status": {name: int(np.count_nonzero(status == name)) for name in STATUS[:3]},
         "verdicts": {name: int(np.count_nonzero(verdict[solved] == name)) for name in VERDICTS[1:]},
-        "messages": [] if solved.all() else _messages(data, ~solved),
+        "messages": _messages(data, ~solved),
+        "cautions": _messages(data, solved & (verdict != VERDICTS[1])),
         "varied": {key.name: _varied(key, plan) for key in plan.frame.keys},
         "samples": None if scatter is None else scatter.samples,
         "seed": None if scatter is None else scatter.seed,
@@ -59,9 +60,11 @@ def summary(data: Data) -> dict[str, Any]:
     }
 
 
-def _messages(data: Data, unsolved: np.ndarray) -> list[dict[str, Any]]:
-    """The most frequent reasons for rows without an answer, each with its first case."""
-    rows = np.flatnonzero(unsolved)
+def _messages(data: Data, among: np.ndarray) -> list[dict[str, Any]]:
+    """The most frequent messages of some rows (n,), each with its first case."""
+    rows = np.flatnonzero(among)
+    if not len(rows):
+        return []
     texts = np.asarray(data.get("message"))[rows].tolist()
     first = {text: int(row) for text, row in zip(reversed(texts), rows[::-1], strict=True)}
     common = Counter(texts).most_common(MOST_MESSAGES)
@@ -104,7 +107,7 @@ def _headline(data: Data, name: str, inputs: Inputs, verdict: np.ndarray) -> dic
     out["worst"] = {
         "case": worst, "value": float(values[worst]), "verdict": str(verdict[worst]), "inputs": inputs.of(worst),
     }  # fmt: skip
-    return out | influence(inputs, values)
+    return out | influence(inputs, np.abs(values))
 
 
 def _largest_error(data: Data, name: str) -> float | None:
