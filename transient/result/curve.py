@@ -7,6 +7,8 @@ from functools import cached_property
 
 import numpy as np
 
+from transient.compiled import compiled
+
 
 @dataclass(frozen=True, eq=False)
 class Curve:
@@ -212,10 +214,14 @@ class Curve:
 def _crossing(cubic: tuple[float, ...], level: float, low: float, high: float) -> float:
     """Where a cubic in s rises through ``level`` on [low, high], by bisection to the last digit."""
     c0, c1, c2, c3 = cubic
-    c0 -= level
+    return _rises_through(c0 - level, c1, c2, c3, low, high)
+
+
+@compiled
+def _rises_through(c0, c1, c2, c3, low, high):  # type: ignore[no-untyped-def]
     for _ in range(60):
         middle = 0.5 * (low + high)
-        if middle in (low, high):
+        if not low < middle < high:
             break
         if c0 + middle * (c1 + middle * (c2 + middle * c3)) < 0.0:
             low = middle

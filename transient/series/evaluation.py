@@ -10,8 +10,9 @@ from __future__ import annotations
 import numpy as np
 
 from transient.compiled import compiled
-from transient.series.recursion import decay_and_loss, forced, input_value, moving
+from transient.series.recursion import decay_and_loss, fill_turns, forced, input_value, moving
 
+GONE = 1e-25  # of the largest mode: what is left of a mode below this does not count
 SHORT = 0.125  # a piece shorter than this share of the age of its end enters as a pulse
 
 
@@ -64,6 +65,7 @@ def fill_old(
     """Fill ``out`` and ``size`` (n, Q) with the answer to the base of each instant and the size of its terms."""
     count, outputs = weight.shape
     scratch, which = np.zeros(3), np.zeros(3, np.int64)
+    turns = np.zeros((3, coeff.shape[2]), np.complex128)
     for e in range(len(piece)):
         for q in range(outputs):
             out[e, q] = 0.0
@@ -80,6 +82,8 @@ def fill_old(
             if not held and moving(poly[k, i], coeff[k, i]):
                 which[active] = i
                 active += 1
+                fill_turns(coeff[k, i], exponent[k, i], age, turns[i])
+        top = 0.0
         for n in range(count):
             decay, loss = decay_and_loss(rate[n] * age)
             amplitude, most = ahead[k, n], reach[k, n] * 1.0
@@ -92,11 +96,12 @@ def fill_old(
             for c in range(active):
                 i = which[c]
                 push = share[n, i] * forced(
-                    rate[n], decay, loss, poly[k, i], coeff[k, i], exponent[k, i], age, scratch
+                    rate[n], decay, loss, poly[k, i], coeff[k, i], exponent[k, i], turns[i], age, scratch
                 )
                 amplitude -= push
                 most += abs(push)
-            if most != 0.0:
+            top = max(top, most)
+            if most > GONE * top:
                 for q in range(outputs):
                     out[e, q] += weight[n, q] * amplitude
                     size[e, q] += abs(weight[n, q]) * most
@@ -118,4 +123,4 @@ def fill_old(
                     for q in range(outputs):
                         add = rest[rest_index[k, i, m], i, q] * now
                         out[e, q] += add.real
-                        size[e, q] += abs(add)
+                        size[e, q] += abs(add.real) + abs(add.imag)

@@ -26,9 +26,9 @@ def power_integrals(y, decay, loss, out):  # type: ignore[no-untyped-def]
 @compiled
 def divided_exponential(d):  # type: ignore[no-untyped-def]
     """(exp(d) - 1) / d for complex d."""
-    if abs(d) < 0.5:
+    if abs(d) < 0.75:
         term, total = 1.0 + 0.0j, 1.0 + 0.0j
-        for k in range(2, 18):
+        for k in range(2, 19):
             term *= d / k
             total += term
         return total
@@ -36,10 +36,18 @@ def divided_exponential(d):  # type: ignore[no-untyped-def]
 
 
 @compiled
-def forced(rate, decay, loss, poly, coeff, exponent, x, scratch):  # type: ignore[no-untyped-def]
+def fill_turns(coeff, exponent, x, turn):  # type: ignore[no-untyped-def]
+    """turn[k] = exp(exponent[k] x) of the exponentials that one input has."""
+    for k in range(len(coeff)):
+        if coeff[k] != 0.0:
+            turn[k] = np.exp(exponent[k] * x)
+
+
+@compiled
+def forced(rate, decay, loss, poly, coeff, exponent, turn, x, scratch):  # type: ignore[no-untyped-def]
     """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials.
 
-    ``decay`` = exp(-rate x), ``loss`` = 1 - decay.
+    ``decay`` = exp(-rate x), ``loss`` = 1 - decay, ``turn`` as ``fill_turns`` leaves it.
     """
     total = 0.0
     if poly[2] != 0.0 or poly[3] != 0.0:
@@ -51,10 +59,10 @@ def forced(rate, decay, loss, poly, coeff, exponent, x, scratch):  # type: ignor
         if coeff[k] != 0.0:
             s = exponent[k]
             d = (s + rate) * x
-            if d.real < 1.0:
+            if abs(d.real) < 0.5 and abs(d.imag) < 0.5:
                 answer = x * decay * divided_exponential(d)
             else:
-                answer = (np.exp(s * x) - decay) / (s + rate)
+                answer = (turn[k] - decay) / (s + rate)
             total += (coeff[k] * s * answer).real
     return total
 
@@ -107,6 +115,7 @@ def fill_states(
     pieces, count = len(poly), len(rate)
     scratch, decays, losses = np.zeros(3), np.zeros(count), np.zeros(count)
     now, most = np.zeros(count), np.zeros(count)
+    turn = np.zeros(coeff.shape[2], np.complex128)
     known, elapsed = -1.0, 0.0
     for i in range(3):
         left[0, i] = before[i]
@@ -136,9 +145,10 @@ def fill_states(
         for i in range(3):
             left[p + 1, i] = input_value(poly[p, i], coeff[p, i], exponent[p, i], x, 0)
             if moving(poly[p, i], coeff[p, i]):
+                fill_turns(coeff[p, i], exponent[p, i], x, turn)
                 for n in range(count):
                     push = share[n, i] * forced(
-                        rate[n], decays[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], x, scratch
+                        rate[n], decays[n], losses[n], poly[p, i], coeff[p, i], exponent[p, i], turn, x, scratch
                     )
                     now[n] -= push
                     most[n] += abs(push)

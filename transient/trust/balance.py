@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
@@ -79,6 +80,17 @@ def young_rows(problem: Problem, history: History) -> np.ndarray:
 
 
 def judged(problem: Problem, history: History) -> History:
+    """The rows and profiles that balances are drawn up from, worked out once for all of them: see ``_judged``."""
+    if history not in _KNOWN:
+        _KNOWN[history] = (problem, _judged(problem, history))
+    owner, found = _KNOWN[history]
+    return found if owner is problem else _judged(problem, history)
+
+
+_KNOWN: WeakKeyDictionary[History, tuple[Problem, History]] = WeakKeyDictionary()
+
+
+def _judged(problem: Problem, history: History) -> History:
     """The rows and profiles that balances are drawn up from.
 
     Rows so soon after an infinite stress that the nodes cannot follow its layer are left out: what went in until then
@@ -97,7 +109,6 @@ def judged(problem: Problem, history: History) -> History:
     unknown = np.isnan(rows["stress"][profile_row])
     profiles["profile"] = wall_values_before(position, profiles["profile"], unknown)
     return History(**rows, **profiles, position=position, profile_row=profile_row)
-
 
 
 def momentum_balance(problem: Problem, history: History) -> Closure:

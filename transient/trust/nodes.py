@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -57,6 +58,12 @@ def distinct(position: np.ndarray) -> np.ndarray:
 
 def forms(position: np.ndarray, metric: int) -> Forms:
     """The integrals on nodes ``position`` (N >= 4,), which may be graded."""
+    return _forms(tuple(position.tolist()), metric)
+
+
+@lru_cache(maxsize=8)  # several balances of one solve ask for the same
+def _forms(nodes: tuple[float, ...], metric: int) -> Forms:
+    position = np.array(nodes)
     n = len(position)
     depth = position - position[0]
     first = np.clip(np.arange(n - 1) - 1, 0, n - 4)
@@ -113,8 +120,17 @@ def wall_flux(position: np.ndarray, profile: np.ndarray, metric: int, end: int, 
         3: lambda: near * (r + wall) / (2.0 * (r * wall) ** 2),
     }[metric]()
     scale = along[-1]
-    _, slope = _lagrange((along / scale)[None, :], np.zeros((1, 1)))
-    return (w - w[:, :1]) @ slope[0, 0] / scale
+    return (w - w[:, :1]) @ _first_slope(along / scale) / scale
+
+
+def _first_slope(x: np.ndarray) -> np.ndarray:
+    """Weights (q,) of the derivative at the first of the nodes ``x`` (q,); that of the first is left 0, since values
+    count from there."""
+    apart = x[:, None] - x
+    np.fill_diagonal(apart, 1.0)
+    weight = apart[0].prod() / apart[0] / apart.prod(axis=1)
+    weight[0] = 0.0
+    return weight
 
 
 def wall_values_before(position: np.ndarray, profile: np.ndarray, infinite: np.ndarray) -> np.ndarray:

@@ -13,10 +13,11 @@ from transient.series.solution import Solution
 
 # Narrowings of the interval around a peak at which the exact curve is looked at, each by ``FINER``; its error is then
 # FINER^-2n of the curve's sagitta over one step.
-NARROWINGS = 3
-FINER = 10.0
-AROUND = np.linspace(-1.0, 1.0, 21)
+NARROWINGS = 4
+FINER = 5.0
+AROUND = np.linspace(-1.0, 1.0, 11)
 PEAK_MARGIN = 1.02  # for what is compared point by point
+SAME = 1e-12  # of a peak: closer values are the same but for round-off
 MOST_PLACES = 400  # a periodic peak comes back: the highest of its copies will do
 
 
@@ -102,13 +103,12 @@ def _narrowed(
     piece, offset, half = (
         np.concatenate([getattr(search, name) for search in searches]) for name in ("piece", "offset", "half")
     )
-    lengths = _lengths(history, piece)
-    first = np.flatnonzero(np.append(True, np.diff(owner) > 0))
-    best = reached = np.full(len(searches), -np.inf)
-    bound_there = np.zeros(len(searches))
-    rows = np.arange(len(piece))
+    best = np.full(len(searches), -np.inf)
+    reached, bound_there = best, np.zeros(len(searches))
     for _ in range(NARROWINGS):
-        at = np.clip(offset[:, None] + half[:, None] * AROUND, 0.0, lengths[:, None])
+        first = np.flatnonzero(np.append(True, np.diff(owner) > 0))
+        rows = np.arange(len(piece))
+        at = np.clip(offset[:, None] + half[:, None] * AROUND, 0.0, _lengths(history, piece)[:, None])
         found, bound = look(np.repeat(piece, len(AROUND)), at.ravel())
         found = found.reshape(*at.shape, -1)[rows, :, column]
         found = np.where(np.isfinite(found), sign[:, None] * found, -np.inf)
@@ -118,7 +118,12 @@ def _narrowed(
         sure = np.maximum.reduceat(bound.reshape(*at.shape, -1)[rows, top, column], first)
         bound_there = np.where(winner >= best, sure, bound_there)
         best = np.maximum(winner, best)
-        offset, half = at[rows, top], half / FINER
+        # between the places looked at a curve rises by less than it falls to the lower of the neighbours
+        beside = np.minimum(found[rows, np.maximum(top - 1, 0)], found[rows, np.minimum(top + 1, len(AROUND) - 1)])
+        rise = np.where(np.isfinite(beside), found[rows, top] - beside, np.inf)
+        keep = found[rows, top] + rise >= best[owner] - SAME * np.abs(best[owner])
+        owner, column, sign, piece = (of[keep] for of in (owner, column, sign, piece))
+        offset, half = at[rows, top][keep], half[keep] / FINER
     value = np.abs([search.value for search in searches])
     return list(np.abs(value - best) + bound_there + np.maximum(best - reached, 0.0))
 
