@@ -412,7 +412,7 @@ def sudden_motion(problem: Problem, inputs: Inputs, speed_before: np.ndarray | N
     for end, wall in enumerate(problem.walls):
         if wall.body is not None:
             walls[:, end] = 0.0
-            if speed_before is not None:
+            if speed_before is not None and problem.start == "rest":  # else it moves on as it did before
                 walls[0, end] = (wall.body.initial_speed or 0.0) - speed_before[end]
             if wall.body.displaced and problem.section:
                 core -= wall.body.displaced / (problem.section * problem.count) * walls[:, end]

@@ -140,6 +140,10 @@ def _wall_breaks(problem: Problem, end: int, jumps: np.ndarray, lever: float) ->
     if problem.start == "rest":
         out[0, 0] += abs(body.initial_speed or 0.0) * lever
         out[1, 0] += outside * lever
+    elif body.initial_speed is not None:  # what held it until t = 0 lets go
+        film = body.grip * problem.viscosity / problem.gap * lever
+        held = (film + body.damping) * abs(body.initial_speed) + abs(body.load.before)
+        out[1, 0] += (held / inertia + outside) * lever
     out[1] += body.breakaway * lever / inertia
     return out
 
