@@ -20,6 +20,7 @@ import numpy as np
 
 from transient.compiled import compiled, part
 from transient.march.closure import ALPHA, GAMMA, SHARE
+from transient.march.lanes_inputs import COURSE_ROW, COURSE_UNTIL, FIRST_ROW, LENGTH
 from transient.march.lanes_vector import (
     HALF,
     WIDTH,
@@ -213,12 +214,14 @@ def _record(w, weight, steady, lever, before, after, lane, conductance, u, slope
 
 
 @part
-def _next_step(x, length, first, growth, longest, calm):
+def _next_step(x, known, numbers):
     """Row length of the next block, from the offset ``x`` in a piece: the last blocks share what is left."""
-    wanted = max(first, growth * x)
-    if x < calm:
-        wanted = min(wanted, longest)
-    left = length - x
+    wanted = max(known[FIRST_ROW], numbers[GROWTH] * x)
+    if x < numbers[CALM]:
+        wanted = min(wanted, numbers[LONGEST])
+    if x < known[COURSE_UNTIL]:
+        wanted = min(wanted, known[COURSE_ROW])
+    left = known[LENGTH] - x
     if ROWS * wanted >= left:
         return left / ROWS
     if 2 * ROWS * wanted > left:
@@ -329,11 +332,11 @@ def _write(c, case, row, out, rows):
 @compiled
 def march(
     table, ends, grid, numbers,  # [G, NODE_FIELDS, n, 2], [G, END_FIELDS, 2], (C,), [C, CASE_FIELDS]
-    pieces, length, first, poly, wave, jump,  # (C,), [C, P] twice, [C, P, 3, 4] twice, [C, P, 3]
+    pieces, part_of, poly, wave, jump,  # (C,), [C, P, PIECE_FIELDS], [C, P, 3, 4] twice, [C, P, 3]
     before, final, every, waving,  # [C, 3] twice, steps of a row, whether any input has a wave
     rows, row_piece, row_offset, count,  # out: [C, R, FIELDS], [C, R] twice, (C,): -1 where R is too few
 ):  # fmt: skip
-    """March all cases; inputs are in lane units (see ``sweep.lanes_problem``).  Returns the number of lane steps."""
+    """March all cases; inputs are in lane units (see ``lanes_inputs``).  Returns the number of lane steps."""
     cases, most = row_piece.shape
     n = table.shape[2]
     storage = np.ones((n, WIDTH))
@@ -371,7 +374,7 @@ def march(
         for c in range(HALF):
             case = own[c]
             fresh[c] = False
-            if case >= 0 and at[c] >= length[case, piece[c]]:
+            if case >= 0 and at[c] >= part_of[case, piece[c], LENGTH]:
                 piece[c] += 1
                 at[c] = 0.0
                 fresh[c] = True
@@ -402,10 +405,7 @@ def march(
                 _set_flow(c, grid[case], table, before[case], final[case], w, z, steady)
             p = piece[c]
             entered = entered or fresh[c]
-            long[c] = _next_step(
-                at[c], length[case, p], first[case, p], numbers[case, GROWTH], numbers[case, LONGEST],
-                numbers[case, CALM],
-            )  # fmt: skip
+            long[c] = _next_step(at[c], part_of[case, p], numbers[case])
             h = long[c] / every
             if fresh[c]:
                 _set_piece(c, poly[case, p], wave[case, p], lane)
@@ -488,7 +488,7 @@ def march(
                     _write(c, case, at_row, out, rows)
                     offset = at[c] + (r + 1) * long[c]
                     if r == ROWS - 1:
-                        left = length[case, piece[c]]
+                        left = part_of[case, piece[c], LENGTH]
                         if left - offset <= 1e-9 * long[c]:
                             offset = left
                         at[c] = offset

@@ -14,7 +14,7 @@ from transient.compiled import compiled, part
 # From trials over ramps of 1e-4 to 1 diffusion times.
 FIRST = 0.05  # first row of a piece as a share of the shortest time beside its break
 GROWTH = 0.5  # longest row as a share of the time since the break
-FOLLOW = 0.45  # longest row while the flow settles, as a share of its slowest time constant
+FOLLOW = 0.36  # longest row while the flow settles, as a share of its slowest time constant
 COURSE = 0.35  # longest row over the time constant of a wave or lag
 BENT = 12.0  # least rows of a curved piece
 SUDDEN = 1e-3  # share of the time after a jump from which on the flow is followed closely
@@ -146,7 +146,6 @@ def join(
     cases, most = part_of.shape[0], part_of.shape[1]
     times = np.empty(most + 3)
     ends = np.zeros(4)
-    bend = np.zeros((1, most, 3))
     bends = np.zeros((cases, most, 3))
     for c in range(cases):
         count = 1
@@ -172,7 +171,8 @@ def join(
             _place(starts_high, poly_high, wave_high, c, 1, at, slack, time[c], push[c], poly[c, p], wave[c, p])
             _place(starts_push, poly_push, wave_push, c, 2, at, slack, time[c], push[c], poly[c, p], wave[c, p])
         for which in range(3):
-            old_value, old_slope, old_bend, old_size, old_length = before[c, which], 0.0, 0.0, abs(before[c, which]), 1e300
+            old_value, old_slope, old_bend = before[c, which], 0.0, 0.0
+            old_size, old_length = abs(old_value), 1e300
             for p in range(n):
                 _at_end(poly[c, p, which], wave[c, p, which], 0.0, ends)
                 length = part_of[c, p, LENGTH]
@@ -185,7 +185,9 @@ def join(
                 if abs(value - old_value) <= NOTHING * largest:
                     jump[c, p, which] = 0.0
                 bends[c, p, which] = 0.0
-                if abs(slope - old_slope) * shorter > 1e-9 * largest or abs(curve - old_bend) * shorter**2 > 1e-7 * largest:
+                kink, twist = abs(slope - old_slope) * shorter, abs(curve - old_bend) * shorter**2
+                if kink > 1e-9 * largest or twist > 1e-7 * largest:
                     bends[c, p, which] = 1.0
-                old_value, old_slope, old_bend, old_size, old_length = ends[0], ends[1], ends[2], size, length
+                old_value, old_slope, old_bend = ends[0], ends[1], ends[2]
+                old_size, old_length = size, length
         _finest(c, n, part_of, poly, wave, jump, bends, fine[c], layer)

@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 
 from transient.compiled import compiled, part
-from transient.march.lanes import AWAY, FIELDS, MEAN, PUSH
+from transient.march.lanes import AWAY, FIELDS, LOWER_SPEED, MEAN, PUSH
 
 MARGIN = 2.0
 ROUNDING = 1e-12
@@ -20,8 +20,9 @@ NEVER = np.nan
 LEVEL, CALM_LOWER, CALM_UPPER, CALM_MEAN, CALM_SPEED, FACTS = 0, 1, 2, 3, 4, 5
 # numbers read: [case, NUMBER]
 (SETTLE, SETTLE_ERROR, SETTLE_MEAN, SETTLE_MEAN_ERROR, MEAN_PEAK, MEAN_PEAK_ERROR, MEAN_END, MEAN_END_ERROR,
- PUSH_PEAK, PUSH_END, WALL) = range(11)  # fmt: skip
-(PEAK, PEAK_ERROR, PEAK_TIME, END, END_ERROR, SETTLE_WALL, SETTLE_WALL_ERROR, LARGEST, WALL_FIELDS) = range(9)
+ PUSH_PEAK, PUSH_END, FASTEST, WALL) = range(12)  # fmt: skip
+(PEAK, PEAK_ERROR, PEAK_TIME, END, END_ERROR, SETTLE_WALL, SETTLE_WALL_ERROR, LARGEST, CALMED, SPEED_END,
+ WALL_FIELDS) = range(11)  # fmt: skip
 NUMBERS = WALL + 2 * WALL_FIELDS
 STENCIL = 4
 
@@ -91,8 +92,7 @@ def _summit(sign, i, root, value, piece, count, out):
         step *= 0.25
     out[2] = 0.0
     if points > 2:
-        first = low if i - low >= 1 or points < 4 else low
-        fewer = sign * _value(root, value, first, points - 1, out[1])
+        fewer = sign * _value(root, value, low, points - 1, out[1])
         out[2] = abs(fewer - out[0]) * 0.5
 
 
@@ -116,12 +116,8 @@ def _peak(root, best, other, piece, count, skip, out, found):
     found[0], found[1], found[2] = size, top, root[top]
     rival = sign * other[top]
     doubt = 0.0
-    off = abs(best[top] - other[top])
     for i in range(max(top - 2, 0), min(top + 2, count - 1)):
-        if skip[i] or skip[i + 1]:
-            continue
-        off = max(off, max(abs(best[i] - other[i]), abs(best[i + 1] - other[i + 1])))
-        if piece[i] != piece[i + 1]:
+        if skip[i] or skip[i + 1] or piece[i] != piece[i + 1]:
             continue
         _summit(sign, i, root, best, piece, count, out)
         if out[0] > found[0]:
@@ -129,23 +125,28 @@ def _peak(root, best, other, piece, count, skip, out, found):
             doubt = out[2]
             _summit(sign, i, root, other, piece, count, out)
             rival = max(rival, out[0])
-    # another top, elsewhere, that is nearly as high: its errors count too
+    # the largest lies between the largest lower and the largest upper bound of the rows
+    below = -np.inf
+    above = -np.inf
     for i in range(count):
-        if not skip[i] and abs(best[i]) > 0.999 * size:
-            off = max(off, abs(best[i] - other[i]))
-    found[3] = max(MARGIN * abs(found[0] - rival), MARGIN * off) + doubt + ROUNDING * found[0]
+        if not skip[i]:
+            off = MARGIN * abs(best[i] - other[i])
+            below = max(below, abs(best[i]) - off)
+            above = max(above, abs(best[i]) + off)
+    off = max(above - found[0], min(found[0] - below, MARGIN * abs(best[top] - other[top])))
+    found[3] = max(MARGIN * abs(found[0] - rival), off) + doubt + ROUNDING * found[0]
     found[0] *= sign
 
 
 @part
 def _cross(level, sign, i, root, value, piece, count):
-    """Root in interval ``i`` at which ``sign`` x value passes ``level`` (the last such, by bisection from both ends)."""
+    """Root in interval ``i`` at which ``sign`` x value passes ``level``, by bisection."""
     low, points = _window(i, piece, False, count)
     a, b = root[i], root[i + 1]
     starts_above = sign * value[i] > level
     for _ in range(50):
         s = 0.5 * (a + b)
-        if s == a or s == b:
+        if s in (a, b):
             break
         above = sign * _value(root, value, low, points, s) > level
         if above == starts_above:
@@ -287,6 +288,7 @@ def read(
             out[c, SETTLE], out[c, SETTLE_ERROR] = pair[0], pair[1]
         else:
             out[c, SETTLE], out[c, SETTLE_ERROR] = 0.0, 0.0
+        out[c, FASTEST] = max(largest, facts[c, CALM_SPEED])
         # mean
         _peak(root, best[MEAN], other[MEAN], piece, n, clear, three, found)
         out[c, MEAN_PEAK], out[c, MEAN_PEAK_ERROR] = found[0], found[3]
@@ -318,6 +320,8 @@ def read(
             peak, error = found[0], found[3]
             _spread(value, other[side], n, abs(peak), off)
             out[c, to + LARGEST] = abs(peak)
+            out[c, to + CALMED] = 1.0 if abs(facts[c, CALM_LOWER + side]) > ZERO * abs(peak) else 0.0
+            out[c, to + SPEED_END] = best[LOWER_SPEED + side, n - 1]
             out[c, to + END], out[c, to + END_ERROR] = value[n - 1], off[n - 1]
             out[c, to + PEAK], out[c, to + PEAK_ERROR], out[c, to + PEAK_TIME] = np.nan, np.nan, np.nan
             if not unbounded:

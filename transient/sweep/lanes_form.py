@@ -1,0 +1,218 @@
+"""What the rows of a sweep have in common, and every row's own numbers as arrays.
+
+The case room reads the base case; here its numbers are taken from there, varied ones from the sweep's values, and
+everything that follows from them (ends, areas, drives) is worked out for all rows together.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from transient.case.model import Case
+from transient.drive import KINDS
+from transient.drive.kind import Kind
+from transient.drive.pieces import constant
+from transient.gap.problem import Problem
+from transient.sweep.keys import Values, Varied
+from transient.sweep.lanes_drives import BUILDERS, DriveRows, held, shared, varied
+from transient.units import DIMENSIONS
+
+_FLUID = ("fluid.density", "fluid.viscosity", "fluid.kinematic_viscosity")
+_RUN = ("run.duration", "run.settle_within")
+_DROPS = ("drop", "drop_per_length")
+
+
+@dataclass(frozen=True, eq=False)
+class Geometry:
+    """(n,) each: ends' coordinates and distance, m; walls' wetted areas and section of one gap, None where unknown."""
+
+    inner: np.ndarray
+    outer: np.ndarray
+    gap: np.ndarray
+    areas: tuple[np.ndarray | None, np.ndarray | None]
+    section: np.ndarray | None
+    radii: tuple[np.ndarray, np.ndarray]
+    length: np.ndarray | None
+    bad: np.ndarray
+
+
+class Form:
+    """A base case and the keys that vary over it."""
+
+    def __init__(self, base: Case, keys: Sequence[Varied]):
+        self.base, self.keys = base, {key.name: key for key in keys}
+        self.problem: Problem = base.problem()
+        self.stated = {one.key: one.value for one in base.inputs() if one.value is not None}
+
+    @property
+    def fits(self) -> bool:
+        """Whether the lanes can march rows of this form."""
+        problem = self.problem
+        if problem.closed or problem.law.code != 0 or problem.profile_times is not None:
+            return False
+        if not any(wall.kind == "moving" for wall in problem.walls):
+            return False
+        if any(key.kind not in ("quantity", "number", "whole") for key in self.keys.values()):
+            return False
+        return all(self._known(name) for name in self.keys) and all(self._fixed(which) for which in range(3))
+
+    def _known(self, name: str) -> bool:
+        if name in _FLUID or name in _RUN or name == "gap.count":
+            return True
+        if name.startswith("gap."):
+            return name[4:] in self.base.gap.sizes
+        return any(self._touches(which, name) and self._buildable(which) for which in range(3))
+
+    def _path(self, which: int) -> str | None:
+        """The dotted key of one drive: 0, 1 the walls, 2 the pressure; None where nothing is given."""
+        if which == 2:
+            kind = self.base.pressure.kind
+            return f"pressure.{kind}" if kind in _DROPS else None
+        wall = self.base.walls[which]
+        return None if wall is None or wall.speed is None else f"wall.{wall.name}.speed"
+
+    def _touches(self, which: int, name: str) -> bool:
+        path = self._path(which)
+        return path is not None and (name == path or name.startswith(path + "."))
+
+    def _varies(self, which: int) -> bool:
+        return any(self._touches(which, name) for name in self.keys)
+
+    def _tree(self, which: int) -> Any:
+        here: Any = self.base.tree
+        for part in (self._path(which) or "").split("."):
+            here = here[part]
+        return here
+
+    def _kind(self, which: int) -> Kind | None:
+        tree = self._tree(which)
+        return KINDS[tree["kind"]] if isinstance(tree, Mapping) else None
+
+    def _buildable(self, which: int) -> bool:
+        kind = self._kind(which)
+        path = self._path(which)
+        if kind is None:
+            return all(name == path for name in self.keys if self._touches(which, name))
+        fields = {f"{path}.{field.name}" for field in kind.fields}
+        return kind.name in BUILDERS and all(name in fields for name in self.keys if self._touches(which, name))
+
+    def _fixed(self, which: int) -> bool:
+        """Whether a drive that does not vary is one that all rows can share."""
+        return self._varies(which) or self._shared(which) is not None
+
+    def _shared(self, which: int) -> DriveRows | None:
+        if which not in self._share:
+            if which < 2:
+                drive = self.problem.speeds[which]
+            else:
+                given = self.base.pressure.drive
+                drive = constant(0.0) if given is None or self._path(2) is None else given
+            self._share[which] = shared(drive)
+        return self._share[which]
+
+    @cached_property
+    def _share(self) -> dict[int, DriveRows | None]:
+        return {}
+
+    def number(self, name: str, values: Values, rows: int) -> np.ndarray | None:
+        """A key's value (n,) in SI: the rows' own, else the base case's; None where neither says."""
+        if name in self.keys:
+            return np.asarray(values[name], dtype=float)
+        stated = self.stated.get(name)
+        return None if stated is None else np.full(rows, float(stated))
+
+    def refused(self, values: Values, rows: int) -> np.ndarray:
+        """Rows (n,) with a number that the case room would not take."""
+        bad = np.zeros(rows, bool)
+        for name, key in self.keys.items():
+            number = np.asarray(values[name], dtype=float)
+            bad |= ~np.isfinite(number)
+            if key.dimension in DIMENSIONS:
+                one = DIMENSIONS[key.dimension]
+                size = np.abs(number)
+                bad |= (size > one.largest) | ((size < one.smallest) & (size > 0.0))
+            if name.startswith(("gap.", "fluid.", "run.")):
+                bad |= ~(number > 0.0)
+            if name == "run.settle_within":
+                bad |= ~(number < 1.0)
+        return bad
+
+    def fluid(self, values: Values, rows: int) -> tuple[np.ndarray, np.ndarray]:
+        """(density, dynamic viscosity), (n,) each."""
+        density = self.number("fluid.density", values, rows)
+        assert density is not None
+        kinematic = self.number("fluid.kinematic_viscosity", values, rows)
+        if kinematic is not None:
+            return density, kinematic * density
+        viscosity = self.number("fluid.viscosity", values, rows)
+        return density, np.full(rows, self.problem.viscosity) if viscosity is None else viscosity
+
+    def geometry(self, values: Values, rows: int) -> Geometry:
+        """All rows' ends and areas."""
+        sizes = {name: self.number(f"gap.{name}", values, rows) for name in self.base.gap.sizes}
+        known: dict[str, Any] = {name: size for name, size in sizes.items() if size is not None}
+        shape = self.base.gap.shape
+        varying = any(name.startswith("gap.") for name in self.keys)
+        if not varying:
+            ends = self.base.gap.ends
+            ends = replace(ends, **{k: np.full(rows, getattr(ends, k)) for k in ("inner", "outer", "gap")})
+        elif shape.word == "annulus":
+            ends = replace(self.base.gap.ends, **_annulus(known))
+        else:
+            ends = shape.ends(known)
+        inner, outer, gap = (np.broadcast_to(np.asarray(x, float), (rows,)) for x in (ends.inner, ends.outer, ends.gap))
+        with np.errstate(invalid="ignore"):
+            bad = ~((inner >= 0.0) & (inner < outer) & (gap > 0.0))
+        radii = tuple(np.broadcast_to(np.asarray(r, float), (rows,)) for r in shape.radii(ends))
+        return Geometry(
+            inner, outer, gap, shape.areas(ends, known), shape.section(ends, known), (radii[0], radii[1]),
+            known.get("length"), bad,
+        )  # fmt: skip
+
+    def drive(self, which: int, values: Values, geometry: Geometry, rows: int) -> DriveRows:
+        """One input's rows: wall speeds in m/s or rad/s, the pressure drop per length in Pa/m."""
+        found = self._varied(which, values, rows) if self._varies(which) else self._shared(which)
+        assert found is not None
+        if which == 2 and self.base.pressure.kind == "drop":
+            assert geometry.length is not None
+            found = found.scaled(1.0 / geometry.length)
+        return found
+
+    def _varied(self, which: int, values: Values, rows: int) -> DriveRows:
+        path, kind = self._path(which), self._kind(which)
+        assert path is not None
+        if kind is None:
+            number = self.number(path, values, rows)
+            assert number is not None
+            bad = ~np.isfinite(number)
+            return replace(held(np.where(bad, 0.0, number)), bad=bad)
+        numbers = {}
+        for field in kind.fields:
+            number = self.number(f"{path}.{field.name}", values, rows)
+            numbers[field.name] = np.full(rows, float(field.default)) if number is None else number
+        return varied(kind, numbers)
+
+
+def _annulus(sizes: Mapping[str, np.ndarray]) -> dict[str, np.ndarray]:
+    """Ends from two of inner size, outer size and clearance, as in ``gap.shapes.annulus``."""
+    def radius(one: str, other: str) -> np.ndarray | None:
+        if one in sizes:
+            return sizes[one] / 2
+        return sizes.get(other)
+
+    inner = radius("inner_diameter", "inner_radius")
+    outer = radius("outer_diameter", "outer_radius")
+    clear = radius("diametral_clearance", "radial_clearance")
+    if clear is None:
+        assert inner is not None
+        assert outer is not None
+        return {"inner": inner, "outer": outer, "gap": outer - inner}
+    if outer is None:
+        assert inner is not None
+        return {"inner": inner, "outer": inner + clear, "gap": clear}
+    return {"inner": outer - clear, "outer": outer, "gap": clear}
