@@ -28,6 +28,8 @@ def variables(problem: Problem, run: Run, rows: Rows, ladder: Ladder, until: flo
         ),
         "wall_speed": Variable(BY_WALL, rows.speed[:, columns], angular, "speed of the wall"),
     }
+    error = [np.interp(rows.time, run.history.time, run.errors.stress[:, end]) for end in columns]
+    out["wall_stress_error"] = Variable(BY_WALL, np.stack(error, axis=1), "Pa", "bound of the wall stress's error")
     out |= _loads(problem, rows, columns)
     if rows.motion is not None:
         out |= _motion(problem, run, rows, rows.motion, columns)

@@ -61,7 +61,7 @@ def photograph(browser: str, page: Path) -> None:
     subprocess.run([*usual, f"--window-size={WIDE},{TALL}", f"--screenshot={screen}", address], **quiet)
     subprocess.run([*usual, "--no-pdf-header-footer", f"--print-to-pdf={paper}", address], **quiet)
     if shutil.which("pdftoppm"):
-        subprocess.run(["pdftoppm", "-r", "60", "-png", str(paper), str(paper.with_suffix(""))], **quiet)
+        subprocess.run(["pdftoppm", "-r", "75", "-png", str(paper), str(paper.with_suffix(""))], **quiet)
 
 
 if __name__ == "__main__":

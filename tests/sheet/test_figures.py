@@ -69,7 +69,11 @@ def overlap(figure: Figure) -> list[tuple[str, str]]:
     return found
 
 
-@pytest.mark.parametrize("name", FIGURES)
+# What needs a case, travel or stated errors is looked at on solved cases.
+OF_SOLVED = ("sketch", "energy", "lines", "trust")
+
+
+@pytest.mark.parametrize("name", [name for name in FIGURES if name not in OF_SOLVED])
 @pytest.mark.parametrize("make", MADE)
 def test_every_figure_of_every_result_is_complete_and_clear(make: str, name: str):
     figure = draw(made(make), name)

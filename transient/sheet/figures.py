@@ -15,7 +15,9 @@ from typing import TYPE_CHECKING
 from transient.result.result import Result, ResultError
 from transient.result.view import nearest
 from transient.result.whole import whole
+from transient.sheet.energy import energy
 from transient.sheet.flow import flow
+from transient.sheet.lines import lines
 from transient.sheet.motion import motion
 from transient.sheet.overview import overview
 from transient.sheet.profiles import profiles
@@ -23,6 +25,7 @@ from transient.sheet.reach import reach
 from transient.sheet.sketch import sketch
 from transient.sheet.stress import stress
 from transient.sheet.style import drawing
+from transient.sheet.trust import trust
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -34,6 +37,9 @@ FIGURES: dict[str, Callable[[Result], Figure]] = {
     "flow": flow,
     "reach": reach,
     "motion": motion,
+    "energy": energy,
+    "lines": lines,
+    "trust": trust,
     "sketch": sketch,
 }
 DEFAULT = "overview"

@@ -112,4 +112,6 @@ _WORDS = {
     "mean_velocity": "mean velocity",
     "flow_rate": "flow rate",
     "reach": "depth reached",
+    "wall_force": "force on the wall",
+    "wall_torque": "torque on the wall",
 }

@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 # Mean width of a character and height of a line, in units of the font size.
-_WIDE, _TALL = 0.60, 1.25
+_WIDE, _TALL = 0.64, 1.25
 # Costs of covering, in the order in which they are to be avoided.
 _TEXT, _OUTSIDE, _CURVE, _AWAY = 1000.0, 400.0, 6.0, 0.4
 

@@ -8,6 +8,7 @@ import numpy as np
 
 from transient.result.result import Result
 from transient.result.scale import scale
+from transient.sheet.akima import akima
 from transient.sheet.labels import Board
 from transient.sheet.style import FAINT, INK, SOFT, WALL, extent, margins, need, page, told
 
@@ -40,9 +41,9 @@ def subtitle(result: Result) -> str:
     return words + (f" (the last cycle, from {told(since, 's')})" if _endless(result.velocity, result.position) else "")
 
 
-def instants(velocity: np.ndarray, position: np.ndarray) -> np.ndarray:
-    """Rows of ``velocity`` (k, N) over ``position`` (N,) to show, in order: equal parts of the way that the profile
-    goes, without doubles, the last one always among them.
+def instants(velocity: np.ndarray, position: np.ndarray, curves: int = CURVES) -> np.ndarray:
+    """Rows of ``velocity`` (k, N) over ``position`` (N,) to show, in order, ``curves`` + 1 at most: equal parts of
+    the way that the profile goes, without doubles, the last one always among them.
 
     The distance of two profiles is the mean of their difference over the gap, which is the area between the curves.
     """
@@ -50,7 +51,7 @@ def instants(velocity: np.ndarray, position: np.ndarray) -> np.ndarray:
     width = _width(velocity, position)
     last = len(velocity) - 1
     first = int(np.searchsorted(way, way[-1] - CYCLE * width)) if way[-1] > ENDLESS * width else 0
-    rows = np.clip(np.searchsorted(way, np.linspace(way[first], way[-1], CURVES + 1)), first, last)
+    rows = np.clip(np.searchsorted(way, np.linspace(way[first], way[-1], curves + 1)), first, last)
     kept = [last]
     rest = np.zeros_like(velocity[0])
     for row in np.unique(rows)[::-1]:
@@ -86,21 +87,21 @@ def profiles_panel(axes: Axes, result: Result) -> None:
     speed = scale(max(abs(low), abs(high)), "m/s")
     across = scale(float(y[-1]), "m")
     axes.set_xlim(low * speed.factor, high * speed.factor)
-    _walls(axes, result, across.factor)
+    draw_walls(axes, result, across.factor)
     axes.axvline(0.0, color=FAINT, lw=0.8, zorder=0)
     board = Board(axes)
-    for row, velocity in zip(chosen, shown, strict=True):
-        x = between(y, velocity, fine, mirrored=_has_axis(result)) * speed.factor
+    for i, (row, velocity) in enumerate(zip(chosen, shown, strict=True)):
+        x = between(y, velocity, fine, mirrored=has_axis(result)) * speed.factor
         last = row == chosen[-1]
         axes.plot(
-            x, fine * across.factor, color=_shade(row, chosen), lw=2.0 if last else 1.2,
+            x, fine * across.factor, color=shade(i, len(chosen)), lw=2.0 if last else 1.2,
             gid=f"profile {float(result.profile_time[row])!r}",
         )  # fmt: skip
         board.add_curve(x, fine * across.factor)
-    for i, (row, label) in enumerate(zip(chosen, time_labels(result.profile_time[chosen]), strict=True)):
-        board.on_curve(i, label, color=_shade(row, chosen))
+    for i, label in enumerate(time_labels(result.profile_time[chosen])):
+        board.on_curve(i, label, color=shade(i, len(chosen)))
     axes.set_xlabel(f"velocity [{speed.unit}]   (positive: {_positive(result)})")
-    axes.set_ylabel(f"{_across_words(result)} [{across.unit}]")
+    axes.set_ylabel(f"{across_words(result)} [{across.unit}]")
 
 
 def time_labels(times: np.ndarray) -> list[str]:
@@ -112,11 +113,11 @@ def time_labels(times: np.ndarray) -> list[str]:
     return texts
 
 
-def _shade(row: int, chosen: np.ndarray) -> tuple[float, float, float]:
-    """Between a light and a dark tone of the first ink, by rank."""
+def shade(number: int, count: int) -> tuple[float, float, float]:
+    """Between a light and a dark tone of the first ink, by the number of a curve among ``count``."""
     from matplotlib.colors import to_rgb
 
-    rank = list(chosen).index(row) / max(len(chosen) - 1, 1)
+    rank = number / max(count - 1, 1)
     light = _SHADES[0] + (_SHADES[1] - _SHADES[0]) * rank
     ink = np.array(to_rgb(INK[0]))
     tone = ink + (1 - ink) * light
@@ -126,29 +127,27 @@ def _shade(row: int, chosen: np.ndarray) -> tuple[float, float, float]:
 def between(y: np.ndarray, velocity: np.ndarray, fine: np.ndarray, mirrored: bool) -> np.ndarray:
     """Velocity (n,) at positions ``fine`` from that at ``y`` (N,), without overshoot at a steep wall layer.
 
-    Modified Akima interpolation (Akima 1970).  ``mirrored``: the profile goes on beyond y[0] as in a mirror.
+    ``mirrored``: the profile goes on beyond y[0] as in a mirror.
     """
-    from scipy.interpolate import Akima1DInterpolator
-
     if mirrored:
         y = np.concatenate([2 * y[0] - y[:0:-1], y])
         velocity = np.concatenate([velocity[:0:-1], velocity])
-    return Akima1DInterpolator(y, velocity, method="makima")(fine)
+    return akima(y, velocity, fine)
 
 
-def _has_axis(result: Result) -> bool:
+def has_axis(result: Result) -> bool:
     """Whether the gap ends in a pipe's axis, where there is no wall."""
     return "wall" in result.variables and len(result.variables["wall"].data) == 1
 
 
-def _walls(axes: Axes, result: Result, factor: float) -> None:
+def draw_walls(axes: Axes, result: Result, factor: float) -> None:
     """Hatched strips where walls are; a centre line where a pipe's axis is."""
     y0, y1 = float(result.position[0]) * factor, float(result.position[-1]) * factor
     thick = 0.06 * (y1 - y0)
     axes.set_ylim(y0 - 1.15 * thick, y1 + 1.15 * thick)
     names = [str(name) for name in result.variables["wall"].data] if "wall" in result.variables else []
     ends = [(y1, y1 + thick, names[-1] if names else "")]
-    if _has_axis(result):
+    if has_axis(result):
         axes.axhline(y0, color=SOFT, lw=0.8, ls=(0, (10, 3, 2, 3)), zorder=0)
         place = axes.get_yaxis_transform()
         axes.text(0.98, y0, "axis", transform=place, ha="right", va="top", size=7.5, color=SOFT)
@@ -168,5 +167,5 @@ def _positive(result: Result) -> str:
     return "in the sense of positive rotation" if turning else "along +x"
 
 
-def _across_words(result: Result) -> str:
+def across_words(result: Result) -> str:
     return "height" if result.position[0] == 0.0 and len(result.variables["wall"].data) > 1 else "radius"

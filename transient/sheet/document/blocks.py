@@ -55,11 +55,12 @@ class Table:
 
 @dataclass(frozen=True, eq=False)
 class Picture:
-    """A figure with what it shows in a sentence."""
+    """A figure with what it shows in a sentence; ``crop`` inches at its top are left out."""
 
     name: str
     caption: str
     figure: Figure
+    crop: float = 0.0
     kind: str = "picture"
 
 

@@ -71,4 +71,4 @@ def margin(check: dict[str, Any]) -> str:
     passed = check["status"] == "pass"
     lower = value > limit if passed else value < ABOVE * limit
     ratio = abs(value / limit) if lower else abs(limit / value)
-    return f"× {ratio:.2g}" if ratio < 1e3 else "× > 1000"
+    return f"× {ratio:.2g}" if ratio < 100 else f"× {ratio:.0f}" if ratio < 1e3 else "× > 1000"

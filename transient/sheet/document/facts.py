@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -10,6 +11,9 @@ from transient.case.model import Case
 from transient.result.result import Result
 from transient.result.said import plain, stated
 from transient.sheet.stated import case_of
+
+_MICRO = re.compile(r"(?<= )u(?=[a-zA-Z])")
+_POWER = re.compile(r"(?<=\d)e([+-]\d+)")
 
 
 @dataclass(frozen=True, eq=False)
@@ -79,7 +83,9 @@ def brief(value: float | None, unit: str) -> str:
 
 
 def printed(text: str) -> str:
-    """With the minus sign of print before digits."""
+    """As print sets it: a minus sign before digits, raised powers of units."""
+    text = _MICRO.sub("µ", text.replace("^2", "²").replace("^3", "³").replace("*", "·"))
+    text = _POWER.sub(lambda found: f"·10{_raised(int(found[1]))}", text)
     return text.replace("-", "−") if text[:1] == "-" else text
 
 

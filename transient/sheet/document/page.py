@@ -18,11 +18,11 @@ from transient.sheet.style import drawing
 if TYPE_CHECKING:
     from jinja2 import Template
     from markupsafe import Markup
-    from matplotlib.figure import Figure
 
 # What matplotlib puts around the drawing itself, and comments, which repeat every text.
 _AROUND = re.compile(r"<\?xml.*?\?>|<!DOCTYPE.*?>|<metadata>.*?</metadata>|<!--.*?-->", re.DOTALL)
 _IDS = re.compile(r'(\bid="|(?:xlink:)?href="#|url\(#)')
+_LOW = re.compile(r"_([A-Za-z]+)")
 _PATH = re.compile(r' d="[^"]*"')
 # Digits beyond a hundredth of a point are nothing that print shows.
 _DIGITS = re.compile(r"(-?\d+\.\d{2})\d+")
@@ -36,21 +36,33 @@ def html(facts: Facts) -> str:
 def render(sheet: Sheet) -> str:
     """The page of a sheet."""
     pictures = [block for section in sheet.sections for block in section.blocks if isinstance(block, Picture)]
-    drawn = {picture.name: inline(picture.figure, picture.name) for picture in pictures}
+    drawn = {picture.name: inline(picture) for picture in pictures}
     return _template().render(sheet=sheet, drawn=drawn, style=_style(), generator="transient")
 
 
-def inline(figure: Figure, name: str) -> Markup:
-    """The figure as an SVG element whose ids begin with ``name``, so that several fit one page."""
+def inline(picture: Picture) -> Markup:
+    """The figure as an SVG element whose ids begin with the picture's name, so that several fit one page."""
     from markupsafe import Markup
+    from matplotlib.transforms import Bbox
 
+    figure, name = picture.figure, picture.name
+    figure.texts[0].set_visible(False)
+    wide, tall = figure.get_size_inches()
+    seen = Bbox.from_extents(0.0, 0.0, wide, tall - picture.crop)
     out = io.StringIO()
     with drawing(), warnings.catch_warnings():
         warnings.filterwarnings("ignore", message="Glyph .* missing from")
-        figure.savefig(out, format="svg", metadata={"Date": None})
+        figure.savefig(out, format="svg", metadata={"Date": None}, bbox_inches=seen)
     text = _AROUND.sub("", out.getvalue())
     text = _PATH.sub(lambda path: _DIGITS.sub(r"\1", path[0]), text)
     return Markup(_IDS.sub(rf"\g<1>{name}-", text).strip())
+
+
+def maths(text: str) -> Markup:
+    """A formula with its subscripts set low, such as ``τ_lower``."""
+    from markupsafe import Markup, escape
+
+    return Markup(_LOW.sub(r"<sub>\1</sub>", str(escape(text))))
 
 
 @lru_cache(maxsize=1)
@@ -61,6 +73,7 @@ def _template() -> Template:
     environment = Environment(
         loader=loader, autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True
     )
+    environment.filters["maths"] = maths
     return environment.get_template("sheet.html")
 
 

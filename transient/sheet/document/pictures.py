@@ -6,17 +6,19 @@ from transient.result.result import ResultError
 from transient.sheet.document.blocks import Block, Picture
 from transient.sheet.document.facts import Facts
 from transient.sheet.figures import draw
+from transient.sheet.sketch import subtitle
 
 CAPTIONS = {
     "stress": "Drive and response: stress on every wall with the quasi-steady hand formula, and what drives it.",
     "flow": "Mean velocity and flow rate.",
     "profiles": "Velocity across the gap through time.",
+    "lines": "Time lines: where lines of particles laid across the gap have moved.",
     "energy": "Loads, power and work: what walls and pressure put in, what the liquid keeps and what it dissipates.",
     "motion": "Motion of the walls' bodies, and the loads that move them.",
-    "lines": "Time lines: where lines of particles laid across the gap have moved.",
     "trust": "Stated errors and self-checks beside what is allowed: difference to the series or between refinements.",
 }
-SKETCH = "The gap, not to scale: directions, drives, and the sense of a positive wall stress."
+# Inches from the top of a figure that its own title takes, which is the sheet's; with the line below it.
+TITLE, HEADING = 0.2, 0.46
 
 
 def pictures(facts: Facts) -> tuple[Block, ...]:
@@ -25,7 +27,7 @@ def pictures(facts: Facts) -> tuple[Block, ...]:
     found = []
     for name in wanted:
         try:
-            found.append(Picture(name, CAPTIONS[name], draw(facts.result, name)))
+            found.append(Picture(name, CAPTIONS[name], draw(facts.result, name), TITLE))
         except ResultError:
             continue
     return tuple(found)
@@ -37,4 +39,4 @@ def sketch(facts: Facts) -> tuple[Block, ...]:
         figure = draw(facts.result, "sketch")
     except ResultError:
         return ()
-    return (Picture("sketch", SKETCH, figure),)
+    return (Picture("sketch", subtitle(facts.result), figure, HEADING),)
