@@ -12,7 +12,7 @@ import transient
 
 ROOT = Path(__file__).resolve().parents[1]
 AGREED = {"README.md", "DEVELOPERS.md", "pyproject.toml", "transient", "cases", "tests", "outputs"}
-ROOMS = {"cli", "sheet", "trust", "case", "march", "series", "gap", "fluid", "drive", "result", "units"}
+ROOMS = {"cli", "sweep", "sheet", "trust", "case", "march", "series", "gap", "fluid", "drive", "result", "units"}
 
 
 def tracked() -> list[str]:
@@ -61,7 +61,9 @@ def loaded(code: str) -> set[str]:
     return set(done.stdout.split())
 
 
-PUBLIC = ["Case", "CaseError", "Result", "ResultError", "SolveError", "read_case", "read_result", "run"]
+PUBLIC = [
+    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "read_case", "read_result", "run", "sweep",
+]  # fmt: skip
 
 
 def test_public_names_are_pinned():

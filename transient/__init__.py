@@ -1,6 +1,7 @@
 """What happens between rest and steady running in a liquid-filled gap.
 
-``read_case`` or ``Case`` states a case, ``run`` solves it, ``read_result`` opens a finished one.
+``read_case`` or ``Case`` states a case, ``run`` solves it, ``sweep`` solves many of them, ``read_result`` opens what
+either left behind.
 """
 
 from __future__ import annotations
@@ -9,12 +10,14 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from transient import sweep
     from transient.answer import run
     from transient.case.model import Case, CaseError
     from transient.case.read import read_case
     from transient.march.march import SolveError
     from transient.result.result import Result, ResultError
-    from transient.result.store import read as read_result
+    from transient.sweep.table import Table
+    from transient.sweep.table import read as read_result
 
 # Loaded when first used, so that ``import transient`` stays light.
 _WHERE = {
@@ -23,12 +26,16 @@ _WHERE = {
     "Result": ("transient.result.result", "Result"),
     "ResultError": ("transient.result.result", "ResultError"),
     "SolveError": ("transient.march.march", "SolveError"),
+    "Table": ("transient.sweep.table", "Table"),
     "read_case": ("transient.case.read", "read_case"),
-    "read_result": ("transient.result.store", "read"),
+    "read_result": ("transient.sweep.table", "read"),
     "run": ("transient.answer", "run"),
+    "sweep": ("transient.sweep", ""),  # a room that can be called
 }
 
-__all__ = ["Case", "CaseError", "Result", "ResultError", "SolveError", "read_case", "read_result", "run"]
+__all__ = [
+    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "read_case", "read_result", "run", "sweep",
+]  # fmt: skip
 
 
 def __getattr__(name: str) -> Any:
@@ -39,7 +46,8 @@ def __getattr__(name: str) -> Any:
     if name not in _WHERE:
         raise AttributeError(f"module 'transient' has no attribute {name!r}")
     module, own = _WHERE[name]
-    value = getattr(import_module(module), own)
+    found = import_module(module)
+    value = getattr(found, own) if own else found
     globals()[name] = value
     return value
 

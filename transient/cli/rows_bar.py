@@ -49,7 +49,8 @@ def rows_progress(total: int, done: int, quiet: bool) -> Iterator[Rows]:
 
     ends = (TimeRemainingColumn(), TextColumn("left"))
     progress = Progress(
-        TextColumn("cases"), BarColumn(), MofNCompleteColumn(), Rate(), *ends, console=Console(stderr=True), transient=True, auto_refresh=False, redirect_stdout=False,
+        TextColumn("cases"), BarColumn(), MofNCompleteColumn(), Rate(), *ends,
+        console=Console(stderr=True), transient=True, auto_refresh=False, redirect_stdout=False,
         redirect_stderr=False, speed_estimate_period=60.0,
     )  # fmt: skip
     with progress:

@@ -50,28 +50,18 @@ def sweep(
     if target.suffix not in (".h5", ".nc", ".hdf5"):
         raise Stop(f"--out {target}: a result file ends in .h5, such as {target.name}.h5")
     from transient.sweep.output import opened, refuse_too_many
+    from transient.sweep.places import chosen
     from transient.sweep.plan import read_plan
 
     with refusals():
         plan = read_plan(file)
         refuse_too_many(plan, confirm)
-        place = _place(plan, workers, cluster)
+        place = chosen(plan, workers, cluster)
         folder = opened(plan, target, resume, overwrite)
     if folder is None:
         return _say_again(target, as_json, quiet)
     seconds, solved = _solve(plan, folder, place, target, quiet)
     return _finish(plan, folder, target, (seconds, solved), as_json, quiet)
-
-
-def _place(plan: Plan, workers: int | None, cluster: str | None) -> Place:
-    from transient.sweep import places
-
-    if cluster is not None:
-        from transient.sweep.cluster import cluster as at
-
-        return at(cluster)
-    number = places.default_workers() if workers is None else workers
-    return places.here if min(number, plan.chunks) == 1 else places.processes(number)
 
 
 def _solve(plan: Plan, folder: Folder, place: Place, target: Path, quiet: bool) -> tuple[float, int]:
@@ -103,7 +93,7 @@ def _kept(plan: Plan, folder: Folder) -> str:
 
 def _finish(plan: Plan, folder: Folder, target: Path, effort: tuple[float, int], as_json: bool, quiet: bool) -> int:
     from transient.result.result import ResultError
-    from transient.sweep.table import write
+    from transient.sweep.file import write
 
     try:
         said = write(plan, folder, target)

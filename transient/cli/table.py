@@ -1,4 +1,4 @@
-"""``transient table``: a result's histories as CSV."""
+"""``transient table``: a result's histories, or a sweep's rows, as CSV."""
 
 from __future__ import annotations
 
@@ -18,12 +18,12 @@ def table(
     ] = None,
     version: Version = False,
 ) -> int:
-    """Write the histories of a result as CSV.
+    """Write the histories of a result, or the rows of a sweep, as CSV.
 
-    One line per stored time, in SI and to full precision.
+    One line per stored time, or per case, in SI and to full precision.
     """
-    from transient.result.store import read
     from transient.result.table import write_csv
+    from transient.sweep.table import read
 
     with refusals():
         finished = read(result)

@@ -115,7 +115,7 @@ def read_goal(text: str, case: Case) -> Goal:
     except QuantityError as error:
         raise CaseError(f"--meet {name}: {error}") from None
     if limit < 0.0:
-        raise CaseError(f"--meet {name}: {typed(value)} is below zero; magnitudes are compared, a limit above is needed")
+        raise CaseError(f"--meet {name}: {typed(value)} is below zero; magnitudes are compared")
     read = (WHOLE.get(name) or WALLS[name.partition(".")[2]]).read
     return Goal(name, sign in ("<=", "=<", "≤", "<"), limit, found, lambda summary: read(summary, wall))
 

@@ -36,6 +36,16 @@ def here(plan: Plan, chunks: Iterable[int]) -> Finished:
         yield chunk, solve_span(plan, plan.span(chunk))
 
 
+def chosen(plan: Plan, workers: int | None, cluster: str | None) -> Place:
+    """Where a user wants a plan solved; raises ``CaseError`` where a cluster cannot be reached."""
+    if cluster is not None:
+        from transient.sweep.cluster import cluster as at
+
+        return at(cluster)
+    number = default_workers() if workers is None else max(workers, 1)
+    return here if min(number, plan.chunks) == 1 else processes(number)
+
+
 def default_workers() -> int:
     """As many as this process may use cores."""
     return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1

@@ -175,25 +175,27 @@ def _crossing(asked: Asked, a: float, b: float, watch: Callable[[int], None]) ->
     """
     goal = asked.goal
     tolerance = CLOSE * abs(b - a)
-    gap = {a: asked.at(a).magnitude - goal.limit, b: asked.at(b).magnitude - goal.limit}
-    weight = dict.fromkeys((a, b), 1.0)
+    at_a, at_b = asked.at(a).magnitude - goal.limit, asked.at(b).magnitude - goal.limit
+    b_met = goal.met(asked.at(b).magnitude)
+    stayed = ""
     for step in range(MOST_STEPS):
-        inside = b if goal.met(asked.at(b).magnitude) else a
-        if abs(b - a) <= max(tolerance, 4e-16 * abs(a)) or _just(asked.at(inside), goal):
+        if abs(b - a) <= max(tolerance, 4e-16 * abs(a)) or _just(asked.at(b if b_met else a), goal):
             break
-        new = _between(a, b, gap[a] * weight[a], gap[b] * weight[b], step)
+        new = _between(a, b, at_a, at_b, step)
         point = asked.at(new)
         watch(len(asked.points))
-        gap[new], weight[new] = point.magnitude - goal.limit, 1.0
-        kept = a if goal.met(point.magnitude) == goal.met(asked.at(b).magnitude) else b
-        # The end that stays loses half its weight, so that it is left behind sooner.
-        weight[kept] = 0.5 * weight[kept] if step else 1.0
-        a, b = (kept, new) if kept == a else (new, kept)
-    return b if goal.met(asked.at(b).magnitude) else a
+        # An end that stays a second time loses half its weight, so that it is left behind sooner.
+        if goal.met(point.magnitude) == b_met:
+            b, at_b = new, point.magnitude - goal.limit
+            at_a, stayed = (0.5 * at_a if stayed == "a" else at_a), "a"
+        else:
+            a, at_a = new, point.magnitude - goal.limit
+            at_b, stayed = (0.5 * at_b if stayed == "b" else at_b), "b"
+    return b if b_met else a
 
 
 def _between(a: float, b: float, at_a: float, at_b: float, step: int) -> float:
-    if step % 4 == 3 or not (math.isfinite(at_a) and math.isfinite(at_b)) or at_a == at_b:
+    if step % 5 == 4 or not (math.isfinite(at_a) and math.isfinite(at_b)) or at_a == at_b:
         return 0.5 * (a + b)
     new = b - at_b * (b - a) / (at_b - at_a)
     inner = 1e-3 * abs(b - a)
@@ -202,7 +204,7 @@ def _between(a: float, b: float, at_a: float, at_b: float, step: int) -> float:
 
 def _just(point: Point, goal: Goal) -> bool:
     """Met so closely that the number's own error covers the rest."""
-    return goal.met(point.magnitude) and abs(point.magnitude - goal.limit) <= 0.1 * point.error
+    return goal.met(point.magnitude) and abs(point.magnitude - goal.limit) <= 0.5 * point.error
 
 
 def _met(asked: Asked, low: float, high: float, crossings: list[float]) -> tuple[tuple[float, float], ...]:
