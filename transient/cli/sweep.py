@@ -39,7 +39,7 @@ def sweep(
     quiet: Annotated[bool, typer.Option("--quiet", help="Print only errors, and what --json asks for.")] = False,
     version: Version = False,
 ) -> int:
-    """Solve every combination of a sweep file's values, and samples of its tolerances.
+    """Solve many cases: every combination of a file's values, and samples of its tolerances.
 
     Finished cases are kept as they come, so that an interruption loses none of them.  A case that cannot be solved is a
     row that says why.

@@ -18,7 +18,7 @@ def table(
     ] = None,
     version: Version = False,
 ) -> int:
-    """Write the histories of a result, or the rows of a sweep, as CSV.
+    """Write all histories of a result, or all rows of many cases, as CSV.
 
     One line per stored time, or per case, in SI and to full precision.
     """
