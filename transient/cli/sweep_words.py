@@ -66,7 +66,7 @@ def _spread(shown: dict[str, Any], said: dict[str, Any]) -> list[str]:
         return []
     scattered = said["samples"] is not None
     middle = ["5 %", "median", "95 %"] if scattered else ["median"]
-    cells = [["Number", "least", *middle, "greatest", "error at most"]]
+    cells = [["Number", "least", *middle, "greatest", "error"]]
     for name, one in shown.items():
         inner = [one["percentiles"][q] for q in ("5", "50", "95")] if scattered else [one["median"]]
         numbers = [quantity(number, one["unit"]) for number in (one["least"], *inner, one["greatest"])]

@@ -15,13 +15,16 @@ from transient.case.write import to_toml
 from transient.result import store as results
 from transient.result.result import Variable
 from transient.result.whole import whole
-from transient.sweep.columns import STATUS, VERDICTS
+from transient.sweep.chunk import Histories, Piece, joined
+from transient.sweep.columns import CODES, STATUS, VERDICTS
 from transient.sweep.keys import Varied
 from transient.sweep.pieces import Store, pieces
 from transient.sweep.plan import Plan
 from transient.sweep.says import Data, summary
 from transient.sweep.table import KIND, Table
 
+PARCEL = 65536  # rows written at once
+CASE = ("1", "number of the case, from 0")
 _TEXT = h5py.string_dtype()
 _LABELS = {"status": np.array(STATUS, object), "verdict": np.array(VERDICTS, object)}
 _TITLES = {
@@ -33,32 +36,58 @@ _TITLES = {
 
 def gathered(plan: Plan, store: Store) -> Table:
     """The table of a finished sweep, held in memory."""
-    variables = {name: Variable(("case",), data, units, title) for name, data, units, title in _columns(plan, store)}
-    variables |= _kept(plan, store)
-    data = Data(plan, {name: one.data for name, one in variables.items()}.__getitem__)
-    return Table(variables, summary(data), plan.frame.case_text, _attributes(plan))
+    found = [(_parts(plan, first, behind, piece), piece) for first, behind, piece in pieces(store, plan)]
+    variables = {"case": Variable(("case",), np.arange(plan.rows), *CASE)}
+    for name, kind, units, title in _described(plan):
+        data = np.concatenate([parts[name] for parts, _ in found])
+        variables[name] = Variable(("case",), data.astype(str) if kind == _TEXT else data, units, title)
+    variables |= _kept(plan, [piece.histories for _, piece in found if piece.histories is not None])
+    codes = {name: np.concatenate([piece.columns[name] for _, piece in found]) for name in CODES}
+    said = summary(Data(plan, codes, lambda name: variables[name].data))
+    return Table(variables, said, plan.frame.case_text, _attributes(plan))
 
 
 def write(plan: Plan, store: Store, path: str | os.PathLike[str]) -> dict[str, Any]:
-    """Writes the file of a finished sweep, whole or not at all, chunk by chunk; returns its summary.
+    """Writes the file of a finished sweep, whole or not at all, part by part; returns its summary.
 
     Raises ``ResultError`` where the system refuses to write.
     """
+    codes = {name: np.empty(plan.rows, np.int8) for name in CODES}
     with whole(path) as draft, h5py.File(draft, "w", track_order=True) as file:
-        scale = file.create_dataset("case", data=np.arange(plan.rows))
-        scale.attrs.update(_titled("1", "number of the case, from 0"))
-        scale.make_scale("case")
-        for name, kind, units, title in _described(plan):
-            dataset = file.create_dataset(name, (plan.rows,), kind)
-            dataset.attrs.update(_titled(units, title))
-            dataset.dims[0].attach_scale(scale)
-        for first, behind, piece in pieces(store, plan):
+        datasets = _datasets(plan, file)
+        for first, behind, piece in _parcels(plan, store):
             for name, data in _parts(plan, first, behind, piece).items():
-                file[name][first:behind] = data
+                datasets[name][first:behind] = data
+            for name, column in codes.items():
+                column[first:behind] = piece.columns[name]
         _write_histories(plan, store, file)
-        said = summary(Data(plan, lambda name: _read(file[name])))
+        said = summary(Data(plan, codes, lambda name: _read(datasets[name])))
         file.attrs.update({**_attributes(plan), "summary": results.to_json(said), "case": plan.frame.case_text})
     return said
+
+
+def _datasets(plan: Plan, file: h5py.File) -> dict[str, h5py.Dataset]:
+    """Empty variables over the cases, by name."""
+    scale = file.create_dataset("case", data=np.arange(plan.rows))
+    scale.attrs.update(_titled(*CASE))
+    scale.make_scale("case")
+    out = {}
+    for name, kind, units, title in _described(plan):
+        out[name] = file.create_dataset(name, (plan.rows,), kind)
+        out[name].attrs.update(_titled(units, title))
+        out[name].dims[0].attach_scale(scale)
+    return out
+
+
+def _parcels(plan: Plan, store: Store) -> Iterator[tuple[int, int, Piece]]:
+    """Pieces in order, small ones together: a call for each would cost more than the writing."""
+    waiting: list[Piece] = []
+    start = 0
+    for _, behind, piece in pieces(store, plan):
+        waiting.append(piece)
+        if behind - start >= PARCEL or behind == plan.rows:
+            yield start, behind, joined(waiting)
+            waiting, start = [], behind
 
 
 def _titled(units: str, title: str) -> dict[str, str]:
@@ -111,23 +140,13 @@ def _label(choice: Any) -> str:
     return choice if isinstance(choice, str) else to_toml({"it": {"is": choice}}).partition("is = ")[2].strip()
 
 
-def _columns(plan: Plan, store: Store) -> Iterator[tuple[str, np.ndarray, str, str]]:
-    """(name, data, units, title) of every variable over the cases, in memory."""
-    yield "case", np.arange(plan.rows), "1", "number of the case, from 0"
-    parts = [_parts(plan, first, behind, piece) for first, behind, piece in pieces(store, plan)]
-    for name, kind, units, title in _described(plan):
-        data = np.concatenate([part[name] for part in parts])
-        yield name, data.astype(str) if kind == _TEXT else data, units, title
-
-
 HISTORY_ROWS = ("history_rows", "1", "stored rows of this case's history, one after the other along `row`")
 
 
-def _kept(plan: Plan, store: Store) -> dict[str, Variable]:
+def _kept(plan: Plan, found: list[Histories]) -> dict[str, Variable]:
     """Histories in memory: end to end along ``row``, as many as ``history_rows`` says for each case."""
-    if not plan.frame.histories:
+    if not found:
         return {}
-    found = [piece.histories for _, _, piece in pieces(store, plan)]
     name, units, title = HISTORY_ROWS
     out = {name: Variable(("case",), np.concatenate([one.rows for one in found]), units, title)}
     out["history_time"] = Variable(("row",), np.concatenate([one.time for one in found]), "s", "time")

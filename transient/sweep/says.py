@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import Any
 
 import numpy as np
@@ -21,10 +21,11 @@ MOST_MESSAGES = 3
 
 
 class Data:
-    """A finished sweep's columns, read one at a time: ``get(name)`` is the array of a variable."""
+    """A finished sweep's columns: ``status`` and ``verdict`` as codes (n,), others one at a time by ``get(name)``."""
 
-    def __init__(self, plan: Plan, get: Callable[[str], np.ndarray]):
+    def __init__(self, plan: Plan, codes: Mapping[str, np.ndarray], get: Callable[[str], np.ndarray]):
         self.plan, self.get = plan, get
+        self.status, self.verdict = codes["status"], codes["verdict"]
 
     def names(self) -> list[str]:
         """The headline numbers that this sweep has."""
@@ -41,22 +42,22 @@ class Data:
 def summary(data: Data) -> dict[str, Any]:
     """The closing summary, all in SI: plain values that JSON keeps."""
     plan = data.plan
-    status = np.asarray(data.get("status"))
-    verdict = np.asarray(data.get("verdict"))
-    solved = status == STATUS[SOLVED]
+    solved = data.status == SOLVED
+    counts = np.bincount(data.status, minlength=len(STATUS))
+    verdicts = np.bincount(data.verdict[solved], minlength=len(VERDICTS))
     inputs = Inputs(plan)
     scatter = plan.scatter
     return {
         "title": plan.title,
         "cases": plan.rows,
-        "status": {name: int(np.count_nonzero(status == name)) for name in STATUS[:3]},
-        "verdicts": {name: int(np.count_nonzero(verdict[solved] == name)) for name in VERDICTS[1:]},
+        "status": {name: int(count) for name, count in zip(STATUS[:3], counts, strict=False)},
+        "verdicts": {name: int(count) for name, count in zip(VERDICTS[1:], verdicts[1:], strict=True)},
         "messages": _messages(data, ~solved),
-        "cautions": _messages(data, solved & (verdict != VERDICTS[1])),
+        "cautions": _messages(data, solved & (data.verdict != VERDICTS.index("good"))),
         "varied": {key.name: _varied(key, plan) for key in plan.frame.keys},
         "samples": None if scatter is None else scatter.samples,
         "seed": None if scatter is None else scatter.seed,
-        "headlines": {name: one for name in data.names() if (one := _headline(data, name, inputs, verdict))},
+        "headlines": {name: one for name in data.names() if (one := _headline(data, name, inputs))},
     }
 
 
@@ -83,7 +84,7 @@ def _varied(key: Varied, plan: Plan) -> dict[str, Any]:
     return {"unit": key.unit, "dimension": key.dimension, "count": len(values), **ends}
 
 
-def _headline(data: Data, name: str, inputs: Inputs, verdict: np.ndarray) -> dict[str, Any] | None:
+def _headline(data: Data, name: str, inputs: Inputs) -> dict[str, Any] | None:
     """One headline number over all cases that have it; None where none has."""
     values = np.asarray(data.get(name), dtype=float)
     have = np.isfinite(values)
@@ -105,7 +106,8 @@ def _headline(data: Data, name: str, inputs: Inputs, verdict: np.ndarray) -> dic
         out["combination"] = _combination(data.plan, values, inputs)
     worst = int(np.argmax(np.where(have, np.abs(values), -1.0)))
     out["worst"] = {
-        "case": worst, "value": float(values[worst]), "verdict": str(verdict[worst]), "inputs": inputs.of(worst),
+        "case": worst, "value": float(values[worst]), "verdict": VERDICTS[data.verdict[worst]],
+        "inputs": inputs.of(worst),
     }  # fmt: skip
     return out | influence(inputs, np.abs(values))
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -138,7 +139,7 @@ def size(case: Case, key: str, between: tuple[str, str], goal: Goal, watch: Call
     tried = [point.value for point in asked.known()]
     crossings = [
         _crossing(asked, a, b, watch)
-        for a, b in zip(tried[:-1], tried[1:], strict=True)
+        for a, b in pairwise(tried)
         if goal.met(asked.at(a).magnitude) != goal.met(asked.at(b).magnitude)
     ]
     met = _met(asked, low, high, crossings)
@@ -231,7 +232,7 @@ def _chosen(
 def _monotone(points: list[Point]) -> bool:
     """Whether the magnitudes only rise or only fall, as far as their errors tell."""
     rises = falls = False
-    for one, other in zip(points[:-1], points[1:], strict=True):
+    for one, other in pairwise(points):
         slack = one.error + other.error
         rises |= other.magnitude > one.magnitude + slack
         falls |= other.magnitude < one.magnitude - slack
