@@ -14,7 +14,7 @@ from transient.compiled import compiled, part
 # From trials over ramps of 1e-4 to 1 diffusion times.
 FIRST = 0.05  # first row of a piece as a share of the shortest time beside its break
 GROWTH = 0.5  # longest row as a share of the time since the break
-FOLLOW = 0.36  # longest row while the flow settles, as a share of its slowest time constant
+FOLLOW = 0.45  # longest row while the flow settles, as a share of its slowest time constant
 COURSE = 0.35  # longest row over the time constant of a wave or lag
 BENT = 12.0  # least rows of a curved piece
 SUDDEN = 1e-3  # share of the time after a jump from which on the flow is followed closely
@@ -191,3 +191,19 @@ def join(
                 old_value, old_slope, old_bend = ends[0], ends[1], ends[2]
                 old_size, old_length = size, length
         _finest(c, n, part_of, poly, wave, jump, bends, fine[c], layer)
+
+
+@compiled
+def rise_times(pieces, part_of, poly, wave, jump, out):
+    """Swing of the pressure drop over its steepest rate (C,), in diffusion times: 0 with a jump, inf where constant."""
+    ends = np.zeros(4)
+    for c in range(len(out)):
+        low, high, steepest = np.inf, -np.inf, 0.0
+        sudden = False
+        for p in range(pieces[c]):
+            sudden = sudden or jump[c, p, 2] != 0.0
+            for k in range(17):
+                _at_end(poly[c, p, 2], wave[c, p, 2], part_of[c, p, LENGTH] * k / 16.0, ends)
+                low, high = min(low, ends[0]), max(high, ends[0])
+                steepest = max(steepest, abs(ends[1]))
+        out[c] = 0.0 if sudden else (high - low) / steepest if steepest > 0.0 else np.inf

@@ -18,19 +18,21 @@ from transient.case.model import Case
 from transient.gap.problem import Problem
 from transient.march import lanes
 from transient.march.lanes_grid import grid_table, unit_problem
-from transient.march.lanes_inputs import FOLLOW, GROWTH, PIECE_FIELDS, START, join
+from transient.march.lanes_inputs import FOLLOW, GROWTH, PIECE_FIELDS, START, join, rise_times
 from transient.march.regime import slowest_decay
 from transient.sweep import lanes_headline as headline
 from transient.sweep.columns import FAILED, SOLVED, Column, Columns, blank
 from transient.sweep.keys import Values, Varied
 from transient.sweep.lanes_drives import DriveRows
 from transient.sweep.lanes_form import Form, Geometry
+from transient.sweep.lanes_validity import Seen, verdicts
 
 LEVELS = 3
-CELLS = 0.47  # growth of the base level's cells, at accuracy 1e-3
+CELLS = 0.40  # growth of the base level's cells, at accuracy 1e-3
 FEWEST = 8
 THINNEST = 14  # layers thinner than 2^-14 of the gap are left to the march of single cases
-MOST_ROWS = 400
+MOST_ROWS = 8000
+KEPT = 25_000  # rows kept at a time
 TOGETHER = 256  # cases whose rows are kept at a time: about what the second cache holds
 NUMBERS = 400_000  # pieces' numbers kept at a time
 REFINEMENTS = (1.0, 2.0)
@@ -193,6 +195,7 @@ class Done:
     jump: np.ndarray
     start: np.ndarray
     pieces: np.ndarray
+    rise: np.ndarray
 
 
 def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
@@ -230,15 +233,24 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
         cells = _cells(2.0**-low, 2.0**-high, fine)
         places, grid = np.unique(batch.unit_of[rows[group]], return_inverse=True)
         tables = [_tables(cells, (2.0**-low, 2.0**-high), *_key(batch.units[i])) for i in places]
-        for begin in range(0, len(group), TOGETHER):
-            some = slice(begin, begin + TOGETHER)
+        together = int(np.clip(KEPT // _most_rows(pieces[group]), lanes.HALF, TOGETHER))
+        for begin in range(0, len(group), together):
+            some = slice(begin, begin + together)
             of = group[some]
-            facts = _facts(batch, rows[of], grid[some], tables)
+            facts = _facts(problem, batch, rows[of], grid[some], tables, places)
             out[of] = _march(
                 problem, tables, grid[some], numbers[of], pieces[of], part_of[of], poly[of], wave[of], jump[of],
                 before[of], batch.final[rows[of]], waving, infinite[of], facts,
             )  # fmt: skip
-    return Done(out, jump, part_of[:, :, START], pieces)
+    rise = np.full(n, np.inf)
+    if problem.length is not None and (poly[:, :, 2].any() or wave[:, :, 2, :2].any()):
+        rise_times(pieces, part_of, poly, wave, jump, rise)
+    return Done(out, jump, part_of[:, :, START], pieces, rise)
+
+
+def _most_rows(pieces: np.ndarray) -> int:
+    """Room for the rows of cases of so many pieces (n,)."""
+    return int(min(MOST_ROWS, 60 + 24 * pieces.max(initial=1)))
 
 
 def _taken(drive: DriveRows, rows: np.ndarray) -> DriveRows:
@@ -282,24 +294,52 @@ def _cells(low: float, high: float, fine: float) -> int:
     return max(FEWEST, 2 * int(np.ceil(0.5 * along / (CELLS * fine))))
 
 
-def _facts(batch: Batch, rows: np.ndarray, grid: np.ndarray, tables: list) -> np.ndarray:
-    """What the rows end in: exact on any grid, [n, FACTS]."""
-    facts = np.zeros((len(rows), headline.FACTS))
+@dataclass(frozen=True, eq=False)
+class Facts:
+    """What rows end in, exact on any grid: ``ends`` [n, FACTS]; ``calm`` [n, 3, 3] steady stresses of both walls and
+    mean per unit input; ``reach`` [n, 2] of a wall's stress times speed in the work per volume; ``middle`` (n,) what a
+    mean speed is divided by to compare it with wall speeds."""
+
+    ends: np.ndarray
+    calm: np.ndarray
+    reach: np.ndarray
+    middle: np.ndarray
+
+
+def _facts(
+    problem: Problem, batch: Batch, rows: np.ndarray, grid: np.ndarray, tables: list, places: np.ndarray
+) -> Facts:
+    facts, n = np.zeros((len(rows), headline.FACTS)), len(rows)
+    calm, reach, middle = np.zeros((n, 3, 3)), np.zeros((n, 2)), np.ones(n)
     facts[:, headline.LEVEL] = batch.within[rows]
     final = batch.final[rows]
     for place, levels in enumerate(tables):
-        own = np.flatnonzero(grid == place)
+        own = np.flatnonzero(grid == place) if len(tables) > 1 else slice(None)
         table, ends = levels[-1]
         steady = table[lanes.STEADY :]  # [3, node, side]
-        for side in (0, 1):
-            beside = steady[:, 1 if ends[lanes.HELD, side] else 0, side]
-            wall = np.eye(3)[side] if ends[lanes.FLUX, side] else np.zeros(3)
-            balance = ends[lanes.FLUX, side] * (beside - wall)
-            balance[2] += ends[lanes.CELL, side]
-            facts[own, headline.CALM_LOWER + side] = final[own] @ (balance * ends[lanes.RADIUS, side])
-        facts[own, headline.CALM_MEAN] = final[own] @ (steady * table[lanes.WEIGHT]).sum(axis=(1, 2))
+        known = _calm(steady, table, ends)
+        unit = batch.units[places[place]]
+        calm[own] = known
+        power = 2 if unit.rotating else unit.metric
+        volume = 0.5 * (unit.inner + unit.outer) if unit.metric else 1.0
+        reach[own] = np.array([unit.inner**power, unit.outer**power]) / volume
+        middle[own] = 0.5 * (unit.inner + unit.outer) if unit.rotating else 1.0
+        facts[own, headline.CALM_LOWER : headline.CALM_MEAN + 1] = final[own] @ known.T
         facts[own, headline.CALM_SPEED] = _largest(final[own], steady, table)
-    return facts
+    return Facts(facts, calm, reach, middle)
+
+
+def _calm(steady: np.ndarray, table: np.ndarray, ends: np.ndarray) -> np.ndarray:
+    """Steady stresses of both walls, and the mean, that one unit of each input makes, [3, 3]."""
+    out = np.zeros((3, 3))
+    for side in (0, 1):
+        beside = steady[:, 1 if ends[lanes.HELD, side] else 0, side]
+        wall = np.eye(3)[side] if ends[lanes.FLUX, side] else np.zeros(3)
+        balance = ends[lanes.FLUX, side] * (beside - wall)
+        balance[2] += ends[lanes.CELL, side]
+        out[side] = balance * ends[lanes.RADIUS, side]
+    out[2] = (steady * table[lanes.WEIGHT]).sum(axis=(1, 2))
+    return out
 
 
 def _largest(final: np.ndarray, steady: np.ndarray, table: np.ndarray) -> np.ndarray:
@@ -325,11 +365,11 @@ def _largest(final: np.ndarray, steady: np.ndarray, table: np.ndarray) -> np.nda
 def _march(
     problem: Problem, tables: list, grid: np.ndarray, numbers: np.ndarray, pieces: np.ndarray, part_of: np.ndarray,
     poly: np.ndarray, wave: np.ndarray, jump: np.ndarray, before: np.ndarray, final: np.ndarray, waving: bool,
-    infinite: np.ndarray, facts: np.ndarray,
+    infinite: np.ndarray, facts: Facts,
 ) -> np.ndarray:  # fmt: skip
     """Headline numbers [n, NUMBERS] of cases on grids of the same number of nodes."""
     n = len(grid)
-    most = int(min(MOST_ROWS, 24 + 40 * pieces.max()))
+    most = _most_rows(pieces)
     levels = []
     row_piece, row_offset = np.zeros((n, most), np.int64), np.zeros((n, most))
     count = np.zeros(n, np.int64)
@@ -344,7 +384,11 @@ def _march(
         levels.append(rows)
     out = np.empty((n, headline.NUMBERS))
     free = np.array([wall.kind != "moving" for wall in problem.walls])
-    headline.read(*levels, row_piece, row_offset, count, part_of[:, :, START].copy(), infinite, facts, free, out)
+    held = np.array([{"moving": 1, "shear_free": 0, "axis": -1}[wall.kind] for wall in problem.walls])
+    headline.read(
+        *levels, row_piece, row_offset, count, part_of[:, :, START].copy(), infinite, facts.ends, free, held,
+        facts.calm, facts.reach, facts.middle, out,
+    )  # fmt: skip
     return out
 
 
@@ -358,6 +402,8 @@ def _write(
     time, gap = batch.time[rows], geometry.gap[rows]
     stress = batch.viscosity[rows] / (1.0 if problem.rotating else gap)
     met &= _met(problem, found, done)
+    codes, message, sure = verdicts(problem, _seen(problem, batch, rows, done))
+    met &= sure
     to = first + rows[met]
 
     def put(name: str, value: np.ndarray) -> None:
@@ -382,8 +428,29 @@ def _write(
     for side, wall in enumerate(problem.walls):
         if wall.kind != "axis":
             _write_wall(form, batch, rows, done, side, wall.name, stress, time, put)
-    out["status"][to] = SOLVED
+    out["status"][to], out["verdict"][to], out["message"][to] = SOLVED, codes[met], message[met]
     return met
+
+
+def _seen(problem: Problem, batch: Batch, rows: np.ndarray, done: Done) -> Seen:
+    """What the validity checks look at."""
+    geometry, found = batch.geometry, done.numbers
+    gap, time = geometry.gap[rows], batch.time[rows]
+    scale = batch.viscosity[rows] / (1.0 if problem.rotating else gap**2)  # of the work per volume and time
+    pushed = (np.broadcast_to(batch.drives[2].before, batch.time.shape) != 0.0) if problem.start == "steady" else False
+    pressed = (found[:, headline.PUSH_PEAK] != 0.0) | np.broadcast_to(pushed, batch.time.shape)[rows]
+
+    def known(size: np.ndarray | None) -> np.ndarray | None:
+        return None if size is None else np.broadcast_to(size, batch.time.shape)[rows]
+
+    return Seen(
+        gap, geometry.inner[rows], geometry.outer[rows], known(geometry.length), known(geometry.section),
+        batch.density[rows], batch.viscosity[rows] / batch.density[rows], time, pressed,
+        found[:, headline.SPREAD], found[:, headline.RELATIVE],
+        found[:, headline.TURN_LOWER : headline.TURN_UPPER + 1], found[:, headline.SPUN_UP] > 0.5,
+        found[:, headline.WORK] * scale * time,
+        found[:, headline.POWER] * scale, done.rise * time,
+    )  # fmt: skip
 
 
 def _write_wall(form, batch, rows, done, side, name, stress, time, put) -> None:
