@@ -22,6 +22,9 @@ if TYPE_CHECKING:
 # What matplotlib puts around the drawing itself, and comments, which repeat every text.
 _AROUND = re.compile(r"<\?xml.*?\?>|<!DOCTYPE.*?>|<metadata>.*?</metadata>|<!--.*?-->", re.DOTALL)
 _IDS = re.compile(r'(\bid="|(?:xlink:)?href="#|url\(#)')
+# Names within a drawing, and those that something refers to.
+_NAMED = re.compile(r' id="([^"]*)"')
+_USED = re.compile(r"(?:href=\"#|url\(#)([^\")]+)")
 _LOW = re.compile(r"_([A-Za-z]+)")
 _PATH = re.compile(r' d="[^"]*"')
 # Digits beyond a hundredth of a point are nothing that print shows.
@@ -41,7 +44,7 @@ def render(sheet: Sheet) -> str:
 
 
 def inline(picture: Picture) -> Markup:
-    """The figure as an SVG element whose ids begin with the picture's name, so that several fit one page."""
+    """The figure as an SVG element; of its ids those are kept that are used, with the picture's name before them."""
     from markupsafe import Markup
     from matplotlib.transforms import Bbox
 
@@ -55,6 +58,8 @@ def inline(picture: Picture) -> Markup:
         figure.savefig(out, format="svg", metadata={"Date": None}, bbox_inches=seen)
     text = _AROUND.sub("", out.getvalue())
     text = _PATH.sub(lambda path: _DIGITS.sub(r"\1", path[0]), text)
+    used = set(_USED.findall(text))
+    text = _NAMED.sub(lambda found: found[0] if found[1] in used else "", text)
     return Markup(_IDS.sub(rf"\g<1>{name}-", text).strip())
 
 

@@ -7,6 +7,7 @@ from pathlib import Path
 
 from transient.result.result import Result, ResultError
 from transient.result.whole import whole
+from transient.sheet.document.compose import compose
 from transient.sheet.document.facts import Facts
 from transient.sheet.document.page import html
 
@@ -31,4 +32,10 @@ def _page(facts: Facts, path: Path) -> None:
     path.write_text(html(facts), encoding="utf-8")
 
 
-WRITERS = {".html": _page}
+def _paper(facts: Facts, path: Path) -> None:
+    from transient.sheet.document.paper import write_pdf
+
+    write_pdf(compose(facts), path)
+
+
+WRITERS = {".html": _page, ".pdf": _paper}
