@@ -25,6 +25,9 @@ FIRST_ROW = 1e-6
 THINNEST = 1e-9  # of the gap: below this, round-off of the nodes' velocities would show in the stress
 FEWEST_CELLS = 12
 MOST_CELLS = 20_000
+ECHO = 0.5  # of the accuracy that an answer to an earlier break may be misread by within a first step
+ECHOES = 4  # breaks back, whose answers bound a first step
+MISSED = 0.015  # of a root-like growth within a first step, by computation
 LIGHT = 0.05  # of the gap: a body lighter than so much of its liquid is resolved as if it had that mass
 
 
@@ -237,6 +240,8 @@ def resolve(
     layers = tuple(_layer(problem, found, end, growth, share) for end in (0, 1))
     cells = _cells(layers, growth)
     first = _first_steps(problem, found, growth, share, layers)
+    first = np.min([first, *(_accelerating(problem, found, end, share) for end in (0, 1))], axis=0)
+    first = np.minimum(first, _echoes(problem, found, ECHO * share / refine))
     longest, calm = _settling(inputs, found, growth * slowest, np.log(1.0 / least) * slowest)
     swift, lasts = _courses(inputs, found, accuracy, refine)
     first = np.minimum(first, swift)
@@ -300,6 +305,9 @@ def _layer(problem: Problem, found: Features, end: int, growth: float, share: fl
     bend = found.bend[:, end].max(initial=0.0)
     if bend > 0.0:
         cell = min(cell, (share * found.stress[end] * nu / (problem.density * bend)) ** (1.0 / 3.0))
+    followed = _accelerating(problem, found, end, share).min(initial=np.inf)
+    if followed < np.inf:
+        cell = min(cell, growth * np.sqrt(nu * followed))
     shortest = _after_jumps(problem, found, end)
     if shortest < np.inf:
         # the wall's half cell takes the new speed at once: the mean velocity is off by that share of the jump
@@ -335,6 +343,46 @@ def _first_steps(
     if swiftest > 0.0:
         first = np.minimum(first, 0.05 / swiftest)
     return np.minimum(first, found.length / 4.0)
+
+
+def _echoes(problem: Problem, found: Features, share: float) -> np.ndarray:
+    """Longest first step of each piece (P,) that still follows the answers to the breaks before it.
+
+    The first step of a piece is read as a parabola in the root of its time, since what its own break makes grows so.
+    The answer to an earlier break, ``age`` ago, runs smoothly on: of its bend the parabola misses 0.34 of what half the
+    second derivative makes over the step (the largest of s^4 + 2 s - 3 s^2).
+    """
+    nu, rho = problem.viscosity / problem.density, problem.density
+    ends = np.cumsum(found.length)
+    first = np.full(len(found.length), np.inf)
+    for back in range(1, min(ECHOES, len(first) - 1) + 1):
+        age = ends[back - 1 : -1] - np.append(0.0, ends)[: len(first) - back]
+        with np.errstate(divide="ignore", over="ignore"):
+            for end in (0, 1):
+                kinked = 0.25 * rho * found.kink[:-back, end] * np.sqrt(nu * age / np.pi)
+                jumped = 0.375 * rho * found.jump[:-back, end] * np.sqrt(nu / (np.pi * age))
+                follows = age * np.sqrt(share * found.stress[end] / (0.34 * (kinked + jumped)))
+                first[back:] = np.minimum(first[back:], follows)
+    return first
+
+
+def _accelerating(problem: Problem, found: Features, end: int, share: float) -> np.ndarray:
+    """Longest first step of each piece (P,) after which the acceleration of a wall's body is right to the accuracy.
+
+    The film answers a load like the root of time: within the time in which it stops the body's own mass, or, where that
+    is no more than the liquid's, within the piece or the diffusion time.  A first step misses ``MISSED`` of that.
+    """
+    body = problem.walls[end].body
+    if body is None:
+        return np.full(len(found.length), np.inf)
+    lever = (problem.inner, problem.outer)[end] if problem.rotating else 1.0
+    ratio = body.mass / (body.grip * problem.density * problem.gap * lever)
+    time = np.minimum(found.length, problem.diffusion_time)
+    stopped = ratio**2 * problem.diffusion_time
+    pushed = time if ratio == 0.0 else np.minimum(time, stopped) if ratio < 1.0 else np.full(len(time), stopped)
+    bent = time if ratio < 1.0 else ratio**2 * time
+    bound = np.where(found.kink[:, end] > 0.0, pushed, np.where(found.bend[:, end] > 0.0, bent, np.inf))
+    return (share / MISSED) ** 2 * bound
 
 
 def _event_step(problem: Problem, found: Features, share: float) -> float:

@@ -207,7 +207,7 @@ def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tupl
 @compiled
 def _fill_largest(position, profile, rate, look, value, change):  # type: ignore[no-untyped-def]
     nodes, points = len(position), min(STENCIL, len(position))
-    basis, best_basis, height = np.empty(points), np.empty(points), np.empty(len(look))
+    basis, height = np.empty(points), np.empty(len(look))
     for k in range(len(profile)):
         at = 0
         for i in range(nodes):
@@ -219,23 +219,28 @@ def _fill_largest(position, profile, rate, look, value, change):  # type: ignore
             continue
         start = min(max(at - STENCIL // 2, 0), nodes - STENCIL)
         low, high = position[max(at - 1, 0)] - position[at], position[min(at + 1, nodes - 1)] - position[at]
+        # Newton's form through the nodes around the largest
+        for i in range(points):
+            basis[i] = sign * profile[k, start + i]
+        for order in range(1, points):
+            for i in range(points - 1, order - 1, -1):
+                basis[i] = (basis[i] - basis[i - 1]) / (position[start + i] - position[start + i - order])
         best = 0
         for g in range(len(look)):
             x = low + (high - low) * look[g]
-            height[g] = 0.0
-            for i in range(points):
-                basis[i] = 1.0
-                for j in range(points):
-                    if i != j:
-                        node = position[start + j] - position[at]
-                        basis[i] *= (x - node) / (position[start + i] - position[start + j])
-                height[g] += sign * basis[i] * profile[k, start + i]
-            if g == 0 or height[g] > height[best]:
+            height[g] = basis[points - 1]
+            for i in range(points - 2, -1, -1):
+                height[g] = basis[i] + (x - (position[start + i] - position[at])) * height[g]
+            if height[g] > height[best]:
                 best = g
-                best_basis[:] = basis
+        x = low + (high - low) * look[best]
         change[k] = 0.0
         for i in range(points):
-            change[k] += sign * best_basis[i] * rate[k, start + i]
+            share = 1.0
+            for j in range(points):
+                if i != j:
+                    share *= (x - (position[start + j] - position[at])) / (position[start + i] - position[start + j])
+            change[k] += sign * share * rate[k, start + i]
         top = height[best]
         if 0 < best < len(look) - 1:
             bend = height[best - 1] - 2.0 * height[best] + height[best + 1]

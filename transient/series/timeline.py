@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -25,6 +26,7 @@ _STATE, _MODE, _BREAK = 20.0, 40.0, 300.0
 MOST_STATES = 60_000_000
 # Instants evaluated at once: what their contour rows need stays small.
 _CHUNK = 4096
+_WORTH_THREADS = 3  # parts from which threads are worth starting
 
 
 @dataclass(frozen=True, eq=False)
@@ -126,9 +128,19 @@ def evaluate(line: Timeline, at: States, answer: Answer, piece: np.ndarray, offs
     size = np.empty_like(out)
     rates, index = line.exponents
     rest, whole = answer.steady_response(rates)
-    for first in range(0, len(piece), _CHUNK):
-        part = slice(first, first + _CHUNK)
+    parts = [slice(first, first + _CHUNK) for first in range(0, len(piece), _CHUNK)]
+
+    def fill(part: slice) -> None:
         _evaluate(line, at, answer, piece[part], offset[part], (rest, whole, index), out[part], size[part])
+
+    if len(parts) < _WORTH_THREADS:
+        for part in parts:
+            fill(part)
+    else:  # compiled code runs without the interpreter's lock, and every part writes to its own place
+        from concurrent.futures import ThreadPoolExecutor  # not needed by most runs
+
+        with ThreadPoolExecutor(os.cpu_count()) as threads:
+            list(threads.map(fill, parts))
     return out, size
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from typing import Any
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
@@ -36,6 +37,16 @@ def motion(run: Run) -> dict[str, Any]:
 
 
 def reach(run: Run) -> np.ndarray:
+    """Depth (k, 2) in m of each wall's layer at the kept profiles, worked out once: see ``_reach``."""
+    if run not in _KNOWN:
+        _KNOWN[run] = _reach(run)
+    return _KNOWN[run]
+
+
+_KNOWN: WeakKeyDictionary[Run, np.ndarray] = WeakKeyDictionary()
+
+
+def _reach(run: Run) -> np.ndarray:
     """Depth (k, 2) in m of each wall's layer at the kept profiles.
 
     The layer is where the fluid moves otherwise than the pressure alone would have moved it since t = 0: from the
