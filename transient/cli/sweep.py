@@ -60,8 +60,9 @@ def sweep(
         folder = opened(plan, target, resume, overwrite)
     if folder is None:
         return _say_again(target, as_json, quiet)
-    seconds, solved = _solve(plan, folder, place, target, quiet)
-    return _finish(plan, folder, target, (seconds, solved), as_json, quiet)
+    with folder:
+        effort = _solve(plan, folder, place, target, quiet)
+        return _finish(plan, folder, target, effort, as_json, quiet)
 
 
 def _solve(plan: Plan, folder: Folder, place: Place, target: Path, quiet: bool) -> tuple[float, int]:

@@ -112,8 +112,8 @@ def listed(
         try:
             out[i] = quantity(item, dimension)
         except QuantityError as error:
-            # "auto" among times: then the key is one of choices.
-            if isinstance(item, str) and reads(key, item):
+            # "auto" among times, a table among speeds: then the key is one of choices.
+            if reads(key, item):
                 return choice(key, items)
             raise stated.refuse(key, str(error), "values", i) from None
     return Varied(key, "quantity", dimension, si_unit(dimension)), out

@@ -37,9 +37,10 @@ def solved(
         return gathered(plan, store)
     folder = opened(plan, Path(out), resume, overwrite)
     if folder is not None:
-        solve(plan, folder, place, _unwatched)
-        write(plan, folder, out)
-        folder.end()
+        with folder:
+            solve(plan, folder, place, _unwatched)
+            write(plan, folder, out)
+            folder.end()
     table = read(out)
     if not isinstance(table, Table):
         raise CaseError(f"{os.fspath(out)}: is not the result of a sweep")

@@ -59,7 +59,7 @@ class Memory:
 
 
 class Folder:
-    """Chunks as files in ``path``; one sweep at a time."""
+    """Chunks as files in ``path``; one sweep at a time, from ``begin`` until the end of a ``with`` block."""
 
     def __init__(self, plan: Plan, path: Path):
         self.plan, self.path = plan, path
@@ -81,8 +81,10 @@ class Folder:
             return
         self._lock = open(self.path / LOCK, "w")  # noqa: SIM115 (held until the sweep ends)
         try:
-            fcntl.flock(self._lock, fcntl.LOCK_EX | fcntl.LOCK_NB)
-        except BlockingIOError:
+            # Of the kind that forked workers do not share: they may outlive a killed parent for a moment.
+            fcntl.lockf(self._lock, fcntl.LOCK_EX | fcntl.LOCK_NB)
+        except (BlockingIOError, PermissionError):
+            self.close()
             busy = "another sweep is writing there; wait for it, or name another --out"
             raise CaseError(f"{self.path}: {busy}") from None
 
@@ -117,10 +119,21 @@ class Folder:
     def _file(self, chunk: int) -> Path:
         return self.path / f"{chunk:07d}.npz"
 
-    def end(self) -> None:
-        """Takes the folder away: its chunks are in the result."""
+    def close(self) -> None:
+        """Lets others write there."""
         if self._lock is not None:
             self._lock.close()
+            self._lock = None
+
+    def __enter__(self) -> Folder:
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self.close()
+
+    def end(self) -> None:
+        """Takes the folder away: its chunks are in the result."""
+        self.close()
         shutil.rmtree(self.path, ignore_errors=True)
 
 

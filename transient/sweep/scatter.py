@@ -111,7 +111,7 @@ def _hashed(numbers: np.ndarray, seed: int, stream: int) -> np.ndarray:
 
     SplitMix64 (Steele, Lea & Flood 2014; constants from memory), whose n-th number needs none of those before.
     """
-    start = _mixed(_mixed(np.array([seed], np.uint64) + _STEP) + np.uint64(stream + 1) * _STEP)
+    start = _mixed(_mixed(np.array([seed], np.uint64) + _STEP) + np.array([stream + 1], np.uint64) * _STEP)
     return (_mixed(start + (numbers.astype(np.uint64) + np.uint64(1)) * _STEP) >> np.uint64(11)) * 2.0**-53
 
 

@@ -41,9 +41,11 @@ class Stated:
 
     def refuse(self, key: str, message: str, *inside: str | int) -> CaseError:
         """A refusal about a varied key (or what stands ``inside`` its table), as "file:line: key: message"."""
-        path = (*self.at.get(key, (key,)), *inside)
-        lines = self.source.lines
-        line = next((lines[path[:end]] for end in range(len(path), 0, -1) if path[:end] in lines), None)
+        lines, here = self.source.lines, self.at.get(key, (key,))
+        # A plain list is short for { values = [...] }: its items stand one level higher.
+        paths = [(*here, *inside), (*here, *(part for part in inside if part != "values"))]
+        ways = [path[:end] for end in range(len(here) + len(inside), 0, -1) for path in paths]
+        line = next((lines[way] for way in ways if way in lines), None)
         file = self.source.file
         place = f"{file}:{line}" if file and line else file
         name = ".".join([key, *(str(part) for part in inside if not isinstance(part, int))])
