@@ -25,29 +25,8 @@ LENGTH, START, FIRST_ROW, COURSE_ROW, COURSE_UNTIL, PIECE_FIELDS = 0, 1, 2, 3, 4
 
 
 @part
-def _owner(starts, at, slack):
-    """Piece of a drive that holds at time ``at``."""
-    found = 0
-    for p in range(1, starts.shape[0]):
-        if starts[p] <= at + slack:
-            found = p
-    return found
-
-
-@part
-def _move_wave(wave, x, out):
-    """``wave`` (4,) real and imaginary coefficient and rate, from its own start to ``x`` after it."""
-    size = np.exp(wave[2] * x)
-    across, up = size * np.cos(wave[3] * x), size * np.sin(wave[3] * x)
-    out[0] = wave[0] * across - wave[1] * up
-    out[1] = wave[0] * up + wave[1] * across
-    out[2] = wave[2]
-    out[3] = wave[3]
-
-
-@part
 def _at_end(poly, wave, x, out):
-    """Value, first and second derivative at offset ``x`` into ``out`` (3,), and the size of the terms into out[3:]."""
+    """Value, first and second derivative at offset ``x`` into ``out`` (3,), and the size of the terms into out[3]."""
     out[0] = poly[0] + x * (poly[1] + x * (poly[2] + x * poly[3]))
     out[1] = poly[1] + x * (2.0 * poly[2] + x * 3.0 * poly[3])
     out[2] = 2.0 * poly[2] + 6.0 * poly[3] * x
@@ -56,45 +35,53 @@ def _at_end(poly, wave, x, out):
         size = np.exp(wave[2] * x)
         real = size * (wave[0] * np.cos(wave[3] * x) - wave[1] * np.sin(wave[3] * x))
         other = size * (wave[0] * np.sin(wave[3] * x) + wave[1] * np.cos(wave[3] * x))
-        out[3] += np.hypot(wave[0], wave[1])
+        out[3] += np.sqrt(wave[0] ** 2 + wave[1] ** 2)
         for order in range(3):
             out[order] += real
             real, other = real * wave[2] - other * wave[3], real * wave[3] + other * wave[2]
 
 
 @part
-def _place(starts, poly, wave, row, which, at, slack, time, push, out_poly, out_wave):
-    """One drive from ``at`` on, its cubic and wave about that time, in lane units."""
-    own = row if starts.shape[0] > 1 else 0
-    p = _owner(starts[own], at, slack)
-    x = at - starts[own, p]
-    if abs(x) <= slack:
-        x = 0.0
-    c0, c1, c2, c3 = poly[own, p, 0], poly[own, p, 1], poly[own, p, 2], poly[own, p, 3]
-    scale = push if which == 2 else 1.0
-    out_poly[which, 0] = scale * (c0 + x * (c1 + x * (c2 + x * c3)))
-    out_poly[which, 1] = scale * time * (c1 + x * (2.0 * c2 + x * 3.0 * c3))
-    out_poly[which, 2] = scale * time * time * (c2 + x * 3.0 * c3)
-    out_poly[which, 3] = scale * time**3 * c3
-    _move_wave(wave[own, p], x, out_wave[which])
-    out_wave[which, 0] *= scale
-    out_wave[which, 1] *= scale
-    out_wave[which, 2] *= time
-    out_wave[which, 3] *= time
+def _place(poly, wave, x, time, scale, out_poly, out_wave):
+    """A piece from ``x`` after its start on, in lane units: its cubic and wave (4,) each about that instant."""
+    c0, c1, c2, c3 = poly[0], poly[1], poly[2], poly[3]
+    out_poly[0] = scale * (c0 + x * (c1 + x * (c2 + x * c3)))
+    out_poly[1] = scale * time * (c1 + x * (2.0 * c2 + x * 3.0 * c3))
+    out_poly[2] = scale * time * time * (c2 + x * 3.0 * c3)
+    out_poly[3] = scale * time * time * time * c3
+    if wave[0] != 0.0 or wave[1] != 0.0:
+        size = scale * np.exp(wave[2] * x)
+        across, up = size * np.cos(wave[3] * x), size * np.sin(wave[3] * x)
+        out_wave[0] = wave[0] * across - wave[1] * up
+        out_wave[1] = wave[0] * up + wave[1] * across
+        out_wave[2] = wave[2] * time
+        out_wave[3] = wave[3] * time
 
 
 @part
-def _collect(starts, row, until, times, count):
-    own = row if starts.shape[0] > 1 else 0
-    for p in range(starts.shape[1]):
-        if starts[own, p] < until and starts[own, p] > 0.0:
-            times[count] = starts[own, p]
+def _breaks(starts, until, slack, times):
+    """Start times (3, P) of the drives' pieces below ``until``, merged and in order, into ``times``; how many."""
+    count = 1
+    times[0] = 0.0
+    for which in range(3):
+        for p in range(starts.shape[1]):
+            at = starts[which, p]
+            if not (at > 0.0 and at < until):
+                continue
+            k = count
+            while k > 0 and times[k - 1] > at:
+                k -= 1
+            if (k > 0 and at - times[k - 1] <= slack) or (k < count and times[k] - at <= slack):
+                continue
+            for j in range(count, k, -1):
+                times[j] = times[j - 1]
+            times[k] = at
             count += 1
     return count
 
 
 @part
-def _finest(c, pieces, part_of, poly, wave, jump, bend, fine, layer):
+def _finest(c, pieces, part_of, poly, wave, jump, bends, fine, layer):
     """First rows and courses of all pieces of case ``c``, and each wall's finest layer as a share of the gap."""
     layer[c, 0] = 1.0
     layer[c, 1] = 1.0
@@ -108,7 +95,7 @@ def _finest(c, pieces, part_of, poly, wave, jump, bend, fine, layer):
         until = 0.0
         for which in range(3):
             sudden = jump[c, p, which] != 0.0
-            begins = sudden or bend[c, p, which] != 0.0
+            begins = sudden or bends[p, which]
             time = 1e300
             if begins:
                 time = min(length, 1.0)
@@ -118,7 +105,7 @@ def _finest(c, pieces, part_of, poly, wave, jump, bend, fine, layer):
                 first = min(first, 0.2 * time)
             w = wave[c, p, which]
             if w[0] != 0.0 or w[1] != 0.0:
-                rate = np.hypot(w[2], w[3])
+                rate = np.sqrt(w[2] * w[2] + w[3] * w[3])
                 time = min(time, 1.0 / rate)
                 first = min(first, FIRST / rate)
                 course = min(course, COURSE / rate)
@@ -136,30 +123,47 @@ def _finest(c, pieces, part_of, poly, wave, jump, bend, fine, layer):
         part_of[c, p, COURSE_UNTIL] = until
 
 
+@part
+def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
+    """Jumps of one input at the starts of its pieces, and whether its slope or bend changes there."""
+    old_value, old_slope, old_bend = before, 0.0, 0.0
+    old_size, old_length = abs(before), 1e300
+    for p in range(n):
+        own, own_wave = poly[c, p, which], wave[c, p, which]
+        _at_end(own, own_wave, 0.0, ends)
+        length = part_of[c, p, LENGTH]
+        value, slope, curve, size = ends[0], ends[1], ends[2], ends[3]
+        _at_end(own, own_wave, min(length, 1e3), ends)
+        size = max(size, ends[3])
+        largest = max(size, old_size)
+        shorter = min(length, old_length)
+        jump[c, p, which] = value - old_value
+        if abs(value - old_value) <= NOTHING * largest:
+            jump[c, p, which] = 0.0
+        kink, twist = abs(slope - old_slope) * shorter, abs(curve - old_bend) * shorter * shorter
+        bends[p, which] = kink > 1e-9 * largest or twist > 1e-7 * largest
+        old_value, old_slope, old_bend = ends[0], ends[1], ends[2]
+        old_size, old_length = size, length
+
+
 @compiled
 def join(
-    starts_low, poly_low, wave_low, starts_high, poly_high, wave_high, starts_push, poly_push, wave_push,
+    starts, poly_of, wave_of,  # the drives' pieces: [C or 1, 3, P], [.., 3, P, 4] twice
     before, until, time, push, fine,  # [C, 3] in SI, (C,) s, (C,) s, (C,) m/s per Pa/m, (C,)
-    pieces, part_of, poly, wave, jump, layer,  # out: (C,), [C, P, PIECE_FIELDS], [C, P, 3, 4] twice, [C, P, 3], [C, 2]
+    pieces, part_of, poly, wave, jump, layer,  # out: (C,), [C, Q, PIECE_FIELDS], [C, Q, 3, 4] twice, [C, Q, 3], [C, 2]
 ):  # fmt: skip
-    """Join the three drives of every row ([C or 1, P], [.., P, 4], [.., P, 4] each); ``before`` is scaled in place."""
+    """Join the three drives of every row; pieces that a row does not have start at infinity or have no length.
+
+    ``before`` is scaled in place.
+    """
     cases, most = part_of.shape[0], part_of.shape[1]
     times = np.empty(most + 3)
     ends = np.zeros(4)
-    bends = np.zeros((cases, most, 3))
+    bends = np.zeros((most, 3), np.bool_)
     for c in range(cases):
-        count = 1
-        times[0] = 0.0
-        count = _collect(starts_low, c, until[c], times, count)
-        count = _collect(starts_high, c, until[c], times, count)
-        count = _collect(starts_push, c, until[c], times, count)
-        ordered = np.sort(times[:count])
+        own = c if starts.shape[0] > 1 else 0
         slack = SAME * until[c]
-        n = 0
-        for k in range(count):
-            if n == 0 or ordered[k] - times[n - 1] > slack:
-                times[n] = ordered[k]
-                n += 1
+        n = _breaks(starts[own], until[c], slack, times)
         pieces[c] = n
         before[c, 2] *= push[c]
         for p in range(n):
@@ -167,29 +171,21 @@ def join(
             stop = times[p + 1] if p + 1 < n else until[c]
             part_of[c, p, LENGTH] = (stop - at) / time[c]
             part_of[c, p, START] = at / time[c]
-            _place(starts_low, poly_low, wave_low, c, 0, at, slack, time[c], push[c], poly[c, p], wave[c, p])
-            _place(starts_high, poly_high, wave_high, c, 1, at, slack, time[c], push[c], poly[c, p], wave[c, p])
-            _place(starts_push, poly_push, wave_push, c, 2, at, slack, time[c], push[c], poly[c, p], wave[c, p])
         for which in range(3):
-            old_value, old_slope, old_bend = before[c, which], 0.0, 0.0
-            old_size, old_length = abs(old_value), 1e300
+            scale = push[c] if which == 2 else 1.0
+            piece = 0
             for p in range(n):
-                _at_end(poly[c, p, which], wave[c, p, which], 0.0, ends)
-                length = part_of[c, p, LENGTH]
-                value, slope, curve, size = ends[0], ends[1], ends[2], ends[3]
-                _at_end(poly[c, p, which], wave[c, p, which], min(length, 1e3), ends)
-                size = max(size, ends[3])
-                largest = max(size, old_size)
-                shorter = min(length, old_length)
-                jump[c, p, which] = value - old_value
-                if abs(value - old_value) <= NOTHING * largest:
-                    jump[c, p, which] = 0.0
-                bends[c, p, which] = 0.0
-                kink, twist = abs(slope - old_slope) * shorter, abs(curve - old_bend) * shorter**2
-                if kink > 1e-9 * largest or twist > 1e-7 * largest:
-                    bends[c, p, which] = 1.0
-                old_value, old_slope, old_bend = ends[0], ends[1], ends[2]
-                old_size, old_length = size, length
+                for k in range(piece + 1, starts.shape[2]):
+                    if starts[own, which, k] <= times[p] + slack:
+                        piece = k
+                x = times[p] - starts[own, which, piece]
+                if abs(x) <= slack:
+                    x = 0.0
+                _place(
+                    poly_of[own, which, piece], wave_of[own, which, piece], x, time[c], scale,
+                    poly[c, p, which], wave[c, p, which],
+                )  # fmt: skip
+            _breaks_of(which, c, n, part_of, poly, wave, before[c, which], jump, bends, ends)
         _finest(c, n, part_of, poly, wave, jump, bends, fine[c], layer)
 
 

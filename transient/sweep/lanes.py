@@ -208,12 +208,10 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
     poly, wave = np.zeros((n, most, 3, 4)), np.zeros((n, most, 3, 4))
     jump, layer = np.zeros((n, most, 3)), np.zeros((n, 2))
     before = batch.before[rows].copy()
-    own = [_taken(drive, rows) for drive in batch.drives]
+    starts, own_poly, own_wave = _together(batch.drives, rows)
     push = batch.geometry.gap[rows] ** 2 / batch.viscosity[rows]
     join(
-        own[0].starts, own[0].poly, own[0].wave, own[1].starts, own[1].poly, own[1].wave,
-        own[2].starts, own[2].poly, own[2].wave,
-        before, batch.until[rows], batch.time[rows], push, np.full(n, fine),
+        starts, own_poly, own_wave, before, batch.until[rows], batch.time[rows], push, np.full(n, fine),
         pieces, part_of, poly, wave, jump, layer,
     )  # fmt: skip
     waving = bool(np.any(wave[:, :, :, :2]))
@@ -253,13 +251,22 @@ def _most_rows(pieces: np.ndarray) -> int:
     return int(min(MOST_ROWS, 60 + 24 * pieces.max(initial=1)))
 
 
-def _taken(drive: DriveRows, rows: np.ndarray) -> DriveRows:
-    if drive.starts.shape[0] == 1:
-        return drive
-    return DriveRows(
-        drive.starts[rows], drive.poly[rows], drive.wave[rows], drive.before, drive.end, drive.last, drive.lag,
-        drive.bad,
-    )  # fmt: skip
+def _together(
+    drives: tuple[DriveRows, DriveRows, DriveRows], rows: np.ndarray
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The three drives' pieces in common arrays, [n or 1, 3, P(, 4)]; those that one does not have never begin."""
+    alike = all(drive.starts.shape[0] == 1 for drive in drives)
+    n = 1 if alike else len(rows)
+    most = max(drive.starts.shape[1] for drive in drives)
+    starts = np.full((n, 3, most), np.inf)
+    poly, wave = np.zeros((n, 3, most, 4)), np.zeros((n, 3, most, 4))
+    for which, drive in enumerate(drives):
+        own = slice(None) if drive.starts.shape[0] == 1 else rows
+        count = drive.starts.shape[1]
+        starts[:, which, :count] = drive.starts[own]
+        poly[:, which, :count] = drive.poly[own]
+        wave[:, which, :count] = drive.wave[own]
+    return starts, poly, wave
 
 
 def _infinite(problem: Problem, jump: np.ndarray) -> np.ndarray:
