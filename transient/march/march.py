@@ -26,6 +26,7 @@ EXTRAPOLATED = (
 CHUNK_ROWS = 4096
 PROFILE_BYTES = 16e6  # of the base level; longer runs keep every 2nd, 4th, ... profile
 MOST_STEPS = 20_000_000
+FRESH = 64.0  # first steps after which the layers of a sudden motion are many cells wide
 
 
 class SolveError(RuntimeError):
@@ -318,6 +319,7 @@ def history(
         value[PRESSURE] = fields[:, kernel.DROP]
     stress = _stresses(problem, trace, value, slope)
     _join_breaks(problem, inputs, trace, stress, value[PRESSURE], before)
+    _join_accelerations(problem, inputs, trace, value, slope, stress)
     stress_rate = np.full_like(stress, np.nan)  # of the histories that are read between rows: see ``with_rates``
     if problem.flow is not None:
         slope[PRESSURE] = stress_rates(trace.piece, trace.offset, value[PRESSURE][:, None])[:, 0]
@@ -335,11 +337,35 @@ def history(
     profile, profile_rate, travel = (
         system.nodes(trace.profiles[:, i], wall[at])[:, ::every] for i, wall in enumerate(walls)
     )
-    return History(
+    whole = History(
         time, trace.piece, trace.offset, stress, stress_rate, value[:2].T, slope[:2].T, mean, mean_rate,
         value[PRESSURE], slope[PRESSURE], place, system.grid.radius[::every], at, profile, profile_rate, travel,
         system.grid.radius[::every] if problem.rotating else None,
     )  # fmt: skip
+    return whole if problem.flow is None else _without_first_steps(whole)
+
+
+def _without_first_steps(history: History) -> History:
+    """The rows but for the first steps after an infinite pressure of a prescribed flow.
+
+    Walls' half cells take a new speed at once, and the pressure answers for all of the gap: until the layers are many
+    cells wide, the stress at the far wall is not yet what its finite peak may be read from.
+    """
+    keep = np.ones(len(history.time), bool)
+    for start in np.flatnonzero(np.isnan(history.gradient)):
+        rows = np.flatnonzero(history.piece == history.piece[start])
+        rows = rows[(rows > start) & (rows < rows[-1])]
+        if len(rows):
+            keep[rows[history.offset[rows] < FRESH * history.offset[rows[0]]]] = False
+    if keep.all():
+        return history
+    kept = keep[history.profile_row]
+    rows = {name: getattr(history, name)[keep] for name in (
+        "time", "piece", "offset", "stress", "stress_rate", "speed", "acceleration", "mean", "mean_rate", "gradient",
+        "gradient_rate", "place",
+    )}  # fmt: skip
+    profiles = {name: getattr(history, name)[kept] for name in ("profile", "profile_rate", "travel")}
+    return replace(history, **rows, **profiles, profile_row=(np.cumsum(keep) - 1)[history.profile_row[kept]])
 
 
 def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) -> np.ndarray:
@@ -392,12 +418,39 @@ def _join_breaks(
         if body is None or body.mass > 0.0:
             own = sudden[:, end] != 0.0
             if problem.flow is not None:
-                # the pressure answers a sudden motion elsewhere like 1/sqrt(t), and the stress jumps by a finite amount
-                felt = (sudden != 0.0).any(axis=1) & ~own
-                left = np.where(felt, stress[np.minimum(enters + 1, len(stress) - 1), end], left)
+                left = left + np.where(own, 0.0, sudden[:, 1 - end] * _felt(problem, 1 - end))
             stress[enters, end] = np.where(own, np.nan, left)
     if problem.flow is not None:
         gradient[enters[(sudden != 0.0).any(axis=1)]] = np.nan
+
+
+def _join_accelerations(
+    problem: Problem, inputs: Inputs, trace: Trace, value: np.ndarray, slope: np.ndarray, stress: np.ndarray
+) -> None:
+    """Accelerations (``slope``) of linear bodies right after breaks, from all that acts on them: what the step knows is
+    that of the body with its wall's half cell, which the liquid has not yet reached."""
+    enters = np.flatnonzero(trace.offset == 0.0)
+    for end, wall in enumerate(problem.walls):
+        body = wall.body
+        if body is None or body.mass == 0.0 or not body.linear or trace.system.end_volume[end] == 0.0:
+            continue
+        load = inputs.row(end).at(trace.piece[enters], np.zeros(len(enters)))
+        place = trace.fields[enters, kernel.WALLS + 4 + end]
+        push = body.displaced * (problem.length or 0.0)
+        total = load - body.damping * value[end, enters] - body.stiffness * place + body.grip * stress[enters, end]
+        total = total + push * value[PRESSURE, enters] if push else total
+        slope[end, enters] = np.where(np.isfinite(total), total / body.mass, slope[end, enters])
+
+
+def _felt(problem: Problem, mover: int) -> float:
+    """Jump of a wall's stress per jump of the other one's speed, where the flow is prescribed.
+
+    The layer that the other wall drags along, 2 sqrt(nu t / pi) deep, moves the rest of the section back; what that
+    makes of the stress here, half-space against half-space, is constant in time (own derivation).
+    """
+    radius = (problem.inner, problem.outer)
+    section = problem.gap * (1.0 if problem.metric == 0 else 0.5 * (problem.inner + problem.outer))
+    return -problem.viscosity * radius[mover] ** problem.metric / section
 
 
 def sudden_motion(problem: Problem, inputs: Inputs, speed_before: np.ndarray | None) -> np.ndarray:

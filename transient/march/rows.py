@@ -113,14 +113,15 @@ def _pairs(
 
 
 def _trusted(history: History, accuracy: float, error: np.ndarray) -> np.ndarray:
-    """Rows to keep (n,): all but those that follow an infinite stress up to the last that is not yet accurate.
+    """Rows to keep (n,): all but those that follow an infinite stress, or the infinite pressure of a prescribed flow,
+    up to the last that is not yet accurate.
 
     The row at the next break stays in any case.
     """
     keep = np.ones(len(history.time), bool)
     for end in (0, 1):
         bad = error[:, end] > LEADING * accuracy * np.abs(history.stress[:, end])
-        for start in np.flatnonzero(np.isnan(history.stress[:, end])):
+        for start in np.flatnonzero(np.isnan(history.stress[:, end]) | np.isnan(history.gradient)):
             rows = np.flatnonzero(history.piece == history.piece[start])
             rows = rows[(rows > start) & (rows < rows[-1])]
             young = rows[history.offset[rows] < YOUNG * history.offset[rows[-1]]] if len(rows) else rows

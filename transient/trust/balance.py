@@ -242,7 +242,9 @@ def flow_difference(problem: Problem, history: History) -> Closure:
     known = ~np.isnan(history.stress[history.profile_row]).any(axis=1)
     row = history.profile_row[known]
     speeds = np.abs(history.profile if history.lever is None else history.profile * history.lever)
-    largest = float(max(np.abs(history.mean).max(), HARDLY_FLOWS * speeds.max(initial=0.0)))
+    # a prescribed flow is what it is to round-off: how well the profiles carry it counts beside the speeds
+    share = HARDLY_FLOWS if problem.flow is None else 1.0
+    largest = float(max(np.abs(history.mean).max(), share * speeds.max(initial=0.0)))
     if len(row) < 2:
         return Closure(0.0, math.inf)
     if largest == 0.0:

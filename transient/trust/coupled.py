@@ -22,19 +22,26 @@ def motion_errors(
     rows = len(history.time)
     out = {"speed": np.zeros((rows, 2)), "acceleration": np.zeros((rows, 2)), "place": np.zeros((rows, 2))}
     out["gradient"] = np.zeros(rows)
-    bodies = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
-    curves: dict[tuple[str, int], Curve] = {}
-    for end in bodies:
+    plain: dict[tuple[str, int], Curve] = {}
+    rooted: dict[tuple[str, int], Curve] = {}
+    for end, wall in enumerate(problem.walls):
+        if wall.body is None:
+            continue
         value, rate = accelerations(problem, inputs, history, end)
-        curves["speed", end] = history.speed_curve(end)
-        curves["acceleration", end] = Curve(history.time, value, rate, history.step)
-        curves["place", end] = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
-    if curves:
+        plain["speed", end] = history.speed_curve(end)
+        plain["place", end] = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
+        rooted["acceleration", end] = Curve(history.time, value, rate, history.step, history.offset[:-1])
+    if problem.flow is not None:
+        rooted["gradient", 0] = history.gradient_curve()
+    for curves in (plain, rooted):
+        if not curves:
+            continue
         found = _errors(history, exact, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
         for (name, end), error in zip(curves, found.T, strict=True):
-            out[name][:, end] = error
-    if problem.flow is not None:
-        out["gradient"] = _errors(history, exact, [history.gradient_curve()], [_COLUMN["gradient"]])[:, 0]
+            if name == "gradient":
+                out[name] = error
+            else:
+                out[name][:, end] = error
     return out
 
 

@@ -39,6 +39,8 @@ def demands(run: Run, summary: dict[str, Any], accuracy: float, steady_stress: n
         *_stresses(run, summary, accuracy, steady_stress),
         *_means(run, accuracy),
         *_settlings(run, summary["settling"], accuracy),
+        *_bodies(run, summary.get("bodies", {}), accuracy),
+        *_pressure(run, summary.get("pressure", {}), accuracy),
     ]
 
 
@@ -59,29 +61,39 @@ def _stresses(
         peak = max(peaks[wall.name], HARDLY * largest)
         if not said["unbounded"]:
             yield Demand(f"{wall.name} peak stress", said["peak_stress_error"] or 0.0, accuracy * peak)
-            worst = float(run.errors.stress[:, wall.end].max(initial=0.0))
+            worst = float(run.errors.stress[~_soon(run), wall.end].max(initial=0.0))
             yield Demand(f"{wall.name} stress history", worst, HISTORY_SHARE * accuracy * peak)
         else:
-            yield Demand(f"{wall.name} stress history", _after_infinite(run, wall.end), HISTORY_SHARE * accuracy)
+            worst = _after_infinite(run, run.history.stress[:, wall.end], run.errors.stress[:, wall.end])
+            yield Demand(f"{wall.name} stress history", worst, HISTORY_SHARE * accuracy)
         final = abs(said["final_stress"])
         calm = steady_stress is not None and abs(steady_stress[wall.end]) > 1e-6 * peak
         size = max(final, FINAL_SHARE * peak) if calm else max(final, peak)
         yield Demand(f"{wall.name} final stress", said["final_stress_error"], accuracy * max(size, HARDLY * largest))
 
 
-def _after_infinite(run: Run, end: int) -> float:
-    """Worst error relative to the local stress of the rows after an infinite one, but for the very first."""
+def _after_infinite(run: Run, value: np.ndarray, error: np.ndarray) -> float:
+    """Worst ``error`` (n,) over the local ``value`` (n,) of the rows after an infinite one, but for the very first."""
     history = run.history
-    stress = history.stress[:, end]
-    infinite = np.flatnonzero(np.isnan(stress))
+    infinite = np.flatnonzero(np.isnan(value))
     worst = 0.0
-    floor = np.nanmedian(np.abs(stress)) * FINAL_SHARE
+    floor = np.nanmedian(np.abs(value)) * FINAL_SHARE
     for start in infinite:
         rows = np.flatnonzero(history.piece == history.piece[start])[1:]
         rows = rows[history.offset[rows] >= SOON * history.offset[rows[-1]]]
-        size = np.maximum(np.abs(stress[rows]), floor)
-        worst = max(worst, float((run.errors.stress[rows, end] / size).max(initial=0.0)))
+        size = np.maximum(np.abs(value[rows]), floor)
+        worst = max(worst, float((error[rows] / size).max(initial=0.0)))
     return worst
+
+
+def _soon(run: Run) -> np.ndarray:
+    """Rows (n,) so soon after an infinite pressure, which every wall feels at once, that nothing is asked of them."""
+    history = run.history
+    out = np.zeros(len(history.time), bool)
+    for start in np.flatnonzero(np.isnan(history.gradient)):
+        rows = np.flatnonzero(history.piece == history.piece[start])
+        out[rows[history.offset[rows] < SOON * history.offset[rows[-1]]]] = True
+    return out
 
 
 def _peak(run: Run, end: int) -> float:
@@ -115,3 +127,53 @@ def _settlings(run: Run, said: dict[str, Any], accuracy: float) -> Iterator[Dema
             continue  # its history is the case's own
         if time is not None and error is not None:
             yield Demand(name, error, accuracy * time, key in said["grazing"])
+
+
+def _bodies(run: Run, summary: dict[str, Any], accuracy: float) -> Iterator[Demand]:
+    names = {wall.end: wall.name for wall in run.walls}
+    history, more = run.history, run.errors.more
+    if not more:
+        return
+    later = ~_soon(run)
+    for body in run.bodies:
+        end, name = body.end, names[body.end]
+        for kind, value in (("speed", history.speed[:, end]), ("position", history.place[:, end])):
+            error = more["speed" if kind == "speed" else "place"][later, end]
+            size = float(np.abs(value).max(initial=0.0))
+            yield Demand(f"{name} {kind} history", float(error.max(initial=0.0)), HISTORY_SHARE * accuracy * size)
+        acceleration = more["acceleration"][:, end]
+        if np.isnan(body.acceleration).any():
+            worst = _after_infinite(run, body.acceleration, acceleration)
+            yield Demand(f"{name} acceleration history", worst, HISTORY_SHARE * accuracy)
+        else:
+            size = float(np.abs(body.acceleration).max(initial=0.0))
+            worst = float(acceleration[later].max(initial=0.0))
+            yield Demand(f"{name} acceleration history", worst, HISTORY_SHARE * accuracy * size)
+        said = summary[name]
+        yield from _times(said, name, accuracy)
+
+
+def _times(said: dict[str, Any], name: str, accuracy: float) -> Iterator[Demand]:
+    """A body's settling, and time and distance of its coast-down."""
+    if said["speed_settling_time"] is not None and said["speed_settling_error"] is not None:
+        allowed = accuracy * said["speed_settling_time"]
+        yield Demand(f"{name} speed settling", said["speed_settling_error"], allowed, said["speed_settling_grazes"])
+    coast = said["coast_down"]
+    if coast is None or coast["time_error"] is None:
+        return
+    yield Demand(f"{name} coast-down time", coast["time_error"], accuracy * coast["time"], coast["grazes"])
+    allowed = accuracy * abs(coast["distance"])
+    yield Demand(f"{name} coast-down distance", coast["distance_error"], allowed, coast["grazes"])
+
+
+def _pressure(run: Run, summary: dict[str, Any], accuracy: float) -> Iterator[Demand]:
+    if not run.flow_given or "gradient" not in run.errors.more:
+        return
+    value, error = run.history.gradient, run.errors.more["gradient"]
+    if run.pressure_jump is not None:
+        worst = _after_infinite(run, value, error)
+        yield Demand("pressure drop history", worst, HISTORY_SHARE * accuracy)
+        return
+    size = float(np.abs(value).max(initial=0.0))
+    yield Demand("pressure drop history", float(error.max(initial=0.0)), HISTORY_SHARE * accuracy * size)
+    yield Demand("peak pressure drop", summary["peak_drop_per_length_error"] or 0.0, accuracy * size)

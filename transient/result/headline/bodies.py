@@ -24,12 +24,15 @@ def _body(run: Run, body: BodyFacts) -> dict[str, Any]:
     speed = history.speed_curve(end)
     fastest, fastest_at = speed.magnitude()
     infinite = bool(np.isnan(body.acceleration).any())
-    quickest, quickest_at = Curve(history.time, body.acceleration, body.jerk, history.step).magnitude()
-    settled, spread = _settling(run, body)
+    quickest, quickest_at = Curve(
+        history.time, body.acceleration, body.jerk, history.step, history.offset[:-1]
+    ).magnitude()
+    settled, spread, grazes = _settling(run, body)
     return {
         "terminal_speed": None if body.terminal is None else body.terminal + 0.0,  # never -0
         "speed_settling_time": settled,
         "speed_settling_error": spread,
+        "speed_settling_grazes": grazes,
         "final_speed": float(history.speed[-1, end]),
         "final_speed_error": _error(run, "speed", end, -1),
         "final_position": float(history.place[-1, end]),
@@ -62,18 +65,24 @@ def _beside(run: Run, name: str, end: int, time: float) -> float | None:
     return float(error[near, end].max())
 
 
-def _settling(run: Run, body: BodyFacts) -> tuple[float | None, float | None]:
-    """(time, error): speed within the settling fraction of what it ends in, of its peak where that is zero."""
+def _settling(run: Run, body: BodyFacts) -> tuple[float | None, float | None, bool]:
+    """(time, error, whether the speed runs along the band).
+
+    Within the settling fraction of the speed it ends in, of its peak where that is zero.
+    """
     away = run.regime.deviation
     error = run.errors.more.get("level_speed")
     if away is None or body.size is None:
-        return None, None
+        return None, None, False
     peak = abs(run.history.speed_curve(body.end).magnitude()[0])
     size = body.size if body.size > ZERO * peak else peak
     known = np.zeros(len(away.time)) if error is None else error[:, body.end]
     judge = Judge(away.speed_curve(body.end), known, size)
     time = judge.time(run.settle_within)
-    return time, None if error is None else judge.spread(run.settle_within, time)
+    if error is None:
+        return time, None, False
+    spread = judge.spread(run.settle_within, time)
+    return time, spread, judge.grazes(run.settle_within, time, spread)
 
 
 def _drive(run: Run, body: BodyFacts, speed: Curve) -> dict[str, Any]:
@@ -147,8 +156,10 @@ def _coast_down(run: Run, body: BodyFacts) -> dict[str, Any] | None:
     known = np.zeros(len(curve.time)) if error is None else error[left, end]
     judge = Judge(curve, known, abs(curve.value[0]))
     stop = judge.time(run.settle_within)
-    out: dict[str, Any] = {"begins": begin, "speed": speed, "time": None, "time_error": None,
-                           "distance": None, "distance_error": None, "within": run.settle_within}  # fmt: skip
+    out: dict[str, Any] = {
+        "begins": begin, "speed": speed, "time": None, "time_error": None, "distance": None, "distance_error": None,
+        "within": run.settle_within, "grazes": False,
+    }  # fmt: skip
     if stop is None:
         return out
     place = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
@@ -156,7 +167,7 @@ def _coast_down(run: Run, body: BodyFacts) -> dict[str, Any] | None:
     out["time"], out["distance"] = stop - begin, there - float(history.place[first, end])
     if error is not None:
         late = judge.spread(run.settle_within, stop) or 0.0
-        out["time_error"] = late
+        out["time_error"], out["grazes"] = late, judge.grazes(run.settle_within, stop, late)
         moved = [_error(run, "place", end, first), _beside(run, "place", end, stop)]
         slow = run.settle_within * judge.size + abs(body.terminal or 0.0)
         out["distance_error"] = sum(part for part in moved if part is not None) + slow * late
