@@ -1,4 +1,4 @@
-"""A kill at any instant, an interrupt, a full disk: what was finished stays, and going on gives the same to the last bit."""
+"""A kill at any instant, an interrupt, a full disk: what was finished stays, and going on ends in the same bits."""
 
 from __future__ import annotations
 
@@ -192,8 +192,14 @@ def interrupted(sweep_file, tmp_path, monkeypatch):
     ("change", "named"),
     [
         (lambda text: text.replace('"40 m"', '"41 m"'), 'gap.height.to was "40 m", is "41 m"'),
-        (lambda text: text.replace('"gap.height"', '"gap.length"'), 'gap.height was {"from": "1 m", "to": "40 m", "count": 40}, is not given; gap.length was not given, is'),
-        (lambda text: text + '[scatter]\nsamples = 2\n"gap.width" = { uniform = ["1 m", "2 m"] }\n', "samples was not given, is 2; gap.width was not given"),
+        (
+            lambda text: text.replace('"gap.height"', '"gap.length"'),
+            'gap.height was {"from": "1 m", "to": "40 m", "count": 40}, is not given; gap.length was not given, is',
+        ),
+        (
+            lambda text: text + '[scatter]\nsamples = 2\n"gap.width" = { uniform = ["1 m", "2 m"] }\n',
+            "samples was not given, is 2; gap.width was not given",
+        ),
         (lambda text: text + "[keep]\nhistories = true\n", "histories was false, is true"),
     ],
 )  # fmt: skip

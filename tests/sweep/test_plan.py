@@ -112,7 +112,10 @@ def test_listed_rows_times_ranges_times_samples():
     plan = plan_of(
         BASE,
         {
-            "rows": [{"gap.height": "1 mm", "fluid.density": "900 kg/m^3"}, {"gap.height": "2 mm", "fluid.density": "800 kg/m^3"}],
+            "rows": [
+                {"gap.height": "1 mm", "fluid.density": "900 kg/m^3"},
+                {"gap.height": "2 mm", "fluid.density": "800 kg/m^3"},
+            ],
             "vary": {"fluid.viscosity": ["1 cP", "2 cP", "3 cP"]},
             "scatter": {"samples": 4, "seed": 1, "wall.upper.speed.over": {"uniform": ["1 ms", "2 ms"]}},
         },
@@ -139,7 +142,8 @@ def test_distributions_are_those_of_scipy(kind):
 
 
 def test_the_samples_of_one_combination_are_scipys_sobol_points():
-    spec = {"samples": 100, "seed": 7, "gap.height": {"uniform": ["0 m", "1 m"]}, "gap.length": {"uniform": ["0 m", "1 m"]}}
+    unit = {"uniform": ["0 m", "1 m"]}
+    spec = {"samples": 100, "seed": 7, "gap.height": unit, "gap.length": unit}
     rows = values({"scatter": spec})
     expected = stats.qmc.Sobol(2, scramble=True, rng=np.random.default_rng(7)).random_base2(7)[:100]
     np.testing.assert_allclose(np.array([rows["gap.height"], rows["gap.length"]]).T, expected, rtol=1e-15)
@@ -172,5 +176,6 @@ def test_parts_of_a_plan_are_parts_of_the_whole():
 
 
 def test_chunks_follow_from_the_plan_alone():
-    few = plan_of(BASE, {"vary": {"gap.height": {"from": "1 mm", "to": "2 mm", "count": 50}}, "keep": {"histories": True}})
+    ends = {"from": "1 mm", "to": "2 mm", "count": 50}
+    few = plan_of(BASE, {"vary": {"gap.height": ends}, "keep": {"histories": True}})
     assert [few.span(i) for i in range(few.chunks)] == [(0, 16), (16, 32), (32, 48), (48, 50)]

@@ -44,7 +44,8 @@ BAD = {
     f'[vary]\n{HEIGHT}[scatter]\nsamples = 4\n"gap.height" = {{ uniform = ["1 mm", "2 mm"] }}\n':
         ":6: gap.height: stands in [vary] and in [scatter]; it is needed in one of them",
     f'[vary]\n{HEIGHT}[scatter]\nsamples = 4\n':
-        ':4: scatter: names no key that scatters; one is needed, such as "gap.width" = { normal = ["25 mm", "0.05 mm"] }',
+        ":4: scatter: names no key that scatters; one is needed, such as "
+        '"gap.width" = { normal = ["25 mm", "0.05 mm"] }',
     f'[vary]\n{HEIGHT}[scatter]\n"gap.width" = {{ uniform = ["1 mm", "2 mm"] }}\n':
         ":4: scatter: samples is missing; a whole number from 1 is needed, such as samples = 500",
     '[scatter]\nsamples = 4\n"gap.width" = { uniform = ["2 mm", "1 mm"] }\n':

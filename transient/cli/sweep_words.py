@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Any
 
-from transient.cli.numbers import columns, entry, listed
+from transient.cli.numbers import WIDTH, columns, entry, listed
 from transient.result.scale import quantity
 from transient.sweep.words import counted, reach, value
 
@@ -71,7 +71,8 @@ def _spread(shown: dict[str, Any], said: dict[str, Any]) -> list[str]:
         inner = [one["percentiles"][q] for q in ("5", "50", "95")] if scattered else [one["median"]]
         numbers = [quantity(number, one["unit"]) for number in (one["least"], *inner, one["greatest"])]
         cells.append([_name(name), *numbers, "" if one["error"] is None else quantity(one["error"], one["unit"], 2)])
-    return list(columns(cells, gap=2))
+    lines = list(columns(cells, gap=2))
+    return lines if max(map(len, lines)) <= WIDTH else list(columns(cells, gap=1))
 
 
 def _worst(shown: dict[str, Any], said: dict[str, Any]) -> list[str]:

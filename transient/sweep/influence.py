@@ -11,17 +11,21 @@ from transient.sweep.keys import Values, Varied
 from transient.sweep.plan import Plan
 
 MOST_ROWS = 1_000_000  # more rows than these tell no more; they are taken evenly
-MOST_LEVELS = 40  # an input with more values is put into classes
-LEAST_IN_CLASS = 8
+MOST_LEVELS = 200  # values of an axis of the grid; more of them, and what is no axis, are put into classes
+MOST_CLASSES = 64
 
 
 @dataclass(frozen=True, eq=False)
 class Factor:
-    """One input over the rows taken: ``values`` (n,) standardised, None for texts; ``classes`` (n,) from 0."""
+    """One input over the rows taken: ``values`` (n,) standardised, None for texts; ``classes`` (n,) from 0.
+
+    ``crossed``: each class meets every value of the other inputs, so that nothing in its mean is chance.
+    """
 
     key: Varied
     values: np.ndarray | None
     classes: np.ndarray
+    crossed: bool
 
 
 class Inputs:
@@ -58,16 +62,17 @@ def _every(plan: Plan, step: int) -> dict[str, np.ndarray]:
 def _factor(plan: Plan, key: Varied, columns: Values) -> Factor | None:
     """The input as a factor; None where it has one value only."""
     values = columns[key.name]
+    crossed = any(one.keys == (key,) for one in plan.axes)
     if key.kind == "choice":
-        return Factor(key, None, values) if np.ptp(values) else None
+        return Factor(key, None, values, crossed) if np.ptp(values) else None
     numbers = values.astype(float)
     if not np.isfinite(numbers).any() or np.nanmax(numbers) == np.nanmin(numbers):
         return None
     spread = np.nanstd(numbers)
     # Rows that are no case have no answer either: any number will do.
     numbers = np.where(np.isfinite(numbers), numbers, np.nanmean(numbers))
-    drawn = plan.scatter is not None and key in plan.scatter.keys
-    return Factor(key, (numbers - numbers.mean()) / spread, _classes(numbers, 0 if drawn else MOST_LEVELS))
+    classes = _classes(numbers, MOST_LEVELS if crossed else 0)
+    return Factor(key, (numbers - numbers.mean()) / spread, classes, crossed)
 
 
 def _classes(values: np.ndarray, most: int) -> np.ndarray:
@@ -75,7 +80,7 @@ def _classes(values: np.ndarray, most: int) -> np.ndarray:
     levels, places = np.unique(values, return_inverse=True)
     if len(levels) <= most:
         return places
-    number = int(np.clip(round(len(values) ** (1 / 3)), 2, min(MOST_LEVELS, max(len(values) // LEAST_IN_CLASS, 2))))
+    number = int(np.clip(round(len(values) ** 0.5), 2, MOST_CLASSES))
     # By the place among the levels, so that equal values never part.
     order = np.searchsorted(np.sort(places), places)
     return order * number // len(values)
@@ -96,28 +101,28 @@ def influence(inputs: Inputs, values: np.ndarray) -> dict[str, Any]:
     y = (y - y.mean()) / y.std()
     slopes, linear = _regression([one.values[have] for one in inputs.factors if one.values is not None], y)
     steep = iter(slopes)
-    found = [
-        {
-            "key": one.key.name,
-            "share": _share(one.classes[have], y),
-            "slope": None if one.values is None else float(next(steep)),
-        }
-        for one in inputs.factors
-    ]
+    found = []
+    for one in inputs.factors:
+        share = _explained(one.classes[have], y)
+        if not (one.crossed and have.all()):
+            share = _above_chance(share, len(np.unique(one.classes[have])), len(y))
+        slope = None if one.values is None else float(next(steep))
+        found.append({"key": one.key.name, "share": share, "slope": slope})
     return {"linear": linear, "sensitivities": sorted(found, key=lambda one: -one["share"])}
 
 
-def _share(classes: np.ndarray, y: np.ndarray) -> float:
+def _explained(classes: np.ndarray, y: np.ndarray) -> float:
     """Share of the variance of standardised ``y`` (n,) that the means of its ``classes`` (n,) explain."""
     counts = np.bincount(classes)
-    sums = np.bincount(classes, y)
     used = counts > 0
-    between = float((sums[used] ** 2 / counts[used]).sum())
-    groups, rows = int(used.sum()), len(y)
-    if groups == rows:
-        return 1.0
-    chance = (groups - 1) * (rows - between) / (rows - groups)
-    return float(np.clip((between - chance) / rows, 0.0, 1.0))
+    return float((np.bincount(classes, y)[used] ** 2 / counts[used]).sum()) / len(y)
+
+
+def _above_chance(explained: float, groups: int, rows: int) -> float:
+    """What is left of an explained share once that of chance alone is taken away."""
+    if groups >= rows:
+        return explained
+    return float(np.clip(explained - (groups - 1) * (1.0 - explained) / (rows - groups), 0.0, 1.0))
 
 
 def _regression(columns: list[np.ndarray], y: np.ndarray) -> tuple[np.ndarray, float | None]:
