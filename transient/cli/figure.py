@@ -3,18 +3,49 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from transient.cli.numbers import listed
 from transient.cli.words import GOOD, Stop, Version, note, refusals
 
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+    from transient.result.result import Result
+
+MOVING = (".html", ".svg")
+
 
 def figure(
     result: Annotated[Path, typer.Argument(metavar="RESULT.h5", help="A result file.")],
     name: Annotated[str | None, typer.Argument(metavar="NAME", help="Which figure; else the overview.")] = None,
     out: Annotated[Path | None, typer.Option("--out", metavar="FILE", help="Write here: PNG, SVG or PDF.")] = None,
+    animate: Annotated[
+        bool, typer.Option("--animate", help="The profile as a moving picture: HTML or SVG for a browser.")
+    ] = False,
+    against: Annotated[
+        Path | None,
+        typer.Option("--against", metavar="FILE", help="Beside another result, or a measured history (CSV)."),
+    ] = None,
+    quantity: Annotated[
+        str | None,
+        typer.Option("--quantity", metavar="HISTORY", help='With --against, such as "wall_stress upper".'),
+    ] = None,
+    column: Annotated[
+        str | None, typer.Option("--column", metavar="NAME", help="With --against: the column of the CSV file.")
+    ] = None,
+    shift: Annotated[
+        str | None, typer.Option("--shift", metavar="TIME", help="With --against: added to the other's times.")
+    ] = None,
+    laid: Annotated[
+        list[str] | None,
+        typer.Option("--laid", metavar="TIME", help="With lines: when a line is laid across the gap; repeatable."),
+    ] = None,
+    seen: Annotated[
+        str | None, typer.Option("--seen", metavar="TIME", help="With lines: when the lines are looked at.")
+    ] = None,
     version: Version = False,
 ) -> int:
     """Draw a result as PNG, SVG or PDF.
@@ -23,15 +54,94 @@ def figure(
     otherwise.
     """
     from transient.result.store import read
-    from transient.sheet.figures import DEFAULT, FIGURES, FORMATS, draw, save
+    from transient.sheet.figures import DEFAULT, FIGURES
 
     if name is not None and name not in FIGURES:
         raise Stop(f'there is no figure "{name}"; there are {listed(list(FIGURES))}')
+    _refuse_mixtures(name, animate, against, {"--quantity": quantity, "--column": column, "--shift": shift})
+    if name != "lines" and (laid or seen):
+        raise Stop('--laid and --seen belong to the figure lines: transient figure RESULT.h5 lines --laid "0 s"')
+    with refusals():
+        if animate:
+            return _animate(result, out)
+        if against is not None:
+            target = _target(out, result.with_name(f"{result.stem}_against_{against.stem}.png"))
+            delay = 0.0 if shift is None else _time("--shift", shift)
+            _save(_beside(read(result), result, against, quantity, column, delay), target)
+            return GOOD
+        chosen = name or DEFAULT
+        target = _target(out, result.with_name(f"{result.stem}_{chosen}.png"))
+        _save(_drawn(read(result), chosen, laid, seen), target)
+    return GOOD
+
+
+def _refuse_mixtures(
+    name: str | None, animate: bool, against: Path | None, belonging: dict[str, str | None]
+) -> None:
+    """Raises Stop where options do not go together."""
+    if name is not None and (animate or against is not None):
+        option = "--animate" if animate else "--against"
+        raise Stop(f"{option} draws a figure of its own; leave the name {name} out")
+    if animate and against is not None:
+        raise Stop("--animate and --against are two figures; give one of them")
+    given = [option for option, value in belonging.items() if value is not None]
+    if given and against is None:
+        raise Stop(f"{given[0]} belongs to --against, such as --against measured.csv")
+
+
+def _target(out: Path | None, usual: Path) -> Path:
+    from transient.sheet.figures import FORMATS
+
     if out is not None and out.suffix.lower().removeprefix(".") not in FORMATS:
         raise Stop(f"--out {out}: a figure ends in .png, .svg or .pdf, such as {out.with_suffix('.png').name}")
-    with refusals():
-        chosen = name or DEFAULT
-        target = out or result.with_name(f"{result.stem}_{chosen}.png")
-        save(draw(read(result), chosen), target)
+    return out or usual
+
+
+def _save(drawn: Figure, target: Path) -> None:
+    from transient.sheet.figures import save
+
+    save(drawn, target)
+    note(f"wrote {target}")
+
+
+def _drawn(result: Result, name: str, laid: list[str] | None, seen: str | None) -> Figure:
+    from transient.sheet.figures import draw
+    from transient.sheet.lines import lines
+    from transient.sheet.style import drawing
+
+    if not laid and seen is None:
+        return draw(result, name)
+    with drawing():
+        at = None if seen is None else _time("--seen", seen)
+        return lines(result, [_time("--laid", text) for text in laid or []], at)
+
+
+def _beside(
+    result: Result, path: Path, against: Path, quantity: str | None, column: str | None, shift: float
+) -> Figure:
+    from transient.sheet.overlay import overlay
+
+    labels = (path.stem, against.name if against.suffix.lower() != ".h5" else against.stem)
+    return overlay(result, against, quantity, column, shift, labels)
+
+
+def _animate(result: Path, out: Path | None) -> int:
+    from transient.result.store import read
+    from transient.sheet.moving import write_moving
+
+    target = out or result.with_name(f"{result.stem}_moving.html")
+    if target.suffix.lower() not in MOVING:
+        example = target.with_suffix(".html").name
+        raise Stop(f"--out {target}: a moving picture ends in .html or .svg, such as {example}")
+    write_moving(read(result), target)
     note(f"wrote {target}")
     return GOOD
+
+
+def _time(option: str, text: str) -> float:
+    from transient.units import QuantityError, quantity
+
+    try:
+        return quantity(text, "time")
+    except QuantityError as error:
+        raise Stop(f"{option}: {error}") from None

@@ -29,8 +29,8 @@ def sheet(
 ) -> int:
     """Write a result up for a design file, as one page that needs no network.
 
-    The calculation sheet: inputs as typed and in SI, equations, assumptions and checks, the answer with its errors, hand formulas, figures,
-    cautions, and the case in full.
+    The calculation sheet: inputs as typed and in SI, equations, assumptions and checks, the answer with its errors,
+    hand formulas, figures, cautions, and the case in full.
     """
     target = _target(result, out, pdf)
     scale = _factor(factor)

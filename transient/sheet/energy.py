@@ -16,7 +16,7 @@ from transient.sheet.labels import Board
 from transient.sheet.span import Span, span
 from transient.sheet.stated import needed_case
 from transient.sheet.stress import finish, stress_signals
-from transient.sheet.style import INK, STROKE, extent, margins, name_axis, need, page, rows, zero_line
+from transient.sheet.style import INK, STROKE, extent, margins, name_axis, need, page, rows, without_spikes, zero_line
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -25,8 +25,6 @@ if TYPE_CHECKING:
 SHAPES = ("plates", "pipe", "annulus_axial", "annulus_rotating")
 SUBTITLE = "Energy of the liquid in all gaps; dissipated is what was put in less what is kinetic"
 PRESSURE_INK, PRESSURE_STROKE = "#2b3238", (0, (3.2, 1.1))
-# An infinite power is shown up to this many times its median, or what it exceeds 5 % of the time.
-MEDIANS, RARES = 4.0, 1.5
 
 
 @dataclass(frozen=True, eq=False)
@@ -56,7 +54,7 @@ def energy(result: Result) -> Figure:
     figure = page(result.title, 1.6 + 1.25 * count, SUBTITLE)
     axes = rows(figure, [1.0] * count, top=0.62, bottom=0.72)
     if load is not None:
-        shown = [_capped(result.time, column) for column in result.variables[load].data.T]
+        shown = [without_spikes(result.time, column) for column in result.variables[load].data.T]
         by_wall(axes[0], result, load, shared, margins(*extent(np.zeros(1), *shown)))
     _draw(axes[-2], result, shared, result.time, account.power, "power put in", "W", account.per)
     kept = result.profile_time
@@ -110,22 +108,12 @@ def _work(time: np.ndarray, power: np.ndarray) -> np.ndarray:
     return np.concatenate([[0.0], np.cumsum(np.nan_to_num(step * part))])
 
 
-def _capped(time: np.ndarray, values: np.ndarray) -> np.ndarray:
-    """``values`` without the spike of one that becomes infinite."""
-    finite = np.isfinite(values)
-    if finite.all() or not finite.any():
-        return values[finite]
-    usual = np.abs(np.interp(np.linspace(time[0], time[-1], 400), time[finite], values[finite]))
-    cap = max(MEDIANS * float(np.median(usual)), RARES * float(np.percentile(usual, 95)))
-    return np.clip(values[finite], -cap, cap)
-
-
 def _draw(
     axes: Axes, result: Result, shared: Span, time: np.ndarray, curves: dict[str, np.ndarray], words: str, unit: str,
     per: str,
 ) -> None:  # fmt: skip
     """Curves named at their right ends, each with an ink and a stroke of its own."""
-    low, high = margins(*extent(np.zeros(1), *(_capped(time, data) for data in curves.values())))
+    low, high = margins(*extent(np.zeros(1), *(without_spikes(time, data) for data in curves.values())))
     chosen = scale(max(abs(low), abs(high)), unit)
     shared.dress(axes, last=False)
     axes.set_ylim(low * chosen.factor, high * chosen.factor)

@@ -59,7 +59,7 @@ def by_wall(axes: Axes, result: Result, name: str, span: Span, limits: tuple[flo
         board.add_curve(x, y)
         ends.append((float(y[np.isfinite(y)][-1]) if np.isfinite(y).any() else 0.0, label, {"color": INK[column]}))
     board.at_ends(ends)
-    name_axis(axes, _WORDS.get(name, variable.long_name), unit.unit)
+    name_axis(axes, WORDS.get(name, variable.long_name), unit.unit)
     zero_line(axes)
     return board
 
@@ -76,7 +76,7 @@ def single(axes: Axes, result: Result, name: str, span: Span) -> Board:
     axes.plot(x, y, color=INK[0], ls=STROKE[0], gid=name)
     board = Board(axes, unit.factor)
     board.add_curve(x, y)
-    name_axis(axes, _WORDS.get(name, variable.long_name), unit.unit)
+    name_axis(axes, WORDS.get(name, variable.long_name), unit.unit)
     zero_line(axes)
     return board
 
@@ -104,7 +104,7 @@ def _stirs(result: Result, name: str) -> bool:
     return low != 0.0 or high != 0.0
 
 
-_WORDS = {
+WORDS = {
     "wall_stress": "wall stress",
     "wall_speed": "wall speed",
     "wall_position": "wall position",

@@ -28,6 +28,9 @@ STROKE: tuple[Any, ...] = ("-", (0, (5, 1.8)), (0, (7, 1.6, 1.4, 1.6)), (0, (1.4
 MINUS = "\N{MINUS SIGN}"
 SOFT, FAINT, WALL = "#5c6670", "#c9ced3", "#8d969e"
 
+# An infinite value is shown up to this many times its median, or what it exceeds 5 % of the time.
+_MEDIANS, _RARES = 4.0, 1.5
+
 _SETTINGS = {
     "font.size": 8.5,
     "axes.titlesize": 9,
@@ -122,3 +125,13 @@ def extent(*arrays: np.ndarray) -> tuple[float, float]:
     values = np.concatenate([np.ravel(array) for array in arrays])
     values = values[np.isfinite(values)]
     return (float(values.min()), float(values.max())) if len(values) else (0.0, 0.0)
+
+
+def without_spikes(time: np.ndarray, values: np.ndarray) -> np.ndarray:
+    """``values`` without the spike of one that becomes infinite."""
+    finite = np.isfinite(values)
+    if finite.all() or not finite.any():
+        return values[finite]
+    usual = np.abs(np.interp(np.linspace(time[0], time[-1], 400), time[finite], values[finite]))
+    cap = max(_MEDIANS * float(np.median(usual)), _RARES * float(np.percentile(usual, 95)))
+    return np.clip(values[finite], -cap, cap)
