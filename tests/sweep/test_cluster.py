@@ -109,7 +109,7 @@ def test_a_cluster_that_is_not_there_is_one_line_and_nothing_is_begun(sweep_file
 def test_a_worker_with_another_version_is_refused():
     from transient.sweep.cluster import task
 
-    with pytest.raises(OSError, match="a worker has transient .*, this is transient 99; the same version is needed"):
+    with pytest.raises(OSError, match=r"a worker has transient .*, this is transient 99; the same version is needed"):
         task("transient 99", None, None, {})
 
 

@@ -103,8 +103,9 @@ def test_what_does_not_matter_has_no_share_and_what_is_constant_none():
 
 def column_of(plan, y: np.ndarray, codes=None) -> dict:
     """The headline of one column of values, as the summary has it."""
+    parts = ("title", "axes", "scatter", "rows", "samples", "combinations", "values")
     framed = SimpleNamespace(
-        **{name: getattr(plan, name) for name in ("title", "axes", "scatter", "rows", "samples", "combinations", "values")},
+        **{name: getattr(plan, name) for name in parts},
         frame=SimpleNamespace(
             keys=plan.frame.keys, walls=("upper",), columns=(Column("settling_time", "s", "", ()),)
         ),
@@ -140,7 +141,8 @@ def test_percentiles_over_the_scatter_at_the_worst_combination():
 
 def test_counts_and_reasons():
     plan, x = scattered(8, "1 m", "2 m")
-    codes = {"status": np.array([0, 0, 1, 2, 0, 0, 0, 1], np.int8), "verdict": np.array([1, 2, 0, 0, 3, 1, 1, 0], np.int8)}
+    status, verdict = np.array([0, 0, 1, 2, 0, 0, 0, 1], np.int8), np.array([1, 2, 0, 0, 3, 1, 1, 0], np.int8)
+    codes = {"status": status, "verdict": verdict}
     said = column_of(plan, np.where(codes["status"] == 0, x[:, 0], np.nan), codes)
     assert said["status"] == {"solved": 5, "refused": 2, "failed": 1}
     assert said["verdicts"] == {"good": 3, "caution": 1, "outside": 1, "failed": 0}

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+import os
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 
@@ -68,8 +71,19 @@ def solve_rows(frame: Frame, values: Values, faults: Mapping[int, str]) -> Piece
         left = np.flatnonzero(out["status"] == OPEN)
         if len(left):
             part = {name: column[left] for name, column in values.items()}
-            _put(out, left, runner.solve(base, frame.keys, part, frame.columns))
+            with _left_to_the_next(runner):
+                _put(out, left, runner.solve(base, frame.keys, part, frame.columns))
     return Piece(out)
+
+
+@contextmanager
+def _left_to_the_next(runner: Any) -> Iterator[None]:
+    """A runner of many rows at once that meets an error of its own leaves them to the next; the last has none."""
+    try:
+        yield
+    except Exception:
+        if runner is each or os.environ.get("TRANSIENT_DEBUG"):
+            raise
 
 
 def unsolved(frame: Frame, rows: int, message: str) -> Piece:
