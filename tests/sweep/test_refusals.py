@@ -123,6 +123,13 @@ def test_a_missing_case_and_a_bad_case_speak_for_themselves(sweep_file):
         read_plan(str(file))
 
 
+def test_table_files_do_not_vary_since_other_machines_need_not_have_them(sweep_file):
+    table = '{ kind = "table", file = "a.csv", time_unit = "s", unit = "m/s" }'
+    file = sweep_file(f'[vary]\n"wall.upper.speed" = [{table}, "1 m/s"]\n', a__csv="0,0\n1,1\n")
+    with pytest.raises(CaseError, match=r"many.toml:3: wall.upper.speed: a table file cannot vary"):
+        read_plan(str(file))
+
+
 def test_more_than_ten_million_cases_are_asked_back(sweep_file, call, tmp_path):
     axis = '{ from = "1 mm", to = "2 mm", count = 3163 }'
     file = sweep_file(f'[vary]\n"gap.height" = {axis}\n"gap.length" = {axis}\n')

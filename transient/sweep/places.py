@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import os
+import signal
 import sys
 import threading
 import time
 import warnings
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
-from contextlib import suppress
+from contextlib import contextmanager, suppress
 from multiprocessing import connection, get_context
 from typing import Any
 
@@ -73,7 +74,7 @@ class Worker:
         context: Any = get_context("fork" if sys.platform == "linux" else "spawn")
         self.pipe, theirs = context.Pipe()
         self.process = context.Process(target=_work, args=(theirs, plan, os.getpid()), daemon=True)
-        with warnings.catch_warnings():
+        with warnings.catch_warnings(), _undisturbed():
             # Python cautions against forking beside threads; those of the numeric libraries know of it.
             warnings.simplefilter("ignore", DeprecationWarning)
             self.process.start()
@@ -161,15 +162,29 @@ def _alone(plan: Plan, span: tuple[int, int]) -> Piece:
 
 def _work(pipe: Any, plan: Plan, parent: int) -> None:
     """A worker's life: spans of rows in, pieces out.  An interrupt is its parent's business."""
-    import signal
-
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+    _heed({signal.SIGINT}, False)
     threading.Thread(target=_outlive_not, args=(parent,), daemon=True).start()
     while True:
         try:
             pipe.send(solve_span(plan, pipe.recv()))
         except (EOFError, BrokenPipeError):
             return
+
+
+def _heed(signals: set[signal.Signals], held_back: bool) -> None:
+    if hasattr(signal, "pthread_sigmask"):
+        signal.pthread_sigmask(signal.SIG_BLOCK if held_back else signal.SIG_UNBLOCK, signals)
+
+
+@contextmanager
+def _undisturbed() -> Iterator[None]:
+    """Holds an interrupt back while a worker comes to life: it ignores them, but not yet."""
+    _heed({signal.SIGINT}, True)
+    try:
+        yield
+    finally:
+        _heed({signal.SIGINT}, False)
 
 
 def _outlive_not(parent: int) -> None:

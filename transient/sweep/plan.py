@@ -13,6 +13,7 @@ from typing import Any
 
 import numpy as np
 
+from transient.case.keys import TABLE_FILE
 from transient.case.model import Case, CaseError
 from transient.case.read import read_case
 from transient.case.source import Source
@@ -28,6 +29,7 @@ from transient.sweep.stated import Stated, read_stated, state
 
 MOST_CASES = 10_000_000
 BYTES_SUMMED = 60  # of each case that the closing summary holds at once
+TABLE_KEYS = tuple(key.name for key in TABLE_FILE)
 MOST_FORMS = 64  # combinations of choices that are looked at for the columns they bring
 # Rows of a chunk: what a kill may cost, against the cost of a file each.
 ALONE, TOGETHER = (16, 256), (256, 8192)
@@ -127,6 +129,9 @@ def _plan(stated: Stated, base: Case) -> Plan:
     axes += [axis(stated, key, one, facts[key], reads.alone) for key, one in ranges.items()]
     drawn = scatter(stated, tolerances, facts)
     keys = tuple(key for one in axes for key in one.keys) + (() if drawn is None else drawn.keys)
+    for key in keys:
+        if key.name.rpartition(".")[2] in TABLE_KEYS or any(_from_file(one) for one in key.choices):
+            raise stated.refuse(key.name, "a table file cannot vary; list whole histories with their times and values")
     forms = _forms(reads.case, keys)
     walls = tuple(dict.fromkeys(wall.name for case in forms for wall in case.problem().walls if wall.kind != "axis"))
     frame = Frame(base.text(), keys, _columns(forms), walls, stated.histories)
@@ -134,6 +139,13 @@ def _plan(stated: Stated, base: Case) -> Plan:
     chunk = _chunk(base, keys, size, stated.histories)
     title = stated.title or base.title
     return Plan(title, frame, tuple(axes), drawn, _identity(stated, base, rows, chunk), chunk)
+
+
+def _from_file(choice: Any) -> bool:
+    """Whether a history as typed takes its numbers from a file, which other machines need not have."""
+    if isinstance(choice, list | tuple):
+        return any(map(_from_file, choice))
+    return isinstance(choice, dict) and ("file" in choice or any(map(_from_file, choice.values())))
 
 
 def _each_once(stated: Stated, rows: listed.Listed | None, others: list[str]) -> None:
