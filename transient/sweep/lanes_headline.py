@@ -10,21 +10,19 @@ from __future__ import annotations
 import numpy as np
 
 from transient.compiled import compiled, part
-from transient.march.lanes import AWAY, FIELDS, LOWER_SPEED, MEAN, PUSH
+from transient.march.lanes_layout import FIELDS, LOWER_SPEED, MEAN, PUSH
 
 MARGIN = 2.0
 ROUNDING = 1e-12
 ZERO = 1e-6  # as in ``result.run``
-NEVER = np.nan
-# facts of each case: sizes of what it ends in
-LEVEL, CALM_LOWER, CALM_UPPER, CALM_MEAN, CALM_SPEED, FACTS = 0, 1, 2, 3, 4, 5
-# numbers read: [case, NUMBER]
-(SETTLE, SETTLE_ERROR, SETTLE_MEAN, SETTLE_MEAN_ERROR, MEAN_PEAK, MEAN_PEAK_ERROR, MEAN_END, MEAN_END_ERROR,
- PUSH_PEAK, PUSH_END, FASTEST, SPREAD, RELATIVE, TURN_LOWER, TURN_UPPER, SPUN_UP,
- WORK, POWER, WALL) = range(19)  # fmt: skip
-(PEAK, PEAK_ERROR, PEAK_TIME, END, END_ERROR, SETTLE_WALL, SETTLE_WALL_ERROR, LARGEST, CALMED, SPEED_END,
- WALL_FIELDS) = range(11)  # fmt: skip
-NUMBERS = WALL + 2 * WALL_FIELDS
+NOTHING = 1e-11  # as in ``headline.settling``
+# facts of each case: what it ends in
+LEVEL, CALM_SPEED, FACTS = 0, 1, 2
+# numbers read of each quantity: [case, QUANTITY, NUMBER]; DEVIATION is that from the steady end
+LOWER, UPPER, MEAN_FLOW, DEVIATION, PRESSURE, QUANTITIES = 0, 1, 2, 3, 4, 5
+PEAK, PEAK_ERROR, PEAK_TIME, END, END_ERROR, SETTLE, SETTLE_ERROR, LARGEST, CALMED, NUMBERS = range(10)
+# what validity rests on: [case, SEEN]
+SPREAD, RELATIVE, TURN_LOWER, TURN_UPPER, SPUN_UP, WORK, POWER, SPEED_LOWER, SPEED_UPPER, SEEN = range(10)
 STENCIL = 4
 
 
@@ -287,7 +285,7 @@ def _power(lower, upper, low, high, reach, push, mean):
 
 
 @part
-def _work(best, skip_low, skip_high, time, n, calm, reach, out):
+def _work(best, skip, time, n, calm, reach, out):
     """Work done per volume, magnitudes added up, and the largest power that the steady flow of each instant takes."""
     spent = 0.0
     strongest = 0.0
@@ -295,7 +293,7 @@ def _work(best, skip_low, skip_high, time, n, calm, reach, out):
     for i in range(n):
         low, high, push = best[LOWER_SPEED, i], best[LOWER_SPEED + 1, i], best[PUSH, i]
         now = 0.0
-        if not (skip_low[i] or skip_high[i]):
+        if not (skip[0, i] or skip[1, i]):
             now = abs(_power(best[0, i], best[1, i], low, high, reach, push, best[MEAN, i]))
         if i > 0:
             spent += 0.5 * (time[i] - time[i - 1]) * (now + last)
@@ -308,13 +306,28 @@ def _work(best, skip_low, skip_high, time, n, calm, reach, out):
     out[1] = max(strongest, spent / time[n - 1]) if time[n - 1] > 0.0 else strongest
 
 
+@part
+def _size(which, calm, peak, others, largest, unbounded, free):
+    """What settling of a quantity is relative to: its steady value, its own peak where that is zero; nan for never."""
+    if free:
+        return np.nan
+    size = abs(calm)
+    if which < MEAN_FLOW and unbounded:
+        return size if size > ZERO * others else np.nan
+    if not size > ZERO * abs(peak):
+        size = abs(peak)
+    if which == MEAN_FLOW and size <= NOTHING * largest:
+        return 0.0  # no net flow at all: what is left is round-off
+    return size
+
+
 @compiled
 def read(
-    coarse, middle, fine,  # rows of three levels, [C, R, FIELDS] each
+    coarse, between, fine,  # rows of three levels, [C, R, FIELDS] each
     row_piece, row_offset, count, start,  # [C, R] twice, (C,), [C, P]: starts of the pieces
-    infinite, facts, shear_free, held,  # [C, P, 2] infinite stress as a piece begins, [C, FACTS], (2,), see ``_moves``
-    calm, reach, centre,  # [C, 3, 3] steady stresses and mean per unit input, [C, 2] see ``_work``, (C,)
-    out,  # [C, NUMBERS]
+    infinite, facts, free, held,  # [C, P, 2] infinite stress as a piece begins, [C, FACTS], (5,), (2,) see ``_moves``
+    calm, final, reach, middle,  # [C, 3, 3] steady values per unit input, [C, 3], [C, 2] see ``_work``, (C,)
+    out, seen,  # [C, QUANTITIES, NUMBERS], [C, SEEN]
 ):  # fmt: skip
     """Headline numbers of all cases in lane units; of a case without rows (``count`` < 0) nan."""
     cases, most = row_piece.shape
@@ -325,106 +338,69 @@ def read(
     off = np.empty(most)
     work = np.empty(most)
     away = np.empty(most)
-    skip = np.zeros(most, np.bool_)
-    clear = np.zeros(most, np.bool_)
-    three = np.zeros(3)
+    skip = np.zeros((QUANTITIES, most), np.bool_)
+    top = np.zeros(3)
     line = np.zeros(7)
     found = np.zeros(5)
     pair = np.zeros(2)
+    steady = np.zeros(QUANTITIES)
     for c in range(cases):
         n = count[c]
+        out[c] = np.nan
         if n < 2:
-            out[c] = np.nan
             continue
         piece = row_piece[c]
         for i in range(n):
             root[i] = np.sqrt(row_offset[c, i])
             time[i] = start[c, piece[i]] + row_offset[c, i]
             for f in range(FIELDS):
-                a, b, d = coarse[c, i, f], middle[c, i, f], fine[c, i, f]
+                a, b, d = coarse[c, i, f], between[c, i, f], fine[c, i, f]
                 best[f, i] = d + (d - b) / 3.0
                 other[f, i] = b + (b - a) / 3.0
-        level = facts[c, LEVEL]
-        # velocity
+            for side in range(2):
+                skip[side, i] = row_offset[c, i] == 0.0 and infinite[c, piece[i], side]
+        for k in range(3):
+            steady[k] = calm[c, k, 0] * final[c, 0] + calm[c, k, 1] * final[c, 1] + calm[c, k, 2] * final[c, 2]
+        _moves(best, n, held, middle[c], found)
+        for k in range(5):
+            seen[c, k] = found[k]
+        _work(best, skip, time, n, calm[c], reach[c], pair)
+        seen[c, WORK], seen[c, POWER] = pair[0], pair[1]
+        seen[c, SPEED_LOWER], seen[c, SPEED_UPPER] = best[LOWER_SPEED, n - 1], best[LOWER_SPEED + 1, n - 1]
+        others = max(abs(steady[0]), abs(steady[1]))
         largest = 0.0
-        for i in range(n):
-            largest = max(largest, best[AWAY, i])
-        size = facts[c, CALM_SPEED]
-        if not size > ZERO * largest:
-            size = largest
-        _spread(best[AWAY], other[AWAY], n, largest, off)
-        if size > 0.0:
-            _settled(level * size, root, best[AWAY], off, time, start[c], piece, n, work, line, pair)
-            out[c, SETTLE], out[c, SETTLE_ERROR] = pair[0], pair[1]
-        else:
-            out[c, SETTLE], out[c, SETTLE_ERROR] = 0.0, 0.0
-        out[c, FASTEST] = max(largest, facts[c, CALM_SPEED])
-        # mean
-        _peak(root, best[MEAN], other[MEAN], piece, n, clear, line, three, found)
-        out[c, MEAN_PEAK], out[c, MEAN_PEAK_ERROR] = found[0], found[3]
-        _spread(best[MEAN], other[MEAN], n, abs(found[0]), off)
-        out[c, MEAN_END], out[c, MEAN_END_ERROR] = best[MEAN, n - 1], off[n - 1]
-        size = abs(facts[c, CALM_MEAN])
-        if not size > ZERO * abs(found[0]):
-            size = abs(found[0])
-        if size > 1e-11 * largest:
-            for i in range(n):
-                away[i] = best[MEAN, i] - facts[c, CALM_MEAN]
-            _settled(level * size, root, away, off, time, start[c], piece, n, work, line, pair)
-            out[c, SETTLE_MEAN], out[c, SETTLE_MEAN_ERROR] = pair[0], pair[1]
-        else:
-            out[c, SETTLE_MEAN], out[c, SETTLE_MEAN_ERROR] = 0.0, 0.0
-        # pressure
-        _peak(root, best[PUSH], best[PUSH], piece, n, clear, line, three, found)
-        out[c, PUSH_PEAK], out[c, PUSH_END] = found[0], best[PUSH, n - 1]
-        # what validity rests on
-        _moves(best, n, held, centre[c], found)
-        out[c, SPREAD : SPUN_UP + 1] = found[:5]
-        for i in range(n):
-            skip[i] = row_offset[c, i] == 0.0 and infinite[c, piece[i], 0]
-            clear[i] = row_offset[c, i] == 0.0 and infinite[c, piece[i], 1]
-        _work(best, skip, clear, time, n, calm[c], reach[c], pair)
-        out[c, WORK], out[c, POWER] = pair[0], pair[1]
-        clear[:] = False
-        # walls
-        others = max(abs(facts[c, CALM_LOWER]), abs(facts[c, CALM_UPPER]))
-        for side in range(2):
-            to = WALL + side * WALL_FIELDS
+        for k in range(QUANTITIES):
+            which = DEVIATION if k == 0 else k - 1 if k < PRESSURE else k  # the deviation first
+            value, rival, numbers = best[which], other[which], out[c, which]
+            _peak(root, value, rival, piece, n, skip[which], line, top, found)
+            peak, error = found[0], found[3]
+            if which == DEVIATION:
+                largest = abs(peak)
             unbounded = False
             for i in range(n):
-                skip[i] = row_offset[c, i] == 0.0 and infinite[c, piece[i], side]
-                unbounded = unbounded or skip[i]
-            value = best[side]
-            _peak(root, value, other[side], piece, n, skip, line, three, found)
-            peak, error = found[0], found[3]
-            _spread(value, other[side], n, abs(peak), off)
-            out[c, to + LARGEST] = abs(peak)
-            out[c, to + CALMED] = 1.0 if abs(facts[c, CALM_LOWER + side]) > ZERO * abs(peak) else 0.0
-            out[c, to + SPEED_END] = best[LOWER_SPEED + side, n - 1]
-            out[c, to + END], out[c, to + END_ERROR] = value[n - 1], off[n - 1]
-            out[c, to + PEAK], out[c, to + PEAK_ERROR], out[c, to + PEAK_TIME] = np.nan, np.nan, np.nan
+                unbounded = unbounded or skip[which, i]
+            _spread(value, rival, n, abs(peak), off)
+            numbers[LARGEST] = abs(peak)
+            numbers[CALMED] = 1.0 if abs(steady[which]) > ZERO * abs(peak) else 0.0
+            numbers[END], numbers[END_ERROR] = value[n - 1], off[n - 1]
             if not unbounded:
-                sign = -1.0 if peak < 0.0 else 1.0
-                out[c, to + PEAK], out[c, to + PEAK_ERROR] = peak, error
+                numbers[PEAK], numbers[PEAK_ERROR] = peak, error
                 summit = start[c, piece[int(found[1])]] + found[2] ** 2
-                first = _first_at(abs(peak) - error, sign, root, value, time, start[c], piece, n, skip, line)
-                out[c, to + PEAK_TIME] = 0.0 if peak == 0.0 else min(first, summit) if first == first else summit
-            settled = facts[c, CALM_LOWER + side]
-            size = abs(settled)
-            compared = others if unbounded else abs(peak)
-            out[c, to + SETTLE_WALL], out[c, to + SETTLE_WALL_ERROR] = np.nan, np.nan
-            if not size > ZERO * compared:
-                if unbounded:
-                    continue
-                size = abs(peak)
-            if shear_free[side]:
+                sign = -1.0 if peak < 0.0 else 1.0
+                first = np.nan
+                if which < MEAN_FLOW:
+                    first = _first_at(abs(peak) - error, sign, root, value, time, start[c], piece, n, skip[which], line)
+                numbers[PEAK_TIME] = 0.0 if peak == 0.0 else min(first, summit) if first == first else summit
+            if which == PRESSURE:
                 continue
-            if size == 0.0:
-                out[c, to + SETTLE_WALL], out[c, to + SETTLE_WALL_ERROR] = 0.0, 0.0
-                continue
+            calm_value = facts[c, CALM_SPEED] if which == DEVIATION else steady[which]
+            size = _size(which, calm_value, peak, others, largest, unbounded, free[which])
             for i in range(n):
-                away[i] = value[i] - settled
-                if skip[i]:
+                away[i] = value[i] if which == DEVIATION else value[i] - steady[which]
+                if skip[which, i]:
                     away[i] = np.inf
-            _settled(level * size, root, away, off, time, start[c], piece, n, work, line, pair)
-            out[c, to + SETTLE_WALL], out[c, to + SETTLE_WALL_ERROR] = pair[0], pair[1]
+            if size > 0.0:
+                _settled(facts[c, LEVEL] * size, root, away, off, time, start[c], piece, n, work, line, pair)
+                numbers[SETTLE], numbers[SETTLE_ERROR] = pair[0], pair[1]
+            elif size == 0.0:
+                numbers[SETTLE], numbers[SETTLE_ERROR] = 0.0, 0.0

@@ -1,0 +1,176 @@
+"""One step of the lanes, and what is recorded of their state: see ``lanes``."""
+
+from __future__ import annotations
+
+from transient.compiled import part
+from transient.march.lanes_layout import (
+    LANE_A,
+    LANE_CELL,
+    LANE_CEND,
+    LANE_FLUX,
+    LANE_FREE,
+    LANE_HELD,
+    LANE_RADIUS,
+)
+from transient.march.lanes_vector import fma, load, magnitude, splat, store, swapped, where_above
+
+_TINY = 1e-300
+
+
+@part
+def factor(storage, conductance, pivot, lower, lane):
+    """Factors of ``storage + a K`` for the lanes' steps."""
+    last = storage.shape[0] - 1
+    a = load(lane, LANE_A)
+    free = load(lane, LANE_FREE)
+    one = splat(1.0)
+    through = a * load(conductance, 0)
+    p = one / (load(storage, 0) + free * through + a * load(lane, LANE_CEND) + load(lane, LANE_HELD))
+    store(pivot, 0, p)
+    l = through * p
+    store(lower, 1, l)
+    gone = free * l * through
+    for j in range(1, last):
+        above = a * load(conductance, j)
+        p = one / (load(storage, j) + through + above - gone)
+        store(pivot, j, p)
+        l = above * p
+        store(lower, j + 1, l)
+        gone = l * above
+        through = above
+    d = load(storage, last) + through - gone
+    store(pivot, last, one / (d + swapped(d)))
+
+
+@part
+def polynomial(lane, row, x):
+    """Cubic with coefficients in four rows of ``lane``."""
+    return fma(x, fma(x, fma(x, load(lane, row + 3), load(lane, row + 2)), load(lane, row + 1)), load(lane, row))
+
+
+@part
+def slope_of(lane, row, x):
+    """Derivative of that cubic."""
+    return fma(x, fma(x, splat(3.0) * load(lane, row + 3), splat(2.0) * load(lane, row + 2)), load(lane, row + 1))
+
+
+@part
+def waved(lane, wave, turn):
+    """Real part of the wave after a turn."""
+    return load(lane, wave) * load(lane, turn) - load(lane, wave + 1) * load(lane, turn + 1)
+
+
+@part
+def turned(lane, wave, turn):
+    """Move the wave on by a turn."""
+    real = waved(lane, wave, turn)
+    other = load(lane, wave) * load(lane, turn + 1) + load(lane, wave + 1) * load(lane, turn)
+    store(lane, wave, real)
+    store(lane, wave + 1, other)
+
+
+@part
+def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_after):
+    """One step of all lanes: ``w`` and ``z`` move on; inputs of the two stages (wall speed, push)."""
+    last = storage.shape[0] - 1
+    a = load(lane, LANE_A)
+    bound = load(lane, LANE_HELD) + a * load(lane, LANE_CEND)
+    free = load(lane, LANE_FREE)
+    # stage one
+    extra = a * push
+    here = fma(load(storage, 0), load(z, 0) + extra, bound * low)
+    store(y, 0, here)
+    for j in range(1, last):
+        here = fma(load(lower, j), here, load(storage, j) * (load(z, j) + extra))
+        store(y, j, here)
+    here = fma(load(lower, last), here, load(storage, last) * (load(z, last) + extra))
+    x = load(pivot, last) * (here + swapped(here))
+    old = load(w, last)
+    store(z, last, fma(share, x - old, old))
+    for j in range(last - 1, 0, -1):
+        x = fma(load(lower, j + 1), x, load(pivot, j) * load(y, j))
+        old = load(w, j)
+        store(z, j, fma(share, x - old, old))
+    x = fma(free * load(lower, 1), x, load(pivot, 0) * load(y, 0))
+    old = load(w, 0)
+    store(z, 0, fma(share, x - old, old))
+    # stage two
+    extra = a * push_after
+    here = fma(load(storage, 0), load(z, 0) + extra, bound * high)
+    store(y, 0, here)
+    for j in range(1, last):
+        here = fma(load(lower, j), here, load(storage, j) * (load(z, j) + extra))
+        store(y, j, here)
+    base = load(z, last)
+    here = fma(load(lower, last), here, load(storage, last) * (base + extra))
+    x = load(pivot, last) * (here + swapped(here))
+    store(w, last, x)
+    store(z, last, x + x - base)
+    for j in range(last - 1, 0, -1):
+        x = fma(load(lower, j + 1), x, load(pivot, j) * load(y, j))
+        base = load(z, j)
+        store(w, j, x)
+        store(z, j, x + x - base)
+    x = fma(free * load(lower, 1), x, load(pivot, 0) * load(y, 0))
+    base = load(z, 0)
+    store(w, 0, x)
+    store(z, 0, x + x - base)
+
+
+@part
+def _largest(w, steady, lever, before, after):
+    """Largest deviation from the steady end over each case's gap, by the parabola around the largest node."""
+    last = w.shape[0] - 1
+    zero = splat(0.0)
+    one = splat(1.0)
+    half = splat(0.5)
+    best = magnitude(load(w, 0) - load(steady, 0)) * load(lever, 0)
+    left = zero
+    right = zero
+    low = zero  # distance to the node before; 0: the largest is at the wall
+    high = one
+    was = one
+    previous = best
+    for j in range(1, last):
+        d = magnitude(load(w, j) - load(steady, j)) * load(lever, j)
+        right = where_above(was, half, d, right)
+        was = where_above(d, best, one, zero)
+        left = where_above(d, best, previous, left)
+        low = where_above(d, best, load(before, j), low)
+        high = where_above(d, best, load(after, j), high)
+        best = where_above(d, best, d, best)
+        previous = d
+    d = magnitude(load(w, last) - load(steady, last)) * load(lever, last)
+    right = where_above(was, half, d, right)
+    left = where_above(d, best, previous, left)
+    right = where_above(d, best, swapped(previous), right)
+    low = where_above(d, best, load(before, last), low)
+    high = where_above(d, best, load(after, last), high)
+    best = where_above(d, best, d, best)
+    inside = where_above(low, zero, low, one)
+    rise = (best - left) / inside
+    fall = (best - right) / high
+    bend = where_above(zero, fall, zero, rise + fall)  # 0 where the neighbour in the other half is larger
+    width = inside + high
+    slope = (rise * high - fall * inside) / width
+    more = slope * slope * width * splat(0.25) / where_above(bend, splat(_TINY), bend, one)
+    top = best + where_above(bend, splat(_TINY), where_above(low, zero, more, zero), zero)
+    other = swapped(top)
+    return where_above(top, other, top, other)
+
+
+@part
+def record(w, weight, steady, lever, before, after, lane, conductance, u, slope, g, out):
+    """Stress, mean, largest deviation, wall speed and push of all lanes into rows 0 to 4 of ``out``."""
+    last = w.shape[0] - 1
+    half = splat(0.5)
+    beside = where_above(load(lane, LANE_HELD), half, load(w, 1), load(w, 0))
+    flux = fma(load(lane, LANE_FLUX), beside - u, load(lane, LANE_CELL) * (g - slope))
+    store(out, 0, flux * load(lane, LANE_RADIUS))
+    total = load(weight, 0) * load(w, 0)
+    for j in range(1, last + 1):
+        total = fma(load(weight, j), load(w, j), total)
+    store(out, 1, total + swapped(total))
+    store(out, 2, _largest(w, steady, lever, before, after))
+    store(out, 3, u)
+    store(out, 4, g)

@@ -1,0 +1,132 @@
+"""The rows of a sweep as numbers: sizes, properties and drives in SI, and in the units of the lanes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from functools import lru_cache
+
+import numpy as np
+
+from transient.gap.problem import Problem
+from transient.march.lanes_grid import grid_table, unit_problem
+from transient.march.regime import slowest_decay
+from transient.sweep.keys import Values
+from transient.sweep.lanes_drives import DriveRows
+from transient.sweep.lanes_form import Form, Geometry
+
+LEVELS = 3
+
+
+@dataclass(frozen=True, eq=False)
+class Batch:
+    """Rows in SI and in lane units; (n,) each unless said otherwise."""
+
+    geometry: Geometry
+    density: np.ndarray
+    viscosity: np.ndarray
+    time: np.ndarray  # diffusion time, s
+    until: np.ndarray  # s
+    within: np.ndarray
+    count: np.ndarray  # gaps in parallel
+    drives: tuple[DriveRows, DriveRows, DriveRows]
+    before: np.ndarray  # [n, 3], lane units
+    final: np.ndarray  # [n, 3], lane units
+    slowest: np.ndarray  # in diffusion times
+    units: list[Problem]  # unit gaps
+    unit_of: np.ndarray  # the rows' places in ``units``
+
+
+def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
+    """The rows' numbers, and which of them can be marched."""
+    problem = form.problem
+    bad = form.refused(values, rows)
+    geometry = form.geometry(values, rows)
+    density, viscosity = form.fluid(values, rows)
+    bad |= geometry.bad | ~(density > 0.0) | ~(viscosity > 0.0)
+    drives = tuple(form.drive(which, values, geometry, rows) for which in range(3))
+    for drive in drives:
+        bad |= drive.bad
+    gap = np.where(bad, 1.0, geometry.gap)
+    inner = np.where(bad, problem.inner / problem.gap, geometry.inner / gap)
+    time = np.where(bad, 1.0, gap**2 * density / np.where(bad, 1.0, viscosity))
+    push = gap**2 / np.where(bad, 1.0, viscosity)
+    units, unit_of = _units(problem, inner, gap)
+    slowest = np.array([_slowest(*key_of(unit)) for unit in units])[unit_of]
+    within = form.number("run.settle_within", values, rows)
+    within = np.full(rows, problem.settle_within) if within is None else within
+    count = form.number("gap.count", values, rows)
+    until = form.number("run.duration", values, rows)
+    if until is None:
+        until = _automatic(problem, drives, slowest * time, within)
+    final = np.stack([np.broadcast_to(drive.end, (rows,)) for drive in drives], axis=1)
+    before = np.stack([np.broadcast_to(drive.before, (rows,)) for drive in drives], axis=1)
+    if problem.start == "rest":
+        before = np.zeros((rows, 3))
+    final = final.copy()
+    final[:, 2] *= push
+    bad |= ~np.isfinite(until) | ~(until > 0.0) | ~np.isfinite(final).all(axis=1) | ~np.isfinite(slowest)
+    bad |= ~np.isfinite(time) | ~(time > 0.0)
+    batch = Batch(
+        geometry, density, viscosity, time, np.where(bad, 1.0, until), within,
+        np.full(rows, float(problem.count)) if count is None else count, drives, before, final, slowest, units,
+        unit_of,
+    )  # fmt: skip
+    return batch, ~bad
+
+
+def _automatic(problem: Problem, drives: tuple[DriveRows, ...], fluid: np.ndarray, within: np.ndarray) -> np.ndarray:
+    """Lengths (n,) s of runs that last until settled and a margin, as in ``march.regime``."""
+    last = np.max([np.broadcast_to(drive.last, fluid.shape) for drive in drives], axis=0)
+    lag = np.max([np.broadcast_to(drive.lag, fluid.shape) for drive in drives], axis=0)
+    least = 0.1 * np.minimum(within, min(problem.accuracy, 0.01))
+    return last + np.maximum(np.log(4.0 / least) * (fluid + lag), 0.1 * last)
+
+
+def _units(problem: Problem, inner: np.ndarray, gap: np.ndarray) -> tuple[list[Problem], np.ndarray]:
+    """The different unit gaps among the rows, and each row's place among them."""
+    slips = [wall.slip_length for wall in problem.walls]
+    if problem.metric == 0 or problem.walls[0].kind == "axis":
+        inner = np.zeros_like(inner)
+    key = np.stack([inner, *(slip / gap for slip in slips)], axis=1)
+    if (key == key[0]).all():
+        place, first = np.zeros(len(gap), int), np.zeros(1, int)
+    else:
+        _, first, place = np.unique(key, axis=0, return_index=True, return_inverse=True)
+        place = place.ravel()
+    return [_unit(problem, *key[i]) for i in first], place
+
+
+def _unit(problem: Problem, inner: float, lower_slip: float, upper_slip: float) -> Problem:
+    unit = unit_problem(problem)
+    walls = tuple(
+        replace(wall, slip_length=float(slip)) for wall, slip in zip(unit.walls, (lower_slip, upper_slip), strict=True)
+    )
+    return replace(unit, inner=float(inner), outer=float(inner) + 1.0, walls=(walls[0], walls[1]))
+
+
+def key_of(unit: Problem) -> tuple:
+    """What a unit gap's grids and slowest decay depend on."""
+    return _Held(unit), unit.metric, unit.inner, *((wall.kind, wall.slip_length) for wall in unit.walls)
+
+
+class _Held:
+    """A problem carried along a key without being part of it."""
+
+    def __init__(self, problem: Problem):
+        self.problem = problem
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, _Held)
+
+    def __hash__(self) -> int:
+        return 0
+
+
+@lru_cache(maxsize=4096)
+def _slowest(unit: _Held, *key: object) -> float:
+    return slowest_decay(unit.problem)
+
+
+@lru_cache(maxsize=4096)
+def tables(cells: int, layers: tuple[float, float], unit: _Held, *key: object) -> list[tuple[np.ndarray, np.ndarray]]:
+    return [grid_table(unit.problem, cells * 2**level, layers) for level in range(LEVELS)]
