@@ -1,7 +1,10 @@
 """Plain cases in SI, and the case file that says the same in the contract's words.
 
 A plain case: shape, motion, height / radius / inner_radius, outer_radius, density, viscosity,
-walls = {name: {speed | displacement | shear_free, slip_length}}, pressure, start, duration, settle_within, accuracy.
+walls = {name: {speed | displacement | shear_free | body, slip_length}}, pressure, start, duration, settle_within,
+accuracy.  A body: mass, area, and force, damping, stiffness, initial_speed, initial_displacement, displaces where it
+has them; in a rotating gap the same names stand for inertia, torque and so on.  ``pressure`` is the history of the drop
+per length, or {mean_velocity: history} or {sealed: True}.
 """
 
 from __future__ import annotations
@@ -9,6 +12,12 @@ from __future__ import annotations
 from typing import Any
 
 SIZES = ("height", "radius", "inner_radius", "outer_radius", "length", "width")
+BODY = (
+    {"mass": "kg", "area": "m^2", "force": "N", "damping": "N*s/m", "stiffness": "N/m", "initial_speed": "m/s",
+     "initial_displacement": "m", "displaces": "m^2"},
+    {"mass": "kg*m^2", "area": "m^2", "force": "N*m", "damping": "N*m*s/rad", "stiffness": "N*m/rad",
+     "initial_speed": "rad/s", "initial_displacement": "rad"},
+)  # fmt: skip
 TIMES = ("at", "over", "rise", "hold", "fall", "time_constant", "every", "period")
 
 
@@ -31,8 +40,11 @@ def tree_of(case: dict[str, Any]) -> dict[str, Any]:
     walls = {name: _wall(wall, speed, "rad" if rotating else "m") for name, wall in case.get("walls", {}).items()}
     if walls:
         tree["wall"] = walls
-    if case.get("pressure") is not None:
-        tree["pressure"] = {"drop_per_length": said(case["pressure"], "Pa/m")}
+    pressure = case.get("pressure")
+    if isinstance(pressure, dict) and "kind" not in pressure:
+        tree["pressure"] = {k: v if k == "sealed" else said(v, "m/s") for k, v in pressure.items()}
+    elif pressure is not None:
+        tree["pressure"] = {"drop_per_length": said(pressure, "Pa/m")}
     if "start" in case:
         tree["start"] = {"state": case["start"]}
     return tree
@@ -48,7 +60,15 @@ def _wall(wall: dict[str, Any], speed: str, angle: str) -> dict[str, Any]:
         out["slip_length"] = _said(wall["slip_length"], "m")
     if wall.get("shear_free"):
         out["shear_free"] = True
+    if "body" in wall:
+        out["body"] = _body(wall["body"], angle == "rad")
     return out
+
+
+def _body(body: dict[str, Any], turning: bool) -> dict[str, Any]:
+    units = BODY[1 if turning else 0]
+    names = {"mass": "inertia", "force": "torque"} if turning else {}
+    return {names.get(k, k): said(v, units[k]) for k, v in body.items()}
 
 
 def _said(value: float, unit: str) -> str:

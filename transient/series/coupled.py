@@ -27,6 +27,7 @@ from transient.series.transfer import NODE
 TRUST = 3e-13
 ROUNDING = 2e-16
 FAINT = 0.3
+FLOOR = 1e-9  # of the largest quantity: far from what moves, answers are fainter than any contour resolves
 HAIR = 3e-5
 # Answers at the very instant of a jump: between these two the transfer functions show how they grow.
 _FAR, _FARTHEST = 1e26, 1e30
@@ -245,7 +246,7 @@ class ClosedSolution:
         late = self._add_swings(answer, p, x, value, size)
         a = self.shape.a
         trust = TRUST * (1 + (HAIR / a if a > 0 else 0.0)) + ROUNDING * a
-        return value, trust * (size + 1e-10 * size.max(axis=1, keepdims=True)) + late
+        return value, trust * (size + FLOOR * size.max(axis=1, keepdims=True)) + late
 
     def _add_kick(
         self, answer: ClosedAnswer, p: np.ndarray, x: np.ndarray, value: np.ndarray, size: np.ndarray
