@@ -23,6 +23,7 @@ from transient.trust.passage import sharpened
 from transient.trust.refine import estimate
 
 MOST_ATTEMPTS = 6
+MOST_IN_VAIN = 2  # attempts on end that are no better than a coarser one: round-off has the last word there
 # A further attempt aims below the request, since the law of errors holds on the average only.
 AIM = 0.5
 FINEST = 4000.0  # refinement over the first guess beyond which no attempt is made
@@ -48,18 +49,20 @@ def solve(problem: Problem, judge: str = "series") -> Solved:
     # without a series three levels must judge themselves
     judged = judge == "series" and _has_series(problem, ahead)
     levels = 2 if judged else 3
-    refine, best = 1.0 if judged else 0.5, None
+    refine, best, in_vain = 1.0 if judged else 0.5, None, 0
     for _ in range(MOST_ATTEMPTS):
         attempt = _attempt(problem, ahead, refine, levels, judge)
         missing = unmet(attempt.wanted)
         if best is None or _worst(attempt) < _worst(best):
-            best = attempt
+            best, in_vain = attempt, 0
+        else:
+            in_vain += 1
         if not missing:
             return attempt
         # errors fall with the square of refine (the extrapolated ones of a smooth flow)
         factor = float(np.clip(np.sqrt(missing[0].ratio / AIM), 1.5, 8.0))
         work = attempt.ladder.cells * attempt.ladder.steps * factor**1.5
-        if refine * factor > FINEST or work > (MOST_WORK if judged else MOST_WORK_UNJUDGED):
+        if in_vain == MOST_IN_VAIN or refine * factor > FINEST or work > (MOST_WORK if judged else MOST_WORK_UNJUDGED):
             break
         refine *= factor
     assert best is not None

@@ -12,6 +12,7 @@ from transient.compiled import compiled
 from transient.result.curve import Curve
 
 STENCIL = 5
+FEW = 256  # coordinates at which every profile is looked at
 NEIGHBOURS = 6
 ROOM = 0.25  # of the range of its neighbours: so far a value between nodes may leave that range
 PARTS = 12  # into which a step is cut in which the place of the largest velocity moves
@@ -144,6 +145,26 @@ class History:
         step = np.where(same, np.maximum(np.diff(offset), 0.0), 0.0)  # across a break nothing is known between
         begins = np.where(same, offset[:-1], 0.0)
         return Largest(Curve(time, value, rate, step, begins), piece, offset, owner)
+
+    @cached_property
+    def around_largest(self) -> np.ndarray:
+        """Coordinates (m,) that tell the largest speed at all kept instants: nodes and midpoints near where it lies at
+        any of them, and enough others that none elsewhere is missed."""
+        count = 2 * len(self.position) - 1
+        dense = np.interp(np.arange(count) / 2.0, np.arange(len(self.position)), self.position)
+        if count <= FEW:
+            return dense
+        lever = 1.0 if self.lever is None else self.lever
+        at = 2 * np.unique(np.abs(self.profile * lever).argmax(axis=1))
+        pick = np.zeros(count, bool)
+        for beside in range(-STENCIL, STENCIL + 1):
+            pick[np.clip(at + beside, 0, count - 1)] = True
+        found = np.flatnonzero(pick)
+        pick[found] = False
+        pick[found[:: len(found) // FEW + 1]] = True  # where it wanders through the whole gap
+        pick[:: count // FEW + 1] = True
+        pick[-1] = True
+        return dense[pick]
 
     def largest_curve(self) -> Curve:
         """The curve of ``largest``."""

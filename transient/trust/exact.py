@@ -177,8 +177,7 @@ def _profile_error(away: History, exact: Solution, end: Callable[[np.ndarray], n
     ``away`` holds the deviation whose largest value is judged; the series gives it plus ``end`` (a function of the
     coordinate).  It is looked at between the nodes too, where the march only interpolates.
     """
-    nodes = np.arange(2 * len(away.position) - 1) / 2.0
-    dense = np.interp(nodes, np.arange(len(away.position)), away.position)
+    dense = away.around_largest
     shift = end(dense)
     lever = 1.0 if away.lever is None else dense
     told = away.largest

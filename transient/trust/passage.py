@@ -101,8 +101,7 @@ class _Search:
 
 def _passages(exact: Exact, away: History, searches: list[_Search]) -> list[_Search]:
     """The searches, done: those of the velocity in common, those of mean and stresses in common."""
-    nodes = np.arange(2 * len(away.position) - 1) / 2.0
-    dense = np.interp(nodes, np.arange(len(away.position)), away.position)
+    dense = away.around_largest
     lever = 1.0 if away.lever is None else dense
     for group in ([s for s in searches if s.column == 0], [s for s in searches if s.column > 0]):
         while live := [s for s in group if s.open]:

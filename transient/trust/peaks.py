@@ -60,8 +60,7 @@ def speed_error(history: History, exact: Solution, rows: np.ndarray) -> float:
     search = _search(told.curve, places, 0, rows)
     if search is None:
         return float(np.max(rows, initial=0.0))
-    nodes = np.arange(2 * len(history.position) - 1) / 2.0
-    dense = np.interp(nodes, np.arange(len(history.position)), history.position)
+    dense = history.around_largest
     lever = 1.0 if history.lever is None else dense
 
     def look(piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
