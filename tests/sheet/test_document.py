@@ -204,7 +204,7 @@ def test_the_case_and_the_commands_run_again(solved, tmp_path: Path):
     assert " ".join(result.case_text.split()) in page
     (tmp_path / "rod_flush.toml").write_text(result.case_text, encoding="utf-8")
     assert read_case(tmp_path / "rod_flush.toml").text() == result.case_text
-    assert 'transient run "my case.toml"' in Page(worded(facts(result, "my case.h5"))).text
+    assert "transient run 'my case.toml'" in Page(worded(facts(result, "my case.h5"))).text
 
 
 def test_titles_notes_and_cases_are_escaped(solved):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
@@ -31,7 +31,7 @@ def figure(
     ] = None,
     quantity: Annotated[
         str | None,
-        typer.Option("--quantity", metavar="HISTORY", help='With --against, such as "wall_stress upper".'),
+        typer.Option("--quantity", metavar="NAME", help='With --against, such as "wall_stress upper"; of a sweep.'),
     ] = None,
     column: Annotated[
         str | None, typer.Option("--column", metavar="NAME", help="With --against: the column of the CSV file.")
@@ -43,6 +43,10 @@ def figure(
         list[str] | None,
         typer.Option("--laid", metavar="TIME", help="With lines: when a line is laid across the gap; repeatable."),
     ] = None,
+    over: Annotated[
+        list[str] | None,
+        typer.Option("--over", metavar="KEY", help="Of a sweep: the varied key (map: two keys) to draw over."),
+    ] = None,
     seen: Annotated[
         str | None, typer.Option("--seen", metavar="TIME", help="With lines: when the lines are looked at.")
     ] = None,
@@ -50,15 +54,16 @@ def figure(
 ) -> int:
     """Draw a result as PNG, SVG or PDF.
 
-    Without a name: an overview of wall stress, drive, flow and profiles.  Written beside the result unless --out says
-    otherwise.
+    Without a name: an overview of wall stress, drive, flow and profiles; of a sweep its map.  Written beside the
+    result unless --out says otherwise.
     """
     from transient.result.store import read
-    from transient.sheet.figures import DEFAULT, FIGURES
+    from transient.sheet.figures import FIGURES, SWEEP_FIGURES, default, draw
 
-    if name is not None and name not in FIGURES:
-        raise Stop(f'there is no figure "{name}"; there are {listed(list(FIGURES))}')
-    _refuse_mixtures(name, animate, against, {"--quantity": quantity, "--column": column, "--shift": shift})
+    names = [*FIGURES, *SWEEP_FIGURES]
+    if name is not None and name not in names:
+        raise Stop(f'there is no figure "{name}"; there are {listed(names)}')
+    _refuse_mixtures(name, animate, against, {"--column": column, "--shift": shift})
     if name != "lines" and (laid or seen):
         raise Stop('--laid and --seen belong to the figure lines: transient figure RESULT.h5 lines --laid "0 s"')
     with refusals():
@@ -69,9 +74,11 @@ def figure(
             delay = 0.0 if shift is None else _time("--shift", shift)
             _save(_beside(read(result), result, against, quantity, column, delay), target)
             return GOOD
-        chosen = name or DEFAULT
+        finished = read(result)
+        chosen = name or default(finished)
+        options = _options(finished, chosen, quantity, over, laid, seen)
         target = _target(out, result.with_name(f"{result.stem}_{chosen}.png"))
-        _save(_drawn(read(result), chosen, laid, seen), target)
+        _save(draw(finished, chosen, **options), target)
     return GOOD
 
 
@@ -104,16 +111,25 @@ def _save(drawn: Figure, target: Path) -> None:
     note(f"wrote {target}")
 
 
-def _drawn(result: Result, name: str, laid: list[str] | None, seen: str | None) -> Figure:
-    from transient.sheet.figures import draw
-    from transient.sheet.lines import lines
-    from transient.sheet.style import drawing
-
-    if not laid and seen is None:
-        return draw(result, name)
-    with drawing():
-        at = None if seen is None else _time("--seen", seen)
-        return lines(result, [_time("--laid", text) for text in laid or []], at)
+def _options(
+    result: Result, name: str, quantity: str | None, over: list[str] | None, laid: list[str] | None, seen: str | None
+) -> dict[str, Any]:
+    """What the figure is told beside the result.  Raises Stop where an option is of no use."""
+    given: dict[str, Any] = {}
+    if name == "lines" and laid:
+        given["laid"] = [_time("--laid", text) for text in laid]
+    if name == "lines" and seen is not None:
+        given["seen"] = _time("--seen", seen)
+    for option, value in (("--quantity", quantity), ("--over", over)):
+        if not value:
+            continue
+        if "case" not in result.variables:
+            more = " or with --against" if option == "--quantity" else ""
+            raise Stop(f"{option} is for the figures of a sweep{more}; this file holds a single run")
+        if option == "--over" and name == "ranking":
+            raise Stop("--over is for map and spread; ranking shows every key")
+        given[option.removeprefix("--")] = value
+    return given
 
 
 def _beside(

@@ -10,7 +10,10 @@ import numpy as np
 from transient.result.view import nearest, view
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     import xarray
+    from matplotlib.axes import Axes
 
 
 class ResultError(ValueError):
@@ -78,6 +81,24 @@ class Result:
         scales = {name: part for name, part in parts.items() if part[0] == (name,)}
         rest = {name: part for name, part in parts.items() if name not in scales}
         return xarray.Dataset(rest, scales, {"title": self.title, **self.attributes, "case": self.case_text})
+
+    def plot(self, quantity: str | None = None, over: str | None = None, axes: Axes | None = None) -> Axes:
+        """``quantity`` on matplotlib ``axes`` (default: new ones), which are returned: see ``transient.result.plot``.
+
+        Raises ResultError for what cannot be plotted.
+        """
+        from transient.result.plot import plot
+
+        return plot(self, quantity, over, axes)
+
+    def time_lines(self, laid: Sequence[float], seen: float) -> np.ndarray:
+        """Displacement (k, N) m at ``seen`` (s) of particles laid across the gap at ``laid`` (k,) s, over ``position``.
+
+        Raises ResultError where the file holds no travel, or for times outside the run.
+        """
+        from transient.result.lines import time_lines
+
+        return time_lines(self, laid, seen)
 
     def __repr__(self) -> str:
         from transient.result.display import plain

@@ -10,7 +10,7 @@ import os
 import warnings
 from collections.abc import Callable
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from transient.result.result import Result, ResultError
 from transient.result.view import nearest
@@ -25,6 +25,10 @@ from transient.sheet.reach import reach
 from transient.sheet.sketch import sketch
 from transient.sheet.stress import stress
 from transient.sheet.style import drawing
+from transient.sheet.sweeps.columns import stepped
+from transient.sheet.sweeps.map import map as map_
+from transient.sheet.sweeps.ranking import ranking
+from transient.sheet.sweeps.spread import spread
 from transient.sheet.trust import trust
 
 if TYPE_CHECKING:
@@ -42,23 +46,36 @@ FIGURES: dict[str, Callable[[Result], Figure]] = {
     "trust": trust,
     "sketch": sketch,
 }
+SWEEP_FIGURES: dict[str, Callable[..., Figure]] = {"map": map_, "spread": spread, "ranking": ranking}
 DEFAULT = "overview"
 # File endings, with what keeps a picture of the same result the same file.
 FORMATS = {"png": {}, "svg": {"Date": None}, "pdf": {"CreationDate": None}}
 DOTS_PER_INCH = 200
 
 
-def draw(result: Result, name: str = DEFAULT) -> Figure:
-    """The figure ``name`` of a result.
+def draw(result: Result, name: str | None = None, **options: Any) -> Figure:
+    """The figure ``name`` of a result, or of a sweep (default: the overview, the map or the spread).
 
-    Raises ResultError for an unknown name, or where the result lacks what the figure shows.
+    ``options`` of the figure's own, such as ``quantity`` of a sweep's.  Raises ResultError for an unknown name, or
+    where the result lacks what the figure shows.
     """
-    if name not in FIGURES:
-        raise ResultError(f"there is no figure {name!r}{nearest(name, FIGURES)}")
-    if "case" in result.variables:
-        raise ResultError(f"figure {name}: shows a single run, and this file holds a sweep")
+    many = "case" in result.variables
+    known, others = (SWEEP_FIGURES, FIGURES) if many else (FIGURES, SWEEP_FIGURES)
+    name = default(result) if name is None else name
+    if name not in known and name in others:
+        holds = "a sweep" if many else "a single run"
+        raise ResultError(f"figure {name}: this file holds {holds}, of which there are {', '.join(known)}")
+    if name not in known:
+        raise ResultError(f"there is no figure {name!r}{nearest(name, known)}")
     with drawing():
-        return FIGURES[name](result)
+        return known[name](result, **options)
+
+
+def default(result: Result) -> str:
+    """The figure that shows most of a result."""
+    if "case" not in result.variables:
+        return DEFAULT
+    return "map" if len(stepped(result)) > 1 else "spread"
 
 
 def save(figure: Figure, path: str | os.PathLike[str]) -> None:

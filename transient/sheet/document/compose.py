@@ -12,6 +12,7 @@ from transient.sheet.document.inputs import following, inputs
 from transient.sheet.document.model import model
 from transient.sheet.document.pictures import pictures, sketch
 from transient.sheet.document.record import record, signing
+from transient.sheet.document.sweep import compose_sweep
 
 SHAPES = {
     "plates": "between two plates", "pipe": "in a pipe", "annulus": "in an annulus", "disc": "between discs",
@@ -20,7 +21,9 @@ SHAPES = {
 
 
 def compose(facts: Facts) -> Sheet:
-    """The sheet's sections in the order in which they are read."""
+    """The sections of a run's sheet, or of a sweep's, in the order in which they are read."""
+    if "case" in facts.result.variables:
+        return compose_sweep(facts)
     sections = (
         Section("Purpose", purpose(facts)),
         Section("Answer", answer(facts)),

@@ -15,18 +15,22 @@ def record(facts: Facts) -> tuple[Block, ...]:
     """Program and versions, command, case file."""
     stem = facts.stem
     factor = f" --factor {facts.factor:g}" if facts.factor else ""
-    rows = (
+    return (
+        Table(("record", ""), record_rows(facts), wide=1),
+        Words(f"To run it again, save the case below as {stem}.toml and give:"),
+        Listing(f"transient run {quoted(f'{stem}.toml')}\ntransient sheet {quoted(f'outputs/{stem}.h5')}{factor}"),
+        Words("The case in full (tables from files are written out):"),
+        Listing(facts.result.case_text.strip("\n")),
+    )
+
+
+def record_rows(facts: Facts) -> tuple[tuple[str, str], ...]:
+    """What solved the result and wrote the sheet."""
+    return (
         ("solved by", str(facts.result.attributes.get("program") or "transient")),
         ("solved on", str(facts.result.attributes.get("created") or "not stated")),
         ("result file", facts.name),
         ("sheet by", f"transient {_version('transient')}, Python {platform.python_version()}, " + _packages()),
-    )
-    return (
-        Table(("record", ""), rows, wide=1),
-        Words(f"To run it again, save the case below as {stem}.toml and give:"),
-        Listing(f"transient run {_quoted(f'{stem}.toml')}\ntransient sheet {_quoted(f'outputs/{stem}.h5')}{factor}"),
-        Words("The case in full (tables from files are written out):"),
-        Listing(facts.result.case_text.strip("\n")),
     )
 
 
@@ -46,5 +50,6 @@ def _version(name: str) -> str:
         return "(not installed)"
 
 
-def _quoted(text: str) -> str:
-    return f'"{text}"' if any(sign in text for sign in " '()&;$") else text
+def quoted(text: str) -> str:
+    """A word as a shell takes it."""
+    return f"'{text}'" if any(sign in text for sign in ' "()&;$') else text
