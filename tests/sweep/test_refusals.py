@@ -135,7 +135,7 @@ def test_more_than_ten_million_cases_are_asked_back(sweep_file, call, tmp_path):
     file = sweep_file(f'[vary]\n"gap.height" = {axis}\n"gap.length" = {axis}\n')
     status, out, err = call("sweep", file, "--out", tmp_path / "out.h5")
     assert (status, out) == (2, "")
-    assert err == "Two plates: makes 10,004,569 cases, more than 10,000,000; if that is meant, add --confirm\n"
+    assert err == f"{file}: makes 10,004,569 cases, more than 10,000,000; if that is meant, add --confirm\n"
     assert not (tmp_path / "out.h5.parts").exists()
 
 

@@ -139,6 +139,17 @@ def test_percentiles_over_the_scatter_at_the_worst_combination():
     assert said["percentiles"]["95"] == np.percentile(y[200:400], 95)
 
 
+def test_what_most_samples_stay_below_is_numpys_percentile():
+    from transient.sweep.says import _reach
+
+    grid = np.random.default_rng(4).normal(size=(50, 13)) ** 2
+    np.testing.assert_allclose(_reach(grid, 0.95), np.percentile(grid, 95, axis=1), rtol=1e-13)
+    grid[3, 4:], grid[7] = np.nan, np.nan
+    found = _reach(grid, 0.95)
+    assert found[3] == pytest.approx(np.percentile(grid[3, :4], 95))
+    assert found[7] == -1.0
+
+
 def test_counts_and_reasons():
     plan, x = scattered(8, "1 m", "2 m")
     status, verdict = np.array([0, 0, 1, 2, 0, 0, 0, 1], np.int8), np.array([1, 2, 0, 0, 3, 1, 1, 0], np.int8)

@@ -55,7 +55,7 @@ def sweep(
 
     with refusals():
         plan = read_plan(file)
-        refuse_too_many(plan, confirm)
+        refuse_too_many(plan, file, confirm, "--confirm")
         place = chosen(plan, workers, cluster)
         folder = opened(plan, target, resume, overwrite)
     if folder is None:

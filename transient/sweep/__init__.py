@@ -1,6 +1,17 @@
 """Many cases: which (``plan``), where they are solved (``places``), what comes of it (``table``); ``size``.
 
-The room can be called: ``transient.sweep(case, vary={...})``, since its name in Python is that of its door.
+``transient.sweep(case, vary=None, *, scatter=None, rows=None, histories=False, workers=None, cluster=None, out=None,
+resume=False, overwrite=False, confirm=False)`` solves every combination of ``vary`` (and ``rows``), and samples of what
+scatters, and returns a ``Table`` with a row per case::
+
+    table = transient.sweep(case, vary={"gap.height": ["0.6 mm", "0.8 mm"]}, workers=2)
+    table["gap.height"], table.settling_time
+
+``vary`` maps dotted keys to lists or ranges, ``scatter`` is like a sweep file's [scatter] with its ``samples`` and
+``seed``, ``rows`` lists cases one by one; values are typed as in a case file, with their units.  ``workers`` processes
+(default: one per core), or a dask.distributed scheduler at ``cluster``.  With ``out`` the result goes to that file, its
+finished part outlives an interruption, and ``resume`` goes on with it.  More than ten million cases want ``confirm``.
+Raises ``CaseError`` where the sweep itself is refused; a case that cannot be solved is a row that says why.
 """
 
 from __future__ import annotations
@@ -17,7 +28,7 @@ if TYPE_CHECKING:
 
 
 class _Room(ModuleType):
-    """This module, callable."""
+    """This module, callable: the room has the name that its use in Python has."""
 
     def __call__(
         self,
@@ -32,22 +43,16 @@ class _Room(ModuleType):
         out: str | os.PathLike[str] | None = None,
         resume: bool = False,
         overwrite: bool = False,
+        confirm: bool = False,
     ) -> Table:
-        """Every combination of ``vary`` (and ``rows``), and samples of what scatters, as a table with a row per case.
-
-        ``vary`` maps dotted keys to lists or ranges, ``scatter`` is like a sweep file's [scatter] with its ``samples``
-        and ``seed``, ``rows`` lists cases one by one; values are typed as in a case file, with their units.
-        ``workers`` processes (default: one per core), or a dask.distributed scheduler at ``cluster``.  With ``out``
-        the result goes to that file, its finished part outlives an interruption, and ``resume`` goes on with it.
-        Raises ``CaseError`` where the sweep itself is refused; a case that cannot be solved is a row that says why.
-        """
+        """A sweep over a case: see the room's own words above."""
         from transient.sweep.call import solved
 
         tree: dict[str, Any] = {"vary": dict(vary or {}), "scatter": dict(scatter or {})}
         if rows is not None:
             tree["rows"] = list(rows)
         tree["keep"] = {"histories": histories}
-        return solved(case, tree, workers, cluster, out, resume, overwrite)
+        return solved(case, tree, workers, cluster, out, resume, overwrite, confirm)
 
 
 sys.modules[__name__].__class__ = _Room

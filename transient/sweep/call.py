@@ -10,7 +10,7 @@ from typing import Any
 from transient.case.model import Case, CaseError
 from transient.case.read import read_case
 from transient.sweep.file import gathered, write
-from transient.sweep.output import opened
+from transient.sweep.output import opened, refuse_too_many
 from transient.sweep.pieces import Memory
 from transient.sweep.places import chosen
 from transient.sweep.plan import plan_of
@@ -26,10 +26,12 @@ def solved(
     out: str | os.PathLike[str] | None,
     resume: bool,
     overwrite: bool,
+    confirm: bool,
 ) -> Table:
     """The table of a sweep over ``case`` with the tables of a sweep file; see ``transient.sweep``."""
     base = case if isinstance(case, Case) else read_case(case)
     plan = plan_of(base, tree)
+    refuse_too_many(plan, plan.title, confirm, "confirm=True")
     place = chosen(plan, workers, cluster)
     if out is None:
         store = Memory(plan)

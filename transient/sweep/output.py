@@ -25,12 +25,10 @@ def folder_of(path: Path) -> Path:
     return path.with_name(f"{path.name}.parts")
 
 
-def refuse_too_many(plan: Plan, confirmed: bool) -> None:
-    """More than ten million cases are asked back."""
+def refuse_too_many(plan: Plan, name: str, confirmed: bool, word: str) -> None:
+    """More than ten million cases are asked back; ``word`` is how one says that they are meant."""
     if plan.rows > MOST_CASES and not confirmed:
-        raise CaseError(
-            f"{plan.title}: makes {plan.rows:,} cases, more than {MOST_CASES:,}; if that is meant, add --confirm"
-        )
+        raise CaseError(f"{name}: makes {plan.rows:,} cases, more than {MOST_CASES:,}; if that is meant, add {word}")
 
 
 def opened(plan: Plan, path: Path, resume: bool, overwrite: bool) -> Folder | None:
@@ -49,6 +47,7 @@ def opened(plan: Plan, path: Path, resume: bool, overwrite: bool) -> Folder | No
         _refuse_change(folder, begun, plan)
     elif resume and path.exists():
         _refuse_change(path, _finished(path), plan)
+        shutil.rmtree(folder, ignore_errors=True)  # what a kill left of a folder that was no longer needed
         return None
     elif begun is not None and not overwrite:
         raise CaseError(f"{folder}: holds an unfinished sweep; {GOES_ON}")

@@ -62,14 +62,15 @@ def summary(data: Data) -> dict[str, Any]:
 
 
 def _messages(data: Data, among: np.ndarray) -> list[dict[str, Any]]:
-    """The most frequent messages of some rows (n,), each with its first case."""
+    """The most frequent messages of some rows (n,), told apart by what they are about, as the first case has them."""
     rows = np.flatnonzero(among)
     if not len(rows):
         return []
     texts = np.asarray(data.get("message"))[rows].tolist()
-    first = {text: int(row) for text, row in zip(reversed(texts), rows[::-1], strict=True)}
-    common = Counter(texts).most_common(MOST_MESSAGES)
-    return [{"message": text, "cases": count, "first": first[text]} for text, count in common]
+    about = [text.partition(": ")[0] for text in texts]
+    first = {name: place for place, name in reversed(list(enumerate(about)))}
+    common = Counter(about).most_common(MOST_MESSAGES)
+    return [{"message": texts[first[n]], "cases": count, "first": int(rows[first[n]])} for n, count in common]
 
 
 def _varied(key: Varied, plan: Plan) -> dict[str, Any]:
@@ -130,14 +131,25 @@ def _percentiles(values: np.ndarray) -> dict[str, float]:
     return {str(q): float(v) for q, v in zip(PERCENTILES, np.percentile(values, PERCENTILES), strict=True)}
 
 
+def _reach(grid: np.ndarray, share: float) -> np.ndarray:
+    """What that share of each row's numbers stays below, (rows,), as ``np.percentile``; -1 where a row has none."""
+    ordered = np.sort(np.where(np.isfinite(grid), grid, np.inf), axis=1)
+    last = np.count_nonzero(np.isfinite(grid), axis=1) - 1
+    place = share * np.maximum(last, 0)
+    low = place.astype(int)
+    high = np.minimum(low + 1, np.maximum(last, 0))
+    ordered[last < 0] = 0.0
+    rows = np.arange(len(grid))
+    found = ordered[rows, low] + (place - low) * (ordered[rows, high] - ordered[rows, low])
+    return np.where(last >= 0, found, -1.0)
+
+
 def _combination(plan: Plan, values: np.ndarray, inputs: Inputs) -> dict[str, Any] | None:
     """Of all combinations of [vary], the one whose scatter reaches farthest (95 of 100 stay below in magnitude)."""
     if plan.combinations == 1:
         return None
     grid = values.reshape(plan.combinations, plan.samples)
-    size = np.where(np.isfinite(grid), np.abs(grid), np.nan)
-    known = np.flatnonzero(np.isfinite(size).any(axis=1))
-    worst = int(known[np.argmax(np.nanpercentile(size[known], 95, axis=1))])
+    worst = int(np.argmax(_reach(np.abs(grid), 0.95)))
     row = grid[worst][np.isfinite(grid[worst])]
     drawn = {key.name for key in plan.scatter.keys} if plan.scatter is not None else set()
     stated = {key: value for key, value in inputs.of(worst * plan.samples).items() if key not in drawn}
