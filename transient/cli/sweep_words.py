@@ -113,5 +113,4 @@ def _effort(effort: tuple[float, int] | None) -> str:
     if effort is None or effort[1] == 0:
         return ""
     seconds, solved = effort
-    each = 1e3 * seconds / solved
-    return f"   ({solved:,} cases in {quantity(seconds, 's')}, {each:.3g} ms each)"
+    return f"   ({solved:,} cases in {quantity(seconds, 's', 3)}, {quantity(seconds / solved, 's', 3)} each)"

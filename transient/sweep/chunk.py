@@ -76,6 +76,15 @@ def solve_rows(frame: Frame, values: Values, faults: Mapping[int, str]) -> Piece
     return Piece(out)
 
 
+def warm(frame: Frame, values: Values) -> None:
+    """Has a runner of many rows solve the first, so that its compiled code is loaded; nothing where none takes them."""
+    base = _base(frame.case_text)
+    first, *others = runners(base, frame.keys)
+    if others and not frame.histories:
+        with _left_to_the_next(first):
+            first.solve(base, frame.keys, {name: column[:1] for name, column in values.items()}, frame.columns)
+
+
 @contextmanager
 def _left_to_the_next(runner: Any) -> Iterator[None]:
     """A runner of many rows at once that meets an error of its own leaves them to the next; the last has none."""
