@@ -62,7 +62,8 @@ def loaded(code: str) -> set[str]:
 
 
 PUBLIC = [
-    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "read_case", "read_result", "run", "sweep",
+    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "draw", "overlay", "read_case", "read_result",
+    "run", "sweep", "write_result", "write_sheet",
 ]  # fmt: skip
 
 

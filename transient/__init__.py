@@ -1,7 +1,7 @@
 """What happens between rest and steady running in a liquid-filled gap.
 
-``read_case`` or ``Case`` states a case, ``run`` solves it, ``sweep`` solves many of them, ``read_result`` opens what
-either left behind.
+``read_case`` or ``Case`` states a case, ``run`` solves it, ``sweep`` solves many of them; ``write_result`` keeps and
+``read_result`` opens what either left behind.  ``draw``, ``overlay`` and ``write_sheet`` show it.
 """
 
 from __future__ import annotations
@@ -16,6 +16,10 @@ if TYPE_CHECKING:
     from transient.case.read import read_case
     from transient.march.march import SolveError
     from transient.result.result import Result, ResultError
+    from transient.result.store import write as write_result
+    from transient.sheet.document.write import write_sheet
+    from transient.sheet.figures import draw
+    from transient.sheet.overlay import overlay
     from transient.sweep.table import Table
     from transient.sweep.table import read as read_result
 
@@ -27,14 +31,19 @@ _WHERE = {
     "ResultError": ("transient.result.result", "ResultError"),
     "SolveError": ("transient.march.march", "SolveError"),
     "Table": ("transient.sweep.table", "Table"),
+    "draw": ("transient.sheet.figures", "draw"),
+    "overlay": ("transient.sheet.overlay", "overlay"),
     "read_case": ("transient.case.read", "read_case"),
     "read_result": ("transient.sweep.table", "read"),
     "run": ("transient.answer", "run"),
     "sweep": ("transient.sweep", ""),  # a room that can be called
+    "write_result": ("transient.result.store", "write"),
+    "write_sheet": ("transient.sheet.document.write", "write_sheet"),
 }
 
 __all__ = [
-    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "read_case", "read_result", "run", "sweep",
+    "Case", "CaseError", "Result", "ResultError", "SolveError", "Table", "draw", "overlay", "read_case", "read_result",
+    "run", "sweep", "write_result", "write_sheet",
 ]  # fmt: skip
 
 

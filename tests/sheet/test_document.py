@@ -55,7 +55,8 @@ class Page(HTMLParser):
         for name, value in attrs:
             if name == "id":
                 self.ids.append(value)
-            if name in ("src", "href", "xlink:href", "action", "data") and not value.startswith("#"):
+            inside = value is None or value.startswith(("#", "data:image/png;"))
+            if name in ("src", "href", "xlink:href", "action", "data") and not inside:
                 self.away.append(f"{tag} {name}={value}")
             if name.startswith("on"):
                 self.away.append(f"{tag} {name}")

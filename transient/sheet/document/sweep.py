@@ -294,6 +294,6 @@ def _stated(facts: Facts, base: str) -> str:
         tree = json.loads(str(facts.result.attributes.get("sweep") or ""))
     except ValueError:
         return ""
-    tables = {name: tree[name] for name in ("vary", "scatter", "keep") if tree.get(name)}
+    tables = {name: tree[name] for name in ("vary", "rows", "scatter", "keep") if tree.get(name)}
     title = {"title": facts.result.title} if facts.result.title else {}
     return to_toml({**title, "case": base, **tables}).strip("\n")

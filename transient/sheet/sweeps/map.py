@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 # Up to so many cells carry their number; more carry contours.
 NUMBERED = 60
+DRAWN = 2000  # cells drawn one by one; more are a picture
 SHADES = "cividis"  # even in lightness, so that it prints in grey and is read by the colour-blind
 BAD = ("outside", "failed")
 
@@ -74,8 +75,9 @@ def _cells(figure: Figure, axes: Axes, along: Key, up: Key, cells: np.ndarray, s
     axes.set_facecolor("white")
     signed = shown.count() and float(shown.max()) <= 0.0  # of negative numbers the largest magnitude is the darkest
     colours = axes.pcolormesh(
-        _edges(along), _edges(up), shown, cmap=SHADES if signed else f"{SHADES}_r", rasterized=True, gid="map"
-    )
+        _edges(along), _edges(up), shown, cmap=SHADES if signed else f"{SHADES}_r", rasterized=cells.size > DRAWN,
+        gid="map",
+    )  # fmt: skip
     bar = figure.colorbar(colours, cax=figure.add_axes((0.86, 0.13, 0.025, 0.71)))
     bar.set_label(f"[{unit.unit or '1'}]", rotation=0, labelpad=14)
     if cells.size <= NUMBERED:
