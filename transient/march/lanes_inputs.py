@@ -13,8 +13,8 @@ from transient.compiled import compiled, part
 # At accuracy 1e-3, and in proportion to its fourth root (the error left by two extrapolated levels is of fourth order).
 # From trials over ramps of 1e-4 to 1 diffusion times.
 FIRST = 0.05  # first row of a piece as a share of the shortest time beside its break
-GROWTH = 0.5  # longest row as a share of the time since the break
-FOLLOW = 0.45  # longest row while the flow settles, as a share of its slowest time constant
+GROWTH = 0.7  # longest row as a share of the time since the break
+FOLLOW = 0.55  # longest row while the flow settles, as a share of its slowest time constant
 COURSE = 0.35  # longest row over the time constant of a wave or lag
 BENT = 12.0  # least rows of a curved piece
 SUDDEN = 1e-3  # share of the time after a jump from which on the flow is followed closely

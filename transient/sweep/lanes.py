@@ -86,6 +86,8 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
         starts, own_poly, own_wave, before, batch.until[rows], batch.time[rows], push, np.full(n, fine),
         pieces, part_of, poly, wave, jump, layer,
     )  # fmt: skip
+    used = int(pieces.max())
+    part_of, poly, wave, jump = (array[:, :used] for array in (part_of, poly, wave, jump))
     waving = bool(np.any(wave[:, :, :, :2]))
     numbers = np.zeros((n, layout.CASE_FIELDS))
     slowest = batch.slowest[rows]

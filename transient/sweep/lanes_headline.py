@@ -13,6 +13,8 @@ from transient.compiled import compiled, part
 from transient.march.lanes_layout import FIELDS, LOWER_SPEED, MEAN, PUSH
 
 MARGIN = 2.0
+REMOVED = 0.98  # an extrapolation takes away at most this share of the finest level's error: where errors of grid and
+# step cross, the difference of two extrapolations says nothing
 ROUNDING = 1e-12
 ZERO = 1e-6  # as in ``result.run``
 NOTHING = 1e-11  # as in ``headline.settling``
@@ -99,10 +101,10 @@ def _summit(sign, i, root, value, piece, count, line, out):
 
 
 @part
-def _peak(root, best, other, piece, count, skip, line, out, found):
+def _peak(root, best, other, own, piece, count, skip, line, out, found):
     """Signed value of largest magnitude, its row interval, root and error into ``found`` (5,).
 
-    ``skip`` marks rows without a finite value.
+    ``own`` (n,) the rows' errors; ``skip`` marks rows without a finite value.
     """
     top = -1
     size = -1.0
@@ -132,10 +134,9 @@ def _peak(root, best, other, piece, count, skip, line, out, found):
     above = -np.inf
     for i in range(count):
         if not skip[i]:
-            off = MARGIN * abs(best[i] - other[i])
-            below = max(below, abs(best[i]) - off)
-            above = max(above, abs(best[i]) + off)
-    off = max(above - found[0], min(found[0] - below, MARGIN * abs(best[top] - other[top])))
+            below = max(below, abs(best[i]) - own[i])
+            above = max(above, abs(best[i]) + own[i])
+    off = max(above - found[0], min(found[0] - below, own[top]))
     found[3] = max(MARGIN * abs(found[0] - rival), off) + doubt + ROUNDING * found[0]
     found[0] *= sign
 
@@ -230,15 +231,15 @@ def _settled(level, root, value, off, time, start, piece, count, work, line, fou
 
 
 @part
-def _spread(best, other, count, size, off):
-    """Errors of rows: difference with margin, the neighbours' counted too."""
+def _spread(own, count, size, off):
+    """Errors of rows, the neighbours' counted too."""
     for i in range(count):
-        wide = abs(best[i] - other[i])
+        wide = own[i]
         if i > 0:
-            wide = max(wide, abs(best[i - 1] - other[i - 1]))
+            wide = max(wide, own[i - 1])
         if i + 1 < count:
-            wide = max(wide, abs(best[i + 1] - other[i + 1]))
-        off[i] = MARGIN * wide + ROUNDING * size
+            wide = max(wide, own[i + 1])
+        off[i] = wide + ROUNDING * size
 
 
 @part
@@ -333,6 +334,7 @@ def read(
     cases, most = row_piece.shape
     best = np.empty((FIELDS, most))
     other = np.empty((FIELDS, most))
+    own = np.empty((FIELDS, most))
     root = np.empty(most)
     time = np.empty(most)
     off = np.empty(most)
@@ -357,6 +359,7 @@ def read(
                 a, b, d = coarse[c, i, f], between[c, i, f], fine[c, i, f]
                 best[f, i] = d + (d - b) / 3.0
                 other[f, i] = b + (b - a) / 3.0
+                own[f, i] = max(MARGIN * abs(best[f, i] - other[f, i]), (1.0 - REMOVED) * abs(best[f, i] - d))
             for side in range(2):
                 skip[side, i] = row_offset[c, i] == 0.0 and infinite[c, piece[i], side]
         for k in range(3):
@@ -372,14 +375,14 @@ def read(
         for k in range(QUANTITIES):
             which = DEVIATION if k == 0 else k - 1 if k < PRESSURE else k  # the deviation first
             value, rival, numbers = best[which], other[which], out[c, which]
-            _peak(root, value, rival, piece, n, skip[which], line, top, found)
+            _peak(root, value, rival, own[which], piece, n, skip[which], line, top, found)
             peak, error = found[0], found[3]
             if which == DEVIATION:
                 largest = abs(peak)
             unbounded = False
             for i in range(n):
                 unbounded = unbounded or skip[which, i]
-            _spread(value, rival, n, abs(peak), off)
+            _spread(own[which], n, abs(peak), off)
             numbers[LARGEST] = abs(peak)
             numbers[CALMED] = 1.0 if abs(steady[which]) > ZERO * abs(peak) else 0.0
             numbers[END], numbers[END_ERROR] = value[n - 1], off[n - 1]
