@@ -189,7 +189,7 @@ def test_open_rows_go_to_the_next_runner(mixed, monkeypatch):
     monkeypatch.setattr(runners, "RUNNERS", ("quick", "each"))
     heights = ["0.4 mm", "0.5 mm", "0.6 mm", "0.7 mm"]
     table = tr.sweep(case, {"gap.height": heights}, workers=1)
-    assert asked == [4]
+    assert asked == [4, 4]  # tried by the plan, then solved
     assert table.settling_time[0::2].tolist() == [4e-4, 6e-4]
     alone = tr.run(case.replace({"gap.height": "0.5 mm"}))
     assert table.settling_time[1] == alone.settling.time
@@ -199,3 +199,24 @@ def test_by_default_one_worker_per_core(monkeypatch):
     from transient.sweep import places
 
     assert places.default_workers() == len(os.sched_getaffinity(0))
+
+
+def test_chunks_are_small_where_few_rows_can_be_solved_together(mixed, monkeypatch):
+    from transient.sweep import runners
+    from transient.sweep.columns import OPEN
+    from transient.sweep.plan import plan_of
+
+    _, case, _ = mixed
+    tree = {"vary": {"gap.height": {"from": "1 m", "to": "2 m", "count": 400}}}
+    quick.use(monkeypatch)
+    monkeypatch.setattr(runners, "RUNNERS", ("quick", "each"))
+    assert plan_of(case, tree).chunk == 256
+
+    def seldom(base, keys, values, columns):
+        out = quick.solve(base, keys, values, columns)
+        out["status"][1:] = OPEN
+        return out
+
+    quick.use(monkeypatch, seldom)
+    monkeypatch.setattr(runners, "RUNNERS", ("quick", "each"))
+    assert plan_of(case, tree).chunk == 16

@@ -7,13 +7,9 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Any
 
-from transient.cli.progress import Bar
-
 
 class Rows:
     """Told how many further cases are finished; nothing to see where nobody watches."""
-
-    bar = Bar()
 
     def __call__(self, cases: int) -> None:
         """``cases`` more are finished; 0 where only time has passed."""

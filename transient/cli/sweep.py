@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
-from transient.cli.progress import announce_compiling
+from transient.cli.progress import Bar, announce_compiling
 from transient.cli.rows_bar import rows_progress
 from transient.cli.words import FAILED, GOOD, INTERRUPTED, Stop, Version, note, refusals, say
 
@@ -53,6 +53,8 @@ def sweep(
     from transient.sweep.places import chosen
     from transient.sweep.plan import read_plan
 
+    if not quiet:
+        announce_compiling(Bar())
     with refusals():
         plan = read_plan(file)
         refuse_too_many(plan, file, confirm, "--confirm")
@@ -77,8 +79,6 @@ def _solve(plan: Plan, folder: Folder, place: Place, target: Path, quiet: bool) 
     bar: AbstractContextManager[Any] = rows_progress(plan.rows, plan.rows - left, quiet)
     try:
         with bar as advance:
-            if not quiet:
-                announce_compiling(advance.bar)
             solve(plan, folder, place, advance)
     except KeyboardInterrupt:
         raise Stop(f"interrupted; {_kept(plan, folder)}", INTERRUPTED) from None

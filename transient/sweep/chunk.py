@@ -76,13 +76,19 @@ def solve_rows(frame: Frame, values: Values, faults: Mapping[int, str]) -> Piece
     return Piece(out)
 
 
-def warm(frame: Frame, values: Values) -> None:
-    """Has a runner of many rows solve the first, so that its compiled code is loaded; nothing where none takes them."""
+def left_open(frame: Frame, values: Values) -> float:
+    """The share of rows that only the last runner solves, which takes them one by one."""
     base = _base(frame.case_text)
-    first, *others = runners(base, frame.keys)
-    if others and not frame.histories:
-        with _left_to_the_next(first):
-            first.solve(base, frame.keys, {name: column[:1] for name, column in values.items()}, frame.columns)
+    able = runners(base, frame.keys)[:-1]
+    known = np.all([np.isfinite(column) for column in values.values()], axis=0)
+    if frame.histories or not able or not known.any():
+        return 1.0
+    open_rows = np.ones(int(known.sum()), bool)
+    part = {name: column[known] for name, column in values.items()}
+    for runner in able:
+        with _left_to_the_next(runner):
+            open_rows &= runner.solve(base, frame.keys, part, frame.columns)["status"] == OPEN
+    return float(open_rows.mean())
 
 
 @contextmanager

@@ -9,10 +9,10 @@ from collections.abc import Iterable
 from typing import Any
 
 from transient.case.model import CaseError
+from transient.sweep.cases import Plan
 from transient.sweep.chunk import Frame, Piece, joined, solve_rows, unsolved
 from transient.sweep.keys import Values
 from transient.sweep.places import LOST, Finished, Place
-from transient.sweep.plan import Plan
 
 PATIENCE = "10s"
 AHEAD = 3  # chunks under way per thread of the cluster

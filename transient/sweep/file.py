@@ -15,11 +15,11 @@ from transient.case.write import to_toml
 from transient.result import store as results
 from transient.result.result import Variable
 from transient.result.whole import whole
+from transient.sweep.cases import Plan
 from transient.sweep.chunk import Histories, Piece, joined
 from transient.sweep.columns import CODES, STATUS, VERDICTS
 from transient.sweep.keys import Varied
 from transient.sweep.pieces import Store, pieces
-from transient.sweep.plan import Plan
 from transient.sweep.says import Data, summary
 from transient.sweep.table import KIND, Table
 

@@ -7,8 +7,8 @@ from typing import Any
 
 import numpy as np
 
+from transient.sweep.cases import Plan
 from transient.sweep.keys import Values, Varied
-from transient.sweep.plan import Plan
 
 MOST_ROWS = 1_000_000  # more rows than these tell no more; they are taken evenly
 MOST_LEVELS = 200  # values of an axis of the grid; more of them, and what is no axis, are put into classes

@@ -11,10 +11,11 @@ from typing import Any
 
 from transient.case.model import CaseError
 from transient.result.result import ResultError
+from transient.sweep.cases import Plan
 from transient.sweep.pieces import Folder, identity
-from transient.sweep.plan import MOST_CASES, Plan
 
 GOES_ON = "--resume goes on with it, --overwrite begins anew"
+MOST_CASES = 10_000_000  # more are asked back
 TEXT_BYTES = 300  # status, verdict and message of a row, in its chunk and in the result
 HISTORY_ROWS = 400
 NAMED = 3  # changes that a refusal names

@@ -17,9 +17,9 @@ from typing import Any, Protocol
 import numpy as np
 
 from transient.case.model import CaseError
+from transient.sweep.cases import Plan
 from transient.sweep.chunk import Histories, Piece
 from transient.sweep.columns import CODES, TEXTS, Column
-from transient.sweep.plan import Plan
 
 IDENTITY = "sweep.json"
 LOCK = "lock"

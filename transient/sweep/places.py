@@ -14,8 +14,8 @@ from contextlib import contextmanager, suppress
 from multiprocessing import connection, get_context
 from typing import Any
 
-from transient.sweep.chunk import Piece, joined, solve_rows, unsolved, warm
-from transient.sweep.plan import Plan
+from transient.sweep.cases import Plan
+from transient.sweep.chunk import Piece, joined, solve_rows, unsolved
 
 # (chunk, piece) of each finished chunk, in whatever order; None where there is nothing to tell but that time passes.
 Finished = Iterator[tuple[int, Piece] | None]
@@ -99,8 +99,7 @@ class Team:
     def __init__(self, plan: Plan, chunks: Iterable[int], workers: int):
         self.plan = plan
         self.left = deque(chunks)
-        # Samples and compiled code are made ready once, before the workers are, which then share them.
-        warm(plan.frame, plan.values(0, 1))
+        plan.values(0, 1)  # samples are made ready once, before the workers are, which then share them
         self.deaths: dict[int, int] = {}
         self.workers = [Worker(plan) for _ in range(min(workers, len(self.left)))]
 

@@ -1,4 +1,4 @@
-"""Which cases a sweep solves: the grid of [vary] and listed rows, times the samples of [scatter]."""
+"""From what a user states to a plan: each key's kind learned from the case, the columns, the chunks, the identity."""
 
 from __future__ import annotations
 
@@ -6,7 +6,7 @@ import itertools
 import os
 import tomllib
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import replace
 from math import prod
 from pathlib import Path as FilePath
 from typing import Any
@@ -18,89 +18,24 @@ from transient.case.model import Case, CaseError
 from transient.case.read import read_case
 from transient.case.source import Source
 from transient.sweep import listed
-from transient.sweep.axes import Axis, Range, axis, read_range
-from transient.sweep.chunk import Frame
+from transient.sweep.axes import Range, axis, read_range
+from transient.sweep.cases import Plan
+from transient.sweep.chunk import Frame, left_open
 from transient.sweep.columns import Column, layout, together
 from transient.sweep.facts import Facts, learn
-from transient.sweep.keys import Values, Varied
-from transient.sweep.runners import runners
-from transient.sweep.scatter import Scatter, Tolerance, read_settings, read_tolerance, scatter
+from transient.sweep.keys import Varied
+from transient.sweep.scatter import Tolerance, read_settings, read_tolerance, scatter
 from transient.sweep.stated import Stated, read_stated, state
 
-MOST_CASES = 10_000_000
+__all__ = ["Plan", "plan_of", "read_plan"]
+
 BYTES_SUMMED = 60  # of each case that the closing summary holds at once
 TABLE_KEYS = tuple(key.name for key in TABLE_FILE)
 MOST_FORMS = 64  # combinations of choices that are looked at for the columns they bring
 # Rows of a chunk: what a kill may cost, against the cost of a file each.
 ALONE, TOGETHER = (16, 256), (256, 8192)
+TRIED, MOST_OPEN = 16, 0.25
 WANTED_CHUNKS = {ALONE: 2000, TOGETHER: 64}
-
-
-@dataclass(frozen=True, eq=False)
-class Plan:
-    """``rows`` cases: every combination of the places of ``axes`` (the last one fastest), ``scatter`` at each.
-
-    ``stated`` tells one sweep from another: plain values of all that decides its numbers.
-    """
-
-    title: str
-    frame: Frame
-    axes: tuple[Axis, ...]
-    scatter: Scatter | None
-    stated: dict[str, Any]
-    chunk: int
-
-    @property
-    def samples(self) -> int:
-        """Cases at each combination."""
-        return 1 if self.scatter is None else self.scatter.samples
-
-    @property
-    def combinations(self) -> int:
-        """Combinations of the axes' places."""
-        return prod(one.size for one in self.axes)
-
-    @property
-    def rows(self) -> int:
-        """Number of cases."""
-        return self.combinations * self.samples
-
-    @property
-    def chunks(self) -> int:
-        """Number of chunks."""
-        return -(-self.rows // self.chunk)
-
-    def span(self, chunk: int) -> tuple[int, int]:
-        """First row of a chunk, and the one behind its last."""
-        return chunk * self.chunk, min((chunk + 1) * self.chunk, self.rows)
-
-    def values(self, first: int, behind: int) -> Values:
-        """The varied keys' values in rows ``first`` to ``behind`` - 1."""
-        rows = np.arange(first, behind)
-        combination = rows // self.samples
-        places = np.unravel_index(combination, [one.size for one in self.axes]) if self.axes else ()
-        out = {
-            key.name: column[place]
-            for one, place in zip(self.axes, places, strict=True)
-            for key, column in zip(one.keys, one.values, strict=True)
-        }
-        if self.scatter is not None:
-            drawn = self.scatter.values(rows)
-            out |= {key.name: column for key, column in zip(self.scatter.keys, drawn, strict=True)}
-        return out
-
-    def faults(self, first: int, behind: int) -> dict[int, str]:
-        """What is wrong with rows that are no case at all, by their place among ``first`` to ``behind`` - 1."""
-        if not any(one.faults for one in self.axes):
-            return {}
-        combination = np.arange(first, behind) // self.samples
-        places = np.unravel_index(combination, [one.size for one in self.axes])
-        return {
-            int(row): one.faults[place]
-            for one, where in zip(self.axes, places, strict=True)
-            for place in one.faults
-            for row in np.flatnonzero(where == place)
-        }
 
 
 def read_plan(file: str) -> Plan:
@@ -135,10 +70,9 @@ def _plan(stated: Stated, base: Case) -> Plan:
     forms = _forms(reads.case, keys)
     walls = tuple(dict.fromkeys(wall.name for case in forms for wall in case.problem().walls if wall.kind != "axis"))
     frame = Frame(base.text(), keys, _columns(forms), walls, stated.histories)
-    size = prod(one.size for one in axes) * (1 if drawn is None else drawn.samples)
-    chunk = _chunk(base, keys, size, stated.histories)
-    title = stated.title or base.title
-    return Plan(title, frame, tuple(axes), drawn, _identity(stated, base, rows, chunk), chunk)
+    draft = Plan(stated.title or base.title, frame, tuple(axes), drawn, {}, 1)
+    chunk = _chunk(draft)
+    return replace(draft, stated=_identity(stated, base, rows, chunk), chunk=chunk)
 
 
 def _from_file(choice: Any) -> bool:
@@ -216,11 +150,15 @@ def _columns(forms: list[Case]) -> tuple[Column, ...]:
     return together(layout(case.problem()) for case in forms)
 
 
-def _chunk(base: Case, keys: tuple[Varied, ...], rows: int, histories: bool) -> int:
-    """Rows of a chunk: decided by the sweep alone, so that its pieces are the same for any number of workers."""
-    alone = histories or len(runners(base, keys)) == 1
-    least, most = bounds = ALONE if alone else TOGETHER
-    wanted = -(-rows // WANTED_CHUNKS[bounds])
+def _chunk(plan: Plan) -> int:
+    """Rows of a chunk: decided by the sweep alone, so that its pieces are the same for any number of workers.
+
+    Where few rows can be solved many at once (some are tried), chunks are small: what a kill may cost is a chunk.
+    """
+    tried = np.unique(np.linspace(0, plan.rows - 1, TRIED).astype(int))
+    together = left_open(plan.frame, plan.values_of(tried)) <= MOST_OPEN
+    least, most = bounds = TOGETHER if together else ALONE
+    wanted = -(-plan.rows // WANTED_CHUNKS[bounds])
     return min(max(least, 2 ** max(wanted - 1, 0).bit_length()), most)
 
 

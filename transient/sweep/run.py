@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
+from transient.sweep.cases import Plan
 from transient.sweep.pieces import Store
 from transient.sweep.places import Place
-from transient.sweep.plan import Plan
 
 # Told how many further rows are finished; called with 0 while time passes.
 Watch = Callable[[int], None]

@@ -8,10 +8,10 @@ from typing import Any
 
 import numpy as np
 
+from transient.sweep.cases import Plan
 from transient.sweep.columns import SOLVED, STATUS, VERDICTS
 from transient.sweep.influence import Inputs, influence
 from transient.sweep.keys import Varied
-from transient.sweep.plan import Plan
 
 # Headline numbers in the order in which they are said; "_*" stands for each wall.
 NAMES = ("settling_time", "peak_stress_*", "peak_force_*", "peak_torque_*", "final_stress_*", "final_mean_velocity")
