@@ -53,12 +53,17 @@ class Board:
         self.taken.append(self._box(text, at))
         self._text(at, text, bbox={"fc": "white", "ec": "none", "pad": 0.8}, **style)
 
+    def mark(self, x: float, y: float) -> np.ndarray:
+        """Keeps the place of a mark at a point (data coordinates) free; the point in pixels (2,)."""
+        point = self.axes.transData.transform((x, y))
+        half = 0.5 * self._pixels()
+        self.taken.append((point[0] - half, point[1] - half, point[0] + half, point[1] + half))
+        return point
+
     def beside(self, x: float, y: float, text: str, **style: Any) -> None:
         """Sets ``text`` near the mark at a point (data coordinates), wherever around it there is most room."""
-        point = self.axes.transData.transform((x, y))
+        point = self.mark(x, y)
         wide, tall = self._extent(text)
-        mark = 0.5 * self._pixels()
-        self.taken.append((point[0] - mark, point[1] - mark, point[0] + mark, point[1] + mark))
         best, cost = point, np.inf
         for far in (0.5, 1.1, 2.0, 3.2):
             for angle in np.arange(0, 2 * np.pi, np.pi / 8):

@@ -99,21 +99,27 @@ def stress_panel(axes: Axes, result: Result, shared: Span) -> None:
             y = result.quasi_steady_stress[:, column] * board.factor
             axes.plot(x, y, color=INK[column], ls=(0, (1, 2)), lw=1.2, zorder=1.5, gid="quasi-steady")
             board.add_curve(x, y)
-    for column, label in grouped(result.wall_stress, wall_names(result)):
-        _mark_peak(board, result, shared, column, label)
+    notes = [_peak(board, result, shared, *group) for group in grouped(result.wall_stress, wall_names(result))]
+    found = [note for note in notes if note is not None]
+    for x, y, _, _ in found:
+        board.mark(x, y)  # all of them first, so that no text covers another's mark
+    for x, y, text, ink in found:
+        board.beside(x, y, text, color=ink)
 
 
-def _mark_peak(board: Board, result: Result, shared: Span, column: int, label: str) -> None:
-    """A ring and the value at the wall's largest stress, unless it is next to nothing on this axis."""
+def _peak(
+    board: Board, result: Result, shared: Span, column: int, label: str
+) -> tuple[float, float, str, str] | None:
+    """A ring at the wall's largest stress, and (x, y, text, ink) of what is said there; None where it is next to
+    nothing on this axis."""
     name = wall_names(result)[column]
     data = result.wall_stress[:, column]
     if is_unbounded(result, name, data):
-        _mark_unbounded(board, result, shared, column, label)
-        return
+        return _unbounded(board, result, shared, column, label)
     wall = _numbers(result, name)
     finite = np.flatnonzero(np.isfinite(data))
     if len(finite) == 0:
-        return
+        return None
     top = int(finite[np.argmax(np.abs(data[finite]))])
     when, peak = wall.get("peak_time"), wall.get("peak_stress")
     if when is None or peak is None:
@@ -125,14 +131,16 @@ def _mark_peak(board: Board, result: Result, shared: Span, column: int, label: s
     x, y = shared.place(when), peak * board.factor
     low, high = board.axes.get_ylim()
     if abs(y) < WORTH_MARKING * (high - low):
-        return
+        return None
     ink = INK[column]
     board.axes.plot(x, y, "o", mfc="white", mec=ink, mew=1.3, ms=5.5, zorder=5, clip_on=False, gid=f"peak {name}")
-    board.beside(x, y, text, color=ink)
+    return x, y, text, ink
 
 
-def _mark_unbounded(board: Board, result: Result, shared: Span, column: int, label: str) -> None:
-    """An arrow head where the curve leaves the axes, and when and how it grows without bound."""
+def _unbounded(
+    board: Board, result: Result, shared: Span, column: int, label: str
+) -> tuple[float, float, str, str] | None:
+    """An arrow head where the curve leaves the axes; what is said there tells when and how it grows without bound."""
     name = wall_names(result)[column]
     data = result.wall_stress[:, column]
     wall = _numbers(result, name)
@@ -140,7 +148,7 @@ def _mark_unbounded(board: Board, result: Result, shared: Span, column: int, lab
     when = float(result.time[~np.isfinite(data)][0]) if when is None else when
     after = np.flatnonzero((result.time > when) & np.isfinite(data))
     if len(after) == 0:
-        return
+        return None
     sign = np.sign(data[after[0]]) or 1.0
     low, high = board.axes.get_ylim()
     edge = high if sign > 0 else low
@@ -153,7 +161,7 @@ def _mark_unbounded(board: Board, result: Result, shared: Span, column: int, lab
         text += f", K = {wall['unbounded_coefficient']:.3g} Pa·√s"
     ink = INK[column]
     board.axes.plot(x, edge, "^" if sign > 0 else "v", color=ink, ms=6, clip_on=False, gid=f"unbounded {name}")
-    board.beside(x, edge, text, color=ink)
+    return x, edge, text, ink
 
 
 def _numbers(result: Result, name: str) -> dict[str, Any]:
