@@ -179,3 +179,17 @@ def test_chunks_follow_from_the_plan_alone():
     ends = {"from": "1 mm", "to": "2 mm", "count": 50}
     few = plan_of(BASE, {"vary": {"gap.height": ends}, "keep": {"histories": True}})
     assert [few.span(i) for i in range(few.chunks)] == [(0, 16), (16, 32), (32, 48), (48, 50)]
+
+
+def test_a_file_of_plain_numbers_reads_the_same_as_one_with_texts(sweep_file):
+    head = 'case = "case.toml"\nrows = "rows.csv"\n'
+    plain = "gap.height [mm],fluid.density [kg/m^3]\n" + "".join(f"{0.3 + 0.1 * i},{900 + i}\n" for i in range(9))
+    typed = plain.replace("0.5,", " 0.5 ,").replace("\n0.7", "\n\n# a remark\n0.7")
+    rows = []
+    for csv in (plain, typed):
+        plan = read_plan(str(sweep_file("", head, rows__csv=csv)))
+        rows.append(plan.values(0, plan.rows))
+        assert plan.rows == 9
+        assert rows[-1]["gap.height"][2] == 0.0005
+    for key, column in rows[0].items():
+        np.testing.assert_array_equal(column, rows[1][key])

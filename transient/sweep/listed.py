@@ -9,8 +9,10 @@ from __future__ import annotations
 
 import csv
 import re
-from collections.abc import Callable, Mapping
+import warnings
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from pathlib import Path as FilePath
 from typing import Any
 
 import numpy as np
@@ -30,10 +32,13 @@ MOST_CANDIDATES = 50
 
 @dataclass(frozen=True)
 class Listed:
-    """The rows as typed: texts (or values) by key, each with its ``unit`` or None; ``lines`` of the file by row."""
+    """The rows as typed: texts (or values) by key, each with its ``unit`` or None; ``lines`` of the file by row.
+
+    Plain numbers may come as an array instead; then there is nothing to complain of, and no need of ``lines``.
+    """
 
     name: str
-    cells: dict[str, list[Any]]
+    cells: dict[str, Sequence[Any] | np.ndarray]
     units: dict[str, str | None]
     lines: list[int]
 
@@ -41,11 +46,13 @@ class Listed:
         """Some of a key's values as a case file would state them."""
         unit = self.units[key]
         cells = self.cells[key]
-        some = [*cells[:MOST_CANDIDATES], cells[-1]]
+        some = [*cells[:MOST_CANDIDATES], *cells[-1:]]
         return tuple(_stated(cell, unit) for cell in some)
 
 
 def _stated(cell: Any, unit: str | None) -> Any:
+    if isinstance(cell, float) and unit is not None:
+        cell = repr(float(cell)).removesuffix(".0")
     if not isinstance(cell, str):
         return cell
     if unit is None:
@@ -84,20 +91,45 @@ def _from_file(stated: Stated, name: str) -> Listed:
     try:
         with open(path, encoding="utf-8-sig", newline="") as file:
             reader = csv.reader(file)
-            lines = [(reader.line_num, row) for row in reader if any(cell.strip() for cell in row)]
+            head = next((row for row in reader if any(row) and row[0][:1] != "#"), [])
+            line = reader.line_num
+            plain = _all_numbers(path, line, len(head)) if all("[" in cell for cell in head) else None
+            file.seek(0)
+            reader = csv.reader(file)
+            lines = [(reader.line_num, row) for row in reader if any(row) and row[0][:1] != "#"] if plain is None else []
     except UnicodeDecodeError:
         raise refuse("is not a text file (UTF-8); a CSV file is needed") from None
     except (OSError, ValueError, csv.Error) as error:
         raise refuse(f"cannot be read ({getattr(error, 'strerror', None) or error})") from None
-    lines = [(number, row) for number, row in lines if not row[0].lstrip().startswith("#")]
+    if plain is not None:
+        heads = _heads(head, line, refuse)
+        return Listed(name, {key: column for (key, _), column in zip(heads, plain.T, strict=True)}, dict(heads), [])
+    return _typed_rows(name, lines, refuse)
+
+
+def _typed_rows(name: str, lines: list[tuple[int, list[str]]], refuse: Callable[..., CaseError]) -> Listed:
+    """Rows of texts, each with the number of its line; the first is the header."""
     if len(lines) < 2:
         raise refuse(f"holds no rows; {NEED}, and a line for each case")
     heads = _heads(lines[0][1], lines[0][0], refuse)
     for number, row in lines[1:]:
         if len(row) != len(heads):
             raise refuse(f"has {len(row)} cells; {len(heads)} are needed", number)
-    cells = {key: [row[i].strip() for _, row in lines[1:]] for i, (key, _) in enumerate(heads)}
-    return Listed(name, cells, dict(heads), [number for number, _ in lines[1:]])
+    numbers, rows = zip(*lines[1:], strict=True)
+    columns = zip(*rows, strict=True)
+    cells = {key: [*map(str.strip, column)] for (key, _), column in zip(heads, columns, strict=True)}
+    return Listed(name, cells, dict(heads), [*numbers])
+
+
+def _all_numbers(path: str | FilePath, skipped: int, columns: int) -> np.ndarray | None:
+    """The numbers (rows, columns) below the header of a file that holds nothing else; None where it is not so plain."""
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            out = np.loadtxt(path, delimiter=",", skiprows=skipped, comments=None, ndmin=2, encoding="utf-8-sig")
+    except ValueError:
+        return None
+    return out if len(out) and out.shape[1] == columns and np.isfinite(out).all() else None
 
 
 def _heads(cells: list[str], line: int, refuse: Callable[..., CaseError]) -> list[tuple[str, str | None]]:
@@ -146,16 +178,20 @@ def _fault(rows: Listed, key: str, row: int, message: str) -> str:
 
 def _numbers(rows: Listed, key: str, dimension: str, unit: str, faults: dict[int, str]) -> np.ndarray:
     """A column of plain numbers in one unit, in SI; NaN where a cell is no number."""
-    out = np.full(len(rows.cells[key]), np.nan)
-    for i, cell in enumerate(rows.cells[key]):
-        try:
-            out[i] = float(cell)
-        except ValueError:
-            out[i] = np.nan
-        if not np.isfinite(out[i]):
-            need = f"a plain number in {unit} is needed"
-            faults.setdefault(i, _fault(rows, key, i, f"{typed(cell)} is no number; {need}"))
+    cells = rows.cells[key]
+    out = cells if isinstance(cells, np.ndarray) else np.array([*map(_number, cells)])
+    for i in np.flatnonzero(~np.isfinite(out)):
+        out[i] = np.nan
+        need = f"a plain number in {unit} is needed"
+        faults.setdefault(int(i), _fault(rows, key, i, f"{typed(cells[i])} is no number; {need}"))
     return convert(out, unit, dimension)
+
+
+def _number(cell: Any) -> float:
+    try:
+        return float(cell)
+    except (ValueError, TypeError):
+        return np.nan
 
 
 def _one(rows: Listed, key: str, row: int, cell: Any, dimension: str, faults: dict[int, str]) -> float:

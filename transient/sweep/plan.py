@@ -18,7 +18,7 @@ from transient.case.model import Case, CaseError
 from transient.case.read import read_case
 from transient.case.source import Source
 from transient.sweep import listed
-from transient.sweep.axes import Range, axis, read_range
+from transient.sweep.axes import Axis, Range, axis, read_range
 from transient.sweep.cases import Plan
 from transient.sweep.chunk import Frame, left_open
 from transient.sweep.columns import Column, layout, together
@@ -72,7 +72,7 @@ def _plan(stated: Stated, base: Case) -> Plan:
     frame = Frame(base.text(), keys, _columns(forms), walls, stated.histories)
     draft = Plan(stated.title or base.title, frame, tuple(axes), drawn, {}, 1)
     chunk = _chunk(draft)
-    return replace(draft, stated=_identity(stated, base, rows, chunk), chunk=chunk)
+    return replace(draft, stated=_identity(stated, base, rows, axes, chunk), chunk=chunk)
 
 
 def _from_file(choice: Any) -> bool:
@@ -162,7 +162,7 @@ def _chunk(plan: Plan) -> int:
     return min(max(least, 2 ** max(wanted - 1, 0).bit_length()), most)
 
 
-def _identity(stated: Stated, base: Case, rows: listed.Listed | None, chunk: int) -> dict[str, Any]:
+def _identity(stated: Stated, base: Case, rows: listed.Listed | None, axes: list[Axis], chunk: int) -> dict[str, Any]:
     """All that decides the numbers, as plain values that JSON keeps."""
     import json
     from hashlib import sha256
@@ -178,6 +178,8 @@ def _identity(stated: Stated, base: Case, rows: listed.Listed | None, chunk: int
         "chunk": chunk,
     }
     if rows is not None:
-        cells = json.dumps([rows.cells, rows.units], default=str)
-        out["rows"] = {"name": rows.name, "contents": sha256(cells.encode()).hexdigest()[:16]}
+        contents = sha256(json.dumps([key.name for key in axes[0].keys]).encode())
+        for key, column in zip(axes[0].keys, axes[0].values, strict=True):
+            contents.update(column.tobytes() + json.dumps(key.choices, default=str).encode())
+        out["rows"] = {"name": rows.name, "contents": contents.hexdigest()[:16]}
     return json.loads(json.dumps(out, default=str))
