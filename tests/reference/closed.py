@@ -19,7 +19,7 @@ from scipy.linalg import null_space
 from scipy.optimize import brentq
 
 from .drives import Piece, Signal, signal
-from .gap import gap_of
+from .gap import gap_of, steady
 
 DEGREE = 12
 EDGES = (0.0, 1e-5, 1e-4, 1e-3, 1e-2, 0.06, 0.2, 0.5)
@@ -83,6 +83,7 @@ class Plant:
             mean[own] += at.T @ (gauss_weight * half * (r if self.metric else 1.0))
         del mass, weight
         self.mass, self.stiff, self.volume = full, stiff, volume
+        self.liquid = full  # before bodies are added
         self.r[0], self.r[-1] = gap.ri, gap.ro
         self.mean = mean / (mean.sum() if self.metric != 3 else gap.ro - gap.ri)
 
@@ -169,14 +170,27 @@ class Plant:
         for k, end in enumerate(self.sprung):
             matrix[size + k, :size] = self.bodies[end]["node"] @ space
             source[size + k] = self.bodies[end]["node"] @ self.lift
-        # of the inverse, so that slow modes keep their digits beside fast ones; shifted, since a free body has a zero
-        shift = 1.0 / self.gap.time
-        moved = matrix - shift * weight
-        inverse, self.modes = np.linalg.eig(np.linalg.solve(moved, weight))
-        self.back = np.linalg.inv(self.modes)
-        self.rates = shift + 1.0 / inverse
-        self.source = (self.back @ np.linalg.solve(moved, source)) / inverse[:, None]
+        self._modes(matrix, weight, source)
         self.project = np.linalg.inv(test.T @ self.mass @ space) @ test.T @ self.mass
+
+    def _modes(self, matrix: np.ndarray, weight: np.ndarray, source: np.ndarray) -> None:
+        """Modes of ``weight dy/dt = matrix y + source u``, from shifted inverses: near a shift they keep their digits.
+
+        One shift beside the fluid's own rates, and one beside the slowest of the bodies'.
+        """
+        own = 1.0 / self.gap.time
+        rates, modes, given = _shifted(matrix, weight, source, own)
+        slow = np.abs(rates) < 1e-2 * own
+        moving = np.abs(rates[slow])
+        moving = moving[moving > 1e-11 * own]
+        if len(moving):
+            again = _shifted(matrix, weight, source, 0.7 * float(moving.min()))
+            own_slow = np.argsort(np.abs(again[0]))[: int(slow.sum())]
+            rates = np.concatenate([rates[~slow], again[0][own_slow]])
+            modes = np.concatenate([modes[:, ~slow], again[1][:, own_slow]], axis=1)
+            given = np.concatenate([given[~slow], again[2][own_slow]])
+        self.rates, self.modes, self.source = rates, modes, given
+        self.back = np.linalg.inv(modes)
 
     # --- time --------------------------------------------------------------------------------------------------
 
@@ -319,38 +333,36 @@ class Run:
         size = plant.space.shape[1]
         z = plant.space @ state[:size] + plant.lift @ u
         force = plant.load @ u - plant.stiff @ z - plant.spring @ state[size:]
-        if plant.prescribed:
-            free = plant.constraint.T @ np.linalg.solve(plant.mass, force)
-            reaction = plant.grip @ (slope[plant.prescribed] - free)
-            rate = np.linalg.solve(plant.mass, force + plant.reaction @ reaction)
-        else:
-            reaction, rate = np.zeros((0, len(x))), np.linalg.solve(plant.mass, force)
         gradient = np.zeros(len(x))
         stress = np.zeros((2, len(x)))
-        for row, (kind, end) in enumerate(plant.known):
-            if kind == "wall":
-                # the wall pulls on the fluid with the reaction, the fluid on the wall with its opposite
-                stress[end] = -reaction[row] / plant.scale[end]
-            else:
-                gradient = reaction[row]
+        if plant.flow:
+            free = plant.constraint.T @ np.linalg.solve(plant.mass, force)
+            gradient = (plant.grip @ (slope[plant.prescribed] - free))[-1]
         if not plant.flow and plant.metric != 3:
             gradient = u[-1]
-        loads = dict(zip(plant.bodies, self._load_rows(), strict=True))
-        for end, body in plant.bodies.items():
-            node = 0 if end == 0 else -1
-            pull = body["mass"] * rate[node] + body.get("damping", 0.0) * z[node] - u[loads[end]]
-            pull = pull + body.get("stiffness", 0.0) * place[end].real
-            if body.get("displaces"):
-                pull = pull - body["displaces"] * plant.case["length"] * gradient
-            stress[end] = pull / body["grip"]
+        # what the steady flow of this instant would exert, less what its liquid takes up (the momentum equation times
+        # the steady profile of that wall's own motion): local balances would magnify the modes' round-off
+        moving = (plant.modes @ (plant.rates[:, None] * amplitude + plant.source @ u)).real[:size]
+        moving = plant.space @ moving + plant.lift @ slope
+        calm = steady(plant.gap, np.maximum(plant.r, 1e-12 * plant.gap.ro))
+        for end, scale in enumerate(plant.scale):
+            if scale > 0.0 or plant.gap.kind != "pipe":
+                taken = (calm[end, 3:] @ plant.liquid) @ moving / scale
+                stress[end] = calm[0, end] * z[0] + calm[1, end] * z[-1] + calm[2, end] * gradient - taken
         return {
-            "stress": stress, "speed": z[[0, -1]], "place": place.real, "acceleration": rate[[0, -1]],
+            "stress": stress, "speed": z[[0, -1]], "place": place.real, "acceleration": moving[[0, -1]],
             "mean": plant.mean @ z, "gradient": gradient, "z": z,
         }  # fmt: skip
 
-    def _load_rows(self) -> list[int]:
-        rows = [i for i in range(len(self.plant.signals)) if i not in self.plant.prescribed]
-        return rows[: len(self.plant.bodies)]
+
+def _shifted(
+    matrix: np.ndarray, weight: np.ndarray, source: np.ndarray, shift: float
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """(rates, modes, sources of the modes' amplitudes), from the inverse at ``shift``."""
+    moved = matrix - shift * weight
+    inverse, modes = np.linalg.eig(np.linalg.solve(moved, weight))
+    given = (np.linalg.inv(modes) @ np.linalg.solve(moved, source)) / inverse[:, None]
+    return shift + 1.0 / inverse, modes, given
 
 
 def _lagrange(nodes: np.ndarray, x: np.ndarray) -> np.ndarray:

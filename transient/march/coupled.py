@@ -16,6 +16,7 @@ from transient.march import closure
 from transient.march.links import Links, links
 
 MOST_ITERATIONS = 60
+LEAST_CONDITION = 1e-15  # reciprocal: a steady state of systems worse than this is none
 
 
 @dataclass(frozen=True, eq=False)
@@ -265,12 +266,8 @@ def _linear_equilibrium(
         right = np.append(right, values[PRESSURE] - rows.row_wall @ speeds)
     else:
         right = right - push * values[PRESSURE]
-    scale = np.abs(matrix).max(axis=1)
-    try:
-        state = np.linalg.solve(matrix / scale[:, None], right / scale)
-    except np.linalg.LinAlgError:
-        return None
-    if not np.isfinite(state).all() or np.linalg.cond(matrix / scale[:, None]) > 1e15:
+    state = _solved(matrix, right)
+    if state is None:
         return None
     whole = np.zeros(len(rows.push))
     whole[index] = state[:size]
@@ -281,6 +278,21 @@ def _linear_equilibrium(
         place[end] = whole[u + 1]
     gradient = float(state[size]) if rows.flow else float(values[PRESSURE])
     return Equilibrium(whole[: rows.unknowns], speeds, place, gradient)
+
+
+def _solved(matrix: np.ndarray, right: np.ndarray) -> np.ndarray | None:
+    """Solution of a linear system, None where it is singular to round-off."""
+    from scipy.linalg import lapack  # its import takes a while
+
+    scale = np.abs(matrix).max(axis=1)
+    if not (scale > 0.0).all():
+        return None
+    scaled = matrix / scale[:, None]
+    factors, pivots, failed = lapack.dgetrf(scaled)
+    if failed or lapack.dgecon(factors, np.abs(scaled).sum(axis=0).max())[0] < LEAST_CONDITION:
+        return None
+    state, _ = lapack.dgetrs(factors, pivots, right / scale)
+    return state if np.isfinite(state).all() else None
 
 
 def periodic_start(system: Dense, after_one: np.ndarray, period: float) -> np.ndarray:

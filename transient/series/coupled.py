@@ -257,7 +257,8 @@ class ClosedSolution:
         age = self.line.starts[p] + x
         first = age <= self.gap.window * 1e-36
         if first.any():
-            limit = _at_once(self.gap, answer.made, -1)
+            # the oscillating modes are added apart, at this instant too
+            limit = _at_once(self.gap, answer.made, -1) - 2.0 * answer.share.real.sum(axis=0)
             for i in np.flatnonzero(self.kick):
                 felt = limit[i] != 0.0
                 value[np.ix_(first, felt)] += self.kick[i] * limit[i, felt]
