@@ -17,7 +17,7 @@ from matplotlib.figure import Figure
 from transient.result.result import Result, ResultError, Variable
 from transient.sheet import figures
 from transient.sheet.figures import FIGURES, draw, save
-from transient.sheet.labels import spread
+from transient.sheet.labels import spread, thinned
 from transient.sheet.profiles import between, instants, time_labels
 from transient.sheet.span import span
 
@@ -352,6 +352,21 @@ def test_matplotlib_waits_until_something_is_drawn():
 def test_the_registry_and_the_default_agree():
     assert figures.DEFAULT in FIGURES
     assert all(FIGURES[name].__name__ == name for name in FIGURES)
+
+
+def test_of_very_many_points_the_extremes_and_gaps_are_drawn():
+    x = np.linspace(0.0, 1.0, 200_001)
+    y = np.sin(40.0 * np.pi * x)
+    y[77_777], y[123_456] = 3.0, np.nan
+    kept_x, kept_y = thinned(x, y)
+    assert len(kept_x) < 5000
+    assert np.nanmax(kept_y) == 3.0
+    assert np.isnan(kept_y).sum() == 1
+    assert (kept_x[0], kept_x[-1]) == (0.0, 1.0)
+    back = np.interp(x, kept_x[np.isfinite(kept_y)], kept_y[np.isfinite(kept_y)])
+    assert np.abs(np.delete(back - y, range(77_500, 78_000)))[:90_000].max() < 2e-2
+    few = x[:100]
+    assert thinned(few, few)[0] is few
 
 
 def test_spread_keeps_order_and_distance():

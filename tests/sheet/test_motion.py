@@ -49,7 +49,8 @@ def test_the_figure_is_complete_and_clear(options):
     ]  # fmt: skip
 
 
-def test_drive_and_film_are_drawn_apart_with_their_powers():
+def test_drive_and_film_are_drawn_apart_with_their_powers(monkeypatch):
+    monkeypatch.setattr("transient.sheet.labels.MOST_POINTS", 10**6)
     result = carriage()
     figure = draw(result, "motion")
     for kind, load in (("drive", result.drive_load), ("film", result.wall_force)):

@@ -122,8 +122,7 @@ def _draw(
     for label, data in curves.items():
         ink, stroke = _look(label, wall_names(result))
         y = data * chosen.factor
-        axes.plot(x, y, color=ink, ls=stroke, gid=f"{words} {label}")
-        board.add_curve(x, y)
+        board.curve(x, y, color=ink, ls=stroke, gid=f"{words} {label}")
         finite = y[np.isfinite(y)]
         ends.append((float(finite[-1]) if len(finite) else 0.0, label, {"color": ink}))
     board.at_ends(ends)

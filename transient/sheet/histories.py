@@ -55,8 +55,7 @@ def by_wall(axes: Axes, result: Result, name: str, span: Span, limits: tuple[flo
     ends = []
     for column, label in grouped(data, wall_names(result)):
         y = data[:, column] * unit.factor
-        axes.plot(x, y, color=INK[column], ls=STROKE[column], label=label, gid=f"{name} {label}")
-        board.add_curve(x, y)
+        board.curve(x, y, color=INK[column], ls=STROKE[column], label=label, gid=f"{name} {label}")
         ends.append((float(y[np.isfinite(y)][-1]) if np.isfinite(y).any() else 0.0, label, {"color": INK[column]}))
     board.at_ends(ends)
     name_axis(axes, WORDS.get(name, variable.long_name), unit.unit)
@@ -73,9 +72,8 @@ def single(axes: Axes, result: Result, name: str, span: Span) -> Board:
     span.dress(axes, last=False)
     axes.set_ylim(low * unit.factor, high * unit.factor)
     y = variable.data * unit.factor
-    axes.plot(x, y, color=INK[0], ls=STROKE[0], gid=name)
     board = Board(axes, unit.factor)
-    board.add_curve(x, y)
+    board.curve(x, y, color=INK[0], ls=STROKE[0], gid=name)
     name_axis(axes, WORDS.get(name, variable.long_name), unit.unit)
     zero_line(axes)
     return board

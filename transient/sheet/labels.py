@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -12,6 +13,8 @@ if TYPE_CHECKING:
 
 # Mean width of a character and height of a line, in units of the font size.
 _WIDE, _TALL = 0.64, 1.25
+# More points than these are no finer in print.
+MOST_POINTS, MOST_SAMPLES = 4000, 20_000
 # Costs of covering, in the order in which they are to be avoided.
 _TEXT, _OUTSIDE, _CURVE, _AWAY = 1000.0, 400.0, 6.0, 0.4
 
@@ -29,6 +32,12 @@ class Board:
     curves: list[np.ndarray] = field(default_factory=list)
     taken: list[tuple[float, float, float, float]] = field(default_factory=list)
 
+    def curve(self, x: np.ndarray, y: np.ndarray, **style: Any) -> None:
+        """Draws a curve through points (n,), of very many only those that show, and makes it known."""
+        x, y = thinned(x, y)
+        self.axes.plot(x, y, **style)
+        self.add_curve(x, y)
+
     def add_curve(self, x: np.ndarray, y: np.ndarray) -> None:
         """Makes a drawn curve known, densely enough that no text slips between its points."""
         points = self.axes.transData.transform(np.column_stack([x, y]))
@@ -37,7 +46,8 @@ class Board:
             self.curves.append(points)
             return
         along = np.concatenate([[0.0], np.cumsum(np.hypot(*np.diff(points, axis=0).T))])
-        even = np.arange(0.0, along[-1] + 2.0, 2.0)
+        step = max(2.0, along[-1] / MOST_SAMPLES)
+        even = np.arange(0.0, along[-1] + step, step)
         self.curves.append(np.column_stack([np.interp(even, along, points[:, i]) for i in range(2)]))
 
     def on_curve(self, index: int, text: str, **style: Any) -> None:
@@ -122,6 +132,20 @@ class Board:
         self.axes.text(
             x, y, text, transform=self.axes.transAxes, ha="center", va="center", size=self.size, zorder=6, **style
         )
+
+
+def thinned(x: np.ndarray, y: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Points (m,) of a curve that look like all of its points (n,): of each group of neighbours the first, the last,
+    the lowest and the highest, and whatever is not finite.  Few points are all kept."""
+    if len(x) <= MOST_POINTS:
+        return x, y
+    edges = np.linspace(0, len(x), MOST_POINTS // 4 + 1).astype(int)
+    keep = [edges[:-1], edges[1:] - 1, np.flatnonzero(~np.isfinite(y))]
+    for lowest in (True, False):
+        values = np.where(np.isfinite(y), y if lowest else -y, np.inf)
+        keep.append(np.array([a + int(np.argmin(values[a:b])) for a, b in pairwise(edges)]))
+    rows = np.unique(np.concatenate(keep))
+    return x[rows], y[rows]
 
 
 def spread(wanted: np.ndarray, least: float, low: float, high: float) -> np.ndarray:

@@ -135,8 +135,7 @@ def _draw(
         kind = label.split()[-1]
         # a drive has its wall's ink, film and pressure have inks that no wall has
         ink = INK[column] if kind == "drive" else INK[2 + (column + (kind == "pressure")) % 2]
-        axes.plot(x, y, color=ink, ls=strokes[kind], gid=f"{words} {label}")
-        board.add_curve(x, y)
+        board.curve(x, y, color=ink, ls=strokes[kind], gid=f"{words} {label}")
         finite = y[np.isfinite(y)]
         ends.append((float(finite[-1]) if len(finite) else 0.0, label, {"color": ink}))
     board.at_ends(ends)

@@ -147,8 +147,7 @@ def _figure(result: Result, first: Trace, second: Trace, stated: Difference) -> 
         x, y = shared.shown(trace.time), trace.value * unit.factor
         few = trace.sampled and len(trace.time) <= POINTS
         style = {"ls": "none", "marker": "o", "ms": 2.6, "mfc": "white", "mew": 0.8} if few else {"ls": STROKE[i]}
-        top.plot(x, y, color=INK[i], gid=f"trace {i}", **style)
-        board.add_curve(x, y)
+        board.curve(x, y, color=INK[i], gid=f"trace {i}", **style)
         names_at.append((float(y[np.isfinite(y)][-1]), ends[i], {"color": INK[i]}))
     board.at_ends(names_at)
     name_axis(top, _quantity(first).split(",")[0], unit.unit)
@@ -180,7 +179,7 @@ def _apart(axes: Axes, shared: Span, first: Trace, second: Trace, stated: Differ
     unit = scale(max(abs(low), abs(high)), first.unit)
     shared.dress(axes, last=False)
     axes.set_ylim(low * unit.factor, high * unit.factor)
-    axes.plot(shared.shown(time), apart * unit.factor, color=INK[3], ls=STROKE[0], lw=1.2, gid="difference")
+    Board(axes).curve(shared.shown(time), apart * unit.factor, color=INK[3], ls=STROKE[0], lw=1.2, gid="difference")
     if stated.when is not None and stated.largest is not None:
         at = shared.place(stated.when), stated.largest * unit.factor
         axes.plot(*at, "o", mfc="white", mec=INK[3], ms=4.5, zorder=5)

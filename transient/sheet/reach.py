@@ -43,8 +43,7 @@ def reach(result: Result) -> Figure:
         # Of two walls the first is the lower or inner one; a single wall is a bore, outside of the fluid.
         low = i == 0 and depth.shape[1] > 1
         y = (inner + depth[:, i] if low else outer - depth[:, i]) * across.factor
-        axes.plot(x, y, color=INK[i], ls=STROKE[i], gid=f"reach {wall_names(result)[i]}")
-        board.add_curve(x, y)
+        board.curve(x, y, color=INK[i], ls=STROKE[i], gid=f"reach {wall_names(result)[i]}")
         ends.append((float(y[np.isfinite(y)][-1]), f"from {wall_names(result)[i]}", {"color": INK[i]}))
     board.at_ends(ends)
     for edge in (inner, outer):

@@ -97,8 +97,7 @@ def stress_panel(axes: Axes, result: Result, shared: Span) -> None:
     if "quasi_steady_stress" in result.variables:
         for column, _ in grouped(result.quasi_steady_stress, wall_names(result)):
             y = result.quasi_steady_stress[:, column] * board.factor
-            axes.plot(x, y, color=INK[column], ls=(0, (1, 2)), lw=1.2, zorder=1.5, gid="quasi-steady")
-            board.add_curve(x, y)
+            board.curve(x, y, color=INK[column], ls=(0, (1, 2)), lw=1.2, zorder=1.5, gid="quasi-steady")
     notes = [_peak(board, result, shared, *group) for group in grouped(result.wall_stress, wall_names(result))]
     found = [note for note in notes if note is not None]
     for x, y, _, _ in found:

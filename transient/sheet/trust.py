@@ -114,13 +114,14 @@ def _history(figure: Figure, axes: Axes, result: Result) -> None:
     top = max([float(np.nanmax(shares)), asked or 0.0])
     if top > 0.0:
         axes.set_ylim(top * DEEPEST, 2.5 * top)
+    board = Board(axes, size=7.5)
     for column, label in grouped(shares, names):
         y = np.maximum(shares[:, column], top * DEEPEST)
-        axes.plot(x, y, color=INK[column], ls=STROKE[column], lw=1.3, gid=f"error {label}")
+        board.curve(x, y, color=INK[column], ls=STROKE[column], lw=1.3, gid=f"error {label}")
         ends.append((float(y[-1]), label, {"color": INK[column]}))
     if asked:
         axes.axhline(asked, color="#1d252c", lw=1.0, gid="asked")
         ends.append((asked, "asked", {"color": SOFT}))
-    Board(axes, size=7.5).at_ends(ends)
+    board.at_ends(ends)
     axes.set_ylabel("error of the stress over\nits wall's largest [1]")
     finish(figure, [axes], result, shared)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from dataclasses import dataclass
 from functools import cached_property
@@ -12,6 +13,7 @@ from transient.result.result import Result
 from transient.result.said import plain, stated
 from transient.sheet.stated import case_of
 
+_RPM = 30.0 / math.pi
 _MICRO = re.compile(r"(?<= )u(?=[a-zA-Z])")
 _POWER = re.compile(r"(?<=\d)e([+-]\d+)")
 
@@ -73,8 +75,12 @@ class Facts:
 
 
 def said(value: float | None, error: float | None, unit: str) -> str:
-    """``value ± error`` in words, a dash for a number that does not exist."""
-    return "–" if value is None else printed(stated(value, error, unit))
+    """``value ± error`` in words, a dash for a number that does not exist; angular speeds as drives are set."""
+    if value is None:
+        return "–"
+    if unit == "rad/s":
+        value, error, unit = value * _RPM, None if error is None else error * _RPM, "rpm"
+    return printed(stated(value, error, unit))
 
 
 def brief(value: float | None, unit: str) -> str:

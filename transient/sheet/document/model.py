@@ -80,10 +80,10 @@ def _wall(wall: WallInput, tree: dict[str, Any], rotating: bool) -> str:
 def _body(tree: dict[str, Any], rotating: bool) -> str:
     inertia, load, speed = ("I", "M", "ω") if rotating else ("m", "F", "U")
     terms = [f"{load}(t)"] if ("torque" if rotating else "force") in tree else []
-    terms += [f"{load}_curve({speed})"] if ("torque_curve" if rotating else "force_curve") in tree else []
+    terms += [f"{load}({speed})"] if ("torque_curve" if rotating else "force_curve") in tree else []
     terms += ["m g sin(incline)"] if "incline" in tree else []
     terms += ["τ r A n" if rotating else "τ A n"]
-    terms += ["p A_displaced"] if "displaces" in tree else []
+    terms += ["p times the displaced area"] if "displaces" in tree else []
     losses = {"damping": f"c {speed}", "stiffness": "k X", "dry_friction": "dry friction"}
     lost = "".join(f" − {word}" for key, word in losses.items() if key in tree)
     driven = next((tree[key] for key in ("force", "torque") if key in tree), None)
