@@ -55,7 +55,7 @@ def started(sweep_file, tmp_path):
 def wait_for_chunks(out: Path, number: int) -> list[str]:
     """The names of the finished chunks, once there are so many."""
     for _ in range(2000):
-        found = sorted(path.name for path in folder_of(out).glob("*.npz"))
+        found = sorted(path.name for path in folder_of(out).glob("*.piece"))
         if len(found) >= number:
             return found
         time.sleep(0.02)
@@ -157,8 +157,9 @@ def test_a_chunk_is_whole_or_absent(sweep_file, tmp_path, monkeypatch):
     store = pieces.Folder(plan, tmp_path / "parts")
     with store:
         store.begin()
-    (tmp_path / "parts" / "0000003.npz").write_bytes(b"PK\x03\x04 cut short")
+    (tmp_path / "parts" / "0000003.piece").write_bytes(b"\x93NUMPY cut short")
     (tmp_path / "parts" / "0000004.draft").write_bytes(b"under way")
+    (tmp_path / "parts" / "0000005.piece").write_bytes(b"")
     assert store.missing() == list(range(plan.chunks))
 
 

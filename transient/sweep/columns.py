@@ -22,7 +22,6 @@ STATUS = ("solved", "refused", "failed", "open")
 SOLVED, REFUSED, FAILED, OPEN = range(4)
 VERDICTS = ("", "good", "caution", "outside", "failed")
 CODES = ("status", "verdict")
-TEXTS = ("message",)
 
 
 @dataclass(frozen=True)

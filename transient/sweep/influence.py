@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -37,6 +38,14 @@ class Inputs:
         self.rows = slice(None, None, step)
         values = plan.values(0, plan.rows) if step == 1 else _every(plan, step)
         self.factors = [one for key in plan.frame.keys if (one := _factor(plan, key, values)) is not None]
+
+    def sample(self, have: np.ndarray) -> Sample:
+        """The inputs in the rows (n,) that have an answer; mostly all have, and then it is made once."""
+        return self._whole if have.all() else Sample(self.factors, have)
+
+    @cached_property
+    def _whole(self) -> Sample:
+        return Sample(self.factors, np.ones(len(self.factors[0].classes), bool))
 
     def of(self, row: int) -> dict[str, Any]:
         """The inputs of one row, in SI, texts and tables as the case file has them."""
@@ -86,6 +95,47 @@ def _classes(values: np.ndarray, most: int) -> np.ndarray:
     return order * number // len(values)
 
 
+class Sample:
+    """The inputs over some rows, made ready for the answers there: ``have`` (n,) which rows."""
+
+    def __init__(self, factors: list[Factor], have: np.ndarray):
+        whole = bool(have.all())
+        rows = slice(None) if whole else have
+        self.factors = factors
+        self.rows = int(np.count_nonzero(have))
+        self.classes = [one.classes[rows] for one in factors]
+        self.counts = [np.bincount(classes) for classes in self.classes]
+        self.chance = [not (one.crossed and whole) for one in factors]
+        x = np.array([one.values[rows] for one in factors if one.values is not None])
+        if len(x):
+            x -= x.mean(axis=1, keepdims=True)
+            spread = x.std(axis=1, keepdims=True)
+            x /= np.where(spread > 0.0, spread, 1.0)
+        self.x = x
+        self.gram = x @ x.T if len(x) else np.empty((0, 0))
+
+    def shares(self, y: np.ndarray) -> list[float]:
+        """Share of the variance of standardised ``y`` (rows,) that each input's levels or classes explain."""
+        out = []
+        for classes, counts, chance in zip(self.classes, self.counts, self.chance, strict=True):
+            used = counts > 0
+            explained = float((np.bincount(classes, y)[used] ** 2 / counts[used]).sum()) / self.rows
+            groups = int(used.sum())
+            if chance and groups < self.rows:
+                explained -= (groups - 1) * (1.0 - explained) / (self.rows - groups)
+            out.append(float(np.clip(explained, 0.0, 1.0)))
+        return out
+
+    def lines(self, y: np.ndarray) -> tuple[list[float], float | None]:
+        """(standardised coefficients of the inputs that are numbers, R^2) of ``y`` (rows,), standardised."""
+        if not len(self.x) or self.rows <= len(self.x) + 1:
+            return [0.0] * len(self.x), None
+        # Through the small normal equations: rows may be a million, inputs are few.
+        along = self.x @ y
+        slopes = np.linalg.lstsq(self.gram, along, rcond=1e-10)[0]
+        return slopes.tolist(), float(slopes @ along / (y @ y))
+
+
 def influence(inputs: Inputs, values: np.ndarray) -> dict[str, Any]:
     """``sensitivities`` of values (n,) ranked by share; ``linear``, the share of the variance that lines explain (R^2).
 
@@ -99,41 +149,11 @@ def influence(inputs: Inputs, values: np.ndarray) -> dict[str, Any]:
     if len(y) < 2 or not inputs.factors or np.ptp(y) <= 1e-12 * np.abs(y).max():
         return {"linear": None, "sensitivities": []}
     y = (y - y.mean()) / y.std()
-    slopes, linear = _regression([one.values[have] for one in inputs.factors if one.values is not None], y)
+    sample = inputs.sample(have)
+    slopes, linear = sample.lines(y)
     steep = iter(slopes)
-    found = []
-    for one in inputs.factors:
-        share = _explained(one.classes[have], y)
-        if not (one.crossed and have.all()):
-            share = _above_chance(share, len(np.unique(one.classes[have])), len(y))
-        slope = None if one.values is None else float(next(steep))
-        found.append({"key": one.key.name, "share": share, "slope": slope})
+    found = [
+        {"key": one.key.name, "share": share, "slope": None if one.values is None else next(steep)}
+        for one, share in zip(inputs.factors, sample.shares(y), strict=True)
+    ]
     return {"linear": linear, "sensitivities": sorted(found, key=lambda one: -one["share"])}
-
-
-def _explained(classes: np.ndarray, y: np.ndarray) -> float:
-    """Share of the variance of standardised ``y`` (n,) that the means of its ``classes`` (n,) explain."""
-    counts = np.bincount(classes)
-    used = counts > 0
-    return float((np.bincount(classes, y)[used] ** 2 / counts[used]).sum()) / len(y)
-
-
-def _above_chance(explained: float, groups: int, rows: int) -> float:
-    """What is left of an explained share once that of chance alone is taken away."""
-    if groups >= rows:
-        return explained
-    return float(np.clip(explained - (groups - 1) * (1.0 - explained) / (rows - groups), 0.0, 1.0))
-
-
-def _regression(columns: list[np.ndarray], y: np.ndarray) -> tuple[np.ndarray, float | None]:
-    """(standardised coefficients, R^2) of ``y`` (standardised) on the columns."""
-    if not columns or len(y) <= len(columns) + 1:
-        return np.full(len(columns), 0.0), None
-    x = np.stack(columns, axis=1)
-    x = x - x.mean(axis=0)
-    spread = x.std(axis=0)
-    x = x / np.where(spread > 0.0, spread, 1.0)
-    # Through the small normal equations: rows may be a million, inputs are few.
-    slopes = np.linalg.lstsq(x.T @ x, x.T @ y, rcond=1e-10)[0]
-    left = y - x @ slopes
-    return slopes, float(1.0 - (left @ left) / (y @ y))

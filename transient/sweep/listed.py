@@ -95,8 +95,8 @@ def _from_file(stated: Stated, name: str) -> Listed:
             line = reader.line_num
             plain = _all_numbers(path, line, len(head)) if all("[" in cell for cell in head) else None
             file.seek(0)
-            reader = csv.reader(file)
-            lines = [(reader.line_num, row) for row in reader if any(row) and row[0][:1] != "#"] if plain is None else []
+            reader = csv.reader(file if plain is None else [])
+            lines = [(reader.line_num, row) for row in reader if any(row) and row[0][:1] != "#"]
     except UnicodeDecodeError:
         raise refuse("is not a text file (UTF-8); a CSV file is needed") from None
     except (OSError, ValueError, csv.Error) as error:

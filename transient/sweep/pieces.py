@@ -8,7 +8,6 @@ from __future__ import annotations
 import json
 import os
 import shutil
-import zipfile
 from collections.abc import Iterator
 from contextlib import suppress
 from pathlib import Path
@@ -19,10 +18,11 @@ import numpy as np
 from transient.case.model import CaseError
 from transient.sweep.cases import Plan
 from transient.sweep.chunk import Histories, Piece
-from transient.sweep.columns import CODES, TEXTS, Column
+from transient.sweep.columns import CODES, Column
 
 IDENTITY = "sweep.json"
 LOCK = "lock"
+END = b"\nthe end\n"  # of a chunk's file that is whole
 
 
 class Store(Protocol):
@@ -94,7 +94,9 @@ class Folder:
         draft = place.with_suffix(".draft")
         try:
             with open(draft, "wb") as file:
-                np.savez(file, **_packed(piece, self.columns))
+                for array in _packed(piece, self.columns):
+                    np.save(file, array, allow_pickle=False)
+                file.write(END)
                 file.flush()
                 os.fsync(file.fileno())
             os.replace(draft, place)
@@ -105,19 +107,24 @@ class Folder:
 
     def get(self, chunk: int) -> Piece:
         """A chunk that was put."""
-        with np.load(self._file(chunk), allow_pickle=False) as arrays:
-            return _unpacked(dict(arrays), self.columns)
+        number = 6 if self.plan.frame.histories else 3
+        with open(self._file(chunk), "rb") as file:
+            return _unpacked([np.load(file, allow_pickle=False) for _ in range(number)], self.columns)
 
     def missing(self) -> list[int]:
         """The chunks still to solve; what is there but not whole counts as missing."""
         return [chunk for chunk in range(self.plan.chunks) if not self._there(chunk)]
 
     def _there(self, chunk: int) -> bool:
-        place = self._file(chunk)
-        return place.exists() and zipfile.is_zipfile(place)
+        try:
+            with open(self._file(chunk), "rb") as file:
+                file.seek(-len(END), os.SEEK_END)
+                return file.read() == END
+        except OSError:
+            return False
 
     def _file(self, chunk: int) -> Path:
-        return self.path / f"{chunk:07d}.npz"
+        return self.path / f"{chunk:07d}.piece"
 
     def close(self) -> None:
         """Lets others write there."""
@@ -154,24 +161,20 @@ def _whole(place: Path, data: bytes) -> None:
     os.replace(draft, place)
 
 
-def _packed(piece: Piece, columns: tuple[Column, ...]) -> dict[str, np.ndarray]:
+def _packed(piece: Piece, columns: tuple[Column, ...]) -> list[np.ndarray]:
     """A piece as a few plain arrays: the numbers as one block, whose writing costs less than that of many."""
     rows = len(piece.columns["status"])
     numbers = np.array([piece.columns[column.name] for column in columns], dtype=float).reshape(len(columns), rows)
-    out = {"numbers": numbers, "codes": np.array([piece.columns[name] for name in CODES])}
-    out |= {name: np.array(piece.columns[name], dtype=str) for name in TEXTS}
-    if piece.histories is not None:
-        out |= {f"history_{name}": getattr(piece.histories, name) for name in ("rows", "time", "stress")}
-    return out
+    out = [numbers, np.array([piece.columns[name] for name in CODES]), np.array(piece.columns["message"], dtype=str)]
+    kept = piece.histories
+    return out if kept is None else [*out, kept.rows, kept.time, kept.stress]
 
 
-def _unpacked(arrays: dict[str, np.ndarray], columns: tuple[Column, ...]) -> Piece:
-    out = {column.name: row for column, row in zip(columns, arrays["numbers"], strict=True)}
-    out |= dict(zip(CODES, arrays["codes"], strict=True))
-    out |= {name: arrays[name].astype(object) for name in TEXTS}
-    if "history_rows" not in arrays:
-        return Piece(out)
-    return Piece(out, Histories(*(arrays[f"history_{name}"] for name in ("rows", "time", "stress"))))
+def _unpacked(arrays: list[np.ndarray], columns: tuple[Column, ...]) -> Piece:
+    numbers, codes, messages, *kept = arrays
+    out = {column.name: row for column, row in zip(columns, numbers, strict=True)}
+    out |= {**dict(zip(CODES, codes, strict=True)), "message": messages.astype(object)}
+    return Piece(out, Histories(*kept) if kept else None)
 
 
 def pieces(store: Store, plan: Plan) -> Iterator[tuple[int, int, Piece]]:
