@@ -229,6 +229,24 @@ def test_a_sweep_with_cases_that_failed_says_so(sweep: Result):
     assert "b" not in page.tags
 
 
+def test_a_run_s_sheet_takes_its_input_uncertainty_from_a_sweep(sweep: Result, solved, tmp_path: Path):
+    result = solved("flow_cell")
+    write_sheet(result, tmp_path / "a.html", "flow_cell.h5", sweep=sweep, sweep_name="runs/small.h5")
+    text = Page((tmp_path / "a.html").read_text(encoding="utf-8")).text
+    part = sweep.summary["headlines"]["settling_time"]
+    for level in ("5", "95"):
+        assert f"{1e3 * part['percentiles'][level]:.4g} ms" in text
+    assert "From 18 cases of the same case with its inputs varied (small.h5)" in text
+    assert "transient sheet outputs/flow_cell.h5 --sweep outputs/small.h5" in text
+    for other, more, words in (
+        (solved("cold_oil_line"), sweep, "varies another case than this result's"),
+        (result, result, "holds a single run; the result of a sweep is needed"), (sweep, sweep, "is that of a sweep"),
+    ):  # fmt: skip
+        with pytest.raises(ResultError, match=words):
+            write_sheet(other, tmp_path / "b.html", sweep=more)
+    assert not (tmp_path / "b.html").exists()
+
+
 def test_the_sheet_of_a_sweep_as_pdf(sweep: Result, tmp_path: Path):
     write_sheet(sweep, tmp_path / "sweep.pdf")
     assert (tmp_path / "sweep.pdf").read_bytes().startswith(b"%PDF")

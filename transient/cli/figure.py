@@ -69,6 +69,7 @@ def figure(
     with refusals():
         if animate:
             return _animate(result, out)
+        _target(out, result)  # before anything is read
         if against is not None:
             target = _target(out, result.with_name(f"{result.stem}_against_{against.stem}.png"))
             delay = 0.0 if shift is None else _time("--shift", shift)

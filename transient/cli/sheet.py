@@ -25,6 +25,10 @@ def sheet(
     words: Annotated[
         str, typer.Option("--note", metavar="TEXT", help="A purpose or remark of your own, put at the top.")
     ] = "",
+    sweep: Annotated[
+        Path | None,
+        typer.Option("--sweep", metavar="SWEEP.h5", help="The same case over its tolerances: the input uncertainty."),
+    ] = None,
     version: Version = False,
 ) -> int:
     """Write a result up for a design file, as one page that needs no network.
@@ -38,7 +42,8 @@ def sheet(
     from transient.sheet.document.write import write_sheet
 
     with refusals():
-        write_sheet(read(result), target, result.name, scale, words)
+        varied = None if sweep is None else read(sweep)
+        write_sheet(read(result), target, result.name, scale, words, varied, str(sweep))
     note(f"wrote {target}")
     return GOOD
 

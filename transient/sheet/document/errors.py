@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from transient.result.result import Result
 from transient.result.said import percent
 from transient.sheet.document.blocks import Block, Table, Words
-from transient.sheet.document.facts import Facts, said, share
+from transient.sheet.document.facts import Facts, brief, said, share
 
 KINDS = {"exact": "exact series", "estimate": "refinement"}
 
@@ -47,7 +48,10 @@ def _rows(facts: Facts) -> list[tuple[str, str, str, str]]:
 
 
 def inputs_uncertain(facts: Facts) -> tuple[Block, ...]:
-    """What uncertain inputs do, apart from the solver's error: between which limits each number moves."""
+    """What uncertain inputs do, apart from the solver's error: by a sweep over the tolerances where there is one, else
+    between which limits each number moves."""
+    if facts.sweep is not None:
+        return _by_sweep(facts, facts.sweep)
     if facts.case is None:
         return (Words("Not stated: this version does not read the case."),)
     words = (
@@ -57,6 +61,30 @@ def inputs_uncertain(facts: Facts) -> tuple[Block, ...]:
         "comes from solving it again with the input changed, or over a whole tolerance by a sweep with [scatter]."
     )
     return Words(words), Table(("1 % more", "settling time", "wall stress"), tuple(_sensitivities(facts)), wide=-1)
+
+
+def _by_sweep(facts: Facts, sweep: Result) -> tuple[Block, ...]:
+    """How far each number reaches in a sweep of the same case, and what drives that."""
+    rows, drivers = [], []
+    for name, part in (sweep.summary.get("headlines") or {}).items():
+        levels = part.get("percentiles") or {}
+        chosen = [levels.get("5", part["least"]), part["median"], levels.get("95", part["greatest"])]
+        rows.append((name.replace("_", " "), *(brief(value, part["unit"]) for value in chosen)))
+        found = [one for one in part.get("sensitivities") or [] if one["share"] >= 0.05]
+        if found:
+            told = ", ".join(f"{one['key']} {100 * one['share']:.0f} %" for one in found[:4])
+            drivers.append((name.replace("_", " "), told))
+    samples = sweep.summary.get("samples")
+    ends = ("5 %", "95 %") if samples else ("least", "greatest")
+    words = Words(
+        f"Not part of ±. From {sweep.summary.get('cases')} cases of the same case with its inputs varied "
+        f"({facts.sweep_name}); they hold every combination of its steps"
+        f"{f' with {samples} random samples at each' if samples else ''}."
+    )
+    blocks: list[Block] = [words, Table(("number", ends[0], "median", ends[1]), tuple(rows), numbers=(1, 2, 3))]
+    if drivers:
+        blocks.append(Table(("number", "share of the variance by input"), tuple(drivers), wide=1))
+    return tuple(blocks)
 
 
 def _sensitivities(facts: Facts) -> list[tuple[str, str, str]]:

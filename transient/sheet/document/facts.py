@@ -20,12 +20,15 @@ _POWER = re.compile(r"(?<=\d)e([+-]\d+)")
 
 @dataclass(frozen=True, eq=False)
 class Facts:
-    """``name`` of the result's file; ``factor`` on loads or None; ``note`` a user's own words or ""."""
+    """``name`` of the result's file; ``factor`` on loads or None; ``note`` a user's own words or ""; ``sweep`` of the
+    same case over its tolerances, or None, with the ``sweep_name`` of its file."""
 
     result: Result
     name: str
     factor: float | None = None
     note: str = ""
+    sweep: Result | None = None
+    sweep_name: str = ""
 
     @property
     def summary(self) -> dict[str, Any]:

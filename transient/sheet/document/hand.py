@@ -40,9 +40,9 @@ def hand(facts: Facts) -> tuple[Block, ...]:
     if rows:
         blocks.append(Table(("number", "by hand", "this run", "difference"), tuple(rows), numbers=(1, 2, 3)))
     if part:
-        verdict = "The hand formula would have been enough" if part.get("enough") else "The hand formula is not enough"
-        note = f": {part['note']}" if part.get("note") else ""
-        blocks.append(Words(f"{verdict}{note}."))
+        verdict = "Enough here" if part.get("enough") else "Not enough here"
+        note = part.get("note") or "the hand formula stands alone"
+        blocks.append(Words(f"{verdict}: {note}."))
     return tuple(blocks) or (Words("This result holds no hand formula."),)
 
 

@@ -28,7 +28,7 @@ STRESSES = {
 def model(facts: Facts) -> tuple[Block, ...]:
     """Equation, wall stress, conditions and assumptions."""
     case = facts.case
-    if case is None:
+    if case is None or case.gap.shape.metric not in EQUATIONS:
         return (Words("The case file at the end states the model; this version does not read it."), _assumed(facts))
     metric = case.gap.shape.metric
     text, letters = EQUATIONS[metric]

@@ -14,11 +14,12 @@ PACKAGES = ("numpy", "scipy", "numba", "h5py", "matplotlib")
 def record(facts: Facts) -> tuple[Block, ...]:
     """Program and versions, command, case file."""
     stem = facts.stem
-    factor = f" --factor {facts.factor:g}" if facts.factor else ""
+    options = f" --factor {facts.factor:g}" if facts.factor else ""
+    options += f" --sweep {quoted(f'outputs/{facts.sweep_name}')}" if facts.sweep is not None else ""
     return (
         Table(("record", ""), record_rows(facts), wide=1),
         Words(f"To run it again, save the case below as {stem}.toml and give:"),
-        Listing(f"transient run {quoted(f'{stem}.toml')}\ntransient sheet {quoted(f'outputs/{stem}.h5')}{factor}"),
+        Listing(f"transient run {quoted(f'{stem}.toml')}\ntransient sheet {quoted(f'outputs/{stem}.h5')}{options}"),
         Words("The case in full (tables from files are written out):"),
         Listing(facts.result.case_text.strip("\n")),
     )
