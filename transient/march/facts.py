@@ -11,6 +11,7 @@ from transient.march.levels import Ladder
 from transient.march.march import sudden_motion
 from transient.march.rates import accelerations
 from transient.march.regime import Outlook
+from transient.result.driven import body_speed
 from transient.result.history import History, largest
 from transient.result.run import BodyFacts, Errors, Regime, Run, WallFacts
 
@@ -53,7 +54,7 @@ def body_facts(problem: Problem, ladder: Ladder, end: int) -> BodyFacts:
     acceleration, jerk = accelerations(problem, ladder.inputs, flow, end)
     terminal = size = None
     if best.orbit is not None:
-        size = abs(best.orbit.speed_curve(end).magnitude()[0])
+        size = abs(body_speed(best.orbit, end).magnitude()[0])
     elif best.deviation is not None:
         terminal = float(best.steady_speeds[end])
         size = abs(terminal)

@@ -26,7 +26,8 @@ EXTRAPOLATED = (
 CHUNK_ROWS = 4096
 PROFILE_BYTES = 16e6  # of the base level; longer runs keep every 2nd, 4th, ... profile
 MOST_STEPS = 20_000_000
-FRESH = 64.0  # first steps after which the layers of a sudden motion are many cells wide
+FRESH = 4.0  # first steps, over the accuracy, after which the layers of a sudden motion are many cells wide
+SOON = 1e-5  # of a piece: no more of it is left out
 
 
 class SolveError(RuntimeError):
@@ -92,7 +93,7 @@ def initial_state(problem: Problem, system: System, inputs: Inputs) -> State:
     given = np.array([0.0 if b is None or b.initial_speed is None else b.initial_speed for b in bodies])
     place = np.array([0.0 if b is None else b.initial_displacement for b in bodies])
     if problem.start == "rest":
-        return State(nothing, nothing, given, place)
+        return State(nothing + _displaced(problem, system, given), nothing, _shared(problem, system, given), place)
     if not problem.closed:
         return State(steady(system, inputs.before[:2], float(inputs.before[PRESSURE])), nothing)
     held = {end: float(given[end]) for end, b in enumerate(bodies) if b is not None and b.initial_speed is not None}
@@ -101,6 +102,28 @@ def initial_state(problem: Problem, system: System, inputs: Inputs) -> State:
         raise SolveError("the start is to be steady, but the body has no equilibrium speed under its load before t = 0")
     free = [b is not None and end not in held and b.stiffness > 0.0 for end, b in enumerate(bodies)]
     return State(found.velocity, nothing, found.speeds, np.where(free, found.place, place), found.gradient)
+
+
+def _shared(problem: Problem, system: System, speed: np.ndarray) -> np.ndarray:
+    """Speeds (2,) at which bodies that start at ``speed`` have, with the wall's half cell, their own momentum only."""
+    out = speed.copy()
+    for end, wall in enumerate(problem.walls):
+        if wall.body is not None and speed[end]:
+            half = wall.body.grip / system.grid.stress_radius[end] * problem.density * system.end_volume[end]
+            out[end] *= wall.body.mass / (wall.body.mass + half)
+    return out
+
+
+def _displaced(problem: Problem, system: System, speed: np.ndarray) -> float:
+    """Velocity of all liquid at once where bodies that start at ``speed`` displace it through their own gap."""
+    if problem.flow is None or not problem.section:
+        return 0.0
+    swept = sum(
+        wall.body.displaced / (problem.section * problem.count) * speed[end]
+        for end, wall in enumerate(problem.walls)
+        if wall.body is not None
+    )
+    return -float(swept / system.grid.mean_weight.sum())
 
 
 def march(
@@ -315,6 +338,8 @@ def history(
     for end, wall in enumerate(problem.walls):
         if wall.body is not None:
             value[end], slope[end] = fields[:, kernel.WALLS + end], fields[:, kernel.WALLS + 2 + end]
+            if before is not None and problem.start == "rest" and wall.body.initial_speed is not None:
+                value[end, 0] = wall.body.initial_speed
     if problem.flow is not None:
         value[PRESSURE] = fields[:, kernel.DROP]
     stress = _stresses(problem, trace, value, slope)
@@ -342,10 +367,10 @@ def history(
         value[PRESSURE], slope[PRESSURE], place, system.grid.radius[::every], at, profile, profile_rate, travel,
         system.grid.radius[::every] if problem.rotating else None,
     )  # fmt: skip
-    return whole if problem.flow is None else _without_first_steps(whole)
+    return whole if problem.flow is None else _without_first_steps(whole, problem.accuracy)
 
 
-def _without_first_steps(history: History) -> History:
+def _without_first_steps(history: History, accuracy: float) -> History:
     """The rows but for the first steps after an infinite pressure of a prescribed flow.
 
     Walls' half cells take a new speed at once, and the pressure answers for all of the gap: until the layers are many
@@ -356,7 +381,8 @@ def _without_first_steps(history: History) -> History:
         rows = np.flatnonzero(history.piece == history.piece[start])
         rows = rows[(rows > start) & (rows < rows[-1])]
         if len(rows):
-            keep[rows[history.offset[rows] < FRESH * history.offset[rows[0]]]] = False
+            until = min(FRESH / accuracy * history.offset[rows[0]], SOON * history.offset[rows[-1]])
+            keep[rows[history.offset[rows] < until]] = False
     if keep.all():
         return history
     kept = keep[history.profile_row]

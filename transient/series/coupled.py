@@ -33,6 +33,7 @@ HAIR = 3e-5
 _FAR, _FARTHEST = 1e26, 1e30
 _GROWS, _VANISHES = 0.3, -0.2
 ROUND_OFFS = 8.0
+MOTIONS = (slice(0, 2), slice(2, 4), slice(4, 6), slice(6, 7))  # kinds of outputs of ``motion_of``
 
 
 @dataclass(frozen=True, eq=False)
@@ -80,6 +81,7 @@ class ClosedAnswer:
 
     gap: Gap
     made: Made
+    alike: tuple[slice, ...]
     share: np.ndarray
     sudden: np.ndarray
     modes: Modes
@@ -89,15 +91,18 @@ class ClosedAnswer:
     tables: dict[tuple[int, int], EarlyTable] = field(default_factory=dict)
 
     @classmethod
-    def of(cls, gap: Gap, made: Made) -> ClosedAnswer:
-        """Prepare: the shares (P, 3, Q) of the oscillating modes, and what is felt at once."""
+    def of(cls, gap: Gap, made: Made, alike: tuple[slice, ...]) -> ClosedAnswer:
+        """Prepare: the shares (P, 3, Q) of the oscillating modes, and what is felt at once.
+
+        ``alike``: outputs of one kind each, whose sizes compare.
+        """
         swing = gap.swing
         share = made(swing.pole, swing.residue, swing.walls)
         count = share.shape[2]
         none = np.empty(0)
         nothing = Modes(gap.shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
         weight, slow = np.empty((0, count)), np.zeros((4, 3, count))
-        return cls(gap, made, share, _at_once(gap, made, 0), nothing, weight, slow)
+        return cls(gap, made, alike, share, _at_once(gap, made, 0), nothing, weight, slow)
 
     @property
     def window(self) -> float:
@@ -210,7 +215,7 @@ class ClosedSolution:
         A place is a body's from its own zero; a prescribed wall's counts from t = 0.
         """
         calm = np.concatenate([self.base[:2], np.zeros(4), self.base[2:]])
-        value, bound = self._evaluate(self._answer("motion", motion_of), piece, offset, calm)
+        value, bound = self._evaluate(self._answer("motion", motion_of, MOTIONS), piece, offset, calm)
         time = self.problem.diffusion_time
         pressure = self.problem.viscosity / self.problem.gap**2
         scale = np.array([1.0, 1.0, 1.0 / time, 1.0 / time, time, time, pressure])
@@ -228,9 +233,9 @@ class ClosedSolution:
         value, bound = self._evaluate(answer, piece, offset, calm)
         return value, bound.max(axis=1, initial=0.0) * (1.0 + FAINT)
 
-    def _answer(self, name: str, made: Made) -> ClosedAnswer:
+    def _answer(self, name: str, made: Made, alike: tuple[slice, ...] = (slice(None),)) -> ClosedAnswer:
         if name not in self.answers:
-            self.answers[name] = ClosedAnswer.of(self.gap, made)
+            self.answers[name] = ClosedAnswer.of(self.gap, made, alike)
         return self.answers[name]
 
     def _evaluate(
@@ -246,7 +251,9 @@ class ClosedSolution:
         late = self._add_swings(answer, p, x, value, size)
         a = self.shape.a
         trust = TRUST * (1 + (HAIR / a if a > 0 else 0.0)) + ROUNDING * a
-        return value, trust * (size + FLOOR * size.max(axis=1, keepdims=True)) + late
+        for alike in answer.alike:
+            size[:, alike] += FLOOR * size[:, alike].max(axis=1, keepdims=True)
+        return value, trust * size + late
 
     def _add_kick(
         self, answer: ClosedAnswer, p: np.ndarray, x: np.ndarray, value: np.ndarray, size: np.ndarray
@@ -336,9 +343,7 @@ def solve_closed(problem: Problem, until: float) -> ClosedSolution:
             continue
         spring = closing.stiffness[end] / problem.diffusion_time
         held = base[end] if problem.start == "steady" else 0.0
-        if problem.start == "rest":
-            kick[end] = closing.mass[end] * (body.initial_speed or 0.0)
-        elif body.initial_speed is None and spring > 0.0:
+        if problem.start == "steady" and body.initial_speed is None and spring > 0.0:
             place[end] = (before[end] - closing.load_on(base, end)) / spring
         poly[:, end, 0] -= spring * place[end] + closing.stiffness[end] * held * line.starts
         poly[:, end, 1] -= closing.stiffness[end] * held
@@ -352,9 +357,20 @@ def solve_closed(problem: Problem, until: float) -> ClosedSolution:
     line = replace(line, poly=np.ascontiguousarray(poly), before=before, quiet=quiet)
     window = 1.01 * until / problem.diffusion_time
     gap = Gap(shape, closing, swings(closing), window)
+    if problem.start == "rest":
+        kick = _kick(gap, np.array([0.0 if b is None else b.initial_speed or 0.0 for b in bodies]))
     none = np.empty(0)
     kept = Modes(shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
     return ClosedSolution(problem, gap, line, states(line, kept), base, place, kick, inputs.starts)
+
+
+def _kick(gap: Gap, speed: np.ndarray) -> np.ndarray:
+    """Impulses (3,) that give the bodies their ``speed`` (2,), displaced liquid included."""
+    out = np.zeros(3)
+    moved = np.flatnonzero(gap.closing.body & (gap.closing.mass > 0.0))
+    if speed[moved].any():
+        out[moved] = np.linalg.solve(_at_once(gap, motion_of, -1)[np.ix_(moved, moved)].T, speed[moved])
+    return out
 
 
 def _calm(closing: Closing, line: Timeline, bodies: list) -> np.ndarray:

@@ -7,6 +7,7 @@ import numpy as np
 from transient.gap.problem import Inputs, Problem
 from transient.march.rates import accelerations
 from transient.result.curve import Curve
+from transient.result.driven import body_acceleration, body_place, body_speed
 from transient.result.history import History
 from transient.series.coupled import ClosedSolution
 
@@ -22,26 +23,21 @@ def motion_errors(
     rows = len(history.time)
     out = {"speed": np.zeros((rows, 2)), "acceleration": np.zeros((rows, 2)), "place": np.zeros((rows, 2))}
     out["gradient"] = np.zeros(rows)
-    plain: dict[tuple[str, int], Curve] = {}
-    rooted: dict[tuple[str, int], Curve] = {}
+    curves: dict[tuple[str, int], Curve] = {}
     for end, wall in enumerate(problem.walls):
         if wall.body is None:
             continue
-        value, rate = accelerations(problem, inputs, history, end)
-        plain["speed", end] = history.speed_curve(end)
-        plain["place", end] = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
-        rooted["acceleration", end] = Curve(history.time, value, rate, history.step, history.offset[:-1])
+        curves["speed", end] = body_speed(history, end)
+        curves["place", end] = body_place(history, end)
+        curves["acceleration", end] = body_acceleration(history, *accelerations(problem, inputs, history, end))
     if problem.flow is not None:
-        rooted["gradient", 0] = history.gradient_curve()
-    for curves in (plain, rooted):
-        if not curves:
-            continue
-        found = _errors(history, exact, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
-        for (name, end), error in zip(curves, found.T, strict=True):
-            if name == "gradient":
-                out[name] = error
-            else:
-                out[name][:, end] = error
+        curves["gradient", 0] = history.gradient_curve()
+    found = _errors(history, exact, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
+    for (name, end), error in zip(curves, found.T, strict=True):
+        if name == "gradient":
+            out[name] = error
+        else:
+            out[name][:, end] = error
     return out
 
 
@@ -50,12 +46,12 @@ def speed_errors(problem: Problem, history: History, exact: ClosedSolution) -> n
     out = np.zeros((len(history.time), 2))
     bodies = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
     if bodies:
-        out[:, bodies] = _errors(history, exact, [history.speed_curve(end) for end in bodies], bodies)
+        out[:, bodies] = _errors(history, exact, [body_speed(history, end) for end in bodies], bodies)
     return out
 
 
 def _errors(history: History, exact: ClosedSolution, curves: list[Curve], columns: list[int]) -> np.ndarray:
-    """Errors (n, c) of ``curves``, which share their measure of an interval's share, against the exact ``columns``."""
+    """Errors (n, c) of ``curves``, all cubics in the root of time, against the exact ``columns``."""
     inside = np.flatnonzero(history.step > 0.0)
     half = np.where(inside % 2 == 0, 0.3, 0.7)
     piece = np.concatenate([history.piece, history.piece[inside]])

@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 
 from transient.result.curve import Curve
+from transient.result.driven import body_acceleration, body_place, body_speed
 from transient.result.headline.settling import Judge
 from transient.result.run import ZERO, BodyFacts, Run
 
@@ -21,12 +22,10 @@ def _body(run: Run, body: BodyFacts) -> dict[str, Any]:
     from transient.result.headline import plain
 
     history, end = run.history, body.end
-    speed = history.speed_curve(end)
+    speed = body_speed(history, end)
     fastest, fastest_at = speed.magnitude()
     infinite = bool(np.isnan(body.acceleration).any())
-    quickest, quickest_at = Curve(
-        history.time, body.acceleration, body.jerk, history.step, history.offset[:-1]
-    ).magnitude()
+    quickest, quickest_at = body_acceleration(history, body.acceleration, body.jerk).magnitude()
     settled, spread, grazes = _settling(run, body)
     return {
         "terminal_speed": None if body.terminal is None else body.terminal + 0.0,  # never -0
@@ -74,10 +73,10 @@ def _settling(run: Run, body: BodyFacts) -> tuple[float | None, float | None, bo
     error = run.errors.more.get("level_speed")
     if away is None or body.size is None:
         return None, None, False
-    peak = abs(run.history.speed_curve(body.end).magnitude()[0])
+    peak = abs(body_speed(run.history, body.end).magnitude()[0])
     size = body.size if body.size > ZERO * peak else peak
     known = np.zeros(len(away.time)) if error is None else error[:, body.end]
-    judge = Judge(away.speed_curve(body.end), known, size)
+    judge = Judge(body_speed(away, body.end), known, size)
     time = judge.time(run.settle_within)
     if error is None:
         return time, None, False
@@ -150,7 +149,7 @@ def _coast_down(run: Run, body: BodyFacts) -> dict[str, Any] | None:
     left = slice(first, None)
     curve = Curve(
         history.time[left], history.speed[left, end] - (body.terminal or 0.0), history.acceleration[left, end],
-        history.step[first:],
+        history.step[first:], history.offset[first:-1],
     )  # fmt: skip
     error = run.errors.more.get("speed")
     known = np.zeros(len(curve.time)) if error is None else error[left, end]
@@ -162,7 +161,7 @@ def _coast_down(run: Run, body: BodyFacts) -> dict[str, Any] | None:
     }  # fmt: skip
     if stop is None:
         return out
-    place = Curve(history.time, history.place[:, end], history.speed[:, end], history.step)
+    place = body_place(history, end)
     there = float(place.sample(np.array([stop]))[0])
     out["time"], out["distance"] = stop - begin, there - float(history.place[first, end])
     if error is not None:
