@@ -27,7 +27,7 @@ TREE = {
     "wall": {"upper": {"speed": {"kind": "ramp", "to": "0.3 m/s", "over": "50 ms"}}},
     "run": {"accuracy": "1 %"},
 }
-VARY = {"gap.height": {"from": "0.4 mm", "to": "1.2 mm", "count": 48}, "run.duration": ["auto"]}
+VARY = {"gap.height": {"from": "0.4 mm", "to": "1.2 mm", "count": 20}, "run.duration": ["auto"]}
 
 
 def free_port() -> int:
@@ -71,8 +71,8 @@ def test_a_worker_that_dies_is_survived(address):
     case = tr.Case(TREE)
     client = distributed.Client(address, set_as_default=False)
     victim = next(iter(client.run(os.getpid).values()))
-    threading.Timer(0.4, os.kill, (victim, signal.SIGKILL)).start()
-    many = {"gap.height": {"from": "0.4 mm", "to": "1.2 mm", "count": 96}}
+    threading.Timer(0.2, os.kill, (victim, signal.SIGKILL)).start()
+    many = {"gap.height": {"from": "0.4 mm", "to": "1.2 mm", "count": 48}}
     table = tr.sweep(case, many, cluster=address, histories=True)
     assert victim not in client.run(os.getpid).values()
     client.close()

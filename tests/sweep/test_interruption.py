@@ -24,7 +24,7 @@ from transient.sweep.plan import read_plan
 # Histories make every row one that is solved alone, in chunks of sixteen.
 MANY = """
 [vary]
-"wall.upper.speed.over" = { from = "10 ms", to = "100 ms", count = 80 }
+"wall.upper.speed.over" = { from = "10 ms", to = "100 ms", count = 48 }
 [keep]
 histories = true
 """
@@ -32,7 +32,7 @@ histories = true
 
 @pytest.fixture
 def started(sweep_file, tmp_path):
-    """``started()``: a sweep over 80 cases in a process of its own, once its first chunks are finished."""
+    """``started()``: a sweep over 48 cases in a process of its own, once its first chunks are finished."""
     file = sweep_file(MANY)
     out = tmp_path / "out.h5"
     running = []
@@ -76,10 +76,10 @@ def alive(group: int) -> bool:
 
 def test_after_a_kill_the_finished_chunks_are_there_and_the_result_is_the_same(started, tmp_path):
     process, file, out = started()
-    wait_for_chunks(out, 2)
+    wait_for_chunks(out, 1)
     process.kill()  # the parent alone: its workers must not outlive it for long
     process.wait()
-    kept = wait_for_chunks(out, 2)
+    kept = wait_for_chunks(out, 1)
     assert not out.exists()
     for _ in range(100):
         if not alive(process.pid):
@@ -107,7 +107,7 @@ def test_an_interrupt_ends_with_130_and_says_what_is_kept(started):
     assert said == ""
     last = complaint.splitlines()[-1]
     assert last.startswith("interrupted; ")
-    assert last.endswith(" of 80 cases are finished and kept; --resume goes on with the rest")
+    assert last.endswith(" of 48 cases are finished and kept; --resume goes on with the rest")
     assert "Traceback" not in complaint
     assert not alive(process.pid)
     assert not out.exists()

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from typing import Any
 
@@ -25,6 +25,18 @@ class TerminalRows(Rows):
         """Moves the bar; it is drawn from here, since a thread of its own would not survive forking."""
         self.progress.update(self.task, advance=cases)
         self.progress.refresh()
+
+
+@contextmanager
+def counting(what: str) -> Iterator[Callable[[int], None]]:
+    """Shows a count that grows, where someone watches standard error; it is gone afterwards."""
+    if not sys.stderr.isatty():
+        yield lambda count: None
+        return
+    try:
+        yield lambda count: print(f"\r{what} {count}", end="", file=sys.stderr, flush=True)
+    finally:
+        print("\r\033[K", end="", file=sys.stderr, flush=True)
 
 
 @contextmanager

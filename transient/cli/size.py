@@ -7,7 +7,8 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from transient.cli.progress import announce_compiling, progress
+from transient.cli.progress import Bar, announce_compiling
+from transient.cli.rows_bar import counting
 from transient.cli.words import FAILED, GOOD, Overrides, Stop, Version, changes, note, one_line, refusals, say
 
 if TYPE_CHECKING:
@@ -39,12 +40,13 @@ def size(
     from transient.sweep.size import size as sized
 
     wanted = changes(overrides)
-    with refusals(), progress(1, as_json) as bar:
+    with refusals():
         stated = read_case(case, wanted)
         goal = read_goal(meet, stated)
-        announce_compiling(bar)
+        announce_compiling(Bar())
         try:
-            found = sized(stated, vary, between, goal, lambda count: None)
+            with counting("evaluation") as watch:
+                found = sized(stated, vary, between, goal, watch)
         except SolveError as error:
             raise Stop(f"{case}: {one_line(str(error))}", FAILED) from None
     if as_json:

@@ -40,7 +40,7 @@ def _size(one: dict[str, Any]) -> float:
 
 
 def _name(name: str) -> str:
-    return name.replace("_", " ")
+    return name.replace("unbounded_coefficient", "K").replace("_", " ")
 
 
 def _cases(said: dict[str, Any]) -> list[str]:

@@ -14,7 +14,10 @@ from transient.sweep.influence import Inputs, influence
 from transient.sweep.keys import Varied
 
 # Headline numbers in the order in which they are said; "_*" stands for each wall.
-NAMES = ("settling_time", "peak_stress_*", "peak_force_*", "peak_torque_*", "final_stress_*", "final_mean_velocity")
+NAMES = (
+    "settling_time", "peak_stress_*", "unbounded_coefficient_*", "peak_force_*", "peak_torque_*", "final_stress_*",
+    "final_mean_velocity",
+)  # fmt: skip
 ERRORS = {"settling_time": "settling_error"}
 PERCENTILES = (1, 5, 25, 50, 75, 95, 99)
 MOST_MESSAGES = 3
