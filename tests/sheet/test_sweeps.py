@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from test_document import Page, facts
+from test_document import Page, facts, undrawn  # noqa: F401
 from test_figures import marked, overlap, texts
 
 import transient as tr
@@ -229,6 +229,7 @@ def test_a_sweep_with_cases_that_failed_says_so(sweep: Result):
     assert "b" not in page.tags
 
 
+@pytest.mark.usefixtures("undrawn")
 def test_a_run_s_sheet_takes_its_input_uncertainty_from_a_sweep(sweep: Result, solved, tmp_path: Path):
     result = solved("flow_cell")
     write_sheet(result, tmp_path / "a.html", "flow_cell.h5", sweep=sweep, sweep_name="runs/small.h5")

@@ -11,6 +11,7 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 BAR, BETWEEN, TOP, BOTTOM = 0.21, 0.42, 0.9, 0.5
+LETTERS = 27  # of a key beside its bar
 MOST = 6  # numbers in one figure
 
 
@@ -65,7 +66,7 @@ def _bars(axes, names: str, bars: list[dict[str, Any]], last: bool) -> None:
         sign = "" if slope is None or percent < 1.0 else " +" if slope > 0.0 else " −"
         text = f"{percent:.0f} %{sign}" if percent >= 1.0 else "< 1 %"
         axes.text(1.02, row, text, transform=axes.get_yaxis_transform(), va="center", size=7.8, color=INK[0])
-    axes.set_yticks(range(len(bars)), [bar["key"] for bar in bars])
+    axes.set_yticks(range(len(bars)), [_short(bar["key"]) for bar in bars])
     axes.tick_params(axis="y", length=0)
     axes.tick_params(axis="x", labelbottom=last)
     axes.grid(axis="x", color=FAINT, lw=0.5)
@@ -74,3 +75,8 @@ def _bars(axes, names: str, bars: list[dict[str, Any]], last: bool) -> None:
     axes.set_title(short, loc="left", size=8.2, color=SOFT, pad=3, x=-0.02)
     if last:
         axes.set_xlabel("share of the variance [%]")
+
+
+def _short(key: str) -> str:
+    """The end of a long key, where keys differ."""
+    return key if len(key) <= LETTERS else f"…{key[1 - LETTERS:]}"
