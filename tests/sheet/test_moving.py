@@ -12,7 +12,7 @@ from test_figures import changed
 
 from transient.result.result import Result, ResultError
 from transient.sheet.moving import FRAMES, GAP, moving, write_moving
-from transient.sheet.ticks import decades, ticks
+from transient.sheet.ticks import decades, steps, ticks
 
 SVG = "{http://www.w3.org/2000/svg}"
 
@@ -76,3 +76,5 @@ def test_ticks_are_round_and_inside():
     assert ticks(20.0, 22.0) == [20.0, 20.5, 21.0, 21.5, 22.0]
     assert ticks(5.0, 5.0) == [5.0]
     assert decades(3e-3, 2.0) == [0.01, 0.1, 1.0]
+    assert steps(0.3, 3.0) == [0.5, 1.0, 2.0]
+    assert steps(1e-3, 1e3) == [1e-3, 1e-2, 1e-1, 1.0, 1e1, 1e2, 1e3]

@@ -21,3 +21,11 @@ def decades(low: float, high: float) -> list[float]:
     """Powers of ten in [low, high] > 0."""
     first, last = math.ceil(math.log10(low) - 1e-9), math.floor(math.log10(high) + 1e-9)
     return [float(f"1e{number}") for number in range(first, last + 1)]
+
+
+def steps(low: float, high: float) -> list[float]:
+    """1, 2 and 5 times powers of ten in [low, high] > 0; powers alone over many decades."""
+    parts = (1.0,) if high > 1e4 * low else (1.0, 2.0, 5.0)
+    powers = range(math.floor(math.log10(low)) - 1, math.ceil(math.log10(high)) + 1)
+    found = [float(f"{part:g}e{power}") for power in powers for part in parts]
+    return [value for value in found if low * (1.0 - 1e-9) <= value <= high * (1.0 + 1e-9)]

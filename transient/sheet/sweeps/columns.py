@@ -5,12 +5,17 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from transient.result.result import Result, ResultError
 from transient.result.scale import Scale, scale
 from transient.result.view import nearest
+from transient.sheet.ticks import steps
+
+if TYPE_CHECKING:
+    from matplotlib.axis import Axis
 
 # Units in which people set what SI writes awkwardly.
 USUAL = {
@@ -19,6 +24,8 @@ USUAL = {
 }  # fmt: skip
 # More values than these are no steps of a grid.
 MOST_STEPS = 200
+# Up to so many values have ticks of their own.
+FEW = 9
 
 
 @dataclass(frozen=True, eq=False)
@@ -89,6 +96,25 @@ def _geometric(values: np.ndarray) -> bool:
 
 def _short(text: str) -> str:
     return text if len(text) <= 18 else f"{text[:17]}…"
+
+
+def dress(key: Key, axis: Axis) -> None:
+    """Ticks of an axis over a key: at its values where they are few, round ones else; names of texts."""
+    from matplotlib.ticker import FixedLocator, FuncFormatter, NullLocator
+
+    few = len(key.values) <= FEW
+    if not key.labels and not few and not key.log:
+        return
+    every = -(-len(key.values) // FEW)
+    places = key.shown[::every].tolist()
+    if key.log and not few:
+        places = steps(float(key.shown[0]), float(key.shown[-1]))
+    axis.set_major_locator(FixedLocator(places))
+    axis.set_minor_locator(NullLocator())
+    if key.labels:
+        axis.set_major_formatter(FuncFormatter(lambda value, _: key.labels[round(value)]))
+    else:
+        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.4g}"))
 
 
 def number(result: Result, name: str | None) -> tuple[str, np.ndarray]:

@@ -10,7 +10,8 @@ import numpy as np
 from transient.result.result import Result, ResultError
 from transient.result.scale import scale
 from transient.sheet.style import MINUS, page
-from transient.sheet.sweeps.columns import Key, key_of, number, stepped, title, worst
+from transient.sheet.sweeps.columns import Key, dress, key_of, number, stepped, title, worst
+from transient.sheet.ticks import steps, ticks
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -18,6 +19,7 @@ if TYPE_CHECKING:
 
 # Up to so many cells carry their number; more carry contours.
 NUMBERED = 60
+DECADE = 10.0
 DRAWN = 2000  # cells drawn one by one; more are a picture
 SHADES = "cividis"  # even in lightness, so that it prints in grey and is read by the colour-blind
 BAD = ("outside", "failed")
@@ -43,7 +45,7 @@ def map(result: Result, quantity: str | None = None, over: Sequence[str] = ()) -
     _cells(figure, axes, along, up, cells, result.variables[name].units)
     _marks(axes, along, up, marked, cells)
     for key, axis in ((along, axes.xaxis), (up, axes.yaxis)):
-        _dress(key, axis)
+        dress(key, axis)
     axes.set_xlabel(along.title)
     axes.set_ylabel(up.title)
     return figure
@@ -73,18 +75,46 @@ def _cells(figure: Figure, axes: Axes, along: Key, up: Key, cells: np.ndarray, s
         if key.log:
             set_scale("log")
     axes.set_facecolor("white")
-    signed = shown.count() and float(shown.max()) <= 0.0  # of negative numbers the largest magnitude is the darkest
+    # of negative numbers the largest magnitude is the darkest
+    shades = SHADES if shown.count() and float(shown.max()) <= 0.0 else f"{SHADES}_r"
     colours = axes.pcolormesh(
-        _edges(along), _edges(up), shown, cmap=SHADES if signed else f"{SHADES}_r", rasterized=cells.size > DRAWN,
-        gid="map",
-    )  # fmt: skip
+        _edges(along), _edges(up), shown, cmap=shades, norm=_norm(shown), rasterized=cells.size > DRAWN, gid="map"
+    )
     bar = figure.colorbar(colours, cax=figure.add_axes((0.86, 0.13, 0.025, 0.71)))
+    if _norm(shown) is not None:
+        places = steps(float(shown.min()), float(shown.max()))
+        bar.set_ticks(places, labels=[f"{place:g}" for place in places])
+        bar.minorticks_off()
     bar.set_label(f"[{unit.unit or '1'}]", rotation=0, labelpad=14)
     if cells.size <= NUMBERED:
         _numbers(axes, along, up, shown, colours)
     elif min(cells.shape) >= 3 and shown.count() and np.ma.ptp(shown) > 0.0:
-        lines = axes.contour(along.shown, up.shown, shown, 7, colors="black", linewidths=0.7, linestyles="solid")
-        axes.clabel(lines, fontsize=7.5, fmt=lambda value: f"{value:.4g}".replace("-", MINUS))
+        _contours(axes, along, up, shown)
+
+
+def _norm(shown: np.ma.MaskedArray):
+    """Logarithmic shades where positive values span more than a decade; else None."""
+    from matplotlib.colors import LogNorm
+
+    if not shown.count() or float(shown.min()) <= 0.0 or float(shown.max()) < DECADE * float(shown.min()):
+        return None
+    return LogNorm(float(shown.min()), float(shown.max()))
+
+
+def _contours(axes: Axes, along: Key, up: Key, shown: np.ma.MaskedArray) -> None:
+    """Lines of equal value, named on them; white around the black is seen on any shade."""
+    from matplotlib.patheffects import withStroke
+
+    low, high = float(shown.min()), float(shown.max())
+    levels = steps(low, high) if _norm(shown) is not None else ticks(low, high, 7)
+    levels = [level for level in levels if low < level < high]
+    if not levels:
+        return
+    around = [withStroke(linewidth=2.0, foreground="white")]
+    lines = axes.contour(along.shown, up.shown, shown, levels, colors="black", linewidths=0.7, linestyles="solid")
+    lines.set_path_effects([withStroke(linewidth=1.6, foreground="white")])
+    for text in axes.clabel(lines, fontsize=7.5, fmt=lambda value: f"{value:.4g}".replace("-", MINUS)):
+        text.set_path_effects(around)
 
 
 def _numbers(axes: Axes, along: Key, up: Key, shown: np.ma.MaskedArray, colours) -> None:
@@ -112,18 +142,3 @@ def _marks(axes: Axes, along: Key, up: Key, marked: np.ndarray, cells: np.ndarra
         notes.append("hatched: no case solved")
     if notes:
         axes.figure.text(0.015, 0.012, "; ".join(notes).capitalize() + ".", size=7.5, color="#5c6670", va="bottom")
-
-
-def _dress(key: Key, axis) -> None:
-    """Ticks at the values where they are few; names of texts."""
-    from matplotlib.ticker import FixedLocator, FuncFormatter, NullLocator
-
-    if not key.labels and len(key.values) > 10 and not key.log:
-        return
-    every = -(-len(key.values) // 9)
-    axis.set_major_locator(FixedLocator(key.shown[::every].tolist()))
-    axis.set_minor_locator(NullLocator())
-    if key.labels:
-        axis.set_major_formatter(FuncFormatter(lambda value, _: key.labels[round(value)]))
-    else:
-        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.4g}"))

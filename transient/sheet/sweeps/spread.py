@@ -11,7 +11,7 @@ from transient.result.result import Result, ResultError
 from transient.result.scale import Scale, scale
 from transient.sheet.labels import Board
 from transient.sheet.style import INK, SOFT, extent, margins, page, told, zero_line
-from transient.sheet.sweeps.columns import Key, by_group, drawn, key_of, number, stepped, title, unit_of
+from transient.sheet.sweeps.columns import Key, by_group, drawn, dress, key_of, number, stepped, title, unit_of
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -74,17 +74,10 @@ def _bands(axes: Axes, key: Key, values: np.ndarray, unit: Scale) -> None:
 
 
 def _limits(axes: Axes, key: Key) -> None:
-    from matplotlib.ticker import FixedLocator, FuncFormatter, NullLocator
-
-    x = key.shown
-    if len(x) > 1:
-        axes.set_xlim(x[0], x[-1])
+    if len(key.shown) > 1:
+        axes.set_xlim(key.shown[0], key.shown[-1])
     if key.labels or key.log:
-        axes.xaxis.set_major_locator(FixedLocator(x[:: -(-len(x) // 9)].tolist()))
-        axes.xaxis.set_minor_locator(NullLocator())
-        axes.xaxis.set_major_formatter(
-            FuncFormatter(lambda value, _: key.labels[round(value)] if key.labels else f"{value:.4g}")
-        )
+        dress(key, axes.xaxis)
 
 
 def _points(axes: Axes, result: Result, key: str, values: np.ndarray, unit: Scale) -> None:
