@@ -193,3 +193,28 @@ def test_a_file_of_plain_numbers_reads_the_same_as_one_with_texts(sweep_file):
         assert rows[-1]["gap.height"][2] == 0.0005
     for key, column in rows[0].items():
         np.testing.assert_array_equal(column, rows[1][key])
+
+
+AXES = st.lists(st.integers(1, 5), min_size=1, max_size=3)
+
+
+@settings(max_examples=40, deadline=None)
+@given(AXES, st.integers(0, 6), st.data())
+def test_rows_are_the_product_of_axes_and_samples_however_they_are_cut(sizes, samples, data):
+    keys = ("gap.height", "gap.length", "fluid.viscosity")
+    units = ("mm", "mm", "cP")
+    listed = {
+        key: [f"{i + 1} {unit}" for i in range(size)] for key, unit, size in zip(keys, units, sizes, strict=False)
+    }
+    scatter = {"samples": samples, "gap.width": {"uniform": ["1 mm", "2 mm"]}} if samples else {}
+    plan = plan_of(BASE, {"vary": listed, "scatter": scatter})
+    each = list(itertools.product(*(range(1, size + 1) for size in sizes)))
+    expected = [row for row in each for _ in range(max(samples, 1))]
+    assert plan.rows == len(expected)
+    whole = plan.values(0, plan.rows)
+    found = np.rint(np.stack([whole[key] for key in listed], axis=1) * 1e3).astype(int)
+    assert [tuple(row) for row in found.tolist()] == expected
+    first = data.draw(st.integers(0, plan.rows - 1))
+    behind = data.draw(st.integers(first + 1, plan.rows))
+    for key, column in plan.values(first, behind).items():
+        np.testing.assert_array_equal(column, whole[key][first:behind])

@@ -111,7 +111,8 @@ def _say_again(target: Path, as_json: bool, quiet: bool) -> int:
 
     with refusals():
         said = read(target).summary
-    note(f"{target}: is complete already")
+    if not quiet:
+        note(f"{target}: is complete already")
     _say(said, target, None, as_json, quiet)
     return GOOD
 
