@@ -17,6 +17,7 @@ VERDICTS = {
     "outside": ("OUTSIDE what the model describes: not to be relied on.", "bad"),
     "failed": ("A SELF-CHECK FAILED: not to be relied on.", "bad"),
 }
+FLAT = 0.02
 ERRORS = {"exact": "against the exact series", "estimate": "from refinement"}
 
 
@@ -62,7 +63,9 @@ def _stresses(facts: Facts) -> Iterator[Row]:
 
 
 def _when(wall: dict[str, Any], facts: Facts) -> str:
-    text = f"at {said(wall.get('peak_time'), wall.get('peak_time_error'), 's')}"
+    when, error = wall.get("peak_time"), wall.get("peak_time_error")
+    flat = when is not None and error is not None and error > FLAT * abs(when)  # a plateau has no instant of its own
+    text = f"at {brief(when, 's')}" + (", on a plateau" if flat else "")
     over = wall.get("overshoot") or 0.0
     if 0.01 < over < 1e3 and not facts.periodic:
         text += f"; {1.0 + over:.3g} times the final one"

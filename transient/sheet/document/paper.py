@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import warnings
 from collections.abc import Callable
 from pathlib import Path
@@ -33,7 +34,8 @@ INK = "#1d252c"
 BODY, SMALL, HEAD, TITLE, CODE = 9.0, 8.2, 11.5, 16.0, 7.6
 LEAD = 1.38 / 72.0  # height of a line per point of its size
 GAP = 0.12
-NARROW = 1.5  # widest column beside a wide one
+NARROW = 1.65  # widest column beside a wide one
+_LOW = re.compile(r"(\w)_([A-Za-z]+)")  # in formulas, which are never a user's text
 MARKS = {"good": ("-", 1.2), "caution": ((0, (4, 2)), 1.6), "bad": ("-", 3.0)}
 
 
@@ -148,8 +150,12 @@ def _points(paper: Paper, block: Points) -> None:
 
 def _formula(paper: Paper, block: Formula) -> None:
     size = 10.0
-    paper.room((size + SMALL) * LEAD)
-    paper.lines(block.text, size, x=0.15, family="serif")
+    lines = block.text.split(",   ")
+    paper.room((size * len(lines) + SMALL) * LEAD)
+    for line in lines:
+        text = _LOW.sub(r"$\\mathrm{\1_{\2}}$", line)
+        paper.text(0.15, text, size, family="serif", parse_math=True, math_fontfamily="dejavuserif")
+        paper.y += size * LEAD
     if block.where:
         paper.lines(block.where, SMALL, x=0.15, color=SOFT)
 
@@ -195,9 +201,11 @@ def _widths(block: Table) -> list[float]:
     gap = 0.16
     wide = block.wide if block.wide >= 0 else len(block.head) - 1
     cells = [block.head, *block.rows]
-    most = NARROW if block.wide >= 0 else COLUMN
-    sizes = [min(max(width(row[j], SMALL) for row in cells), most) + gap for j in range(len(block.head))]
+    sizes = [max(width(row[j], SMALL) for row in cells) + gap for j in range(len(block.head))]
     others = sum(size for j, size in enumerate(sizes) if j != wide)
+    if block.wide >= 0 and others > 0.6 * COLUMN:
+        sizes = [min(size, NARROW) for size in sizes]
+        others = sum(size for j, size in enumerate(sizes) if j != wide)
     if others > 0.72 * COLUMN:
         scale = 0.72 * COLUMN / others
         sizes = [size * scale for size in sizes]
