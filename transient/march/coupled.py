@@ -295,12 +295,18 @@ def _solved(matrix: np.ndarray, right: np.ndarray) -> np.ndarray | None:
     return state if np.isfinite(state).all() else None
 
 
-def periodic_start(system: Dense, after_one: np.ndarray, period: float) -> np.ndarray:
-    """State at t = 0 of the periodic regime from what one period makes out of zero: z = (1 - exp(B period))^-1 z_1."""
+def periodic_start(system: Dense, begin: np.ndarray, after_one: np.ndarray, period: float) -> np.ndarray:
+    """State at t = 0 of the periodic regime, from the state ``after_one`` period from ``begin``.
+
+    z = z_0 + (1 - exp(B period))^-1 (z_1 - z_0); a prescribed flow leaves no freedom along its own condition.
+    """
     from scipy.linalg import expm
 
     index = kept(system)
-    matrix = operator(system)
-    out = np.zeros(len(after_one))
-    out[index] = np.linalg.solve(np.eye(len(index)) - expm(matrix * period), after_one[index])
+    missing = np.eye(len(index)) - expm(operator(system) * period)
+    if system.flow:
+        row, push = system.row[index], system.push[index]
+        missing += np.outer(push, row) / (row @ push)
+    out = begin.copy()
+    out[index] += np.linalg.solve(missing, (after_one - begin)[index])
     return out

@@ -288,7 +288,7 @@ def _march_of(closed: bool):
                     if closed:
                         shorter = until_event(
                             l, link, mode, end_conductance, curve_speed, curve_value, given_end, end, wall, wall_end,
-                            gradient_end, net_before, step[l], tolerance[l], velocity_scale[l], load,
+                            gradient_end, net_before, step[l], tolerance[l], velocity_scale[l], stress_scale, load,
                         )  # fmt: skip
                         if shorter > 0.0:
                             state[1, l] = shorter

@@ -20,7 +20,7 @@ import numpy as np
 
 from transient.compiled import compiled, part
 from transient.march.closure import ALPHA, GAMMA
-from transient.march.lanes_inputs import COURSE_ROW, COURSE_UNTIL, FIRST_ROW, LENGTH
+from transient.march.lanes_inputs import COURSE_ROW, COURSE_UNTIL, FIRST_ROW, FOLLOWED, LENGTH
 from transient.march.lanes_layout import (
     CALM,
     GROWTH,
@@ -59,6 +59,8 @@ def _next_step(x, known, numbers):
     if x < known[COURSE_UNTIL]:
         wanted = min(wanted, known[COURSE_ROW])
     left = known[LENGTH] - x
+    if known[FOLLOWED] > 0.0:  # what a drive's end leaves behind is as quick as the flow, however long it lasted
+        wanted = min(wanted, max(numbers[LONGEST], left / (2 * ROWS)))
     if ROWS * wanted >= left:
         return left / ROWS
     if 2 * ROWS * wanted > left:

@@ -15,13 +15,13 @@ from transient.compiled import compiled, part
 FIRST = 0.05  # first row of a piece as a share of the shortest time beside its break
 GROWTH = 0.7  # longest row as a share of the time since the break
 FOLLOW = 0.55  # longest row while the flow settles, as a share of its slowest time constant
-COURSE = 0.35  # longest row over the time constant of a wave or lag
+COURSE = 0.25  # longest row over the time constant of a wave or lag
 BENT = 12.0  # least rows of a curved piece
 SUDDEN = 1e-3  # share of the time after a jump from which on the flow is followed closely
 NOTHING = 1e-11  # changes at a break below this share of the drive's size are round-off
 SAME = 1e-12  # times closer than this are one (as in ``drive.times``)
-# what is known of each piece: [case, piece, FIELD]
-LENGTH, START, FIRST_ROW, COURSE_ROW, COURSE_UNTIL, PIECE_FIELDS = 0, 1, 2, 3, 4, 5
+# what is known of each piece: [case, piece, FIELD]; FOLLOWED: whether another one follows
+LENGTH, START, FIRST_ROW, COURSE_ROW, COURSE_UNTIL, FOLLOWED, PIECE_FIELDS = 0, 1, 2, 3, 4, 5, 6
 
 
 @part
@@ -133,7 +133,7 @@ def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
         _at_end(own, own_wave, 0.0, ends)
         length = part_of[c, p, LENGTH]
         value, slope, curve, size = ends[0], ends[1], ends[2], ends[3]
-        _at_end(own, own_wave, min(length, 1e3), ends)
+        _at_end(own, own_wave, length, ends)
         size = max(size, ends[3])
         largest = max(size, old_size)
         shorter = min(length, old_length)
@@ -171,6 +171,7 @@ def join(
             stop = times[p + 1] if p + 1 < n else until[c]
             part_of[c, p, LENGTH] = (stop - at) / time[c]
             part_of[c, p, START] = at / time[c]
+            part_of[c, p, FOLLOWED] = 1.0 if p + 1 < n else 0.0
         for which in range(3):
             scale = push[c] if which == 2 else 1.0
             piece = 0

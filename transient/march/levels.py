@@ -26,6 +26,7 @@ from transient.march.march import (
     march,
     steady_stress,
     with_rates,
+    without_first_steps,
 )
 from transient.march.plan import Features, Resolution, features, on_one_grid, resolve, tightened
 from transient.march.regime import (
@@ -163,7 +164,8 @@ def _climb_by_events(problem: Problem, ahead: Outlook, accuracy: float, refine: 
     if best.deviation is not None and other.deviation is not None:
         away = resampled(other.deviation, best.deviation)
     other = replace(other, flow=again, deviation=away)
-    return Ladder(best, (other,), own, before.speed, base.resolution.layers, run.resolution.cells, run.steps, base.solves)
+    layers, cells = base.resolution.layers, run.resolution.cells
+    return Ladder(best, (other,), own, before.speed, layers, cells, run.steps, base.solves)
 
 
 def _prepare(problem: Problem, runs: list[_Climb], ahead: Outlook, accuracy: float, refine: float) -> None:
@@ -252,9 +254,9 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     """
     _, first, around, away = runs
     system, every = trace.system, 2**number
-    rest = np.zeros(system.unknowns)
+    rest = _at_rest(problem, system, first.inputs)
     after = first.level(number, State(rest, rates_of(system, rest, first.inputs)))
-    state = _periodic_state(problem, system, after, first.until, around.inputs)
+    state = _periodic_state(problem, system, rest, after, first.until, around.inputs)
     orbit = around.level(number, state)
     begin = trace.profiles[0, 0] - orbit.profiles[0, 0]
     walls = kernel.WALLS
@@ -263,6 +265,9 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     apart = history(problem, away.inputs, gone, None, every)
     # where the flow begins with an infinite stress, so does its deviation
     apart.stress[0, np.isnan(main.stress[0])] = np.nan
+    if problem.flow is not None and np.isnan(main.gradient[0]):
+        apart.gradient[0] = np.nan
+        apart = without_first_steps(apart, problem.accuracy)
     return Histories(
         main,
         apart,
@@ -273,14 +278,26 @@ def _periodic_answer(problem: Problem, runs: list[_Climb], number: int, trace: T
     )
 
 
-def _periodic_state(problem: Problem, system: System, after: Trace, period: float, once: Inputs) -> State:
-    """The state with which the periodic regime begins, from what one period makes out of rest."""
+def _at_rest(problem: Problem, system: System, inputs: Inputs) -> np.ndarray:
+    """Velocities (n,) before the first of some periods: none, or where the flow is prescribed the same everywhere."""
+    if problem.flow is None:
+        return np.zeros(system.unknowns)
+    whole = dense(problem, system)
+    missing = inputs.before[PRESSURE] - whole.row_wall @ inputs.before[:2]
+    return np.full(system.unknowns, missing / whole.row[: system.unknowns].sum())
+
+
+def _periodic_state(
+    problem: Problem, system: System, rest: np.ndarray, after: Trace, period: float, once: Inputs
+) -> State:
+    """The state with which the periodic regime begins, from what one period makes out of ``rest`` (n,)."""
     if not problem.closed:
         velocity = periodic_state(system, after.final, period)
         return State(velocity, rates_of(system, velocity, once))
     whole = dense(problem, system)
     parts = [after.final, *(after.final_walls[[0, 2], end] for end in whole.ends)]
-    state = periodic_start(whole, np.concatenate(parts), period)
+    begin = np.concatenate([rest, np.zeros(2 * len(whole.ends))])
+    state = periodic_start(whole, begin, np.concatenate(parts), period)
     speed, place = np.zeros(2), np.zeros(2)
     for end in whole.ends:
         speed[end], place[end] = state[whole.speed(end) : whole.speed(end) + 2]

@@ -337,7 +337,8 @@ def history(
     fields = trace.fields
     for end, wall in enumerate(problem.walls):
         if wall.body is not None:
-            value[end], slope[end] = fields[:, kernel.WALLS + end], fields[:, kernel.WALLS + 2 + end]
+            value[end] = fields[:, kernel.WALLS + end]
+            slope[end] = _as_before_events(trace, fields[:, kernel.WALLS + 2 + end])
             if before is not None and problem.start == "rest" and wall.body.initial_speed is not None:
                 value[end, 0] = wall.body.initial_speed
     if problem.flow is not None:
@@ -367,10 +368,10 @@ def history(
         value[PRESSURE], slope[PRESSURE], place, system.grid.radius[::every], at, profile, profile_rate, travel,
         system.grid.radius[::every] if problem.rotating else None,
     )  # fmt: skip
-    return whole if problem.flow is None else _without_first_steps(whole, problem.accuracy)
+    return whole if problem.flow is None else without_first_steps(whole, problem.accuracy)
 
 
-def _without_first_steps(history: History, accuracy: float) -> History:
+def without_first_steps(history: History, accuracy: float) -> History:
     """The rows but for the first steps after an infinite pressure of a prescribed flow.
 
     Walls' half cells take a new speed at once, and the pressure answers for all of the gap: until the layers are many
@@ -392,6 +393,21 @@ def _without_first_steps(history: History, accuracy: float) -> History:
     )}  # fmt: skip
     profiles = {name: getattr(history, name)[kept] for name in ("profile", "profile_rate", "travel")}
     return replace(history, **rows, **profiles, profile_row=(np.cumsum(keep) - 1)[history.profile_row[kept]])
+
+
+def _as_before_events(trace: Trace, acceleration: np.ndarray) -> np.ndarray:
+    """A body's acceleration (rows,) with the limit from the left, not what follows, where it stops or breaks away."""
+    out = acceleration.copy()
+    for row in np.flatnonzero(trace.mark == kernel.EVENT):
+        if row < 1 or trace.piece[row - 1] != trace.piece[row]:
+            continue
+        out[row] = acceleration[row - 1]
+        step, before = trace.offset[row] - trace.offset[row - 1], 0.0
+        if row > 1 and trace.piece[row - 2] == trace.piece[row]:
+            before = trace.offset[row - 1] - trace.offset[row - 2]
+        if step <= before:
+            out[row] += (acceleration[row - 1] - acceleration[row - 2]) * step / before
+    return out
 
 
 def _wall_travel(time: np.ndarray, speed: np.ndarray, acceleration: np.ndarray) -> np.ndarray:

@@ -14,6 +14,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
+from transient.march.sizes import LIGHT, levers, sizes
 
 # Cells grow by this share of their distance from the wall, and the local error allowed per step, at accuracy 1e-3
 # and in proportion to its fourth root and its 3/4 power: with the extrapolation of two levels the error left is then
@@ -28,22 +29,23 @@ MOST_CELLS = 20_000
 ECHO = 0.5  # of the accuracy that an answer to an earlier break may be misread by within a first step
 ECHOES = 4  # breaks back, whose answers bound a first step
 MISSED = 0.015  # of a root-like growth within a first step, by computation
-LIGHT = 0.05  # of the gap: a body lighter than so much of its liquid is resolved as if it had that mass
 
 
 @dataclass(frozen=True, eq=False)
 class Features:
     """What the drive does to the two walls, in the units of the stress there.
 
-    ``jump``, ``kink``, ``bend`` (P, 2): changes at each piece's start of the wall's surface speed (m/s), of the
-    acceleration of wall against fluid (m/s^2), and of its rate (m/s^3).  ``stress`` (2,) Pa: a cautious (low) guess
-    of each wall's peak.  ``speed`` m/s: the largest speed about.  ``length`` (P,) s of the pieces.
+    ``jump``, ``kink``, ``bend``, ``twist`` (P, 2): changes at each piece's start of the wall's surface speed (m/s), of
+    the acceleration of wall against fluid (m/s^2), of its rate (m/s^3), and of that one's (m/s^4).  ``stress`` (2,)
+    Pa: a cautious (low) guess of each wall's peak.  ``speed`` m/s: the largest speed about.  ``length`` (P,) s of the
+    pieces.
     ``fastest`` (3,) 1/s: the largest rate of the inputs' exponential terms.
     """
 
     jump: np.ndarray
     kink: np.ndarray
     bend: np.ndarray
+    twist: np.ndarray
     stress: np.ndarray
     speed: float
     length: np.ndarray
@@ -100,15 +102,16 @@ def _cells(layers: tuple[float, ...], growth: float) -> int:
 def features(problem: Problem, inputs: Inputs, until: float, first: np.ndarray | None = None) -> Features:
     """Read the inputs' breaks and sizes off their pieces.
 
-    ``first`` (3, 3): changes of the inputs' value, slope and bend at t = 0, default those against a constant past.
+    ``first`` (3, 4): changes of the inputs' value, slope, bend and twist at t = 0, default those against a constant
+    past.
     """
     rows = [inputs.row(index) for index in (LOWER, UPPER, PRESSURE)]
-    lever = _levers(problem)
+    lever = levers(problem)
     length = np.diff(np.append(inputs.starts, until))
-    jumps = np.abs([[row.jumps(order) for order in range(3)] for row in rows])  # (3, 3, P)
+    jumps = np.abs([[row.jumps(order) for order in range(4)] for row in rows])  # (3, 4, P)
     if first is not None:
         jumps[:, :, 0] = np.abs(first)
-    walls = np.stack([_wall_breaks(problem, end, jumps[end], lever[end]) for end in (0, 1)], axis=2)  # (3, P, 2)
+    walls = np.stack([_wall_breaks(problem, end, jumps[end], lever[end]) for end in (0, 1)], axis=2)  # (4, P, 2)
     core = jumps[PRESSURE]
     if problem.flow is not None:
         # the fluid is moved as a whole: felt at both walls like a motion of the wall; and what a wall does is answered
@@ -116,19 +119,18 @@ def features(problem: Problem, inputs: Inputs, until: float, first: np.ndarray |
         walls = walls + core[:, :, None]
         walls = np.maximum(walls, walls[:, :, ::-1])
     else:
-        walls[1] += core[0][:, None] / problem.density
-        walls[2] += core[1][:, None] / problem.density
+        walls[1:] += core[:3, :, None] / problem.density
     for end, wall in enumerate(problem.walls):
         if wall.kind != "moving":
             walls[:, :, end] = 0.0
-    jump, kink, bend = walls
-    stress, speed = _sizes(problem, rows, lever, length, jump)
+    jump, kink, bend, twist = walls
+    stress, speed = sizes(problem, rows, lever, length, jump)
     fastest = np.array([np.abs(row.rate[np.abs(row.coeff) > 0]).max(initial=0.0) for row in rows])
-    return Features(jump, kink, bend, stress, speed, length, fastest)
+    return Features(jump, kink, bend, twist, stress, speed, length, fastest)
 
 
 def _wall_breaks(problem: Problem, end: int, jumps: np.ndarray, lever: float) -> np.ndarray:
-    """Jumps (3, P) of a wall's surface speed, acceleration and its rate, from those of its input's value, slope, bend.
+    """Jumps (4, P) of a wall's surface speed and its first three rates, from those of its input's value, slope ...
 
     A load changes a body's acceleration; a body lighter than a thin layer of its liquid is as heavy as that layer.
     """
@@ -138,7 +140,7 @@ def _wall_breaks(problem: Problem, end: int, jumps: np.ndarray, lever: float) ->
     least = body.grip * problem.density * LIGHT * problem.gap * lever
     inertia = body.mass + least
     out = np.zeros_like(jumps)
-    out[1], out[2] = jumps[0] * lever / inertia, jumps[1] * lever / inertia
+    out[1:] = jumps[:3] * lever / inertia
     outside = (abs(body.stiffness * body.initial_displacement) + max(map(abs, body.curve[1]), default=0.0)) / inertia
     if problem.start == "rest":
         out[0, 0] += abs(body.initial_speed or 0.0) * lever
@@ -149,75 +151,6 @@ def _wall_breaks(problem: Problem, end: int, jumps: np.ndarray, lever: float) ->
         out[1, 0] += (held / inertia + outside) * lever
     out[1] += body.breakaway * lever / inertia
     return out
-
-
-def _levers(problem: Problem) -> np.ndarray:
-    """What turns a wall's speed into its surface speed: the radius where speeds are angular."""
-    return np.array([problem.inner, problem.outer]) if problem.rotating else np.ones(2)
-
-
-def _sizes(
-    problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray, jump: np.ndarray
-) -> tuple[np.ndarray, float]:
-    """(guess of each wall's peak stress, largest speed): quasi-steady values sampled along the pieces, and what a
-    steady acceleration makes of the stress for as long as the piece or the diffusion lasts."""
-    nu = problem.viscosity / problem.density
-    diffusion = problem.diffusion_time
-    everywhere = np.arange(len(length))
-    samples = [np.concatenate([row.at(everywhere, share * length) for share in (0, 0.3, 0.7, 1)]) for row in rows]
-    surface = [_surface_speed(problem, end, samples[end], lever[end], float(length.sum())) for end in (0, 1)]
-    largest = np.abs(samples[PRESSURE]).max(initial=0.0)
-    push = 0.0 if problem.flow is not None else largest
-    mean = largest if problem.flow is not None else 0.0
-    slip = np.abs(surface[0] - surface[1]).max(initial=0.0)
-    calm = problem.viscosity * (slip + 6.0 * mean) / problem.gap + 0.25 * push * problem.gap
-    last = np.minimum(length, diffusion)[:, None]
-    held = np.array([wall.body is None for wall in problem.walls])  # a body gives way before the stress has grown
-    grown = (2.0 * problem.density * _accelerations(problem, rows, lever, length) * np.sqrt(nu * last / np.pi)).max(
-        axis=0, initial=0.0
-    ) * held
-    fallen = (problem.density * jump * np.sqrt(nu / (np.pi * last))).max(axis=0, initial=0.0)
-    stress = np.maximum(np.maximum(grown, fallen), calm)
-    # a wall that the motion reaches late or never is judged beside the other one
-    stress = np.maximum(stress, 1e-6 * stress.max())
-    driven = push * problem.gap**2 / (8.0 * problem.viscosity) * min(1.0, 8.0 * length.sum() / diffusion)
-    before = [abs(row.before) * lever[end] for end, row in enumerate(rows[:2]) if problem.walls[end].body is None]
-    speed = max(np.abs(surface).max(initial=0.0), driven, 1.5 * mean, *before, 0.0)
-    tiny = np.finfo(float).tiny
-    return np.where(stress > 0, stress, tiny), speed if speed > 0 else tiny
-
-
-def _accelerations(problem: Problem, rows: list, lever: np.ndarray, length: np.ndarray) -> np.ndarray:
-    """Least acceleration (P, 2) of each wall against the fluid at both ends of every piece, m/s^2."""
-    piece = np.arange(len(length))
-    out = np.empty((len(length), 2))
-    for end in (0, 1):
-        at = [rows[end].at(piece, share * length, 1) * lever[end] for share in (0.0, 1.0)]
-        if problem.flow is not None:
-            at = [a - rows[PRESSURE].at(piece, share * length, 1) for a, share in zip(at, (0.0, 1.0), strict=True)]
-        else:
-            at = [a - rows[PRESSURE].at(piece, share * length) / problem.density
-                  for a, share in zip(at, (0.0, 1.0), strict=True)]  # fmt: skip
-        out[:, end] = np.minimum(np.abs(at[0]), np.abs(at[1]))
-    return out
-
-
-def _surface_speed(problem: Problem, end: int, sample: np.ndarray, lever: float, duration: float) -> np.ndarray:
-    """Surface speeds (m,) of a wall at the sampled instants; of a body one cautious guess of its largest.
-
-    The least of what the film, the inertia over the run, a damper and a spring would allow under its largest load.
-    """
-    body = problem.walls[end].body
-    if body is None:
-        return sample * lever
-    load = np.abs(sample).max(initial=0.0) + max(map(abs, body.curve[1]), default=0.0)
-    load += body.stiffness * abs(body.initial_displacement)
-    film = body.grip * problem.viscosity / problem.gap * lever
-    inertia = body.mass + body.grip * problem.density * lever * LIGHT * problem.gap
-    bounds = [load / (film + body.damping), load * duration / inertia]
-    if body.stiffness > 0.0:
-        bounds.append(load / np.sqrt(body.stiffness * inertia))
-    return np.full(len(sample), (min(bounds) + abs(body.initial_speed or 0.0)) * lever)
 
 
 def resolve(
@@ -252,7 +185,7 @@ def resolve(
 def _settling(inputs: Inputs, found: Features, step: float, lasts: float) -> tuple[np.ndarray, np.ndarray]:
     """(longest step, from which offset on longer ones may follow) of each piece (P,): ``step`` over the time ``lasts``
     after the last break at which anything changes."""
-    changes = (found.jump + found.kink + found.bend).sum(axis=1) > 0.0
+    changes = (found.jump + found.kink + found.bend + found.twist).sum(axis=1) > 0.0
     last = int(np.flatnonzero(changes)[-1]) if changes.any() else 0
     longest, calm = np.full(len(changes), np.inf), np.zeros(len(changes))
     if np.isfinite(step):
@@ -305,6 +238,9 @@ def _layer(problem: Problem, found: Features, end: int, growth: float, share: fl
     bend = found.bend[:, end].max(initial=0.0)
     if bend > 0.0:
         cell = min(cell, (share * found.stress[end] * nu / (problem.density * bend)) ** (1.0 / 3.0))
+    twist = found.twist[:, end].max(initial=0.0)
+    if twist > 0.0:
+        cell = min(cell, (share * found.stress[end] * nu**2 / (problem.density * twist)) ** 0.2)
     followed = _accelerating(problem, found, end, share).min(initial=np.inf)
     if followed < np.inf:
         cell = min(cell, growth * np.sqrt(nu * followed))
@@ -337,8 +273,9 @@ def _first_steps(
             rho = problem.density
             kinked = (allowed / (rho * found.kink[:, end])) ** 2 / nu
             bent = (allowed / (rho * found.bend[:, end] * np.sqrt(nu))) ** (2.0 / 3.0)
+            twisted = (allowed / (rho * found.twist[:, end] * np.sqrt(nu))) ** 0.4
             jumped = np.where(found.jump[:, end] > 0.0, 0.2 * cell**2 / nu, np.inf)
-        first = np.minimum(first, np.minimum(np.minimum(kinked, bent), jumped))
+        first = np.minimum.reduce([first, kinked, bent, twisted, jumped])
     swiftest = found.fastest.max(initial=0.0)
     if swiftest > 0.0:
         first = np.minimum(first, 0.05 / swiftest)
@@ -392,7 +329,7 @@ def _event_step(problem: Problem, found: Features, share: float) -> float:
     for end, wall in enumerate(problem.walls):
         if wall.body is None or wall.body.breakaway == 0.0:
             continue
-        lever = _levers(problem)[end]
+        lever = levers(problem)[end]
         inertia = wall.body.mass + wall.body.grip * problem.density * LIGHT * problem.gap * lever
         kink = (wall.body.breakaway + wall.body.sliding) * lever / inertia
         out = min(out, (share * found.stress[end] / (problem.density * kink)) ** 2 / nu)

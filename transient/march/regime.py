@@ -39,7 +39,7 @@ def outlook(problem: Problem) -> Outlook:
     ends = [drive.eventual for drive in problem.drives]
     fluid = slowest_decay(problem)
     repeats = any(end.period is not None for end in ends)
-    if repeats and (not problem.linear or problem.flow is not None):
+    if repeats and not problem.linear:
         # the periodic end of such a case is not worked out: it is run as given, and settling is not said
         return _endless(problem, fluid)
     if any(end.drive is None for end in ends):
@@ -123,13 +123,13 @@ def periodic_inputs(ahead: Outlook) -> Inputs:
 
 
 def deviation_breaks(actual: Inputs, once: Inputs, period: float) -> np.ndarray:
-    """(3, 3) changes at t = 0 of the deviation's value, slope and bend: ``actual`` inputs, held until then, less the
-    periodic ones (``once``), which have been going on.  What the two have in common does not change."""
+    """(3, 4) changes at t = 0 of the deviation's value, slope, bend and twist: ``actual`` inputs, held until then, less
+    the periodic ones (``once``), which have been going on.  What the two have in common does not change."""
     begin = np.zeros(1, int), np.zeros(1)
     last = np.array([len(once.starts) - 1]), np.array([period - once.starts[-1]])
-    out = np.zeros((3, 3))
+    out = np.zeros((3, 4))
     for i in range(3):
-        for order in range(3):
+        for order in range(4):
             now, regime, gone = (
                 float(of.row(i).at(*when, order)[0]) for of, when in ((actual, begin), (once, begin), (once, last))
             )

@@ -11,6 +11,7 @@ from transient.gap.problem import LOWER, PRESSURE, UPPER, Inputs, Problem
 from transient.march.rates import accelerations
 from transient.result.curve import Curve
 from transient.result.history import History
+from transient.result.local import local_size
 
 STRAIGHT = 0.35  # share of the accuracy that a straight line may be off
 LEADING = 0.6  # share of the local stress's accuracy that rows after an infinite stress must have
@@ -152,10 +153,9 @@ def _parts(problem: Problem, history: History, inputs: Inputs, low: np.ndarray, 
         size = np.nanmax(np.abs(value), initial=0.0)
         scale = np.full(len(low), size)
         if np.isnan(value).any():
-            scale = np.maximum(np.abs(value[low]), np.abs(value[high]))
+            local = local_size(value)
+            scale = np.maximum(local[low], local[high])
             scale = np.where(np.isfinite(scale), scale, np.inf)
-            floor = np.nanmedian(np.abs(value)) * 1e-2
-            scale = np.maximum(scale, floor)
         curve = _pairs(history, low, high, value, rate)
         even = 2 * np.arange(len(low))
         off = np.zeros(len(low))

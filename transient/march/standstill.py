@@ -156,9 +156,12 @@ def impulse(l, link, mode, flow, storage, volume, end_weight, mean_weight, step_
 @part
 def until_event(
     l, link, mode, end_conductance, curve_speed, curve_value, given, end, wall, wall_end,
-    gradient_end, net_before, step, tolerance, velocity_scale, load,
+    gradient_end, net_before, step, tolerance, velocity_scale, stress_scale, load,
 ):  # fmt: skip
-    """A shorter step where a body passes standstill, or breaks away, well inside this one; else 0."""
+    """A shorter step where a body passes standstill, or breaks away, well inside this one; else 0.
+
+    The speed that a stop leaves away must be nothing to the motion, nor to the stress on the wall.
+    """
     n = end.shape[0]
     shorter = 0.0
     for e in range(2):
@@ -180,7 +183,8 @@ def until_event(
         now = wall_end[SPEED, e, l]
         if (mode[e, l] == FORWARD and now < 0.0) or (mode[e, l] == BACKWARD and now > 0.0):
             before = abs(wall[SPEED, e, l])
-            if abs(now) > EVENT_SHARE * tolerance * velocity_scale and before > 0.0:
+            left = max(abs(now) / velocity_scale, end_conductance[e, l] * abs(now) / stress_scale[e, l])
+            if left > EVENT_SHARE * tolerance and before > 0.0:
                 wanted = step * max(0.05, min(before / (before + abs(now)) + 0.01, 0.95))
                 shorter = wanted if shorter == 0.0 else min(shorter, wanted)
     return shorter

@@ -15,7 +15,8 @@ STENCIL = 5
 FEW = 256  # coordinates at which every profile is looked at
 NEIGHBOURS = 6
 ROOM = 0.25  # of the range of its neighbours: so far a value between nodes may leave that range
-PARTS = 12  # into which a step is cut in which the place of the largest velocity moves
+# Into which a step is cut in which the place of the largest velocity moves, then the part in which it still does, ...
+CORNER_PARTS = (12, 8, 8, 8, 8)
 LOOK = np.linspace(0.0, 1.0, 33)  # where between the neighbours of the largest node its polynomial is looked at
 
 
@@ -111,30 +112,30 @@ class History:
         """The largest speed over the gap, m/s, as a curve over the kept profiles, and over more instants where the
         place of the largest moves from one part of the gap to another: such a curve has a corner there."""
         piece, offset = self.piece[self.profile_row], self.offset[self.profile_row]
-        lever = 1.0 if self.lever is None else self.lever
-        value, rate = largest(self.position, self.profile * lever, self.profile_rate * lever)
-        at = np.abs(self.profile * lever).argmax(axis=1)
-        side = self.profile[np.arange(len(at)), at] < 0.0
-        moves = (np.abs(np.diff(at)) > 1) | (side[1:] != side[:-1])
-        moves &= (piece[1:] == piece[:-1]) & (self.profile_step() > 0.0)
-        owner = np.arange(len(at))
-        if moves.any():
-            inside = np.repeat(np.flatnonzero(moves), PARTS - 1)
-            share = np.tile(np.arange(1, PARTS) / PARTS, int(moves.sum()))
+        owner = np.arange(len(piece))
+        value, rate, at = self._tops(self.profile, self.profile_rate)
+        for parts in CORNER_PARTS:
+            moves = np.flatnonzero(_moves(at) & (piece[1:] == piece[:-1]) & (np.diff(offset) > 0.0))
+            if len(moves) == 0:
+                break
+            inside = np.repeat(moves, parts - 1)
+            share = np.tile(np.arange(1, parts) / parts, len(moves))
             low, high = np.sqrt(offset[inside]), np.sqrt(offset[inside + 1])
             when = (low + share * (high - low)) ** 2
-            profile, change = self._profile_between(inside, when - offset[inside])
-            more = largest(self.position, profile * lever, change * lever)
-            order = np.argsort(np.concatenate([owner, inside + share]), kind="stable")
-            owner = np.concatenate([owner, inside])[order]
-            piece = np.concatenate([piece, piece[inside]])[order]
-            offset = np.concatenate([offset, when])[order]
-            value, rate = np.concatenate([value, more[0]])[order], np.concatenate([rate, more[1]])[order]
+            kept = owner[inside]
+            more = self._tops(*self._profile_between(kept, when - self.offset[self.profile_row][kept]))
+            order = np.argsort(np.concatenate([np.arange(len(at)), inside + share]), kind="stable")
+            owner, piece, offset, value, rate, at = (
+                np.concatenate(pair)[order]
+                for pair in zip(
+                    (owner, piece, offset, value, rate, at), (kept, piece[inside], when, *more), strict=True
+                )
+            )
         base = self.time[self.profile_row] - self.offset[self.profile_row]
         time = base[owner] + offset
-        if moves.any():
-            # where the corner itself lies the curve is a straight line, between rows of their own
-            lower = np.flatnonzero(moves[owner[:-1]] & (np.diff(time) > 0.0))
+        # where the corner itself lies the curve is a straight line, between rows of its own
+        lower = np.flatnonzero(_moves(at) & (piece[1:] == piece[:-1]) & (np.diff(time) > 0.0))
+        if len(lower):
             twice = np.sort(np.concatenate([np.arange(len(time)), lower, lower + 1]))
             slope = np.diff(value)[lower] / np.diff(time)[lower]
             first = np.searchsorted(twice, lower, side="right") - 1
@@ -145,6 +146,15 @@ class History:
         step = np.where(same, np.maximum(np.diff(offset), 0.0), 0.0)  # across a break nothing is known between
         begins = np.where(same, offset[:-1], 0.0)
         return Largest(Curve(time, value, rate, step, begins), piece, offset, owner)
+
+    def _tops(self, profile: np.ndarray, rate: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+        """Largest speeds (k,) in m/s of profiles (k, N), their rates, and the node of each, -2 - node where the
+        velocity there is negative."""
+        lever = 1.0 if self.lever is None else self.lever
+        profile = profile * lever
+        value, change = largest(self.position, profile, rate * lever)
+        at = np.abs(profile).argmax(axis=1)
+        return value, change, np.where(profile[np.arange(len(at)), at] < 0.0, -2 - at, at)
 
     @cached_property
     def around_largest(self) -> np.ndarray:
@@ -212,6 +222,11 @@ class History:
             return np.where(apart, v0 + share * rise, value)
 
         return between(self.profile, self.profile_rate), between(self.travel, self.profile)
+
+
+def _moves(at: np.ndarray) -> np.ndarray:
+    """Between which instants (k-1,) the place of the largest leaves its neighbourhood; ``at`` as of ``_tops``."""
+    return np.abs(np.diff(at)) > 1
 
 
 def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

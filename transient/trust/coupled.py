@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 
 from transient.gap.problem import Inputs, Problem
@@ -10,6 +12,9 @@ from transient.result.curve import Curve
 from transient.result.driven import body_acceleration, body_place, body_speed
 from transient.result.history import History
 from transient.series.coupled import ClosedSolution
+from transient.series.orbit import ClosedDeviation
+
+Look = Callable[[np.ndarray, np.ndarray], tuple[np.ndarray, np.ndarray]]
 
 ROUNDING = 1e-13  # of the largest value
 BETWEEN_MARGIN = 1.5  # where the march only interpolates, see ``exact``
@@ -32,7 +37,7 @@ def motion_errors(
         curves["acceleration", end] = body_acceleration(history, *accelerations(problem, inputs, history, end))
     if problem.flow is not None:
         curves["gradient", 0] = history.gradient_curve()
-    found = _errors(history, exact, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
+    found = _errors(history, exact.motion, list(curves.values()), [_COLUMN[name] + end for name, end in curves])
     for (name, end), error in zip(curves, found.T, strict=True):
         if name == "gradient":
             out[name] = error
@@ -41,22 +46,22 @@ def motion_errors(
     return out
 
 
-def speed_errors(problem: Problem, history: History, exact: ClosedSolution) -> np.ndarray:
+def speed_errors(problem: Problem, history: History, exact: ClosedSolution | ClosedDeviation) -> np.ndarray:
     """Errors (n, 2) of the bodies' speeds alone, at the history's rows and between them."""
     out = np.zeros((len(history.time), 2))
     bodies = [end for end, wall in enumerate(problem.walls) if wall.body is not None]
     if bodies:
-        out[:, bodies] = _errors(history, exact, [body_speed(history, end) for end in bodies], bodies)
+        out[:, bodies] = _errors(history, exact.speeds, [body_speed(history, end) for end in bodies], bodies)
     return out
 
 
-def _errors(history: History, exact: ClosedSolution, curves: list[Curve], columns: list[int]) -> np.ndarray:
-    """Errors (n, c) of ``curves``, all cubics in the root of time, against the exact ``columns``."""
+def _errors(history: History, look: Look, curves: list[Curve], columns: list[int]) -> np.ndarray:
+    """Errors (n, c) of ``curves``, all cubics in the root of time, against ``columns`` of the exact ``look``."""
     inside = np.flatnonzero(history.step > 0.0)
     half = np.where(inside % 2 == 0, 0.3, 0.7)
     piece = np.concatenate([history.piece, history.piece[inside]])
     offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
-    true, bound = exact.motion(piece, offset)
+    true, bound = look(piece, offset)
     out = []
     for curve, column in zip(curves, columns, strict=True):
         value = np.concatenate([curve.value, curve.at(inside, half)])

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from transient.result.local import local_size
 from transient.result.run import Run
 
 # A stress that is this share of the other wall's is judged beside that one: what no motion reaches in the run has no
@@ -73,17 +74,13 @@ def _stresses(
 
 
 def _after_infinite(run: Run, value: np.ndarray, error: np.ndarray) -> float:
-    """Worst ``error`` (n,) over the local ``value`` (n,) of the rows after an infinite one, but for the very first."""
+    """Worst ``error`` (n,) over the local size of ``value`` (n,), but for the very first rows after an infinite one."""
     history = run.history
-    infinite = np.flatnonzero(np.isnan(value))
-    worst = 0.0
-    floor = np.nanmedian(np.abs(value)) * FINAL_SHARE
-    for start in infinite:
-        rows = np.flatnonzero(history.piece == history.piece[start])[1:]
-        rows = rows[history.offset[rows] >= SOON * history.offset[rows[-1]]]
-        size = np.maximum(np.abs(value[rows]), floor)
-        worst = max(worst, float((error[rows] / size).max(initial=0.0)))
-    return worst
+    asked = np.isfinite(value)
+    for start in np.flatnonzero(np.isnan(value)):
+        rows = np.flatnonzero(history.piece == history.piece[start])
+        asked[rows[history.offset[rows] < SOON * history.offset[rows[-1]]]] = False
+    return float((error[asked] / local_size(value)[asked]).max(initial=0.0))
 
 
 def _soon(run: Run) -> np.ndarray:

@@ -14,6 +14,7 @@ from transient.result.curve import Curve
 from transient.result.history import History, largest
 from transient.result.run import Errors
 from transient.series.coupled import ClosedSolution
+from transient.series.orbit import ClosedDeviation
 from transient.series.regime import deviation, periodic
 from transient.series.solution import Solution, solve
 from transient.trust.coupled import motion_errors, speed_errors
@@ -109,7 +110,7 @@ def _more(problem: Problem, ladder: Ladder, series: Exact) -> dict[str, np.ndarr
         return more
     if series.deviation is series.flow:
         return {**more, "level_speed": more["speed"]}
-    assert isinstance(series.deviation, ClosedSolution)
+    assert isinstance(series.deviation, ClosedDeviation)
     return {**more, "level_speed": speed_errors(problem, ladder.best.deviation, series.deviation)}
 
 

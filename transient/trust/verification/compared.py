@@ -9,6 +9,7 @@ import numpy as np
 from scipy.optimize import brentq, minimize_scalar
 
 from transient.gap.problem import Problem
+from transient.result.local import local_size
 from transient.trust.verification.motion import Motion
 from transient.trust.verification.solved import Marched
 from transient.trust.verification.textbook import Textbook
@@ -16,7 +17,6 @@ from transient.trust.verification.unit_jump import WALLS
 
 PLACES = 16  # velocities compared across the gap
 DIGITS = 2e-8  # of the largest magnitude: what the textbook sums themselves are good to
-QUIET = 0.01  # share of the median below which a stress that was infinite counts as this much
 NOTHING = 1e-9  # of the largest stress: no stress at all, as on a shear-free wall
 SLOW_MODES, DENSE = 24, 801  # for settling profiles, long after the last change
 BRACKET = 0.2  # around a settling time in which the exact one is looked for
@@ -64,10 +64,9 @@ def _young(marched: Marched, book: Textbook) -> np.ndarray:
 
 def _scale(value: np.ndarray, true: np.ndarray, use: np.ndarray) -> np.ndarray:
     """What errors of the used rows are relative to."""
-    size = np.abs(true[use])
     if np.isnan(value).any():
-        return np.maximum(size, QUIET * np.median(size))
-    return np.full(len(size), size.max())
+        return local_size(np.where(np.isnan(value), np.nan, true))[use]
+    return np.full(int(use.sum()), np.abs(true[use]).max())
 
 
 def _profiles(marched: Marched, nodes: np.ndarray, known: np.ndarray, exact: np.ndarray) -> float:
