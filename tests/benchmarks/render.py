@@ -2,7 +2,7 @@
 
 Writes each result's sheet into FOLDER, as HTML and as the program's own PDF, and prints seconds and sizes; with a
 Chromium (``--browser PATH``) the page as it looks on a screen and as it prints, with ``--figures`` every figure and the
-moving profile as well, and with ``pdftoppm`` the pages of the PDFs.  None of these is needed by the program or its tests.
+moving profile as well, and with ``pdftoppm`` the pages of the PDFs.  The program and its tests need none of these.
 """
 
 from __future__ import annotations
