@@ -163,7 +163,13 @@ class Judge:
             found = self._summit(channel, lo, hi)
             if abs(found[0]) > abs(best[0]):
                 best = found
-        return max([best, *self._limits(channel)], key=lambda p: abs(p[0]))
+        return max([best, self._first_instant(channel), *self._limits(channel)], key=lambda p: abs(p[0]))
+
+    def _first_instant(self, channel: int) -> tuple[float, float]:
+        """(value, 0) that the run begins with, where the wall's own speed does not jump then."""
+        if channel < 2 and any(t == 0.0 for t, _ in self.signals[channel].jumps(self.until, self.before[channel])):
+            return 0.0, 0.0
+        return float(np.array(self.before) @ self.response.steady[:, channel]), 0.0
 
     def _limits(self, channel: int) -> list[tuple[float, float]]:
         """(stress, time) just after each jump of a slipping wall's own speed: mu/b times the change at once."""
