@@ -106,7 +106,7 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
         cells = _cells(2.0**-low, 2.0**-high, fine)
         places, grid = np.unique(batch.unit_of[rows[group]], return_inverse=True)
         grids = [tables(cells, (2.0**-low, 2.0**-high), *key_of(batch.units[i])) for i in places]
-        together = int(np.clip(KEPT // _most_rows(pieces[group]), HALF, TOGETHER))
+        together = int(np.clip(KEPT // _most_rows(pieces[group], GROWTH * fine), HALF, TOGETHER))
         for begin in range(0, len(group), together):
             some = slice(begin, begin + together)
             of = group[some]
@@ -121,9 +121,9 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
     return Done(out, seen, jump, part_of[:, :, START], rise)
 
 
-def _most_rows(pieces: np.ndarray) -> int:
-    """Room for the rows of cases of so many pieces (n,)."""
-    return int(min(MOST_ROWS, 60 + 24 * pieces.max(initial=1)))
+def _most_rows(pieces: np.ndarray, growth: float) -> int:
+    """Room for the rows of cases of so many pieces (n,) whose rows grow by ``growth`` of the time since a break."""
+    return int(min(MOST_ROWS, (40 + 44 * pieces.max(initial=1)) * GROWTH / growth))
 
 
 def _together(
@@ -177,7 +177,7 @@ def _march(
 ) -> tuple[np.ndarray, np.ndarray]:  # fmt: skip
     """Headline numbers [n, QUANTITIES, NUMBERS] and [n, SEEN] of cases on grids of the same number of nodes."""
     n = len(grid)
-    most = _most_rows(pieces)
+    most = _most_rows(pieces, float(numbers[0, layout.GROWTH]))
     levels = []
     row_piece, row_offset = np.zeros((n, most), np.int64), np.zeros((n, most))
     count = np.zeros(n, np.int64)

@@ -25,68 +25,107 @@ LOWER, UPPER, MEAN_FLOW, DEVIATION, PRESSURE, QUANTITIES = 0, 1, 2, 3, 4, 5
 PEAK, PEAK_ERROR, PEAK_TIME, END, END_ERROR, SETTLE, SETTLE_ERROR, LARGEST, CALMED, NUMBERS = range(10)
 # what validity rests on: [case, SEEN]
 SPREAD, RELATIVE, TURN_LOWER, TURN_UPPER, SPUN_UP, WORK, POWER, SPEED_LOWER, SPEED_UPPER, SEEN = range(10)
-STENCIL = 4
+BETWEEN, AT_A_BREAK = 3.0, 10.0  # margins of what lies between rows, and right after a break
+STENCIL = 6
+POINTS, ROWS_KNOWN = 2 * STENCIL, 2 * STENCIL + 1  # places in ``line`` of the rows used and of those there are
 
 
 @part
-def _window(i, piece, count):
-    """First of up to four rows around interval ``i`` (from row i to i + 1) in its piece, and how many there are."""
-    own = piece[i]
-    low = i
-    if low > 0 and piece[low - 1] == own:
-        low -= 1
-    high = i + 1
-    while high + 1 < count and piece[high + 1] == own and high - low < STENCIL - 1:
-        high += 1
-    while low > 0 and piece[low - 1] == own and high - low < STENCIL - 1:
-        low -= 1
-    return low, high - low + 1
+def _doubt(line, s, first):
+    """The larger of its last term and the next one at ``s``, or half of the last but one where there is no next: a
+    small term may be so by chance.  Near a break (``first``) rows say less."""
+    used, known = int(line[POINTS]), int(line[ROWS_KNOWN])
+    product = 1.0
+    worst = 0.0
+    for k in range(min(used + 1, known)):
+        term = abs(line[k] * product)
+        if k >= 2 and k >= used - 1:
+            worst = max(worst, term)
+        elif k >= 2 and k == used - 2 and used == known:
+            worst = 0.5 * term
+        product *= s - line[STENCIL + k]
+    return worst * (AT_A_BREAK if first else BETWEEN)
 
 
 @part
-def _through(root, value, low, points, line):
-    """The polynomial through ``points`` (two to four) rows from ``low``: Newton's form into ``line`` (7,), that is
-    its four coefficients and the three roots about which it is written."""
-    x0, x1 = root[low], root[low + 1]
-    d0, d1 = value[low], value[low + 1]
-    line[0] = d0
-    line[4], line[5], line[6] = x0, x1, x1
-    d01 = (d1 - d0) / (x1 - x0)
-    line[1], line[2], line[3] = d01, 0.0, 0.0
-    if points > 2:
-        x2 = root[low + 2]
-        d12 = (value[low + 2] - d1) / (x2 - x1)
-        d012 = (d12 - d01) / (x2 - x0)
-        line[2], line[6] = d012, x2
-        if points > 3:
-            x3 = root[low + 3]
-            d23 = (value[low + 3] - value[low + 2]) / (x3 - x2)
-            line[3] = ((d23 - d12) / (x3 - x1) - d012) / (x3 - x0)
+def _through(i, root, value, piece, count, line):
+    """The polynomial around interval ``i`` (rows i to i + 1) through up to six rows of its piece, nearest first, in
+    Newton's form: coefficients, roots and number of rows in ``line``.
+
+    As many rows as leave the least doubt in the middle of the interval: what is not smooth in the root of the time, as
+    the first signs of a motion at the far wall, takes few.
+    """
+    low, high = i, i + 1
+    best = 2
+    line[STENCIL], line[STENCIL + 1] = root[i], root[i + 1]
+    line[0], line[1] = value[i], value[i + 1]
+    points = 2
+    while points < STENCIL:
+        down = low > 0 and piece[low - 1] == piece[i] and np.isfinite(value[low - 1])
+        up = high + 1 < count and piece[high + 1] == piece[i] and np.isfinite(value[high + 1])
+        if not (down or up):
+            break
+        if down and (not up or i - low <= high - i - 1):
+            low -= 1
+            row = low
+        else:
+            high += 1
+            row = high
+        line[points], line[STENCIL + points] = value[row], root[row]
+        points += 1
+    for order in range(1, points):
+        for k in range(points - 1, order - 1, -1):
+            line[k] = (line[k] - line[k - 1]) / (line[STENCIL + k] - line[STENCIL + k - order])
+    line[POINTS], line[ROWS_KNOWN] = points, points
+    middle = 0.5 * (root[i] + root[i + 1])
+    least = np.inf
+    for used in range(3, points + 1):
+        line[POINTS] = used
+        size = _doubt(line, middle, False)
+        if size <= least:
+            least = size
+            best = used
+    line[POINTS] = best if points > 2 else points
 
 
 @part
 def _at(line, s):
     """Its value at root ``s``."""
-    return line[0] + (s - line[4]) * (line[1] + (s - line[5]) * (line[2] + (s - line[6]) * line[3]))
+    last = int(line[POINTS]) - 1
+    total = line[last]
+    for k in range(last - 1, -1, -1):
+        total = line[k] + (s - line[STENCIL + k]) * total
+    return total
 
 
 @part
 def _slope(line, s):
     """Its derivative at root ``s``."""
-    a, b, c = s - line[4], s - line[5], s - line[6]
-    return line[1] + (a + b) * line[2] + (a * b + a * c + b * c) * line[3]
+    last = int(line[POINTS]) - 1
+    total = line[last]
+    slope = 0.0
+    for k in range(last - 1, -1, -1):
+        slope = total + (s - line[STENCIL + k]) * slope
+        total = line[k] + (s - line[STENCIL + k]) * total
+    return slope
+
+
+@part
+def _first_of(i, piece):
+    """Whether row ``i`` is the first of its piece."""
+    return i == 0 or piece[i - 1] != piece[i]
 
 
 @part
 def _summit(sign, i, root, value, piece, count, line, out):
     """Largest ``sign`` x value inside interval ``i`` into out[0], its root into out[1], doubt of the polynomial into
-    out[2]; -inf where it has no top inside."""
+    out[2]; -inf where it has no top inside, with the doubt in the middle."""
     out[0] = -np.inf
-    low, points = _window(i, piece, count)
-    _through(root, value, low, points, line)
+    _through(i, root, value, piece, count, line)
     a, b = root[i], root[i + 1]
     left, right = sign * _slope(line, a), sign * _slope(line, b)
     if left <= 0.0 or right >= 0.0:
+        out[2] = _doubt(line, 0.5 * (a + b), False)
         return
     for _ in range(20):
         s = 0.5 * (a + b)
@@ -97,7 +136,7 @@ def _summit(sign, i, root, value, piece, count, line, out):
             b = s
     s = 0.5 * (a + b)
     out[0], out[1] = sign * _at(line, s), s
-    out[2] = abs((s - line[4]) * (s - line[5]) * (s - line[6]) * line[3])
+    out[2] = _doubt(line, s, _first_of(i, piece))
 
 
 @part
@@ -120,15 +159,20 @@ def _peak(root, best, other, own, piece, count, skip, line, out, found):
     found[0], found[1], found[2] = size, top, root[top]
     rival = sign * other[top]
     doubt = 0.0
+    loose = 0.0
     for i in range(max(top - 2, 0), min(top + 2, count - 1)):
         if skip[i] or skip[i + 1] or piece[i] != piece[i + 1]:
             continue
         _summit(sign, i, root, best, piece, count, line, out)
+        if i in (top - 1, top):
+            loose = max(loose, out[2])
         if out[0] > found[0]:
             found[0], found[1], found[2] = out[0], i, out[1]
             doubt = out[2]
             _summit(sign, i, root, other, piece, count, line, out)
             rival = max(rival, out[0])
+    if found[0] == size and 0 < top < count - 1 and piece[top - 1] == piece[top + 1]:
+        doubt = loose  # a smooth top that neither neighbouring polynomial has
     # the largest lies between the largest lower and the largest upper bound of the rows
     below = -np.inf
     above = -np.inf
@@ -172,8 +216,7 @@ def _first_at(level, sign, root, value, time, start, piece, count, skip, line):
         if sign * value[i] >= level:
             if i == 0 or skip[i - 1] or piece[i - 1] != piece[i]:
                 return time[i]
-            low, points = _window(i - 1, piece, count)
-            _through(root, value, low, points, line)
+            _through(i - 1, root, value, piece, count, line)
             s = _cross(level, sign, root[i - 1], root[i], line)
             return start[piece[i]] + s * s
     return np.nan
@@ -206,23 +249,28 @@ def _settled(level, root, value, off, time, start, piece, count, work, line, fou
         return
     sign = -1.0 if value[last] < 0.0 else 1.0
     wide = max(off[last], off[last + 1])
-    # logarithms where the deviation decays within one sign: then nearly a straight line
-    low, points = _window(last, piece, count)
-    plain = True
-    for k in range(low, low + points):
-        plain = plain and sign * value[k] > 0.1 * level
-    for k in range(low, low + points):
-        work[k] = np.log(sign * value[k]) if plain else sign * value[k]
-    target = np.log(level) if plain else level
-    _through(root, work, low, points, line)
-    s = _cross(target, 1.0, root[last], root[last + 1], line)
-    at = start[piece[last]] + s * s
+    best_doubt = np.inf
+    at, rise, share = 0.0, 1.0, 0.0
+    for form in range(2):
+        # as it is, and its logarithm: a decaying deviation is nearly a straight line there
+        for k in range(max(last - STENCIL + 2, 0), min(last + STENCIL, count)):
+            work[k] = sign * value[k]
+            if form == 1:
+                work[k] = np.log(work[k]) if work[k] > 0.0 else np.nan
+        if not np.isfinite(work[last + 1]):
+            break
+        target = np.log(level) if form == 1 else level
+        _through(last, root, work, piece, count, line)
+        s = _cross(target, 1.0, root[last], root[last + 1], line)
+        slope = max(abs(_slope(line, s)) / max(2.0 * s, 1e-300), 1e-300)
+        doubt = _doubt(line, s, _first_of(last, piece)) / slope
+        if doubt < best_doubt:
+            best_doubt = doubt
+            at = start[piece[last]] + s * s
+            rise = slope
+            share = wide / level if form == 1 else wide
     found[0] = at
-    rise = abs(_slope(line, s)) / max(2.0 * s, 1e-300)
-    # what the polynomial of one row fewer would say
-    doubt = abs((s - line[4]) * (s - line[5]) * (s - line[6]) * line[3]) / max(rise, 1e-300)
-    share = wide / level if plain else wide
-    error = 1.2 * share / max(rise, 1e-300) + doubt
+    error = 1.2 * share / rise + best_doubt
     # a later return to the band within the errors
     for i in range(last + 1, count):
         if abs(value[i]) + off[i] > level:
@@ -342,7 +390,7 @@ def read(
     away = np.empty(most)
     skip = np.zeros((QUANTITIES, most), np.bool_)
     top = np.zeros(3)
-    line = np.zeros(7)
+    line = np.zeros(ROWS_KNOWN + 1)
     found = np.zeros(5)
     pair = np.zeros(2)
     steady = np.zeros(QUANTITIES)
