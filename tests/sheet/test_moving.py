@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 from test_figures import changed
 
-from transient.result.result import Result, ResultError
+from transient.result.result import Result, ResultError, Variable
 from transient.sheet.moving import FRAMES, GAP, moving, write_moving
 from transient.sheet.ticks import decades, steps, ticks
 
@@ -68,6 +68,12 @@ def test_what_cannot_be_moved_is_one_line(solved, tmp_path: Path):
         write_moving(solved("flow_cell"), tmp_path / "m.gif")
     with pytest.raises(ResultError, match="this file holds no travel"):
         moving(changed(solved("flow_cell"), travel=None))
+    one = {
+        name: Variable(v.dims, v.data[:1], v.units, v.long_name)
+        for name, v in solved("flow_cell").variables.items() if v.dims[0] == "profile_time"
+    }  # fmt: skip
+    with pytest.raises(ResultError, match="needs profiles at two times at least"):
+        moving(changed(solved("flow_cell"), **one))
 
 
 def test_ticks_are_round_and_inside():

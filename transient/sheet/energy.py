@@ -16,7 +16,19 @@ from transient.sheet.labels import Board
 from transient.sheet.span import Span, span
 from transient.sheet.stated import needed_case
 from transient.sheet.stress import finish, stress_signals
-from transient.sheet.style import INK, STROKE, extent, margins, name_axis, need, page, rows, without_spikes, zero_line
+from transient.sheet.style import (
+    INK,
+    STROKE,
+    extent,
+    margins,
+    name_axis,
+    need,
+    page,
+    rows,
+    told,
+    without_spikes,
+    zero_line,
+)
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -29,10 +41,11 @@ PRESSURE_INK, PRESSURE_STROKE = "#2b3238", (0, (3.2, 1.1))
 
 @dataclass(frozen=True, eq=False)
 class Account:
-    """Energy of the liquid from the start on, in J, J/m^2 (of plates without an area) or J/m (without a length).
+    """Energy of the liquid from the first stored profile on, in J, of plates without an area in J/m^2, of round gaps
+    without a length in J/m.
 
-    ``per`` is what follows the unit; ``power`` (n,) by giver, NaN where infinite; ``work`` (n,) their integrals;
-    ``kinetic`` (k,) at the profiles' times, less that at the start; ``dissipated`` (k,) the rest.
+    ``per`` is what follows the unit; ``power`` (n,) by giver, NaN where infinite; ``work`` (k,) their integrals,
+    ``kinetic`` (k,) less that at first, and ``dissipated`` (k,) the rest, at the profiles' times.
     """
 
     per: str
@@ -48,7 +61,7 @@ def energy(result: Result) -> Figure:
     account = account_of(result, needed_case(result, "energy"))
     if not account.work:
         raise ResultError("figure energy: nothing puts energy into the liquid in this run")
-    shared = span(result, [*stress_signals(result), *account.work.values()])
+    shared = span(result, stress_signals(result))
     load = next((name for name in ("wall_force", "wall_torque") if name in result.variables), None)
     count = 2 + (load is not None)
     figure = page(result.title, 1.6 + 1.25 * count, SUBTITLE)
@@ -58,9 +71,8 @@ def energy(result: Result) -> Figure:
         by_wall(axes[0], result, load, shared, margins(*extent(np.zeros(1), *shown)))
     _draw(axes[-2], result, shared, result.time, account.power, "power put in", "W", account.per)
     kept = result.profile_time
-    curves = {name: np.interp(kept, result.time, work) for name, work in account.work.items()}
-    curves |= {"kinetic": account.kinetic, "dissipated": account.dissipated}
-    _draw(axes[-1], result, shared, kept, curves, "energy since the start", "J", account.per)
+    curves = {**account.work, "kinetic": account.kinetic, "dissipated": account.dissipated}
+    _draw(axes[-1], result, shared, kept, curves, _since(result), "J", account.per)
     finish(figure, axes, result, shared)
     return figure
 
@@ -89,13 +101,20 @@ def account_of(result: Result, case: Case) -> Account:
     across = gap.ends.gap if flat else math.pi * gap.ends.gap * (gap.ends.inner + gap.ends.outer)
     if not gap.shape.rotating and result.pressure_drop_per_length.any():
         power["pressure"] = result.pressure_drop_per_length * result.mean_velocity * across * size
-    work = {name: _work(result.time, values) for name, values in power.items()}
+    kept = result.profile_time
+    work = {name: np.interp(kept, result.time, _work(result.time, values)) for name, values in power.items()}
+    work = {name: values - values[0] for name, values in work.items()}
     weight = 1.0 if flat else 2.0 * math.pi * result.position
     density = 0.5 * case.fluid.density * size * weight * result.velocity**2
     kinetic = np.trapezoid(density, result.position, axis=1)
     kinetic = kinetic - kinetic[0]
-    total = sum(work.values(), np.zeros(len(result.time)))
-    return Account(per, power, work, kinetic, np.interp(result.profile_time, result.time, total) - kinetic)
+    return Account(per, power, work, kinetic, sum(work.values(), np.zeros(len(kept))) - kinetic)
+
+
+def _since(result: Result) -> str:
+    """What the energies count from."""
+    first = float(result.profile_time[0])
+    return "energy since the start" if first == 0.0 else f"energy since {told(first, 's')}"
 
 
 def _work(time: np.ndarray, power: np.ndarray) -> np.ndarray:
