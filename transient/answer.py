@@ -47,7 +47,7 @@ def solve(problem: Problem, judge: str = "series") -> Solved:
     """Refine until every headline number's error meets the accuracy, or no finer level is in reach."""
     ahead = look(problem)
     # without a series three levels must judge themselves
-    judged = judge == "series" and _has_series(problem, ahead)
+    judged = judge == "series" and _has_series(problem)
     levels = 2 if judged else 3
     refine, best, in_vain = 1.0 if judged else 0.5, None, 0
     for _ in range(MOST_ATTEMPTS):
@@ -88,21 +88,19 @@ def _attempt(problem: Problem, ahead: Outlook, refine: float, levels: int, judge
     run = run_of(problem, ahead, ladder, errors)
     parts = headlines(run)
     if series is not None and run.regime.deviation is not None:
-        names = {wall.name: wall.end for wall in run.walls}
-        parts["settling"] = sharpened(parts["settling"], series, ladder, errors, names)
+        parts["settling"] = sharpened(parts["settling"], series, ladder, run)
     calm = ladder.best.steady_stress if ahead.kind == "steady" else None
     return Solved(ahead, ladder, run, parts, demands(run, parts, problem.accuracy, calm))
 
 
-def _has_series(problem: Problem, ahead: Outlook) -> bool:
-    """Whether an exact solution is to be had: not under force-speed curves and dry friction, nor of the periodic end of
-    a body."""
-    return not problem.closed or (problem.linear and ahead.kind != "periodic")
+def _has_series(problem: Problem) -> bool:
+    """Whether an exact solution is to be had: not under force-speed curves and dry friction."""
+    return problem.linear
 
 
 def _series(problem: Problem, ahead: Outlook, ladder: Ladder, judge: str) -> Exact | None:
     """The exact solution, None where there is none or it is not to be used."""
-    if judge == "refinement" or not _has_series(problem, ahead):
+    if judge == "refinement" or not _has_series(problem):
         return None
     try:
         return exact_of(problem, ahead, ladder)

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field, replace
+from functools import lru_cache
 
 import numpy as np
 
@@ -45,6 +46,12 @@ class Gap:
     swing: Swings
     window: float
     solved: dict[int, tuple[np.ndarray, np.ndarray, float]] = field(default_factory=dict)
+
+    @property
+    def no_modes(self) -> Modes:
+        """Modes that answer nothing: contours do it all."""
+        none = np.empty(0)
+        return Modes(self.shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
 
     def level(self, level: int) -> tuple[np.ndarray, np.ndarray, float]:
         """(unknowns, walls, growth of round-off) on the contour of a level."""
@@ -99,10 +106,8 @@ class ClosedAnswer:
         swing = gap.swing
         share = made(swing.pole, swing.residue, swing.walls)
         count = share.shape[2]
-        none = np.empty(0)
-        nothing = Modes(gap.shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
         weight, slow = np.empty((0, count)), np.zeros((4, 3, count))
-        return cls(gap, made, alike, share, _at_once(gap, made, 0), nothing, weight, slow)
+        return cls(gap, made, alike, share, _at_once(gap, made, 0), gap.no_modes, weight, slow)
 
     @property
     def window(self) -> float:
@@ -194,10 +199,20 @@ class ClosedSolution:
         if self.base.any():
             steady = steady_flow(self.shape)
             calm = self.base @ np.concatenate([steady.stress(), steady.mean()[:, None]], axis=1)
-        value, bound = self._evaluate(self._answer("walls", walls_of), piece, offset, calm)
-        stress = self.problem.viscosity / (1.0 if self.problem.rotating else self.problem.gap)
-        scale = np.array([stress, stress, self.problem.gap if self.problem.rotating else 1.0])
-        return value * scale, bound * scale
+        value, bound = self.evaluate(self.answer("walls", walls_of), piece, offset, calm)
+        return value * self.wall_scale, bound * self.wall_scale
+
+    @property
+    def wall_scale(self) -> np.ndarray:
+        """(3,) what makes stresses, Pa, and a mean velocity, m/s, of the dimensionless ones."""
+        rotating, gap = self.problem.rotating, self.problem.gap
+        stress = self.problem.viscosity / (1.0 if rotating else gap)
+        return np.array([stress, stress, gap if rotating else 1.0])
+
+    def speeds(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """(n, 2) both walls' speeds and their bounds."""
+        value, bound = self.motion(piece, offset)
+        return value[:, :2], bound[:, :2]
 
     def stress(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 2) stress on the lower and upper wall, Pa, and its bound (n, 2)."""
@@ -215,7 +230,7 @@ class ClosedSolution:
         A place is a body's from its own zero; a prescribed wall's counts from t = 0.
         """
         calm = np.concatenate([self.base[:2], np.zeros(4), self.base[2:]])
-        value, bound = self._evaluate(self._answer("motion", motion_of, MOTIONS), piece, offset, calm)
+        value, bound = self.evaluate(self.answer("motion", motion_of, MOTIONS), piece, offset, calm)
         time = self.problem.diffusion_time
         pressure = self.problem.viscosity / self.problem.gap**2
         scale = np.array([1.0, 1.0, 1.0 / time, 1.0 / time, time, time, pressure])
@@ -229,18 +244,20 @@ class ClosedSolution:
         """(n, k) velocity (rotating gaps: angular) at coordinates ``r`` (k,) m, and its bound over the gap (n,)."""
         y = np.clip((np.asarray(r, dtype=float) - self.problem.inner) / self.problem.gap, 0.0, 1.0)
         calm = self.base @ steady_flow(self.shape).velocity(y) if self.base.any() else np.zeros(len(y))
-        answer = self._answer(f"velocity {hash(y.tobytes())}", velocities_of(self.shape, y))
-        value, bound = self._evaluate(answer, piece, offset, calm)
+        answer = self.answer(f"velocity {hash(y.tobytes())}", velocities_of(self.shape, y))
+        value, bound = self.evaluate(answer, piece, offset, calm)
         return value, bound.max(axis=1, initial=0.0) * (1.0 + FAINT)
 
-    def _answer(self, name: str, made: Made, alike: tuple[slice, ...] = (slice(None),)) -> ClosedAnswer:
+    def answer(self, name: str, made: Made, alike: tuple[slice, ...] = (slice(None),)) -> ClosedAnswer:
+        """The answer of a ``name``, prepared once."""
         if name not in self.answers:
             self.answers[name] = ClosedAnswer.of(self.gap, made, alike)
         return self.answers[name]
 
-    def _evaluate(
-        self, answer: ClosedAnswer, piece: np.ndarray, offset: np.ndarray, calm: np.ndarray
+    def evaluate(
+        self, answer: ClosedAnswer, piece: np.ndarray, offset: np.ndarray, calm: np.ndarray | float = 0.0
     ) -> tuple[np.ndarray, np.ndarray]:
+        """(n, Q) dimensionless values above a ``calm`` (Q,) from before, and their bounds."""
         p = np.atleast_1d(np.asarray(piece, dtype=np.int64))
         x = np.atleast_1d(np.asarray(offset, dtype=float)) / self.problem.diffusion_time
         value, size = evaluate(self.line, self.at, answer, p, x)  # type: ignore[arg-type]
@@ -273,7 +290,7 @@ class ClosedSolution:
         level = np.maximum(level + (age < np.ldexp(self.gap.window, -1 - level)), 0)
         for number in np.unique(level[~first]):
             here = (level == number) & ~first
-            table = answer.table(int(number), 5)
+            table = answer.table(int(number), self.line.orders)
             turn = _turns(age[here], float(np.ldexp(self.gap.window, -1 - number)))
             for i in np.flatnonzero(self.kick):
                 value[here] += self.kick[i] * (turn @ table.series[0, i].T)
@@ -326,6 +343,7 @@ def _slopes(line: Timeline) -> np.ndarray:
     return np.where(np.abs(out) > 1e-11 * size, out, 0.0)
 
 
+@lru_cache(maxsize=4)  # of one solve: refined again and again, and once more for its deviation
 def solve_closed(problem: Problem, until: float) -> ClosedSolution:
     """The exact flow on [0, until) under bodies and prescribed flow.  Raises ``SeriesError`` where there is none."""
     shape = shape_of(problem)
@@ -359,9 +377,7 @@ def solve_closed(problem: Problem, until: float) -> ClosedSolution:
     gap = Gap(shape, closing, swings(closing), window)
     if problem.start == "rest":
         kick = _kick(gap, np.array([0.0 if b is None else b.initial_speed or 0.0 for b in bodies]))
-    none = np.empty(0)
-    kept = Modes(shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
-    return ClosedSolution(problem, gap, line, states(line, kept), base, place, kick, inputs.starts)
+    return ClosedSolution(problem, gap, line, states(line, gap.no_modes), base, place, kick, inputs.starts)
 
 
 def _kick(gap: Gap, speed: np.ndarray) -> np.ndarray:

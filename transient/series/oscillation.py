@@ -175,6 +175,18 @@ def amplitudes(
     return out, size
 
 
+def cycle_transform(line: Timeline, length: float, s: np.ndarray) -> np.ndarray:
+    """(S, 3) integrals of exp(s (length - tau)) input(tau) over one cycle of ``length``, the line's pieces in turn."""
+    pieces = np.arange(len(line.starts))
+    ends = np.append(line.starts[1:], length)
+    out = np.zeros((len(s), 3), complex)
+    for n, pole in enumerate(s):
+        for i in range(3):
+            gained, _ = _gained(pole, line, np.zeros(3), i, pieces, ends - line.starts)
+            out[n, i] = (np.exp(pole * (length - ends)) * gained).sum()
+    return out
+
+
 def _gained(pole: complex, line: Timeline, before: np.ndarray, i: int, piece: np.ndarray, x: np.ndarray):  # type: ignore[no-untyped-def]
     """(m,) integral of exp(pole (x - xi)) (input i - before) over the first ``x`` of each ``piece``, and its size."""
     z = pole * x

@@ -9,8 +9,10 @@ import numpy as np
 from transient.drive.pieces import Drive, common_period, merge_times
 from transient.gap.problem import Inputs, Problem
 from transient.series.answers import mode_count
+from transient.series.coupled import solve_closed
 from transient.series.gapshape import GapShape, SeriesError, shape_of
 from transient.series.modes import Modes, modes
+from transient.series.orbit import ClosedDeviation, Orbit, closed_orbit
 from transient.series.solution import Solution
 from transient.series.steady import steady_flow
 from transient.series.timeline import WINDOWS, states, timeline
@@ -67,8 +69,10 @@ def steady(problem: Problem, values: np.ndarray) -> SteadyState:
     return SteadyState(problem, shape, inputs, stress, float(inputs @ flow.mean()) * (problem.gap if rotating else 1.0))
 
 
-def periodic(problem: Problem, until: float | None = None) -> Solution:
+def periodic(problem: Problem, until: float | None = None) -> Solution | Orbit:
     """The periodic (or steady) state itself on [0, ``until``), default one period.  Raises SeriesError without one."""
+    if problem.closed:
+        return _closed_orbit(problem)
     end = _need(problem)
     shape = shape_of(problem)
     span = until or end.period or problem.diffusion_time
@@ -76,11 +80,13 @@ def periodic(problem: Problem, until: float | None = None) -> Solution:
     return _with_past(problem, shape, end, now, None)
 
 
-def deviation(problem: Problem, until: float) -> Solution:
+def deviation(problem: Problem, until: float) -> Solution | ClosedDeviation:
     """The flow less its eventual steady or periodic state, on [0, ``until``), each mode followed to its own end.
 
     ``velocity``, ``stress`` and ``mean`` of the result are differences.  Raises SeriesError if there is no such state.
     """
+    if problem.closed:
+        return _closed_deviation(problem, until)
     end = _need(problem)
     shape = shape_of(problem)
     groups = [drive.breaks(until) for drive in (*problem.drives, *end.drives)]
@@ -91,9 +97,22 @@ def deviation(problem: Problem, until: float) -> Solution:
     return _with_past(problem, shape, end, less(actual, _rows(end.drives, until, starts)), actual.before)
 
 
+def _closed_orbit(problem: Problem) -> Orbit:
+    end = regime(problem)
+    if end is None or end.period is None:
+        raise SeriesError("the drive does not end in a periodic state")
+    return closed_orbit(problem, _rows(end.drives, end.period, None), end.period)
+
+
+def _closed_deviation(problem: Problem, until: float) -> ClosedDeviation:
+    orbit = _closed_orbit(problem)
+    end = regime(problem)
+    assert end is not None
+    starts = merge_times([drive.breaks(until) for drive in (*problem.drives, *end.drives)])
+    return ClosedDeviation(solve_closed(problem, until), orbit, starts)
+
+
 def _need(problem: Problem) -> Regime:
-    if problem.closed:
-        raise SeriesError("no series is worked out yet for the periodic end of a body or a prescribed flow")
     steady_flow(shape_of(problem))
     end = regime(problem)
     if end is None:

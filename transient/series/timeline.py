@@ -10,7 +10,7 @@ import numpy as np
 
 from transient.gap.problem import Inputs, Problem
 from transient.series.answers import Answer, mode_count
-from transient.series.early import ALL, CUBIC
+from transient.series.early import ALL
 from transient.series.evaluation import base_piece, fill_old, young_levels
 from transient.series.gapshape import SeriesError
 from transient.series.modes import Modes
@@ -55,6 +55,14 @@ class Timeline:
         used = np.where(self.coeff == 0, 0, self.exponent)
         rates, index = np.unique(used.ravel(), return_inverse=True)
         return rates, index.reshape(used.shape)
+
+    @property
+    def orders(self) -> int:
+        """Orders in which answers to breaks are needed: pulse, jump of value, of slope ..., as the drive bends."""
+        if self.coeff.any():
+            return ALL
+        bent = np.flatnonzero(self.poly.any(axis=(0, 1)))
+        return 2 + int(bent[-1]) if len(bent) else 2
 
     def window(self) -> float:
         """Age up to which breaks are answered one by one: what costs least, few modes or few young breaks."""
@@ -160,7 +168,7 @@ def _evaluate(line, at, answer, piece, offset, exponentials, out, size):  # type
     used = np.unique(np.maximum(levels, 0))
     row = np.full(int(used[-1]) + 1, -1)
     row[used] = np.arange(len(used))
-    orders = ALL if line.coeff.any() else CUBIC
+    orders = line.orders
     tables = [answer.table(int(level), orders) for level in used]
     series, reach = np.stack([t.series for t in tables]), np.stack([t.reach for t in tables])
     contours = np.stack([answer.contour(int(level)) for level in used])
