@@ -19,7 +19,7 @@ from typing import Any
 from transient.case.model import Case
 from transient.sweep.keys import Varied
 
-RUNNERS: tuple[str, ...] = ("each",)
+RUNNERS: tuple[str, ...] = ("lanes", "each")
 
 
 def runners(base: Case, keys: Sequence[Varied]) -> list[Any]:
