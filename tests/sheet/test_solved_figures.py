@@ -41,6 +41,15 @@ def test_the_arrow_of_a_wall_points_the_way_it_moves(solved, case: str, to_the_r
     assert [text.xy[0] > text.get_position()[0] for text in broad] == [to_the_right]
 
 
+def test_a_free_surface_is_no_wall_and_feels_no_stress(solved):
+    result = solved("flow_cell")
+    free = result.case_text + "[wall.lower]\nshear_free = true\n"
+    figure = draw(Result(result.variables, result.summary, free, result.attributes), "sketch")
+    assert len(marked(figure, "free")) == 1
+    assert texts(figure).count("τ > 0") == 1
+    assert texts(draw(result, "sketch")).count("τ > 0") == 2
+
+
 def test_work_of_a_ramped_wall_closes_with_the_exact_dissipation(solved):
     """In the end the film dissipates mu U^2/h per area and holds rho U^2 h/6 per area of kinetic energy: integrals
     of the plane Couette profile (White, Viscous Fluid Flow, ch. 3; from memory)."""

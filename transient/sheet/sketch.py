@@ -52,13 +52,14 @@ def subtitle(result: Result) -> str:
 
 def _plates(axes: Axes, case: Case, result: Result) -> None:
     lower, upper = case.walls
-    _band(axes, 0.0, -THICK)
-    _band(axes, 1.0, 1.0 + THICK)
+    _band(axes, 0.0, -THICK, lower.shear_free)
+    _band(axes, 1.0, 1.0 + THICK, upper.shear_free)
     _length(axes, LONG + 0.16, 0.0, 1.0, f"height {_typed(case, 'height')}")
     _wall(axes, case, lower.name, -THICK, -1.0)
     _wall(axes, case, upper.name, 1.0 + THICK, 1.0)
-    _sense(axes, 0.0, 1.0, INK[0])
-    _sense(axes, 1.0, -1.0, INK[1])
+    for wall, edge, inward, ink in ((lower, 0.0, 1.0, INK[0]), (upper, 1.0, -1.0, INK[1])):
+        if not wall.shear_free:
+            _sense(axes, edge, inward, ink)
     _profile(axes, result, 0.0, 1.0, False)
     _frame(axes, 0.0, "y")
     _push(axes, case, 0.5)
@@ -83,8 +84,8 @@ def _pipe(axes: Axes, case: Case, result: Result) -> None:
 def _axial(axes: Axes, case: Case, result: Result) -> None:
     inner, outer = case.walls
     for side in (-1.0, 1.0):
-        _band(axes, side, side * (1.0 + THICK))
-    _band(axes, -ROD, ROD)
+        _band(axes, side, side * (1.0 + THICK), outer.shear_free)
+    _band(axes, -ROD, ROD, inner.shear_free)
     _axis(axes)
     given = list(case.gap.sizes.items())
     sizes = ", ".join(f"{key.replace('_', ' ')} {_typed(case, key)}" for key, _ in given if key != "length")
@@ -92,8 +93,9 @@ def _axial(axes: Axes, case: Case, result: Result) -> None:
     axes.text(LONG + 0.55, -0.72, "\n".join(wrap(sizes, LETTERS)), size=SMALL, va="center", color=BLACK)
     _wall(axes, case, inner.name, 0.0, 0.0)
     _wall(axes, case, outer.name, 1.0 + THICK, 1.0)
-    _sense(axes, ROD, 1.0, INK[0])
-    _sense(axes, 1.0, -1.0, INK[1])
+    for wall, edge, inward, ink in ((inner, ROD, 1.0, INK[0]), (outer, 1.0, -1.0, INK[1])):
+        if not wall.shear_free:
+            _sense(axes, edge, inward, ink)
     _profile(axes, result, ROD, 1.0, True)
     _frame(axes, 0.0, "r")
     _push(axes, case, 0.5 * (ROD + 1.0))
@@ -159,14 +161,19 @@ def _tangential(axes: Axes, result: Result, low: float) -> None:
     axes.text(-0.78, side, "u", size=SMALL + 1, color=INK[2], ha="center", va="center", style="italic")
 
 
-def _band(axes: Axes, inside: float, outside: float) -> None:
-    """A wall from its wetted face to its back, hatched."""
+def _band(axes: Axes, inside: float, outside: float, free: bool = False) -> None:
+    """A wall from its wetted face to its back, hatched; a ``free`` surface is a broken line."""
     from matplotlib.patches import Rectangle
 
     low, high = sorted((inside, outside))
-    axes.add_patch(Rectangle((0.0, low), LONG, high - low, fc="white", ec=WALL, hatch="/////", lw=0))
-    for edge in {inside, outside} if abs(high - low) > 2 * THICK else {inside}:
-        axes.plot([0.0, LONG], [edge, edge], color=BLACK, lw=1.1)
+    faces = {inside, outside} if high - low > 2 * THICK else {inside}  # a rod is wetted on both sides
+    if not free:
+        axes.add_patch(Rectangle((0.0, low), LONG, high - low, fc="white", ec=WALL, hatch="/////", lw=0))
+    for edge in faces:
+        axes.plot(
+            [0.0, LONG], [edge, edge], color=BLACK, lw=1.1, ls=(0, (5, 3)) if free else "-",
+            gid="free" if free else "face",
+        )  # fmt: skip
 
 
 def _axis(axes: Axes) -> None:
