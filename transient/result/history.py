@@ -8,12 +8,13 @@ from functools import cached_property, lru_cache
 
 import numpy as np
 
-from transient.compiled import compiled
+from transient.compiled import compiled, part
 from transient.result.curve import Curve
 
 STENCIL = 5
 FEW = 256  # coordinates at which every profile is looked at
 NEIGHBOURS = 6
+BULGE = 0.25  # of the second difference of nodes: so far a largest may rise above them (a parabola: an eighth)
 ROOM = 0.25  # of the range of its neighbours: so far a value between nodes may leave that range
 # Into which a step is cut in which the place of the largest velocity moves, then the part in which it still does, ...
 CORNER_PARTS = (12, 8, 8, 8, 8)
@@ -240,6 +241,13 @@ def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tupl
     return value, change
 
 
+@part
+def _bend(profile, i):  # type: ignore[no-untyped-def]
+    """Magnitude of the second difference around a node, or the nearest that has two neighbours."""
+    i = min(max(i, 1), len(profile) - 2)
+    return abs(profile[i - 1] - 2.0 * profile[i] + profile[i + 1])
+
+
 @compiled
 def _fill_largest(position, profile, rate, look, value, change):  # type: ignore[no-untyped-def]
     nodes, points = len(position), min(STENCIL, len(position))
@@ -282,6 +290,10 @@ def _fill_largest(position, profile, rate, look, value, change):  # type: ignore
             bend = height[best - 1] - 2.0 * height[best] + height[best + 1]
             if bend < 0.0:
                 top -= (height[best + 1] - height[best - 1]) ** 2 / (8.0 * bend)
+        # a wall that has just jumped is no smooth neighbour: so high only as the nodes beside it allow as well
+        room = BULGE * min(_bend(profile[k], at - 1), _bend(profile[k], at), _bend(profile[k], at + 1))
+        if top > value[k] + room:
+            top, change[k] = value[k] + room, sign * rate[k, at]
         value[k] = max(top, value[k])
 
 
@@ -323,11 +335,11 @@ def _fill_between(profile, parts, straight, weight, out):  # type: ignore[no-unt
             for i in range(max(low - 1, 0), min(low + 2, nodes - 1) + 1):
                 least, most = min(least, profile[k, i]), max(most, profile[k, i])
             room = ROOM * (most - least)
-            for part in range(parts + 1 if low == nodes - 2 else parts):
-                g = low * parts + part
+            for step in range(parts + 1 if low == nodes - 2 else parts):
+                g = low * parts + step
                 value = 0.0
                 if straight[k]:
-                    value = profile[k, low] + (profile[k, low + 1] - profile[k, low]) * part / parts
+                    value = profile[k, low] + (profile[k, low + 1] - profile[k, low]) * step / parts
                 else:
                     for i in range(points):
                         value += weight[g, i] * profile[k, start + i]

@@ -9,30 +9,33 @@ import numpy as np
 
 from transient.march.levels import Ladder
 from transient.result.history import History
-from transient.result.run import Errors
+from transient.result.run import Run
 from transient.trust.exact import Exact, orbit_errors
+from transient.trust.peaks import speed_error
 
 RESOLVED = 3e-9  # of a settling time: how closely the exact passage is found
 PASSAGE_MARGIN = 1.1  # for the exact deviation's own largest place, which lies between the places looked at
 LOOKS = 13  # instants looked at in each narrowing
 
 
-def sharpened(
-    settling: dict[str, Any], exact: Exact, ladder: Ladder, errors: Errors, names: dict[str, int]
-) -> dict[str, Any]:
+def sharpened(settling: dict[str, Any], exact: Exact, ladder: Ladder, run: Run) -> dict[str, Any]:
     """The settling part of a summary with errors that include the exact crossing beside each stated time.
 
-    ``names``: walls and their ends.  The exact deviation is looked for its last passage of the band near the time.
+    The exact deviation is looked for its last passage of the band near the time.
     """
-    away = ladder.best.deviation
+    away, errors = ladder.best.deviation, run.errors
+    names = {wall.name: wall.end for wall in run.walls}
     if exact.deviation is None or away is None:
         return settling
     said, size, spread = settling, settling["relative_to"], settling["errors"]
     # the size of a periodic regime, or a peak that stands in for a size, is a computed one too; a steady one is exact
-    known = {0: size["velocity"], 1: abs(exact.mean), 2: abs(exact.stress[0]), 3: abs(exact.stress[1])}
-    unsure = [float(errors.level_profile[away.largest.curve.value.argmax()]), errors.mean_peak, *errors.peak]
     if said["regime"] == "periodic":
         known, unsure = {}, orbit_errors(ladder, exact)
+    else:
+        known = {1: abs(exact.mean), 2: abs(exact.stress[0]), 3: abs(exact.stress[1])}
+        unsure = [0.0, errors.mean_peak, *errors.peak]
+        if run.regime.velocity != size["velocity"]:  # nothing moves in the end: the size is the run's largest speed
+            unsure[0] = speed_error(away, exact.deviation, errors.level_profile)
     rows = [("velocity", said["velocity"], spread["velocity"], size["velocity"], 0)]
     rows.append(("flow", said["flow"], spread["flow"], size["flow"], 1))
     rows += [(n, said["stress"][n], spread["stress"][n], size["stress"][n], 2 + end) for n, end in names.items()]
