@@ -18,11 +18,8 @@ EQUATIONS = {
     1: ("ρ ∂u/∂t  =  (1/r) ∂/∂r (r μ ∂u/∂r)  +  G(t)", "u velocity along +x, r radius"),
     3: ("ρ ∂u/∂t  =  (1/r²) ∂/∂r (r³ μ ∂ω/∂r),   u = r ω", "u tangential velocity, ω angular speed, r radius"),
 }
-STRESSES = {
-    0: ("τ_lower = + μ ∂u/∂y,   τ_upper = − μ ∂u/∂y", "traction of the liquid on the wall"),
-    1: ("τ_inner = + μ ∂u/∂r,   τ_outer or bore = − μ ∂u/∂r", "traction of the liquid on the wall"),
-    3: ("τ_inner = + μ r ∂ω/∂r,   τ_outer = − μ r ∂ω/∂r", "traction of the liquid on the wall"),
-}
+# What a wall's stress is, but for the sign.
+SHEARS = {0: "μ ∂u/∂y", 1: "μ ∂u/∂r", 3: "μ r ∂ω/∂r"}
 
 
 def model(facts: Facts) -> tuple[Block, ...]:
@@ -34,9 +31,16 @@ def model(facts: Facts) -> tuple[Block, ...]:
     text, letters = EQUATIONS[metric]
     push = "" if metric == 3 else ", G pressure drop per length (positive drives along +x)"
     blocks: list[Block] = [Formula(text, f"{letters}, ρ density, μ viscosity{push}, t time")]
-    blocks.append(Formula(*STRESSES[metric]))
+    blocks.append(Formula(_stresses(case), "traction of the liquid on the wall"))
     blocks.append(Points(tuple(shortened(text, 240) for text in _conditions(case))))
     return (*blocks, _assumed(facts), Words(_method(facts)))
+
+
+def _stresses(case: Case) -> str:
+    """Stress on each wall: the traction on the face that looks along the coordinate, or against it."""
+    shape = case.gap.shape
+    signs = dict(zip(shape.walls, "+−", strict=True))
+    return ",   ".join(f"τ_{name} = {signs[name]} {SHEARS[shape.metric]}" for name in shape.real_walls)
 
 
 def _conditions(case: Case) -> Iterator[str]:

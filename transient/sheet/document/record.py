@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import platform
+from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 
 from transient.sheet.document.blocks import Blanks, Block, Listing, Table, Words
@@ -32,6 +33,7 @@ def record_rows(facts: Facts) -> tuple[tuple[str, str], ...]:
         ("solved on", str(facts.result.attributes.get("created") or "not stated")),
         ("result file", facts.name),
         ("sheet by", f"transient {_version('transient')}, Python {platform.python_version()}, " + _packages()),
+        ("sheet written on", datetime.now(UTC).strftime("%Y-%m-%d")),
     )
 
 
