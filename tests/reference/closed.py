@@ -232,13 +232,14 @@ class Plant:
             place[end] = body.get("initial_displacement", 0.0)
         size = self.space.shape[1]
         if self.case.get("start", "rest") == "rest":
-            z = np.zeros(len(self.r))
-            kick = np.zeros(len(self.r))
-            for end, speed in given.items():
-                body = self.bodies[end]
-                kick += body["mass"] * body["factor"] * speed * body["node"]
-            # an impulse moves what it can: momentum before, motion after
-            q = self.project @ np.linalg.solve(self.mass, kick)
+            # impulses that leave the bodies at their speeds, whatever else they set in motion
+            q = np.zeros(size)
+            moved = [end for end in given if given[end]]
+            if moved:
+                nodes = np.array([self.bodies[end]["node"] for end in moved]).T
+                answer = self.project @ np.linalg.solve(self.mass, nodes)
+                share = np.linalg.solve(nodes.T @ self.space @ answer, [given[end] for end in moved])
+                q = answer @ share
         else:
             z, own = self.steady(inputs, given)
             q = self.project @ (z - self.lift @ inputs)

@@ -28,6 +28,7 @@ FEWEST_CELLS = 12
 MOST_CELLS = 20_000
 ECHO = 0.5  # of the accuracy that an answer to an earlier break may be misread by within a first step
 ECHOES = 4  # breaks back, whose answers bound a first step
+SLOWED = 0.14  # of its speed per root of (time over that in which the film stops it), twice what a first step misses
 MISSED = 0.015  # of a root-like growth within a first step, by computation
 
 
@@ -319,7 +320,11 @@ def _accelerating(problem: Problem, found: Features, end: int, share: float) -> 
     pushed = time if ratio == 0.0 else np.minimum(time, stopped) if ratio < 1.0 else np.full(len(time), stopped)
     bent = time if ratio < 1.0 else ratio**2 * time
     bound = np.where(found.kink[:, end] > 0.0, pushed, np.where(found.bend[:, end] > 0.0, bent, np.inf))
-    return (share / MISSED) ** 2 * bound
+    bound *= (share / MISSED) ** 2
+    if problem.start == "rest" and body.initial_speed:
+        # its film stops it like the root of time from the first instant on
+        bound[0] = min(bound[0], (share / SLOWED) ** 2 * stopped)
+    return bound
 
 
 def _event_step(problem: Problem, found: Features, share: float) -> float:
