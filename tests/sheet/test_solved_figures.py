@@ -63,6 +63,16 @@ def test_work_of_a_ramped_wall_closes_with_the_exact_dissipation(solved):
     assert (np.diff(account.dissipated) > 0.0).all()
 
 
+@pytest.mark.parametrize(("case", "wall"), [("pushed_carriage", "upper"), ("motor_rotor", "inner")])
+def test_work_on_the_liquid_is_what_the_run_itself_states(solved, case: str, wall: str):
+    """Against the march's own running balance, from its own rows (computed)."""
+    result = solved(case)
+    account, film = account_of(result, case_of(result)), result.summary["energy"]["film"]
+    assert list(account.work) == [f"{wall} wall"]
+    assert account.work[f"{wall} wall"][-1] == pytest.approx(film["work"], rel=1e-3)
+    assert account.dissipated[-1] == pytest.approx(film["dissipated"], rel=1e-3)
+
+
 def test_energies_count_from_the_first_kept_profile(solved):
     """Work between two instants does not depend on where the count begins."""
     result = solved("flow_cell")

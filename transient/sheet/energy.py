@@ -91,18 +91,19 @@ def account_of(result: Result, case: Case) -> Account:
         size, per = (length, "") if length is not None else (1.0, "/m")
     size = (size or 1.0) * (1 if per else gap.count)
     around = np.ones(2) if flat else 2.0 * math.pi * np.array([gap.ends.inner, gap.ends.outer])
-    power = {}
+    pairs: dict[str, tuple[np.ndarray, np.ndarray]] = {}  # of what is straight between rows: load and speed
     ends = {wall.name: end for end, wall in enumerate(case.walls) if wall is not None}
     for column, name in enumerate(wall_names(result)):
         lever = (gap.ends.inner, gap.ends.outer)[ends[name]] if gap.shape.rotating else 1.0
-        given = -result.wall_stress[:, column] * result.wall_speed[:, column] * lever * around[ends[name]] * size
-        if np.nan_to_num(given).any():
-            power[f"{name} wall"] = given
+        speed = result.wall_speed[:, column] * (lever * around[ends[name]] * size)
+        if np.nan_to_num(result.wall_stress[:, column] * speed).any():
+            pairs[f"{name} wall"] = -result.wall_stress[:, column], speed
     across = gap.ends.gap if flat else math.pi * gap.ends.gap * (gap.ends.inner + gap.ends.outer)
     if not gap.shape.rotating and result.pressure_drop_per_length.any():
-        power["pressure"] = result.pressure_drop_per_length * result.mean_velocity * across * size
+        pairs["pressure"] = result.pressure_drop_per_length, result.mean_velocity * (across * size)
     kept = result.profile_time
-    work = {name: np.interp(kept, result.time, _work(result.time, values)) for name, values in power.items()}
+    power = {name: load * speed for name, (load, speed) in pairs.items()}
+    work = {name: np.interp(kept, result.time, _work(result.time, *pair)) for name, pair in pairs.items()}
     work = {name: values - values[0] for name, values in work.items()}
     weight = 1.0 if flat else 2.0 * math.pi * result.position
     density = 0.5 * case.fluid.density * size * weight * result.velocity**2
@@ -117,13 +118,14 @@ def _since(result: Result) -> str:
     return "energy since the start" if first == 0.0 else f"energy since {told(first, 's')}"
 
 
-def _work(time: np.ndarray, power: np.ndarray) -> np.ndarray:
-    """Running integral (n,) of a power that is straight between rows, and falls with the root of the time from an
-    infinite one: over that first step its mean is twice its end."""
+def _work(time: np.ndarray, load: np.ndarray, speed: np.ndarray) -> np.ndarray:
+    """Running integral (n,) of load times speed, both straight between rows; an infinite load falls with the root of
+    the time, and over that first step its mean is twice its end."""
     step = np.diff(time)
-    first, last = power[:-1], power[1:]
-    part = np.where(np.isfinite(first), 0.5 * (first + last), 2.0 * last)
-    part = np.where(np.isfinite(last), part, first)
+    l0, l1, v0, v1 = load[:-1], load[1:], speed[:-1], speed[1:]
+    part = (2.0 * (l0 * v0 + l1 * v1) + l0 * v1 + l1 * v0) / 6.0
+    part = np.where(np.isfinite(l0), part, 2.0 * l1 * v1)
+    part = np.where(np.isfinite(l1), part, l0 * v0)
     return np.concatenate([[0.0], np.cumsum(np.nan_to_num(step * part))])
 
 
