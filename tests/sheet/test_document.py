@@ -265,6 +265,15 @@ def test_the_pdf_has_every_part_and_all_that_a_reader_needs(solved, tmp_path: Pa
 
 
 @pytest.mark.usefixtures("undrawn")
+@pytest.mark.parametrize("title", ["cost $5 of $x_{", "<b>&amp;</b>", "\u8fd0\u52a8", "a" * 300])
+def test_a_title_is_only_text_on_paper_too(solved, tmp_path: Path, title: str):
+    result = solved("flow_cell")
+    other = Result(result.variables, {**result.summary, "title": title}, result.case_text, {"title": title})
+    write_sheet(other, tmp_path / "t.pdf", f"{title[:20]}.h5", note=title)
+    assert (tmp_path / "t.pdf").read_bytes().startswith(b"%PDF")
+
+
+@pytest.mark.usefixtures("undrawn")
 def test_nothing_leaves_the_printed_page(solved):
     from matplotlib.backends.backend_agg import FigureCanvasAgg
 

@@ -23,8 +23,8 @@ def _letter(letter: str, family: str) -> float:
     """Width of a letter per point of size, inches."""
     font = _font(family)
     font.set_size(100.0, 72)
-    font.set_text(letter, 0.0)
-    return font.load_char(ord(letter)).linearHoriAdvance / 65536.0 / 100.0 / 72.0
+    # a letter that the font lacks has the width of the box that stands for it
+    return font.load_glyph(font.get_char_index(ord(letter))).linearHoriAdvance / 65536.0 / 100.0 / 72.0
 
 
 def width(text: str, size: float, family: str = "sans") -> float:
