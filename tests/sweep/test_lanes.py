@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from transient.answer import run
 from transient.case.model import Case
-from transient.sweep import lanes
+from transient.march.lanes_grid import grid_table, unit_problem
+from transient.march.lanes_round import round_tables
+from transient.sweep import lanes, lanes_batch
 from transient.sweep.columns import OPEN, SOLVED, blank, layout, put_summary
 from transient.sweep.keys import Varied, changes
 
@@ -166,27 +170,45 @@ def test_a_tighter_accuracy_is_met_too():
         assert out["settling_time"][row] == pytest.approx(settled * time, rel=1e-4)
 
 
-def test_a_row_does_not_depend_on_its_neighbours():
+@pytest.mark.parametrize("name", ["plates, ramp", "annulus, rod drawn back"])
+def test_a_row_does_not_depend_on_its_neighbours(name):
     """Bit for bit: in another order, in a smaller company, and alone."""
     rows = 40
-    keys, values, columns, out = solved(ramped(), MODEL, rows)
+    base, spec = CASES[name]
+    keys, values, columns, out = solved(base, spec, rows)
     order = np.random.default_rng(3).permutation(rows)
     for chosen in (order, order[:11], order[:1]):
-        part = lanes.solve(ramped(), keys, {name: array[chosen] for name, array in values.items()}, columns)
+        part = lanes.solve(base, keys, {name: array[chosen] for name, array in values.items()}, columns)
         for name, column in out.items():
             np.testing.assert_array_equal(part[name], column[chosen], err_msg=name)
 
 
+@pytest.mark.parametrize("motion", ["axial", "rotating"])
+@pytest.mark.parametrize("wall", [{}, {"inner": {"slip_length": "50 um"}}, {"outer": {"shear_free": True}}])
+def test_grids_of_many_annuli_are_those_of_one(motion, wall):
+    base = Case({"gap": {"shape": "annulus", "motion": motion, "inner_diameter": "16 mm", "radial_clearance": "1 mm"},
+                 "fluid": {"density": "1000 kg/m^3", "viscosity": "1 mPa*s"}, "wall": wall,
+                 "run": {"duration": "1 s"}})  # fmt: skip
+    unit = unit_problem(base.problem())
+    inner = np.array([0.02, 1.0, 8.0, 500.0])
+    tables, ends = round_tables(unit, inner, 24, (0.01, 0.05))
+    for i, radius in enumerate(inner):
+        table, end = grid_table(replace(unit, inner=radius, outer=radius + 1.0), 24, (0.01, 0.05))
+        size = np.abs(table).max(axis=(1, 2), keepdims=True)
+        np.testing.assert_allclose(tables[i] / (size + 1e-300), table / (size + 1e-300), atol=1e-12)
+        np.testing.assert_allclose(ends[i], end, rtol=1e-12)
+
+
 def test_a_planted_error_is_seen(monkeypatch):
     """Grids of which the finest conducts 2 % too well: the levels no longer agree, and no row is vouched for."""
-    true = lanes.tables
+    true = lanes_batch.tables
 
     def wrong(*arguments):
         levels = [(table.copy(), ends.copy()) for table, ends in true(*arguments)]
         levels[-1][0][1] *= 1.02
         return levels
 
-    monkeypatch.setattr(lanes, "tables", wrong)
+    monkeypatch.setattr(lanes_batch, "tables", wrong)
     keys, values, columns, out = solved(ramped(), MODEL, 5)
     assert (out["status"] == OPEN).all()
     assert np.isnan(out["settling_time"]).all()

@@ -21,7 +21,7 @@ from transient.march.lanes_vector import HALF
 from transient.sweep import lanes_headline as headline
 from transient.sweep.columns import Column, Columns, blank
 from transient.sweep.keys import Values, Varied
-from transient.sweep.lanes_batch import LEVELS, Batch, batch_of, key_of, tables
+from transient.sweep.lanes_batch import Batch, Grids, batch_of, grids_of
 from transient.sweep.lanes_columns import Done, infinite_stress, write
 from transient.sweep.lanes_drives import DriveRows
 from transient.sweep.lanes_facts import Facts, facts_of
@@ -104,15 +104,13 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
             continue
         group = order[first:stop]
         cells = _cells(2.0**-low, 2.0**-high, fine)
-        places, grid = np.unique(batch.unit_of[rows[group]], return_inverse=True)
-        grids = [tables(cells, (2.0**-low, 2.0**-high), *key_of(batch.units[i])) for i in places]
         together = int(np.clip(KEPT // _most_rows(pieces[group], GROWTH * fine), HALF, TOGETHER))
         for begin in range(0, len(group), together):
-            some = slice(begin, begin + together)
-            of = group[some]
-            facts = facts_of(batch, rows[of], grid[some], grids, places)
+            of = group[begin : begin + together]
+            grids = grids_of(batch, rows[of], cells, (2.0**-low, 2.0**-high))
+            facts = facts_of(batch, rows[of], grids)
             out[of], seen[of] = _march(
-                problem, grids, grid[some], numbers[of], pieces[of], part_of[of], poly[of], wave[of], jump[of],
+                problem, grids, numbers[of], pieces[of], part_of[of], poly[of], wave[of], jump[of],
                 before[of], batch.final[rows[of]], waving, infinite[of], facts,
             )  # fmt: skip
     rise = np.full(n, np.inf)
@@ -171,22 +169,20 @@ def _cells(low: float, high: float, fine: float) -> int:
 
 
 def _march(
-    problem: Problem, grids: list, grid: np.ndarray, numbers: np.ndarray, pieces: np.ndarray, part_of: np.ndarray,
+    problem: Problem, grids: Grids, numbers: np.ndarray, pieces: np.ndarray, part_of: np.ndarray,
     poly: np.ndarray, wave: np.ndarray, jump: np.ndarray, before: np.ndarray, final: np.ndarray, waving: bool,
     infinite: np.ndarray, facts: Facts,
 ) -> tuple[np.ndarray, np.ndarray]:  # fmt: skip
     """Headline numbers [n, QUANTITIES, NUMBERS] and [n, SEEN] of cases on grids of the same number of nodes."""
-    n = len(grid)
+    n = len(pieces)
     most = _most_rows(pieces, float(numbers[0, layout.GROWTH]))
     levels = []
     row_piece, row_offset = np.zeros((n, most), np.int64), np.zeros((n, most))
     count = np.zeros(n, np.int64)
-    for level in range(LEVELS):
-        table = np.stack([one[level][0] for one in grids])
-        ends = np.stack([one[level][1] for one in grids])
+    for level, (table, ends) in enumerate(grids.levels):
         rows = np.empty((n, most, layout.FIELDS))
         march(
-            table, ends, grid, numbers, pieces, part_of, poly, wave, jump, before, final, 2**level, waving,
+            table, ends, grids.of, numbers, pieces, part_of, poly, wave, jump, before, final, 2**level, waving,
             rows, row_piece, row_offset, count,
         )  # fmt: skip
         levels.append(rows)

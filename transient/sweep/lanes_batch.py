@@ -9,6 +9,7 @@ import numpy as np
 
 from transient.gap.problem import Problem
 from transient.march.lanes_grid import grid_table, unit_problem
+from transient.march.lanes_round import round_tables
 from transient.march.regime import slowest_decay
 from transient.sweep.keys import Values
 from transient.sweep.lanes_drives import DriveRows
@@ -32,8 +33,10 @@ class Batch:
     before: np.ndarray  # [n, 3], lane units
     final: np.ndarray  # [n, 3], lane units
     slowest: np.ndarray  # in diffusion times
+    inner: np.ndarray  # inner radius as a share of the gap
     units: list[Problem]  # unit gaps
     unit_of: np.ndarray  # the rows' places in ``units``
+    alike: bool  # all in one unit gap but for their inner radii
 
 
 def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
@@ -50,8 +53,12 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     inner = np.where(bad, problem.inner / problem.gap, geometry.inner / gap)
     time = np.where(bad, 1.0, gap**2 * density / np.where(bad, 1.0, viscosity))
     push = gap**2 / np.where(bad, 1.0, viscosity)
-    units, unit_of = _units(problem, inner, gap)
-    slowest = np.array([_slowest(*key_of(unit)) for unit in units])[unit_of]
+    alike = form.radii_vary and not any(wall.slip_length for wall in problem.walls)
+    units, unit_of = ([unit_problem(problem)], np.zeros(rows, int)) if alike else _units(problem, inner, gap)
+    if alike:
+        slowest = _slowest_round(units[0], inner)
+    else:
+        slowest = np.array([_slowest(*key_of(unit)) for unit in units])[unit_of]
     within = form.number("run.settle_within", values, rows)
     within = np.full(rows, problem.settle_within) if within is None else within
     count = form.number("gap.count", values, rows)
@@ -68,8 +75,8 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     bad |= ~np.isfinite(time) | ~(time > 0.0)
     batch = Batch(
         geometry, density, viscosity, time, np.where(bad, 1.0, until), within,
-        np.full(rows, float(problem.count)) if count is None else count, drives, before, final, slowest, units,
-        unit_of,
+        np.full(rows, float(problem.count)) if count is None else count, drives, before, final, slowest, inner,
+        units, unit_of, alike,
     )  # fmt: skip
     return batch, ~bad
 
@@ -127,6 +134,41 @@ def _slowest(unit: _Held, *key: object) -> float:
     return slowest_decay(unit.problem)
 
 
+RADII = np.geomspace(1e-3, 1e5, 600)  # inner radii, as shares of the gap, between which decays are interpolated
+
+
+def _slowest_round(unit: Problem, inner: np.ndarray) -> np.ndarray:
+    """Slowest time constants (n,) of annuli of any inner radius; nan beyond the radii looked at."""
+    known = _decays(*key_of(replace(unit, inner=0.0, outer=0.0)))
+    return np.interp(np.log(inner), np.log(RADII), known, left=np.nan, right=np.nan)
+
+
+@lru_cache(maxsize=16)
+def _decays(unit: _Held, *key: object) -> np.ndarray:
+    own = unit.problem
+    return np.array([slowest_decay(replace(own, inner=float(r), outer=float(r) + 1.0)) for r in RADII])
+
+
 @lru_cache(maxsize=4096)
 def tables(cells: int, layers: tuple[float, float], unit: _Held, *key: object) -> list[tuple[np.ndarray, np.ndarray]]:
+    """A unit gap's (nodes, ends) on every level, as in ``lanes_grid``."""
     return [grid_table(unit.problem, cells * 2**level, layers) for level in range(LEVELS)]
+
+
+@dataclass(frozen=True, eq=False)
+class Grids:
+    """Of each level (nodes [G, NODE_FIELDS, k, 2], ends [G, END_FIELDS, 2]), and the rows' places among the G, (n,)."""
+
+    levels: list[tuple[np.ndarray, np.ndarray]]
+    of: np.ndarray
+
+
+def grids_of(batch: Batch, rows: np.ndarray, cells: int, layers: tuple[float, float]) -> Grids:
+    """The grids of some rows; ``cells`` those of the base level."""
+    if batch.alike:
+        levels = [round_tables(batch.units[0], batch.inner[rows], cells * 2**level, layers) for level in range(LEVELS)]
+        return Grids(levels, np.arange(len(rows)))
+    places, of = np.unique(batch.unit_of[rows], return_inverse=True)
+    found = [tables(cells, layers, *key_of(batch.units[i])) for i in places]
+    stacked = [tuple(np.stack([one[level][part] for one in found]) for part in (0, 1)) for level in range(LEVELS)]
+    return Grids(stacked, of)  # type: ignore[arg-type]

@@ -8,7 +8,7 @@ import numpy as np
 
 from transient.march import lanes_layout as layout
 from transient.sweep import lanes_headline as headline
-from transient.sweep.lanes_batch import Batch
+from transient.sweep.lanes_batch import Batch, Grids
 
 
 @dataclass(frozen=True, eq=False)
@@ -23,48 +23,45 @@ class Facts:
     middle: np.ndarray
 
 
-def facts_of(
-    batch: Batch, rows: np.ndarray, grid: np.ndarray, tables: list, places: np.ndarray
-) -> Facts:
-    facts, n = np.zeros((len(rows), headline.FACTS)), len(rows)
-    calm, reach, middle = np.zeros((n, 3, 3)), np.zeros((n, 2)), np.ones(n)
+def facts_of(batch: Batch, rows: np.ndarray, grids: Grids) -> Facts:
+    """The facts of some rows."""
+    table, ends = grids.levels[-1]
+    unit, inner, final = batch.units[0], batch.inner[rows], batch.final[rows]
+    facts = np.zeros((len(rows), headline.FACTS))
     facts[:, headline.LEVEL] = batch.within[rows]
-    final = batch.final[rows]
-    for place, levels in enumerate(tables):
-        own = np.flatnonzero(grid == place) if len(tables) > 1 else slice(None)
-        table, ends = levels[-1]
-        steady = table[layout.STEADY :]  # [3, node, side]
-        known = _calm(steady, table, ends)
-        unit = batch.units[places[place]]
-        calm[own] = known
-        power = 2 if unit.rotating else unit.metric
-        volume = 0.5 * (unit.inner + unit.outer) if unit.metric else 1.0
-        reach[own] = np.array([unit.inner**power, unit.outer**power]) / volume
-        middle[own] = 0.5 * (unit.inner + unit.outer) if unit.rotating else 1.0
-        facts[own, headline.CALM_SPEED] = _largest(final[own], steady, table)
-    return Facts(facts, calm, reach, middle)
+    facts[:, headline.CALM_SPEED] = _largest(final, table, grids.of)
+    power = 2 if unit.rotating else unit.metric
+    volume = inner + 0.5 if unit.metric else np.ones(len(rows))
+    reach = np.stack([inner**power, (inner + 1.0) ** power], axis=1) / volume[:, None]
+    middle = inner + 0.5 if unit.rotating else np.ones(len(rows))
+    return Facts(facts, _calm(table, ends)[grids.of], reach, middle)
 
 
-def _calm(steady: np.ndarray, table: np.ndarray, ends: np.ndarray) -> np.ndarray:
-    """Steady stresses of both walls, and the mean, that one unit of each input makes, [3, 3]."""
-    out = np.zeros((3, 3))
+def _calm(table: np.ndarray, ends: np.ndarray) -> np.ndarray:
+    """Steady stresses of both walls, and the mean, that one unit of each input makes, [G, 3, 3]."""
+    steady = table[:, layout.STEADY :]  # [G, 3, node, side]
+    out = np.zeros((len(table), 3, 3))
     for side in (0, 1):
-        beside = steady[:, 1 if ends[layout.HELD, side] else 0, side]
-        wall = np.eye(3)[side] if ends[layout.FLUX, side] else np.zeros(3)
-        balance = ends[layout.FLUX, side] * (beside - wall)
-        balance[2] += ends[layout.CELL, side]
-        out[side] = balance * ends[layout.RADIUS, side]
-    out[2] = (steady * table[layout.WEIGHT]).sum(axis=(1, 2))
+        held, flux = ends[0, layout.HELD, side] > 0.5, ends[:, layout.FLUX, side]
+        balance = flux[:, None] * (steady[:, :, 1 if held else 0, side] - (flux[:, None] != 0.0) * np.eye(3)[side])
+        balance[:, 2] += ends[:, layout.CELL, side]
+        out[:, side] = balance * ends[:, layout.RADIUS, side, None]
+    out[:, 2] = (steady * table[:, layout.WEIGHT, None]).sum(axis=(2, 3))
     return out
 
 
-def _largest(final: np.ndarray, steady: np.ndarray, table: np.ndarray) -> np.ndarray:
+def _largest(final: np.ndarray, table: np.ndarray, of: np.ndarray) -> np.ndarray:
     """Largest |w| (n,) over the gap of the steady ends, by the parabola around the largest node."""
-    half = steady.shape[1] - 1
-    basis = np.concatenate([steady[:, :, 0], steady[:, half - 1 :: -1, 1]], axis=1)
-    lever = np.concatenate([table[layout.LEVER, :, 0], table[layout.LEVER, half - 1 :: -1, 1]])
-    step = np.concatenate([table[layout.BEFORE, 1:, 0], table[layout.BEFORE, :0:-1, 1]])
-    profile = np.abs(final @ (basis * lever))
+    half = table.shape[2] - 1
+    across = np.concatenate([table[..., 0], table[:, :, half - 1 :: -1, 1]], axis=2)  # [G, field, node]
+    basis = across[:, layout.STEADY :] * across[:, layout.LEVER, None]
+    step = np.concatenate([table[0, layout.BEFORE, 1:, 0], table[0, layout.BEFORE, :0:-1, 1]])
+    if len(basis) == 1:
+        basis = np.broadcast_to(basis, (len(final), *basis.shape[1:]))
+    else:
+        basis = basis[of]
+    profile = final[:, 0, None] * basis[:, 0] + final[:, 1, None] * basis[:, 1] + final[:, 2, None] * basis[:, 2]
+    profile = np.abs(profile)
     top = profile.argmax(axis=1)
     row = np.arange(len(top))
     inner = np.clip(top, 1, profile.shape[1] - 2)

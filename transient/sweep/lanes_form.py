@@ -119,6 +119,12 @@ class Form:
     def _share(self) -> dict[int, DriveRows | None]:
         return {}
 
+    @property
+    def radii_vary(self) -> bool:
+        """Whether the sizes of an annulus differ from row to row."""
+        sizes = [name for name in self.keys if name.startswith("gap.") and name not in ("gap.count", "gap.length")]
+        return bool(sizes) and self.problem.metric > 0 and self.problem.walls[0].kind != "axis"
+
     def number(self, name: str, values: Values, rows: int) -> np.ndarray | None:
         """A key's value (n,) in SI: the rows' own, else the base case's; None where neither says."""
         if name in self.keys:

@@ -50,7 +50,7 @@ def _doubt(line, s, first):
 @part
 def _through(i, root, value, piece, count, line):
     """The polynomial around interval ``i`` (rows i to i + 1) through up to six rows of its piece, nearest first, in
-    Newton's form: coefficients, roots and number of rows in ``line``.
+    Newton's form: coefficients, roots and number of rows in ``line``.  Returns the doubt in the middle.
 
     As many rows as leave the least doubt in the middle of the interval: what is not smooth in the root of the time, as
     the first signs of a motion at the far wall, takes few.
@@ -76,16 +76,22 @@ def _through(i, root, value, piece, count, line):
     for order in range(1, points):
         for k in range(points - 1, order - 1, -1):
             line[k] = (line[k] - line[k - 1]) / (line[STENCIL + k] - line[STENCIL + k - order])
-    line[POINTS], line[ROWS_KNOWN] = points, points
+    # the terms in the middle of the interval; as many as leave the least doubt, see ``_doubt``
     middle = 0.5 * (root[i] + root[i + 1])
+    product = (middle - root[i]) * (middle - root[i + 1])
     least = np.inf
-    for used in range(3, points + 1):
-        line[POINTS] = used
-        size = _doubt(line, middle, False)
-        if size <= least:
-            least = size
-            best = used
-    line[POINTS] = best if points > 2 else points
+    before = 0.0
+    for k in range(2, points):
+        term = abs(line[k] * product)
+        if k > 2 and max(before, term) <= least:
+            least = max(before, term)
+            best = k
+        if k == points - 1 and max(0.5 * before, term) <= least:
+            best = points
+        before = term
+        product *= middle - line[STENCIL + k]
+    line[POINTS], line[ROWS_KNOWN] = best, points
+    return least
 
 
 @part
@@ -157,10 +163,12 @@ def _peak(root, best, other, own, piece, count, skip, line, out, found):
         found[0] = np.nan
         return
     found[0], found[1], found[2] = size, top, root[top]
+    if size == 0.0:
+        return
     rival = sign * other[top]
     doubt = 0.0
     loose = 0.0
-    for i in range(max(top - 2, 0), min(top + 2, count - 1)):
+    for i in range(max(top - 1, 0), min(top + 2, count - 1)):
         if skip[i] or skip[i + 1] or piece[i] != piece[i + 1]:
             continue
         _summit(sign, i, root, best, piece, count, line, out)
@@ -201,7 +209,7 @@ def _cross(level, sign, a, b, line):
         next_s = s - off / slope if slope != 0.0 else a
         if not (next_s > a and next_s < b):
             next_s = 0.5 * (a + b)
-        if abs(next_s - s) <= 1e-15 * b or next_s in (a, b):
+        if abs(next_s - s) <= 1e-13 * b or next_s in (a, b):
             return next_s
         s = next_s
     return s
@@ -249,28 +257,24 @@ def _settled(level, root, value, off, time, start, piece, count, work, line, fou
         return
     sign = -1.0 if value[last] < 0.0 else 1.0
     wide = max(off[last], off[last + 1])
-    best_doubt = np.inf
-    at, rise, share = 0.0, 1.0, 0.0
-    for form in range(2):
-        # as it is, and its logarithm: a decaying deviation is nearly a straight line there
-        for k in range(max(last - STENCIL + 2, 0), min(last + STENCIL, count)):
-            work[k] = sign * value[k]
-            if form == 1:
-                work[k] = np.log(work[k]) if work[k] > 0.0 else np.nan
-        if not np.isfinite(work[last + 1]):
-            break
-        target = np.log(level) if form == 1 else level
-        _through(last, root, work, piece, count, line)
-        s = _cross(target, 1.0, root[last], root[last + 1], line)
-        slope = max(abs(_slope(line, s)) / max(2.0 * s, 1e-300), 1e-300)
-        doubt = _doubt(line, s, _first_of(last, piece)) / slope
-        if doubt < best_doubt:
-            best_doubt = doubt
-            at = start[piece[last]] + s * s
-            rise = slope
-            share = wide / level if form == 1 else wide
+    # as it is, or its logarithm, in which a decay is nearly a straight line: whichever leaves less doubt
+    for k in range(max(last - STENCIL + 2, 0), min(last + STENCIL, count)):
+        work[k] = np.log(sign * value[k]) if sign * value[k] > 0.0 else np.nan
+    decays = np.isfinite(work[last + 1])
+    if decays:
+        plain = _through(last, root, value, piece, count, line) / abs(value[last + 1] - value[last])
+        decays = not _through(last, root, work, piece, count, line) / abs(work[last + 1] - work[last]) > plain
+    if decays:
+        s = _cross(np.log(level), 1.0, root[last], root[last + 1], line)
+        share = wide / level
+    else:
+        _through(last, root, value, piece, count, line)
+        s = _cross(level, sign, root[last], root[last + 1], line)
+        share = wide
+    rise = max(abs(_slope(line, s)) / max(2.0 * s, 1e-300), 1e-300)
+    at = start[piece[last]] + s * s
     found[0] = at
-    error = 1.2 * share / rise + best_doubt
+    error = (1.2 * share + _doubt(line, s, _first_of(last, piece))) / rise
     # a later return to the band within the errors
     for i in range(last + 1, count):
         if abs(value[i]) + off[i] > level:
