@@ -14,7 +14,7 @@ from transient.result.curve import Curve
 STENCIL = 5
 FEW = 256  # coordinates at which every profile is looked at
 NEIGHBOURS = 6
-BULGE = 0.25  # of the second difference of nodes: so far a largest may rise above them (a parabola: an eighth)
+BULGE = 0.25  # of the least bend x spacing^2 about: so far a largest may rise above the nodes (a parabola: an eighth)
 ROOM = 0.25  # of the range of its neighbours: so far a value between nodes may leave that range
 # Into which a step is cut in which the place of the largest velocity moves, then the part in which it still does, ...
 CORNER_PARTS = (12, 8, 8, 8, 8)
@@ -242,10 +242,12 @@ def largest(position: np.ndarray, profile: np.ndarray, rate: np.ndarray) -> tupl
 
 
 @part
-def _bend(profile, i):  # type: ignore[no-untyped-def]
-    """Magnitude of the second difference around a node, or the nearest that has two neighbours."""
+def _bend(position, profile, i):  # type: ignore[no-untyped-def]
+    """Magnitude of the second derivative around a node, or the nearest that has two neighbours."""
     i = min(max(i, 1), len(profile) - 2)
-    return abs(profile[i - 1] - 2.0 * profile[i] + profile[i + 1])
+    before, after = position[i] - position[i - 1], position[i + 1] - position[i]
+    rise = (profile[i + 1] - profile[i]) / after - (profile[i] - profile[i - 1]) / before
+    return 2.0 * abs(rise) / (before + after)
 
 
 @compiled
@@ -291,7 +293,10 @@ def _fill_largest(position, profile, rate, look, value, change):  # type: ignore
             if bend < 0.0:
                 top -= (height[best + 1] - height[best - 1]) ** 2 / (8.0 * bend)
         # a wall that has just jumped is no smooth neighbour: so high only as the nodes beside it allow as well
-        room = BULGE * min(_bend(profile[k], at - 1), _bend(profile[k], at), _bend(profile[k], at + 1))
+        bend = min(
+            _bend(position, profile[k], at - 1), _bend(position, profile[k], at), _bend(position, profile[k], at + 1)
+        )
+        room = BULGE * bend * max(high, -low) ** 2
         if top > value[k] + room:
             top, change[k] = value[k] + room, sign * rate[k, at]
         value[k] = max(top, value[k])
