@@ -62,9 +62,11 @@ def write_moving(result: Result, path: str | os.PathLike[str]) -> None:
 
 def moving(result: Result) -> str:
     """The picture as SVG text: the profile between its walls above, the wall stress with a moving mark below."""
-    need(result, "--animate", "time", "wall", "wall_stress", "profile_time", "position", "velocity", "travel")
+    if "case" in result.variables:
+        raise ResultError("a sweep has no moving picture; run the case of interest")
+    need(result, "moving", "time", "wall", "wall_stress", "profile_time", "position", "velocity", "travel")
     if not result.profile_time[-1] > result.profile_time[0]:
-        raise ResultError("--animate: needs profiles at two times at least, and this file holds those of one")
+        raise ResultError("figure moving: needs profiles at two times at least, and this file holds those of one")
     frames = _frames(result)
     body = [*_heading(result, frames), *_gap(result, frames), *_history(result, frames)]
     return (
