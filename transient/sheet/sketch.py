@@ -13,7 +13,20 @@ from transient.drive.pieces import Drive
 from transient.result.result import Result, ResultError
 from transient.sheet.drives import drive_words, shortened
 from transient.sheet.stated import needed_case
-from transient.sheet.style import INK, SOFT, WALL, page, told
+from transient.sheet.strokes import (
+    BLACK,
+    LONG,
+    SMALL,
+    THICK,
+    arrow,
+    band,
+    centre_line,
+    dimension,
+    frame,
+    sense,
+    straight_limits,
+)
+from transient.sheet.style import INK, SOFT, WALL, need, page, told
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -21,17 +34,14 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-# The drawing's own units: a gap is about 1 high, the section LONG long, walls THICK thick.
-LONG, THICK = 3.0, 0.14
 ROD = 0.42  # radius of the inner wall where the outer one's is 1
 INCHES = 2.9
-BLACK = "#1d252c"
-SMALL = 7.5
 LETTERS = 40  # of a text beside a wall
 
 
 def sketch(result: Result) -> Figure:
     """The figure.  Raises ResultError where the file's case cannot be read, or for a shape without a drawing."""
+    need(result, "sketch", "position", "velocity", "profile_time")
     case = needed_case(result, "sketch")
     name = case.gap.shape.name
     if name not in DRAWINGS:
@@ -52,54 +62,54 @@ def subtitle(result: Result) -> str:
 
 def _plates(axes: Axes, case: Case, result: Result) -> None:
     lower, upper = case.walls
-    _band(axes, 0.0, -THICK, lower.shear_free)
-    _band(axes, 1.0, 1.0 + THICK, upper.shear_free)
-    _length(axes, LONG + 0.16, 0.0, 1.0, f"height {_typed(case, 'height')}")
+    band(axes, 0.0, -THICK, lower.shear_free)
+    band(axes, 1.0, 1.0 + THICK, upper.shear_free)
+    dimension(axes, LONG + 0.16, 0.0, 1.0, f"height {_typed(case, 'height')}")
     _wall(axes, case, lower.name, -THICK, -1.0)
     _wall(axes, case, upper.name, 1.0 + THICK, 1.0)
     for wall, edge, inward, ink in ((lower, 0.0, 1.0, INK[0]), (upper, 1.0, -1.0, INK[1])):
         if not wall.shear_free:
-            _sense(axes, edge, inward, ink)
+            sense(axes, edge, inward, ink)
     _profile(axes, result, 0.0, 1.0, False)
-    _frame(axes, 0.0, "y")
+    frame(axes, 0.0, "y")
     _push(axes, case, 0.5)
-    _limits(axes, -0.62, 1.62)
+    straight_limits(axes, -0.62, 1.62)
 
 
 def _pipe(axes: Axes, case: Case, result: Result) -> None:
     high = 0.75
     for side in (-1.0, 1.0):
-        _band(axes, side * high, side * (high + THICK))
-    _axis(axes)
+        band(axes, side * high, side * (high + THICK))
+    centre_line(axes)
     word = "diameter" if "diameter" in case.gap.sizes else "radius"
-    _length(axes, LONG + 0.16, -high if word == "diameter" else 0.0, high, f"{word} {_typed(case, word)}")
+    dimension(axes, LONG + 0.16, -high if word == "diameter" else 0.0, high, f"{word} {_typed(case, word)}")
     _wall(axes, case, case.gap.shape.walls[1], high + THICK, 1.0)
-    _sense(axes, high, -1.0, INK[0])
+    sense(axes, high, -1.0, INK[0])
     _profile(axes, result, 0.0, high, True)
-    _frame(axes, 0.0, "r")
+    frame(axes, 0.0, "r")
     _push(axes, case, 0.33)
-    _limits(axes, -1.35, 1.2)
+    straight_limits(axes, -1.35, 1.2)
 
 
 def _axial(axes: Axes, case: Case, result: Result) -> None:
     inner, outer = case.walls
     for side in (-1.0, 1.0):
-        _band(axes, side, side * (1.0 + THICK), outer.shear_free)
-    _band(axes, -ROD, ROD, inner.shear_free)
-    _axis(axes)
+        band(axes, side, side * (1.0 + THICK), outer.shear_free)
+    band(axes, -ROD, ROD, inner.shear_free)
+    centre_line(axes)
     given = list(case.gap.sizes.items())
     sizes = ", ".join(f"{key.replace('_', ' ')} {_typed(case, key)}" for key, _ in given if key != "length")
-    _length(axes, LONG + 0.16, ROD, 1.0, "gap")
+    dimension(axes, LONG + 0.16, ROD, 1.0, "gap")
     axes.text(LONG + 0.55, -0.72, "\n".join(wrap(sizes, LETTERS)), size=SMALL, va="center", color=BLACK)
     _wall(axes, case, inner.name, 0.0, 0.0)
     _wall(axes, case, outer.name, 1.0 + THICK, 1.0)
     for wall, edge, inward, ink in ((inner, ROD, 1.0, INK[0]), (outer, 1.0, -1.0, INK[1])):
         if not wall.shear_free:
-            _sense(axes, edge, inward, ink)
+            sense(axes, edge, inward, ink)
     _profile(axes, result, ROD, 1.0, True)
-    _frame(axes, 0.0, "r")
+    frame(axes, 0.0, "r")
     _push(axes, case, 0.5 * (ROD + 1.0))
-    _limits(axes, -1.5, 1.62)
+    straight_limits(axes, -1.5, 1.62)
 
 
 def _rotating(axes: Axes, case: Case, result: Result) -> None:
@@ -125,7 +135,7 @@ def _rotating(axes: Axes, case: Case, result: Result) -> None:
         angle = np.radians(degrees)
         out, way = np.array([np.cos(angle), np.sin(angle)]), np.array([-np.sin(angle), np.cos(angle)])
         at = (radius + (0.08 if radius == low else -0.08)) * out
-        _arrow(axes, at - 0.17 * way, at + 0.2 * way, ink, 1.6)
+        arrow(axes, at - 0.17 * way, at + 0.2 * way, ink, 1.6)
         axes.annotate(
             "τ > 0", at, (1.38, float(at[1]) - 0.05), size=SMALL, color=ink, va="center",
             arrowprops={"arrowstyle": "-", "color": ink, "lw": 0.6, "shrinkA": 1, "shrinkB": 2},
@@ -142,7 +152,7 @@ def _turn(axes: Axes, direction: float, radius: float, start: float) -> None:
     angles = np.radians(start + direction * np.linspace(-35.0, 35.0, 40))
     x, y = radius * np.cos(angles), radius * np.sin(angles)
     axes.plot(x[:-2], y[:-2], color=BLACK, lw=2.2, solid_capstyle="butt", gid="moves")
-    _arrow(axes, np.array([x[-4], y[-4]]), np.array([x[-1], y[-1]]), BLACK, 2.2)
+    arrow(axes, np.array([x[-4], y[-4]]), np.array([x[-1], y[-1]]), BLACK, 2.2)
 
 
 def _tangential(axes: Axes, result: Result, low: float) -> None:
@@ -156,28 +166,9 @@ def _tangential(axes: Axes, result: Result, low: float) -> None:
     axes.plot(*np.column_stack([low * out, out]), color=INK[2], lw=0.7)
     for row in np.linspace(0, len(y) - 1, 7).astype(int)[1:]:
         if abs(u[row]) > 0.15:
-            _arrow(axes, radius[row] * out, ends[row], INK[2], 0.8)
+            arrow(axes, radius[row] * out, ends[row], INK[2], 0.8)
     side = 0.12 if u[np.argmax(np.abs(u))] > 0 else -0.12
     axes.text(-0.78, side, "u", size=SMALL + 1, color=INK[2], ha="center", va="center", style="italic")
-
-
-def _band(axes: Axes, inside: float, outside: float, free: bool = False) -> None:
-    """A wall from its wetted face to its back, hatched; a ``free`` surface is a broken line."""
-    from matplotlib.patches import Rectangle
-
-    low, high = sorted((inside, outside))
-    faces = {inside, outside} if high - low > 2 * THICK else {inside}  # a rod is wetted on both sides
-    if not free:
-        axes.add_patch(Rectangle((0.0, low), LONG, high - low, fc="white", ec=WALL, hatch="/////", lw=0))
-    for edge in faces:
-        axes.plot(
-            [0.0, LONG], [edge, edge], color=BLACK, lw=1.1, ls=(0, (5, 3)) if free else "-",
-            gid="free" if free else "face",
-        )  # fmt: skip
-
-
-def _axis(axes: Axes) -> None:
-    axes.plot([0.0, LONG + 0.1], [0.0, 0.0], color=SOFT, lw=0.8, ls=(0, (10, 3, 2, 3)))
 
 
 def _wall(axes: Axes, case: Case, name: str, back: float, side: float) -> None:
@@ -196,7 +187,7 @@ def _wall(axes: Axes, case: Case, name: str, back: float, side: float) -> None:
         x = (2.2, 2.8) if "body" in tree else (1.2, 1.9)
         at = height if side else 0.0
         start, end = x if direction > 0 else x[::-1]
-        _arrow(axes, np.array([start, at]), np.array([end, at]), BLACK, 2.2)
+        arrow(axes, np.array([start, at]), np.array([end, at]), BLACK, 2.2)
     axes.text(
         LONG + 0.55, back + side * 0.02, "\n".join(_said(case, name)), size=SMALL, linespacing=1.2, color=BLACK,
         va={1.0: "bottom", -1.0: "top", 0.0: "center"}[side],
@@ -267,13 +258,6 @@ def _push(axes: Axes, case: Case, height: float) -> None:
     axes.text(1.5, height, "G", size=SMALL + 1, va="center", style="italic", color=BLACK)
 
 
-def _sense(axes: Axes, at: float, inward: float, ink: str) -> None:
-    """A positive stress on a wall: a traction along +x at its face."""
-    y = at + 0.09 * inward
-    _arrow(axes, np.array([0.12, y]), np.array([0.52, y]), ink, 1.6)
-    axes.text(0.58, y + 0.02 * inward, "τ > 0", size=SMALL, color=ink, va="center")
-
-
 def _profile(axes: Axes, result: Result, low: float, high: float, mirrored: bool) -> None:
     """The last stored profile, from a base line in the gap."""
     y, u = _scaled(result)
@@ -287,7 +271,7 @@ def _profile(axes: Axes, result: Result, low: float, high: float, mirrored: bool
     y0, u0 = parts[0]
     for row in np.linspace(0, len(y0) - 1, 9).astype(int)[1:-1]:
         if abs(u0[row]) > 0.08:
-            _arrow(axes, np.array([base, y0[row]]), np.array([base + 0.8 * u0[row], y0[row]]), INK[2], 0.8)
+            arrow(axes, np.array([base, y0[row]]), np.array([base + 0.8 * u0[row], y0[row]]), INK[2], 0.8)
     side = -1.0 if u0[np.argmax(np.abs(u0))] > 0 else 1.0
     axes.text(base + 0.06 * side, 0.5 * (low + high), "u", size=SMALL + 1, color=INK[2], va="center",
               ha="right" if side < 0 else "left", style="italic")  # fmt: skip
@@ -306,37 +290,8 @@ def _shown(result: Result) -> int:
     return len(sizes) - 1 if sizes[-1] > 0.02 * sizes.max() else int(np.argmax(sizes))
 
 
-def _frame(axes: Axes, origin: float, across: str) -> None:
-    """The directions that count positive."""
-    at = np.array([-0.62, origin])
-    for way in ((0.42, 0.0), (0.0, 0.42)):
-        _arrow(axes, at, at + np.array(way), BLACK, 1.0)
-    axes.text(at[0] + 0.46, at[1], "x", size=SMALL + 1, va="center", style="italic")
-    axes.text(at[0], at[1] + 0.47, across, size=SMALL + 1, ha="center", style="italic")
-
-
-def _length(axes: Axes, x: float, low: float, high: float, words: str) -> None:
-    """A dimension line with its size."""
-    style = {"arrowstyle": "<->", "color": SOFT, "lw": 0.8, "shrinkA": 0, "shrinkB": 0}
-    axes.annotate("", (x, low), (x, high), arrowprops=style)
-    for y in (low, high):
-        axes.plot([x - 0.14, x + 0.08], [y, y], color=SOFT, lw=0.6)
-    axes.text(x + 0.1, 0.5 * (low + high), words, size=SMALL, va="center", color=BLACK)
-
-
 def _typed(case: Case, key: str) -> str:
     return str((case.tree.get("gap") or {}).get(key, ""))
-
-
-def _arrow(axes: Axes, start: np.ndarray, end: np.ndarray, ink: str, width: float) -> None:
-    style = {"arrowstyle": "-|>", "color": ink, "lw": width, "shrinkA": 0, "shrinkB": 0}
-    style["mutation_scale"] = 6 + 2 * width
-    axes.annotate("", tuple(end), tuple(start), arrowprops=style)
-
-
-def _limits(axes: Axes, low: float, high: float) -> None:
-    axes.set_xlim(-0.8, 6.2)
-    axes.set_ylim(low, high)
 
 
 DRAWINGS: dict[str, Callable[[Axes, Case, Result], None]] = {
