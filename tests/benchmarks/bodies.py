@@ -24,10 +24,11 @@ import numpy as np
 
 sys.path[:0] = [str(Path(__file__).resolve().parent), str(Path(__file__).resolve().parents[1])]
 
-from draw_bodies import draw  # noqa: E402
+from draw_bodies import draw, draw_nonlinear  # noqa: E402
 from experiment import Outcome, Verdict, _too_long, table  # noqa: E402
 from reference.cases import tree_of  # noqa: E402
 from reference.closed import Plant, Run, last_above  # noqa: E402
+from reference.sliding import Sliding  # noqa: E402
 
 SURE = 3e-7  # the judge's own error, relative to the largest value of that quantity
 PATIENCE = 90  # s per case
@@ -41,11 +42,11 @@ def judge_case(job: tuple[int, int, str]) -> Outcome:
     signal.signal(signal.SIGALRM, _too_long)
     signal.alarm(PATIENCE)
     try:
-        case = draw(seed, number)
+        case = (draw_nonlinear if how == "nonlinear" else draw)(seed, number)
         summary, outcome.seconds = solved(case, how)
         outcome.met = bool(summary["accuracy"]["met"])
         outcome.kind = summary["flow"].get("error_kind", "")
-        outcome.verdicts = verdicts(case, summary)
+        outcome.verdicts = (sliding_verdicts if how == "nonlinear" else verdicts)(case, summary)
     except Exception as error:
         place = traceback.extract_tb(error.__traceback__)[-1]
         outcome.trouble = f"{type(error).__name__}: {str(error)[:160]} ({Path(place.filename).name}:{place.lineno})"
@@ -61,7 +62,7 @@ def solved(case: dict[str, Any], how: str) -> tuple[dict[str, Any], float]:
 
     checked = Case(tree_of(case))
     began = time.perf_counter()
-    result = run(checked, judge=how)
+    result = run(checked, judge="refinement" if how == "refinement" else "series")
     return result.summary, time.perf_counter() - began
 
 
@@ -242,6 +243,30 @@ def _settling(course: Course, said: dict[str, Any]) -> list[Verdict]:
     return out
 
 
+def sliding_verdicts(case: dict[str, Any], summary: dict[str, Any]) -> list[Verdict]:
+    """What a body under a curve or dry friction ends in, and its largest speed, beside SciPy's."""
+    course = Sliding(case)
+    (name, said), *_ = summary["bodies"].items()
+    speed, place = course.speed, course.place
+    fast, far = float(np.abs(speed).max()), float(np.abs(place).max())
+    out = [
+        Verdict("final speed", said["final_speed"], said["final_speed_error"], float(speed[-1]), 1e-5 * fast),
+        Verdict("final position", said["final_position"], said["final_position_error"], float(place[-1]), 1e-5 * far),
+    ]
+    peak = float(speed[np.abs(speed).argmax()])
+    out.append(Verdict("peak speed", said["peak_speed"], said["peak_speed_error"], peak, 1e-4 * fast))
+    wall = summary["walls"][name]
+    size = course.body["area"] and course.room.gap.mu * fast / course.room.gap.time
+    calm = abs(wall["peak_stress"] or 0.0) or size
+    out.append(Verdict("final stress", wall["final_stress"], wall["final_stress_error"], course.final_stress(),
+                       1e-4 * calm))  # fmt: skip
+    stops = [rest for rest in course.rests if rest[1] - rest[0] > 1e-6 * case["duration"]]
+    told = said["standstills"]
+    if stops or told:
+        out.append(Verdict("standstills", float(len(told)), 0.0, float(len(stops)), 0.0))
+    return out
+
+
 def experiment(
     cases: int, seed: int, workers: int = 1, how: str = "series", minutes: float = np.inf, first: int = 0
 ) -> list[Outcome]:
@@ -273,11 +298,13 @@ def main() -> None:
     parser.add_argument("--first", type=int, default=0)
     parser.add_argument("--minutes", type=float, default=np.inf)
     parser.add_argument("--without-series", action="store_true")
+    parser.add_argument("--nonlinear", action="store_true")
     parser.add_argument("--only", type=int)
     options = parser.parse_args()
-    how = "refinement" if options.without_series else "series"
+    how = "nonlinear" if options.nonlinear else "refinement" if options.without_series else "series"
     if options.only is not None:
-        print(json.dumps(draw(options.seed, options.only), indent=1))
+        drawn = (draw_nonlinear if options.nonlinear else draw)(options.seed, options.only)
+        print(json.dumps(drawn, indent=1))
         outcome = judge_case((options.seed, options.only, how))
         for v in outcome.verdicts:
             print(v, "off", v.off, "held", v.held)

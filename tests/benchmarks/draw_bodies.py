@@ -121,3 +121,42 @@ def _press(rng: np.random.Generator, case: dict[str, Any], gap: float, drive_tim
         if own is not None and choice > 0.8:
             section = case["width"] * gap if "width" in case else np.pi * gap * (case.get("radius") or 2 * case["outer_radius"] - gap)  # noqa: E501
             own["displaces"] = float(section * 10 ** rng.uniform(-1, 1))
+
+
+def draw_nonlinear(seed: int, number: int) -> dict[str, Any]:
+    """Plain case ``number`` of ``seed``: a body on the outer wall under a force-speed curve or dry friction."""
+    rng = np.random.default_rng([seed, number, 7])
+    kind = SHAPES[rng.integers(4)]
+    gap = 10 ** rng.uniform(-4.5, -2)
+    rho, nu = rng.uniform(700, 1300), 10 ** rng.uniform(-6.5, -3.5)
+    case = sizes(rng, kind, gap) | {"density": rho, "viscosity": rho * nu, "length": 30 * gap}
+    name = {"plates": "upper", "pipe": "bore"}.get(kind, "outer")
+    own = plan(rng, case, kind, name) | {"stiffness": 0.0, "damping": 0.0}
+    liquid = own["film"] * gap**2 / nu
+    own["mass"] = liquid * 10 ** rng.uniform(-1, 3)
+    own["time"] = own["mass"] / own["film"]
+    time = max(own["time"], gap**2 / nu)
+    drive_time = time * 10 ** rng.uniform(-1, 0.5)
+    size = own["film"] + own["mass"] / max(drive_time, own["time"])
+    carried: dict[str, Any] = {"mass": own["mass"], "area": own["area"]}
+    kinds = ("ramp", "smooth_ramp", "trapezoid", "lag", "half_sine")
+    while True:
+        force = once(rng, size, drive_time)
+        if isinstance(force, dict) and force["kind"] in kinds:
+            break
+    if rng.random() < 0.5:
+        speeds = np.cumsum(rng.uniform(0.05, 0.4, 4)) - 0.1
+        values = size * np.sort(rng.uniform(-0.5, 1.0, 4))[::-1]
+        carried["curve"] = (speeds.tolist(), values.tolist())
+        if rng.random() < 0.5:
+            carried["force"] = force
+    else:
+        carried["force"] = force
+        carried["dry_friction"] = float(size * rng.uniform(0.05, 0.5))
+        if rng.random() < 0.5:
+            carried["breakaway_friction"] = float(carried["dry_friction"] * rng.uniform(1.0, 1.5))
+    case["walls"] = {name: {"body": carried}}
+    case["accuracy"] = 10 ** rng.uniform(-3.5, -2)
+    case["settle_within"] = 10 ** rng.uniform(-2, -1)
+    case["duration"] = float(max(3.0 * drive_time, 2.0 * time))
+    return case

@@ -14,9 +14,10 @@ from typing import Any
 SIZES = ("height", "radius", "inner_radius", "outer_radius", "length", "width")
 BODY = (
     {"mass": "kg", "area": "m^2", "force": "N", "damping": "N*s/m", "stiffness": "N/m", "initial_speed": "m/s",
-     "initial_displacement": "m", "displaces": "m^2"},
+     "initial_displacement": "m", "displaces": "m^2", "dry_friction": "N", "breakaway_friction": "N"},
     {"mass": "kg*m^2", "area": "m^2", "force": "N*m", "damping": "N*m*s/rad", "stiffness": "N*m/rad",
-     "initial_speed": "rad/s", "initial_displacement": "rad"},
+     "initial_speed": "rad/s", "initial_displacement": "rad", "dry_friction": "N*m",
+     "breakaway_friction": "N*m"},
 )  # fmt: skip
 TIMES = ("at", "over", "rise", "hold", "fall", "time_constant", "every", "period")
 
@@ -68,7 +69,12 @@ def _wall(wall: dict[str, Any], speed: str, angle: str) -> dict[str, Any]:
 def _body(body: dict[str, Any], turning: bool) -> dict[str, Any]:
     units = BODY[1 if turning else 0]
     names = {"mass": "inertia", "force": "torque"} if turning else {}
-    return {names.get(k, k): said(v, units[k]) for k, v in body.items()}
+    out = {names.get(k, k): said(v, units[k]) for k, v in body.items() if k != "curve"}
+    if "curve" in body:
+        speeds, values = ([_said(x, unit) for x in row] for row, unit in zip(
+            body["curve"], ("rad/s" if turning else "m/s", units["force"]), strict=True))  # fmt: skip
+        out["torque_curve" if turning else "force_curve"] = {"speeds": speeds, "values": values}
+    return out
 
 
 def _said(value: float, unit: str) -> str:
