@@ -34,7 +34,7 @@ MOST_ROWS = 8000
 KEPT = 25_000  # rows kept at a time
 TOGETHER = 256  # cases whose rows are kept at a time: about what the second cache holds
 NUMBERS = 400_000  # pieces' numbers kept at a time
-REFINEMENTS = (1.0, 2.0)
+REFINEMENTS = (1.0, 2.0, 4.0)
 
 
 def takes(base: Case, keys: Sequence[Varied]) -> bool:
