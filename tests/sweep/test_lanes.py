@@ -16,7 +16,8 @@ from transient.sweep.columns import OPEN, SOLVED, blank, layout, put_summary
 from transient.sweep.keys import Varied, changes
 
 UNITS = {"length": "m", "time": "s", "viscosity": "Pa*s", "speed": "m/s", "density": "kg/m^3",
-         "angular_speed": "rad/s", "angular_acceleration": "rad/s^2", "pressure": "Pa", "pressure_gradient": "Pa/m"}  # fmt: skip
+         "angular_speed": "rad/s", "angular_acceleration": "rad/s^2", "pressure": "Pa", "pressure_gradient": "Pa/m",
+         "mass": "kg", "force": "N"}  # fmt: skip
 
 
 def ramped(**more) -> Case:
@@ -88,6 +89,19 @@ CASES = {
               "wall": {"outer": {"speed": {"kind": "s_curve", "to": "6 rad/s", "acceleration": "20 rad/s^2",
                                            "jerk": "200 rad/s^3"}}}}),
         {"fluid.viscosity": ("viscosity", 1e-3, 10e-3), "wall.outer.speed.to": ("angular_speed", 1.0, 8.0)},
+    ),
+    "plates, carriage pushed": (
+        ramped(wall={"upper": {"body": {"mass": "20 g", "damping": "0.002 N*s/m",
+                                        "force": {"kind": "ramp", "to": "0.5 mN", "over": "50 ms"}}}}),
+        {"gap.height": ("length", 0.4e-3, 1e-3), "wall.upper.body.mass": ("mass", 2e-3, 0.05),
+         "wall.upper.body.force.to": ("force", 1e-4, 1e-3)},
+    ),
+    "annulus, rotor run up": (
+        Case({"gap": {"shape": "annulus", "motion": "rotating", "inner_diameter": "40 mm", "radial_clearance": "2 mm",
+                      "length": "50 mm"},
+              "fluid": {"density": "998 kg/m^3", "viscosity": "10 mPa*s"},
+              "wall": {"inner": {"body": {"inertia": "2e-5 kg*m^2", "torque": "0.1 mN*m"}}}}),
+        {"fluid.viscosity": ("viscosity", 5e-3, 30e-3), "gap.radial_clearance": ("length", 1.5e-3, 3e-3)},
     ),
 }  # fmt: skip
 
@@ -226,7 +240,9 @@ def test_rows_that_are_no_case_are_left_open():
 @pytest.mark.parametrize(
     "more",
     [
-        {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N"}}}},
+        {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N", "stiffness": "3 N/m"}}}},
+        {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N", "dry_friction": "0.1 N"}}}},
+        {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N"}}, "lower": {"shear_free": True}}},
         {"pressure": {"mean_velocity": "0.1 m/s"}, "wall": {}},
         {"wall": {"upper": {"speed": {"kind": "sine", "amplitude": "1 m/s", "frequency": "5 Hz"}}}},
     ],

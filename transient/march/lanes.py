@@ -25,6 +25,7 @@ from transient.march.lanes_layout import (
     CALM,
     GROWTH,
     LANE_A,
+    LANE_BODY,
     LANE_CELL,
     LANE_END_G,
     LANE_END_U,
@@ -174,7 +175,7 @@ def march(
             if waving:
                 u = u + load(lane, LANE_WAVE_U)
                 g = g + load(lane, LANE_WAVE_G)
-            record(w, weight, steady, lever, near, beyond, lane, conductance, u, splat(0.0), g, out)
+            record(w, z, weight, steady, lever, near, beyond, lane, u, splat(0.0), g, out)
             for c in range(HALF):
                 if fresh[c]:
                     case = own[c]
@@ -184,13 +185,18 @@ def march(
                     row_offset[case, at_row] = 0.0
                     for side in range(2):
                         l = c + side * HALF
-                        if lane[LANE_HELD, l] < 0.5:
+                        body = lane[LANE_BODY, l] > 0.5
+                        if lane[LANE_HELD, l] < 0.5 and not body:
                             continue
                         # the stress itself does not jump with the wall's acceleration
                         if at_row > 0:
                             rows[case, at_row, side] = rows[case, at_row - 1, side]
                         else:
-                            change = lane[LANE_FLUX, l] * jump[case, 0, side] - lane[LANE_CELL, l] * jump[case, 0, 2]
+                            change = -lane[LANE_CELL, l] * jump[case, 0, 2]
+                            if body:  # from rest: nothing before
+                                rows[case, 0, side] = 0.0
+                                continue
+                            change += lane[LANE_FLUX, l] * jump[case, 0, side]
                             rows[case, 0, side] += change * lane[LANE_RADIUS, l]
                     row[c] += 1
         # --- the block
@@ -219,7 +225,7 @@ def march(
             slope = slope_of(lane, LANE_U, x)
             if waving:
                 slope = slope + waved(lane, LANE_WAVE_U, LANE_RATE_U)
-            record(w, weight, steady, lever, near, beyond, lane, conductance, u, slope, g, out)
+            record(w, z, weight, steady, lever, near, beyond, lane, u, slope, g, out)
             for c in range(HALF):
                 case = own[c]
                 if case >= 0:

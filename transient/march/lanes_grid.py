@@ -53,4 +53,6 @@ def grid_table(unit: Problem, cells: int, layers: tuple[float, float]) -> tuple[
         ends[layout.FLUX, side] = system.end_conductance[side]
         ends[layout.CELL, side] = system.end_volume[side]
         ends[layout.RADIUS, side] = 1.0 / grid.stress_radius[side]
+        ends[layout.DRIVE, side] = ends[layout.END, side]
+        ends[layout.FLUID, side] = 1.0
     return table, ends

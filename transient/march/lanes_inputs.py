@@ -81,7 +81,7 @@ def _breaks(starts, until, slack, times):
 
 
 @part
-def _finest(c, pieces, part_of, poly, wave, jump, bends, fine, layer):
+def _finest(c, pieces, part_of, poly, wave, jump, bends, inertia, fine, layer):
     """First rows and courses of all pieces of case ``c``, and each wall's finest layer as a share of the gap."""
     layer[c, 0] = 1.0
     layer[c, 1] = 1.0
@@ -100,7 +100,11 @@ def _finest(c, pieces, part_of, poly, wave, jump, bends, fine, layer):
             if begins:
                 time = min(length, 1.0)
                 first = min(first, FIRST * beside)
-            if sudden and which < 2:
+            body = inertia[c, which] if which < 2 else 0.0
+            if body > 0.0 and begins:  # as soon as the liquid set in motion is as heavy as the body
+                time = min(time, body * body)
+                first = min(first, FIRST * body * body)
+            elif sudden and which < 2:
                 time = SUDDEN * min(length, 1.0)
                 first = min(first, 0.2 * time)
             w = wave[c, p, which]
@@ -149,12 +153,13 @@ def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
 @compiled
 def join(
     starts, poly_of, wave_of,  # the drives' pieces: [C or 1, 3, P], [.., 3, P, 4] twice
-    before, until, time, push, fine,  # [C, 3] in SI, (C,) s, (C,) s, (C,) m/s per Pa/m, (C,)
+    before, until, time, scale, inertia, fine,  # [C, 3] in SI, (C,) s, (C,) s, [C, 3] lane units per SI, [C, 2], (C,)
     pieces, part_of, poly, wave, jump, layer,  # out: (C,), [C, Q, PIECE_FIELDS], [C, Q, 3, 4] twice, [C, Q, 3], [C, 2]
 ):  # fmt: skip
     """Join the three drives of every row; pieces that a row does not have start at infinity or have no length.
 
-    ``before`` is scaled in place.
+    ``inertia``: of a body over that of the gap's liquid, 0 where the speed is prescribed.  ``before`` is scaled in
+    place.
     """
     cases, most = part_of.shape[0], part_of.shape[1]
     times = np.empty(most + 3)
@@ -165,7 +170,6 @@ def join(
         slack = SAME * until[c]
         n = _breaks(starts[own], until[c], slack, times)
         pieces[c] = n
-        before[c, 2] *= push[c]
         for p in range(n):
             at = times[p]
             stop = times[p + 1] if p + 1 < n else until[c]
@@ -173,7 +177,7 @@ def join(
             part_of[c, p, START] = at / time[c]
             part_of[c, p, FOLLOWED] = 1.0 if p + 1 < n else 0.0
         for which in range(3):
-            scale = push[c] if which == 2 else 1.0
+            before[c, which] *= scale[c, which]
             piece = 0
             for p in range(n):
                 for k in range(piece + 1, starts.shape[2]):
@@ -183,11 +187,11 @@ def join(
                 if abs(x) <= slack:
                     x = 0.0
                 _place(
-                    poly_of[own, which, piece], wave_of[own, which, piece], x, time[c], scale,
+                    poly_of[own, which, piece], wave_of[own, which, piece], x, time[c], scale[c, which],
                     poly[c, p, which], wave[c, p, which],
                 )  # fmt: skip
             _breaks_of(which, c, n, part_of, poly, wave, before[c, which], jump, bends, ends)
-        _finest(c, n, part_of, poly, wave, jump, bends, fine[c], layer)
+        _finest(c, n, part_of, poly, wave, jump, bends, inertia, fine[c], layer)
 
 
 @compiled

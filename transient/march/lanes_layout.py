@@ -9,8 +9,11 @@ ROWS = 2  # rows of one block
 STORAGE, CONDUCTANCE, WEIGHT, LEVER, BEFORE, AFTER, STEADY = 0, 1, 2, 3, 4, 5, 6  # STEADY: three rows, unit inputs
 NODE_FIELDS = 9
 # and of each half's end: [grid, FIELD, side]
-HELD, END, FLUX, CELL, RADIUS = 0, 1, 2, 3, 4
-END_FIELDS = 5
+# HELD 1 where the end's node has the wall's speed; END what an input of zero draws from that node per unit of speed,
+# DRIVE what a unit of the input gives it; BODY 1 where the node is a wall that carries a body, FLUID the share of its
+# storage that is fluid; FLUX, CELL, RADIUS the stress: conductance beside the wall, half cell, divisor of a flux
+HELD, END, FLUX, CELL, RADIUS, DRIVE, BODY, FLUID = 0, 1, 2, 3, 4, 5, 6, 7
+END_FIELDS = 8
 # what a case says: [case, FIELD]
 LONGEST, CALM, GROWTH = 0, 1, 2
 CASE_FIELDS = 3
@@ -21,6 +24,7 @@ LANE_A, LANE_H, LANE_X, LANE_CEND, LANE_FREE, LANE_HELD, LANE_FLUX, LANE_CELL, L
 LANE_U, LANE_G = 9, 13  # cubics of wall speed and push
 # waves of both: real, imaginary part; their rates; turns to the middle and to the end of a step
 LANE_WAVE_U, LANE_WAVE_G, LANE_RATE_U, LANE_RATE_G = 17, 19, 21, 23
-LANE_MID_U, LANE_END_U, LANE_MID_G, LANE_END_G, LANE_FIELDS = 25, 27, 29, 31, 33
+LANE_MID_U, LANE_END_U, LANE_MID_G, LANE_END_G = 25, 27, 29, 31
+LANE_DRIVE, LANE_BODY, LANE_FLUID, LANE_FIELDS = 33, 34, 35, 36
 
 SHARE_OF_STAGE = SHARE / ALPHA

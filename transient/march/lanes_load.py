@@ -10,14 +10,20 @@ from transient.march.lanes_layout import (
     AFTER,
     AWAY,
     BEFORE,
+    BODY,
     CELL,
     CONDUCTANCE,
+    DRIVE,
     END,
+    FLUID,
     FLUX,
     HELD,
     LANE_A,
+    LANE_BODY,
     LANE_CELL,
     LANE_CEND,
+    LANE_DRIVE,
+    LANE_FLUID,
     LANE_FLUX,
     LANE_FREE,
     LANE_G,
@@ -61,6 +67,9 @@ def set_grid(c, grid, table, ends, storage, conductance, weight, lever, before, 
         lane[LANE_FLUX, l] = ends[grid, FLUX, side]
         lane[LANE_CELL, l] = ends[grid, CELL, side]
         lane[LANE_RADIUS, l] = ends[grid, RADIUS, side]
+        lane[LANE_DRIVE, l] = ends[grid, DRIVE, side]
+        lane[LANE_BODY, l] = ends[grid, BODY, side]
+        lane[LANE_FLUID, l] = ends[grid, FLUID, side]
 
 
 @part
@@ -122,13 +131,13 @@ def enter(c, jump, storage, conductance, w, z, lane):
         if jump[2] != 0.0:
             for j in range(last + 1):
                 if storage[j, l] > 0.0:
-                    z[j, l] += a * jump[2]
+                    z[j, l] += a * jump[2] * (lane[LANE_FLUID, l] if j == 0 else 1.0)
         if lane[LANE_HELD, l] > 0.5:
             z[1, l] += a * conductance[0, l] * jump[side] / storage[1, l]
             w[0, l] += jump[side]
             z[0, l] = w[0, l]
-        elif lane[LANE_CEND, l] > 0.0:
-            z[0, l] += a * lane[LANE_CEND, l] * jump[side] / storage[0, l]
+        elif lane[LANE_DRIVE, l] > 0.0:
+            z[0, l] += a * lane[LANE_DRIVE, l] * jump[side] / storage[0, l]
 
 
 @part

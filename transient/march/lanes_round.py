@@ -170,4 +170,6 @@ def _end_fields(
         ends[:, layout.FLUX, side] = between[:, side]
         ends[:, layout.CELL, side] = cell[:, side]
         ends[:, layout.RADIUS, side] = 1.0 / radius[:, -side] ** power
+        ends[:, layout.DRIVE, side] = ends[:, layout.END, side]
+        ends[:, layout.FLUID, side] = 1.0
     return ends

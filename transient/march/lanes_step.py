@@ -5,8 +5,11 @@ from __future__ import annotations
 from transient.compiled import part
 from transient.march.lanes_layout import (
     LANE_A,
+    LANE_BODY,
     LANE_CELL,
     LANE_CEND,
+    LANE_DRIVE,
+    LANE_FLUID,
     LANE_FLUX,
     LANE_FREE,
     LANE_HELD,
@@ -74,11 +77,12 @@ def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_a
     """One step of all lanes: ``w`` and ``z`` move on; inputs of the two stages (wall speed, push)."""
     last = storage.shape[0] - 1
     a = load(lane, LANE_A)
-    bound = load(lane, LANE_HELD) + a * load(lane, LANE_CEND)
+    bound = load(lane, LANE_HELD) + a * load(lane, LANE_DRIVE)
+    fluid = load(lane, LANE_FLUID)
     free = load(lane, LANE_FREE)
     # stage one
     extra = a * push
-    here = fma(load(storage, 0), load(z, 0) + extra, bound * low)
+    here = fma(load(storage, 0), fma(fluid, extra, load(z, 0)), bound * low)
     store(y, 0, here)
     for j in range(1, last):
         here = fma(load(lower, j), here, load(storage, j) * (load(z, j) + extra))
@@ -96,7 +100,7 @@ def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_a
     store(z, 0, fma(share, x - old, old))
     # stage two
     extra = a * push_after
-    here = fma(load(storage, 0), load(z, 0) + extra, bound * high)
+    here = fma(load(storage, 0), fma(fluid, extra, load(z, 0)), bound * high)
     store(y, 0, here)
     for j in range(1, last):
         here = fma(load(lower, j), here, load(storage, j) * (load(z, j) + extra))
@@ -160,11 +164,18 @@ def _largest(w, steady, lever, before, after):
 
 
 @part
-def record(w, weight, steady, lever, before, after, lane, conductance, u, slope, g, out):
-    """Stress, mean, largest deviation, wall speed and push of all lanes into rows 0 to 4 of ``out``."""
+def record(w, z, weight, steady, lever, before, after, lane, u, slope, g, out):
+    """Stress, mean, largest deviation, wall speed and push of all lanes into rows 0 to 4 of ``out``.
+
+    ``u``, ``slope``: the walls' inputs and their rates; a wall with a body has its node's speed and rate.
+    """
     last = w.shape[0] - 1
     half = splat(0.5)
-    beside = where_above(load(lane, LANE_HELD), half, load(w, 1), load(w, 0))
+    body = load(lane, LANE_BODY)
+    here = load(w, 0)
+    beside = where_above(load(lane, LANE_HELD) + body, half, load(w, 1), here)
+    u = where_above(body, half, here, u)
+    slope = where_above(body, half, (load(z, 0) - here) / load(lane, LANE_A), slope)
     flux = fma(load(lane, LANE_FLUX), beside - u, load(lane, LANE_CELL) * (g - slope))
     store(out, 0, flux * load(lane, LANE_RADIUS))
     total = load(weight, 0) * load(w, 0)

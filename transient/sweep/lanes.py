@@ -81,9 +81,12 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
     jump, layer = np.zeros((n, most, 3)), np.zeros((n, 2))
     before = batch.before[rows].copy()
     starts, own_poly, own_wave = _together(batch.drives, rows)
-    push = batch.geometry.gap[rows] ** 2 / batch.viscosity[rows]
+    inertia = np.zeros((n, 2))
+    if batch.bodies is not None:
+        inertia[:, batch.bodies.side] = batch.bodies.inertia[rows]
     join(
-        starts, own_poly, own_wave, before, batch.until[rows], batch.time[rows], push, np.full(n, fine),
+        starts, own_poly, own_wave, before, batch.until[rows], batch.time[rows], batch.scale[rows], inertia,
+        np.full(n, fine),
         pieces, part_of, poly, wave, jump, layer,
     )  # fmt: skip
     used = int(pieces.max())
@@ -191,7 +194,7 @@ def _march(
     held = np.array([{"moving": 1, "shear_free": 0, "axis": -1}[wall.kind] for wall in problem.walls])
     headline.read(
         *levels, row_piece, row_offset, count, part_of[:, :, START].copy(), infinite, facts.ends, free, held,
-        facts.calm, final, facts.reach, facts.middle, out, seen,
+        facts.calm, facts.final, facts.reach, facts.middle, out, seen,
     )  # fmt: skip
     return out, seen
 

@@ -12,6 +12,8 @@ from transient.march.lanes_grid import grid_table, unit_problem
 from transient.march.lanes_round import round_tables
 from transient.march.regime import slowest_decay
 from transient.sweep.keys import Values
+from transient.sweep.lanes_bodies import LIGHTEST, Bodies, Level, loaded
+from transient.sweep.lanes_bodies import slowest as slowest_of
 from transient.sweep.lanes_drives import DriveRows
 from transient.sweep.lanes_form import Form, Geometry
 
@@ -37,6 +39,8 @@ class Batch:
     units: list[Problem]  # unit gaps
     unit_of: np.ndarray  # the rows' places in ``units``
     alike: bool  # all in one unit gap but for their inner radii
+    scale: np.ndarray  # [n, 3], lane units per SI unit of each input
+    bodies: Bodies | None
 
 
 def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
@@ -55,13 +59,23 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     push = gap**2 / np.where(bad, 1.0, viscosity)
     alike = form.radii_vary and not any(wall.slip_length for wall in problem.walls)
     units, unit_of = ([unit_problem(problem)], np.zeros(rows, int)) if alike else _units(problem, inner, gap)
-    if alike:
+    count = form.number("gap.count", values, rows)
+    count = np.full(rows, float(problem.count)) if count is None else count
+    bodies = _bodies(form, values, geometry, count, rows)
+    scale = np.ones((rows, 3))
+    scale[:, 2] = push
+    if bodies is not None:
+        scale[:, bodies.side] = bodies.scale
+        bad |= ~(bodies.inertia >= LIGHTEST) | ~np.isfinite(bodies.inertia * bodies.drag * bodies.scale)
+        safe = np.where(bad, 1.0, bodies.inertia), np.where(bad, 0.0, bodies.drag)
+        bodies = replace(bodies, inertia=safe[0], drag=safe[1])
+        slowest = slowest_of(units[0], np.where(inner > 0.0, inner, 1.0), alike, bodies)
+    elif alike:
         slowest = _slowest_round(units[0], inner)
     else:
         slowest = np.array([_slowest(*key_of(unit)) for unit in units])[unit_of]
     within = form.number("run.settle_within", values, rows)
     within = np.full(rows, problem.settle_within) if within is None else within
-    count = form.number("gap.count", values, rows)
     until = form.number("run.duration", values, rows)
     if until is None:
         until = _automatic(problem, drives, slowest * time, within)
@@ -69,16 +83,19 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     before = np.stack([np.broadcast_to(drive.before, (rows,)) for drive in drives], axis=1)
     if problem.start == "rest":
         before = np.zeros((rows, 3))
-    final = final.copy()
-    final[:, 2] *= push
+    final = final * scale
     bad |= ~np.isfinite(until) | ~(until > 0.0) | ~np.isfinite(final).all(axis=1) | ~np.isfinite(slowest)
     bad |= ~np.isfinite(time) | ~(time > 0.0)
     batch = Batch(
         geometry, density, viscosity, time, np.where(bad, 1.0, until), within,
-        np.full(rows, float(problem.count)) if count is None else count, drives, before, final, slowest, inner,
-        units, unit_of, alike,
+        count, drives, before, final, slowest, inner, units, unit_of, alike, scale, bodies,
     )  # fmt: skip
     return batch, ~bad
+
+
+def _bodies(form: Form, values: Values, geometry: Geometry, count: np.ndarray, rows: int) -> Bodies | None:
+    with np.errstate(all="ignore"):  # rows that are no case
+        return form.bodies(values, geometry, count, rows)
 
 
 def _automatic(problem: Problem, drives: tuple[DriveRows, ...], fluid: np.ndarray, within: np.ndarray) -> np.ndarray:
@@ -159,16 +176,29 @@ def tables(cells: int, layers: tuple[float, float], unit: _Held, *key: object) -
 class Grids:
     """Of each level (nodes [G, NODE_FIELDS, k, 2], ends [G, END_FIELDS, 2]), and the rows' places among the G, (n,)."""
 
-    levels: list[tuple[np.ndarray, np.ndarray]]
+    levels: list[Level]
     of: np.ndarray
+    held: Level  # the finest level with every wall's speed given, see ``held_of``
+    held_of: np.ndarray
 
 
 def grids_of(batch: Batch, rows: np.ndarray, cells: int, layers: tuple[float, float]) -> Grids:
     """The grids of some rows; ``cells`` those of the base level."""
+    levels, of = _held_grids(batch, rows, cells, layers)
+    if batch.bodies is None:
+        return Grids(levels, of, levels[-1], of)
+    bodies = batch.bodies.taken(rows)
+    return Grids([loaded(level, of, bodies) for level in levels], np.arange(len(rows)), levels[-1], of)
+
+
+def _held_grids(
+    batch: Batch, rows: np.ndarray, cells: int, layers: tuple[float, float]
+) -> tuple[list[Level], np.ndarray]:
+    """The same with every wall's speed given."""
     if batch.alike:
         levels = [round_tables(batch.units[0], batch.inner[rows], cells * 2**level, layers) for level in range(LEVELS)]
-        return Grids(levels, np.arange(len(rows)))
+        return levels, np.arange(len(rows))
     places, of = np.unique(batch.unit_of[rows], return_inverse=True)
     found = [tables(cells, layers, *key_of(batch.units[i])) for i in places]
     stacked = [tuple(np.stack([one[level][part] for one in found]) for part in (0, 1)) for level in range(LEVELS)]
-    return Grids(stacked, of)  # type: ignore[arg-type]
+    return stacked, of  # type: ignore[return-value]

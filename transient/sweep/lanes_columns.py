@@ -34,7 +34,7 @@ class Done:
 
 def infinite_stress(problem: Problem, jump: np.ndarray) -> np.ndarray:
     """Whether each wall's stress is infinite at each piece's start, [n, P, 2]."""
-    held = np.array([wall.kind == "moving" and wall.slip_length == 0.0 for wall in problem.walls])
+    held = np.array([wall.kind == "moving" and wall.slip_length == 0.0 and wall.body is None for wall in problem.walls])
     return (jump[:, :, :2] != 0.0) & held
 
 

@@ -14,27 +14,41 @@ from transient.sweep.lanes_batch import Batch, Grids
 @dataclass(frozen=True, eq=False)
 class Facts:
     """What rows end in, exact on any grid: ``ends`` [n, FACTS]; ``calm`` [n, 3, 3] steady stresses of both walls and
-    mean per unit input; ``reach`` [n, 2] of a wall's stress times speed in the work per volume; ``middle`` (n,) what a
-    mean speed is divided by to compare it with wall speeds."""
+    mean per unit of wall speeds and push, ``final`` [n, 3] those in the end; ``reach`` [n, 2] of a wall's stress times
+    speed in the work per volume; ``middle`` (n,) what a mean speed is divided by to compare it with wall speeds."""
 
     ends: np.ndarray
     calm: np.ndarray
+    final: np.ndarray
     reach: np.ndarray
     middle: np.ndarray
 
 
 def facts_of(batch: Batch, rows: np.ndarray, grids: Grids) -> Facts:
     """The facts of some rows."""
-    table, ends = grids.levels[-1]
-    unit, inner, final = batch.units[0], batch.inner[rows], batch.final[rows]
+    table, ends = grids.held
+    unit, inner = batch.units[0], batch.inner[rows]
+    final = _speeds(batch, rows, grids)
     facts = np.zeros((len(rows), headline.FACTS))
     facts[:, headline.LEVEL] = batch.within[rows]
-    facts[:, headline.CALM_SPEED] = _largest(final, table, grids.of)
+    facts[:, headline.CALM_SPEED] = _largest(final, table, grids.held_of)
     power = 2 if unit.rotating else unit.metric
     volume = inner + 0.5 if unit.metric else np.ones(len(rows))
     reach = np.stack([inner**power, (inner + 1.0) ** power], axis=1) / volume[:, None]
     middle = inner + 0.5 if unit.rotating else np.ones(len(rows))
-    return Facts(facts, _calm(table, ends)[grids.of], reach, middle)
+    return Facts(facts, _calm(table, ends)[grids.held_of], final, reach, middle)
+
+
+def _speeds(batch: Batch, rows: np.ndarray, grids: Grids) -> np.ndarray:
+    """Wall speeds and push in the end, [n, 3]: a body's follows from its load."""
+    final = batch.final[rows]
+    if batch.bodies is None:
+        return final
+    side = batch.bodies.side
+    per_unit = grids.levels[-1][0][:, layout.STEADY :, 0, side]
+    out = final.copy()
+    out[:, side] = (final * per_unit).sum(axis=1)
+    return out
 
 
 def _calm(table: np.ndarray, ends: np.ndarray) -> np.ndarray:

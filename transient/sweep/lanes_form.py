@@ -19,6 +19,7 @@ from transient.drive.kind import Kind
 from transient.drive.pieces import constant
 from transient.gap.problem import Problem
 from transient.sweep.keys import Values, Varied
+from transient.sweep.lanes_bodies import Bodies, bodies_of
 from transient.sweep.lanes_drives import BUILDERS, DriveRows, held, shared, varied
 from transient.units import DIMENSIONS
 
@@ -53,7 +54,9 @@ class Form:
     def fits(self) -> bool:
         """Whether the lanes can march rows of this form."""
         problem = self.problem
-        if problem.closed or problem.law.code != 0 or problem.profile_times is not None:
+        if problem.flow is not None or problem.law.code != 0 or problem.profile_times is not None:
+            return False
+        if not self._bodies_fit():
             return False
         if not any(wall.kind == "moving" for wall in problem.walls):
             return False
@@ -61,7 +64,42 @@ class Form:
             return False
         return all(self._known(name) for name in self.keys) and all(self._fixed(which) for which in range(3))
 
+    @property
+    def side(self) -> int | None:
+        """The end whose wall carries a body, None without."""
+        found = [end for end, wall in enumerate(self.problem.walls) if wall.body is not None]
+        return found[0] if found else None
+
+    def _bodies_fit(self) -> bool:
+        """Whether there is no body, or one with a mass, a load and a damper only, opposite a wall that is held."""
+        problem, side = self.problem, self.side
+        if side is None:
+            return True
+        wall, other = problem.walls[side], problem.walls[1 - side]
+        if other.body is not None or other.kind != "moving" or other.slip_length or wall.slip_length:
+            return False
+        body, stated = wall.body, self.base.walls[side]
+        assert body is not None
+        assert stated is not None
+        assert stated.body is not None
+        if not body.linear or body.mass == 0.0 or body.stiffness or body.displaced or problem.start != "rest":
+            return False
+        if body.initial_speed or body.initial_displacement:
+            return False
+        return not stated.body.incline or not any(name.startswith(self._body_path) for name in self.keys)
+
+    @property
+    def _body_path(self) -> str:
+        side = self.side
+        return "" if side is None else f"wall.{self.problem.walls[side].name}.body."
+
+    @property
+    def _mass_key(self) -> str:
+        return self._body_path + ("inertia" if self.problem.rotating else "mass")
+
     def _known(self, name: str) -> bool:
+        if self._body_path and name in (self._mass_key, self._body_path + "damping", self._body_path + "area"):
+            return True
         if name in _FLUID or name in _RUN or name == "gap.count":
             return True
         if name.startswith("gap."):
@@ -73,8 +111,15 @@ class Form:
         if which == 2:
             kind = self.base.pressure.kind
             return f"pressure.{kind}" if kind in _DROPS else None
+        if which == self.side:
+            path = self._body_path + ("torque" if self.problem.rotating else "force")
+            return path if any(key == path or key.startswith(path + ".") for key in self._typed) else None
         wall = self.base.walls[which]
         return None if wall is None or wall.speed is None else f"wall.{wall.name}.speed"
+
+    @cached_property
+    def _typed(self) -> set[str]:
+        return {one.key for one in self.base.inputs()}
 
     def _touches(self, which: int, name: str) -> bool:
         path = self._path(which)
@@ -108,7 +153,8 @@ class Form:
     def _shared(self, which: int) -> DriveRows | None:
         if which not in self._share:
             if which < 2:
-                drive = self.problem.speeds[which]
+                body = self.problem.walls[which].body
+                drive = self.problem.speeds[which] if body is None else body.load
             else:
                 given = self.base.pressure.drive
                 drive = constant(0.0) if given is None or self._path(2) is None else given
@@ -144,6 +190,10 @@ class Form:
                 bad |= (size > one.largest) | ((size < one.smallest) & (size > 0.0))
             if name.startswith(("gap.", "fluid.", "run.")):
                 bad |= ~(number > 0.0)
+            if name in (self._mass_key, self._body_path + "area"):
+                bad |= ~(number > 0.0)
+            if name == self._body_path + "damping":
+                bad |= ~(number >= 0.0)
             if name == "run.settle_within":
                 bad |= ~(number < 1.0)
         return bad
@@ -175,9 +225,37 @@ class Form:
         with np.errstate(invalid="ignore"):
             bad = ~((inner >= 0.0) & (inner < outer) & (gap > 0.0))
         radii = tuple(np.broadcast_to(np.asarray(r, float), (rows,)) for r in shape.radii(ends))
+        areas = list(shape.areas(ends, known))
+        if self.side is not None:
+            areas[self.side] = self._body_area(values, rows, areas[self.side])
         return Geometry(
-            inner, outer, gap, shape.areas(ends, known), shape.section(ends, known), (radii[0], radii[1]),
+            inner, outer, gap, (areas[0], areas[1]), shape.section(ends, known), (radii[0], radii[1]),
             known.get("length"), bad,
+        )  # fmt: skip
+
+    def _body_area(self, values: Values, rows: int, wetted: Any) -> np.ndarray:
+        """What of one gap acts on the body, m^2: as stated, else the wetted area."""
+        stated = self.number(self._body_path + "area", values, rows)
+        return np.broadcast_to(np.asarray(wetted, float), (rows,)) if stated is None else stated
+
+    def bodies(self, values: Values, geometry: Geometry, count: np.ndarray, rows: int) -> Bodies | None:
+        """The rows' bodies, None without."""
+        side = self.side
+        if side is None:
+            return None
+        body = self.problem.walls[side].body
+        assert body is not None
+        mass = self.number(self._mass_key, values, rows)
+        damping = self.number(self._body_path + "damping", values, rows)
+        density, viscosity = self.fluid(values, rows)
+        area = geometry.areas[side]
+        assert area is not None
+        lever = geometry.radii[side] if self.problem.rotating else 1.0
+        radius = (geometry.inner, geometry.outer)[side] / geometry.gap
+        return bodies_of(
+            self.problem, side, np.full(rows, body.mass) if mass is None else mass,
+            np.full(rows, body.damping) if damping is None else damping, area * count * lever, geometry.gap, radius,
+            density, viscosity,
         )  # fmt: skip
 
     def drive(self, which: int, values: Values, geometry: Geometry, rows: int) -> DriveRows:
