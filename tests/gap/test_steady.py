@@ -14,7 +14,7 @@ import pytest
 from problems import SHAPES, problem
 
 from transient.gap.system import assemble, steady
-from transient.march.march import steady_stress
+from transient.march.readings import steady_stress
 
 GRIDS = [(7, (1.0, 1.0)), (12, (0.2, 0.01)), (33, (2e-3, 0.05)), (90, (1e-3, 1e-3))]
 CONDITIONS = {

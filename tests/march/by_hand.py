@@ -7,8 +7,9 @@ from dataclasses import replace
 import numpy as np
 
 from transient.gap.problem import Problem
-from transient.march.march import NO_PLAN, Plan, Trace, before_start, history, initial_state, march, with_rates
+from transient.march.march import NO_PLAN, Plan, Trace, initial_state, march
 from transient.march.plan import Resolution, features, resolve
+from transient.march.readings import before_start, history, with_rates
 from transient.result.history import History
 
 

@@ -15,7 +15,8 @@ from by_hand import even_steps, marched, told, traced
 from chebyshev import Collocation
 from problems import SHAPES, problem, smooth_ramp
 
-from transient.march.march import extrapolate, halved
+from transient.march.march import halved
+from transient.march.readings import extrapolate
 
 UNTIL = 1.5
 DECLARED, WITHIN = 2.0, 0.1

@@ -8,8 +8,8 @@ from transient.drive.pieces import Pieces
 from transient.gap.problem import PRESSURE, Body, Problem
 from transient.gap.system import assemble, steady
 from transient.march.levels import Ladder
-from transient.march.march import sudden_motion
 from transient.march.rates import accelerations
+from transient.march.readings import sudden_motion
 from transient.march.regime import Outlook
 from transient.result.driven import body_speed
 from transient.result.history import History, largest

@@ -13,22 +13,9 @@ from transient.gap.system import System, steady
 from transient.march import kernel
 from transient.march.coupled import dense, periodic_start, settled_state
 from transient.march.events import divided, eventful, resampled
-from transient.march.march import (
-    NO_PLAN,
-    State,
-    Trace,
-    before_start,
-    extrapolate,
-    finer,
-    halved,
-    history,
-    initial_state,
-    march,
-    steady_stress,
-    with_rates,
-    without_first_steps,
-)
+from transient.march.march import NO_PLAN, State, Trace, finer, halved, initial_state, march
 from transient.march.plan import Features, Resolution, features, on_one_grid, resolve, tightened
+from transient.march.readings import before_start, extrapolate, history, steady_stress, with_rates, without_first_steps
 from transient.march.regime import (
     Outlook,
     deviation_breaks,

@@ -8,8 +8,9 @@ from dataclasses import replace
 import numpy as np
 
 from transient.gap.problem import PRESSURE, UPPER, Problem
-from transient.march.march import Plan, history, march
+from transient.march.march import Plan, march
 from transient.march.plan import features, resolve
+from transient.march.readings import history
 from transient.trust.balance import energy_balance, momentum_balance, stress_difference
 from transient.trust.grid_convergence import convergence
 from transient.trust.verification.gaps import SHAPES, diffusion_time, driven, gap, size
