@@ -34,6 +34,7 @@ HAIR = 3e-5
 _FAR, _FARTHEST = 1e26, 1e30
 _GROWS, _VANISHES = 0.3, -0.2
 ROUND_OFFS = 8.0
+FIELD = "velocity"
 MOTIONS = (slice(0, 2), slice(2, 4), slice(4, 6), slice(6, 7))  # kinds of outputs of ``motion_of``
 
 
@@ -70,11 +71,24 @@ def walls_of(s: np.ndarray, unknown: np.ndarray, walls: np.ndarray) -> np.ndarra
     return unknown @ walls
 
 
-def motion_of(s: np.ndarray, unknown: np.ndarray, walls: np.ndarray) -> np.ndarray:
-    """Speeds of both walls, their rates, their travel, and the pressure drop."""
-    speed = unknown[:, :, :2]
-    at = s[:, None, None]
-    return np.concatenate([speed, at * speed, speed / at, unknown[:, :, 2:]], axis=2)
+def motion_of(closing: Closing) -> Made:
+    """Speeds of both walls, their rates, their travel, and the pressure drop.
+
+    The rate of a body with a mass is what acts on it but its load, over the mass: the load's own share needs no contour
+    (and in the answer to an impulse it would be all, for no time at all).
+    """
+
+    def made(s: np.ndarray, unknown: np.ndarray, walls: np.ndarray) -> np.ndarray:
+        speed = unknown[:, :, :2]
+        at = s[:, None, None]
+        travel, rate = speed / at, at * speed
+        acting = (unknown @ walls)[:, :, :2] + closing.face * unknown[:, :, 2:]
+        acting = acting - closing.damping * speed - closing.stiffness * travel
+        heavy = closing.mass > 0.0
+        rate[:, :, heavy] = acting[:, :, heavy] / closing.mass[heavy]
+        return np.concatenate([speed, rate, travel, unknown[:, :, 2:]], axis=2)
+
+    return made
 
 
 def velocities_of(shape: GapShape, y: np.ndarray) -> Made:
@@ -230,7 +244,9 @@ class ClosedSolution:
         A place is a body's from its own zero; a prescribed wall's counts from t = 0.
         """
         calm = np.concatenate([self.base[:2], np.zeros(4), self.base[2:]])
-        value, bound = self.evaluate(self.answer("motion", motion_of, MOTIONS), piece, offset, calm)
+        value, bound = self.evaluate(self.answer("motion", motion_of(self.gap.closing), MOTIONS), piece, offset, calm)
+        heavy = np.flatnonzero(self.gap.closing.mass > 0.0)
+        value[:, 2 + heavy] += self._loads(piece, offset)[:, heavy] / self.gap.closing.mass[heavy]
         time = self.problem.diffusion_time
         pressure = self.problem.viscosity / self.problem.gap**2
         scale = np.array([1.0, 1.0, 1.0 / time, 1.0 / time, time, time, pressure])
@@ -240,17 +256,28 @@ class ClosedSolution:
         bound[:, 4:6] += ROUNDING * np.abs(value[:, 4:6])
         return value, bound
 
+    def _loads(self, piece: np.ndarray, offset: np.ndarray) -> np.ndarray:
+        """(n, 3) inputs less those before t = 0, dimensionless."""
+        p = np.atleast_1d(np.asarray(piece, dtype=np.int64))
+        x = np.atleast_1d(np.asarray(offset, dtype=float)) / self.problem.diffusion_time
+        value = (self.line.poly[p] * (x[:, None] ** np.arange(4.0))[:, None, :]).sum(axis=2)
+        value += (self.line.coeff[p] * np.exp(self.line.exponent[p] * x[:, None, None])).real.sum(axis=2)
+        return value - self.at.left[0]
+
     def velocity(self, piece: np.ndarray, offset: np.ndarray, r: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, k) velocity (rotating gaps: angular) at coordinates ``r`` (k,) m, and its bound over the gap (n,)."""
         y = np.clip((np.asarray(r, dtype=float) - self.problem.inner) / self.problem.gap, 0.0, 1.0)
         calm = self.base @ steady_flow(self.shape).velocity(y) if self.base.any() else np.zeros(len(y))
-        answer = self.answer(f"velocity {hash(y.tobytes())}", velocities_of(self.shape, y))
+        answer = self.answer(f"{FIELD} {hash(y.tobytes())}", velocities_of(self.shape, y))
         value, bound = self.evaluate(answer, piece, offset, calm)
         return value, bound.max(axis=1, initial=0.0) * (1.0 + FAINT)
 
     def answer(self, name: str, made: Made, alike: tuple[slice, ...] = (slice(None),)) -> ClosedAnswer:
         """The answer of a ``name``, prepared once."""
         if name not in self.answers:
+            if name.startswith(FIELD):  # tables over a whole gap weigh megabytes
+                for other in [key for key in self.answers if key.startswith(FIELD)]:
+                    del self.answers[other]
             self.answers[name] = ClosedAnswer.of(self.gap, made, alike)
         return self.answers[name]
 
@@ -285,7 +312,8 @@ class ClosedSolution:
             limit = _at_once(self.gap, answer.made, -1) - 2.0 * answer.share.real.sum(axis=0)
             for i in np.flatnonzero(self.kick):
                 felt = limit[i] != 0.0
-                value[np.ix_(first, felt)] += self.kick[i] * limit[i, felt]
+                with np.errstate(invalid="ignore"):  # two bodies set going, each an infinite stress of its own sign
+                    value[np.ix_(first, felt)] += self.kick[i] * limit[i, felt]
         level = np.floor(np.log2(self.gap.window / np.where(first, self.gap.window, age))).astype(int)
         level = np.maximum(level + (age < np.ldexp(self.gap.window, -1 - level)), 0)
         for number in np.unique(level[~first]):
@@ -343,7 +371,7 @@ def _slopes(line: Timeline) -> np.ndarray:
     return np.where(np.abs(out) > 1e-11 * size, out, 0.0)
 
 
-@lru_cache(maxsize=4)  # of one solve: refined again and again, and once more for its deviation
+@lru_cache(maxsize=1)  # one solve asks again and again: refined, and for its deviation
 def solve_closed(problem: Problem, until: float) -> ClosedSolution:
     """The exact flow on [0, until) under bodies and prescribed flow.  Raises ``SeriesError`` where there is none."""
     shape = shape_of(problem)
@@ -385,7 +413,7 @@ def _kick(gap: Gap, speed: np.ndarray) -> np.ndarray:
     out = np.zeros(3)
     moved = np.flatnonzero(gap.closing.body & (gap.closing.mass > 0.0))
     if speed[moved].any():
-        out[moved] = np.linalg.solve(_at_once(gap, motion_of, -1)[np.ix_(moved, moved)].T, speed[moved])
+        out[moved] = np.linalg.solve(_at_once(gap, motion_of(gap.closing), -1)[np.ix_(moved, moved)].T, speed[moved])
     return out
 
 

@@ -14,7 +14,7 @@ import numpy as np
 
 from transient.gap.problem import Inputs, Problem
 from transient.series.closing import Closing
-from transient.series.coupled import ClosedAnswer, ClosedSolution, Gap, Made, velocities_of, walls_of
+from transient.series.coupled import FIELD, ClosedAnswer, ClosedSolution, Gap, Made, velocities_of, walls_of
 from transient.series.gapshape import GapShape, SeriesError, shape_of
 from transient.series.oscillation import cycle_transform, swings
 from transient.series.steady import steady_flow
@@ -92,7 +92,7 @@ class Orbit:
         problem = self.recent.problem
         y = np.clip((np.asarray(r, dtype=float) - problem.inner) / problem.gap, 0.0, 1.0)
         calm = steady_flow(self.shape).velocity(y)
-        name = f"velocity {hash(y.tobytes())}"
+        name = f"{FIELD} {hash(y.tobytes())}"
         value, bound = self._evaluate(name, velocities_of(self.shape, y), calm, piece, offset)
         return value, bound.max(axis=1, initial=0.0)
 
@@ -110,6 +110,8 @@ class Orbit:
         age = LEAD * period + (self.starts[piece] + offset) / time
         scale = LEAD * period
         if name not in self.contours:
+            if name.startswith(FIELD):
+                self.contours.clear()
             self.contours[name] = answer.transfer(NODE / scale)
         summed = np.einsum("ni,niq->nq", self.transform, self.contours[name])
         turn = np.exp(np.outer(age, NODE / scale)) * (WEIGHT / scale)
