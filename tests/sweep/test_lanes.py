@@ -90,6 +90,16 @@ CASES = {
                                            "jerk": "200 rad/s^3"}}}}),
         {"fluid.viscosity": ("viscosity", 1e-3, 10e-3), "wall.outer.speed.to": ("angular_speed", 1.0, 8.0)},
     ),
+    "pipe, prescribed flow": (
+        Case({"gap": {"shape": "pipe", "diameter": "8 mm", "length": "4 m"},
+              "fluid": {"density": "870 kg/m^3", "viscosity": "0.1 Pa*s"},
+              "pressure": {"flow_rate": {"kind": "ramp", "to": "1e-5 m^3/s", "over": "50 ms"}}}),
+        {"gap.diameter": ("length", 4e-3, 12e-3), "pressure.flow_rate.over": ("time", 5e-3, 0.5)},
+    ),
+    "plates, sealed": (
+        ramped(pressure={"sealed": True}),
+        {"gap.height": ("length", 0.4e-3, 1.5e-3), "wall.upper.speed.over": ("time", 5e-3, 0.3)},
+    ),
     "plates, carriage pushed": (
         ramped(wall={"upper": {"body": {"mass": "20 g", "damping": "0.002 N*s/m",
                                         "force": {"kind": "ramp", "to": "0.5 mN", "over": "50 ms"}}}}),
@@ -159,7 +169,7 @@ def plates_exact(over, within):
 
 def test_stated_errors_hold_against_the_exact_series():
     rows = 60
-    keys, values, columns, out = solved(ramped(), MODEL, rows)
+    _keys, values, _columns, out = solved(ramped(), MODEL, rows)
     assert (out["status"] == SOLVED).all()
     for row in range(rows):
         height, viscosity = values["gap.height"][row], values["fluid.viscosity"][row]
@@ -174,7 +184,7 @@ def test_stated_errors_hold_against_the_exact_series():
 
 def test_a_tighter_accuracy_is_met_too():
     base = ramped(run={"accuracy": "0.01 %"})
-    keys, values, columns, out = solved(base, MODEL, 12)
+    _keys, values, _columns, out = solved(base, MODEL, 12)
     assert (out["status"] == SOLVED).all()
     for row in range(12):
         height, viscosity = values["gap.height"][row], values["fluid.viscosity"][row]
@@ -223,7 +233,7 @@ def test_a_planted_error_is_seen(monkeypatch):
         return levels
 
     monkeypatch.setattr(lanes_batch, "tables", wrong)
-    keys, values, columns, out = solved(ramped(), MODEL, 5)
+    _keys, _values, _columns, out = solved(ramped(), MODEL, 5)
     assert (out["status"] == OPEN).all()
     assert np.isnan(out["settling_time"]).all()
 
@@ -243,7 +253,7 @@ def test_rows_that_are_no_case_are_left_open():
         {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N", "stiffness": "3 N/m"}}}},
         {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N", "dry_friction": "0.1 N"}}}},
         {"wall": {"upper": {"body": {"mass": "1 kg", "force": "1 N"}}, "lower": {"shear_free": True}}},
-        {"pressure": {"mean_velocity": "0.1 m/s"}, "wall": {}},
+        {"pressure": {"mean_velocity": "0.1 m/s"}, "wall": {}, "start": {"state": "steady"}},
         {"wall": {"upper": {"speed": {"kind": "sine", "amplitude": "1 m/s", "frequency": "5 Hz"}}}},
     ],
 )

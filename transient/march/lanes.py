@@ -36,6 +36,7 @@ from transient.march.lanes_layout import (
     LANE_HELD,
     LANE_MID_G,
     LANE_MID_U,
+    LANE_PUSH,
     LANE_RADIUS,
     LANE_RATE_U,
     LANE_U,
@@ -47,7 +48,19 @@ from transient.march.lanes_layout import (
     SHARE_OF_STAGE,
 )
 from transient.march.lanes_load import enter, set_flow, set_grid, set_piece, set_waves, write
-from transient.march.lanes_step import advance, factor, polynomial, record, slope_of, turned, waved
+from transient.march.lanes_step import (
+    close_first,
+    close_second,
+    factor,
+    first_stage,
+    polynomial,
+    record,
+    respond,
+    second_stage,
+    slope_of,
+    turned,
+    waved,
+)
 from transient.march.lanes_vector import HALF, WIDTH, fma, load, splat, store
 
 
@@ -74,6 +87,7 @@ def march(
     table, ends, grid, numbers,  # [G, NODE_FIELDS, n, 2], [G, END_FIELDS, 2], (C,), [C, CASE_FIELDS]
     pieces, part_of, poly, wave, jump,  # (C,), [C, P, PIECE_FIELDS], [C, P, 3, 4] twice, [C, P, 3]
     before, final, every, waving,  # [C, 3] twice, steps of a row, whether any input has a wave
+    flowing, kick,  # whether the third input is the mean velocity, [C, P, 3] changes of the inputs' slopes
     rows, row_piece, row_offset, count,  # out: [C, R, FIELDS], [C, R] twice, (C,): -1 where R is too few
 ):  # fmt: skip
     """March all cases; inputs are in lane units (see ``lanes_inputs``).  Returns the number of lane steps."""
@@ -93,6 +107,7 @@ def march(
     z = np.zeros((n, WIDTH))
     lane = np.zeros((LANE_FIELDS, WIDTH))
     out = np.zeros((5, WIDTH))
+    unit = np.zeros((n if flowing else 1, WIDTH))
     ratio = np.ones((1, WIDTH))
     own = np.full(HALF, -1)
     grid_of = np.full(HALF, -1)
@@ -103,6 +118,8 @@ def march(
     fresh = np.zeros(HALF, np.bool_)
     share = splat(SHARE_OF_STAGE)
     gamma = splat(GAMMA)
+    gain = splat(1.0)
+    nothing = splat(0.0)
     taken = 0
     done = 0
     steps = 0
@@ -165,16 +182,31 @@ def march(
             still = load(w, j)
             store(z, j, fma(turn, load(z, j) - still, still))
         factor(storage, conductance, pivot, lower, lane)
+        if flowing:
+            gain = respond(storage, pivot, lower, y, unit, weight, lane)
         if entered:
             for c in range(HALF):
                 if fresh[c]:
-                    enter(c, jump[own[c], piece[c]], storage, conductance, w, z, lane)
+                    jumps = jump[own[c], piece[c]]
+                    push = jumps[2]
+                    if flowing:  # the liquid as a whole, and what of it moves with the walls, is set going by pressure
+                        kicks = kick[own[c], piece[c]]
+                        near_walls = weight[0, c] * lane[LANE_HELD, c], weight[0, c + HALF] * lane[LANE_HELD, c + HALF]
+                        moved = near_walls[0] * kicks[0] + near_walls[1] * kicks[1]
+                        push = (kicks[2] - moved) / (1.0 - near_walls[0] - near_walls[1])
+                        if piece[c] == 0:
+                            lane[LANE_PUSH, c] = 0.0
+                        lane[LANE_PUSH, c] += push
+                        lane[LANE_PUSH, c + HALF] = lane[LANE_PUSH, c]
+                    enter(c, jumps, push, storage, conductance, w, z, lane)
             x = load(lane, LANE_X)
             u = polynomial(lane, LANE_U, x)
             g = polynomial(lane, LANE_G, x)
             if waving:
                 u = u + load(lane, LANE_WAVE_U)
                 g = g + load(lane, LANE_WAVE_G)
+            if flowing:
+                g = load(lane, LANE_PUSH)
             record(w, z, weight, steady, lever, near, beyond, lane, u, splat(0.0), g, out)
             for c in range(HALF):
                 if fresh[c]:
@@ -193,7 +225,7 @@ def march(
                             rows[case, at_row, side] = rows[case, at_row - 1, side]
                         else:
                             change = -lane[LANE_CELL, l] * jump[case, 0, 2]
-                            if body:  # from rest: nothing before
+                            if body or flowing:  # from rest: nothing before
                                 rows[case, 0, side] = 0.0
                                 continue
                             change += lane[LANE_FLUX, l] * jump[case, 0, side]
@@ -221,7 +253,16 @@ def march(
                     turned(lane, LANE_WAVE_G, LANE_END_G)
                     u = u + load(lane, LANE_WAVE_U)
                     g = g + load(lane, LANE_WAVE_G)
-                advance(storage, pivot, lower, y, w, z, lane, share, low, push, u, g)
+                if flowing:
+                    first_stage(storage, pivot, lower, y, w, z, lane, share, low, nothing)
+                    close_first(w, z, unit, weight, share, gain, push)
+                    second_stage(storage, pivot, lower, y, w, z, lane, u, nothing)
+                    g = close_second(w, z, unit, weight, gain, g)
+                else:
+                    first_stage(storage, pivot, lower, y, w, z, lane, share, low, push)
+                    second_stage(storage, pivot, lower, y, w, z, lane, u, g)
+            if flowing:
+                store(lane, LANE_PUSH, g)
             slope = slope_of(lane, LANE_U, x)
             if waving:
                 slope = slope + waved(lane, LANE_WAVE_U, LANE_RATE_U)

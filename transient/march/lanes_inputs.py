@@ -81,7 +81,7 @@ def _breaks(starts, until, slack, times):
 
 
 @part
-def _finest(c, pieces, part_of, poly, wave, jump, bends, inertia, fine, layer):
+def _finest(c, pieces, part_of, poly, wave, jump, bends, inertia, flowing, fine, layer):
     """First rows and courses of all pieces of case ``c``, and each wall's finest layer as a share of the gap."""
     layer[c, 0] = 1.0
     layer[c, 1] = 1.0
@@ -118,7 +118,7 @@ def _finest(c, pieces, part_of, poly, wave, jump, bends, inertia, fine, layer):
                 course = min(course, length / BENT)
                 until = 1e300
             for side in range(2):
-                if which == 2 or side == which:
+                if flowing or which == 2 or side == which:  # pressure answers what a wall does, and the other feels it
                     layer[c, side] = min(layer[c, side], 0.5 * np.sqrt(time) * fine)
         if first > 1e299:
             first = FIRST * beside
@@ -128,7 +128,7 @@ def _finest(c, pieces, part_of, poly, wave, jump, bends, inertia, fine, layer):
 
 
 @part
-def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
+def _breaks_of(which, c, n, part_of, poly, wave, before, jump, kick, bends, ends):
     """Jumps of one input at the starts of its pieces, and whether its slope or bend changes there."""
     old_value, old_slope, old_bend = before, 0.0, 0.0
     old_size, old_length = abs(before), 1e300
@@ -144,7 +144,10 @@ def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
         jump[c, p, which] = value - old_value
         if abs(value - old_value) <= NOTHING * largest:
             jump[c, p, which] = 0.0
+        kick[c, p, which] = slope - old_slope
         kink, twist = abs(slope - old_slope) * shorter, abs(curve - old_bend) * shorter * shorter
+        if kink <= 1e-9 * largest:
+            kick[c, p, which] = 0.0
         bends[p, which] = kink > 1e-9 * largest or twist > 1e-7 * largest
         old_value, old_slope, old_bend = ends[0], ends[1], ends[2]
         old_size, old_length = size, length
@@ -154,7 +157,9 @@ def _breaks_of(which, c, n, part_of, poly, wave, before, jump, bends, ends):
 def join(
     starts, poly_of, wave_of,  # the drives' pieces: [C or 1, 3, P], [.., 3, P, 4] twice
     before, until, time, scale, inertia, fine,  # [C, 3] in SI, (C,) s, (C,) s, [C, 3] lane units per SI, [C, 2], (C,)
-    pieces, part_of, poly, wave, jump, layer,  # out: (C,), [C, Q, PIECE_FIELDS], [C, Q, 3, 4] twice, [C, Q, 3], [C, 2]
+    flowing,  # whether the third input is the mean velocity
+    pieces, part_of, poly, wave, jump, kick, layer,  # out: (C,), [C, Q, PIECE_FIELDS], [C, Q, 3, 4] twice, [C, Q, 3]
+    # twice (jumps of the inputs and of their slopes), [C, 2]
 ):  # fmt: skip
     """Join the three drives of every row; pieces that a row does not have start at infinity or have no length.
 
@@ -190,21 +195,21 @@ def join(
                     poly_of[own, which, piece], wave_of[own, which, piece], x, time[c], scale[c, which],
                     poly[c, p, which], wave[c, p, which],
                 )  # fmt: skip
-            _breaks_of(which, c, n, part_of, poly, wave, before[c, which], jump, bends, ends)
-        _finest(c, n, part_of, poly, wave, jump, bends, inertia, fine[c], layer)
+            _breaks_of(which, c, n, part_of, poly, wave, before[c, which], jump, kick, bends, ends)
+        _finest(c, n, part_of, poly, wave, jump, bends, inertia, flowing, fine[c], layer)
 
 
 @compiled
-def rise_times(pieces, part_of, poly, wave, jump, out):
-    """Swing of the pressure drop over its steepest rate (C,), in diffusion times: 0 with a jump, inf where constant."""
+def rise_times(which, pieces, part_of, poly, wave, jump, out):
+    """Swing of an input over its steepest rate (C,), in diffusion times: 0 with a jump, inf where constant."""
     ends = np.zeros(4)
     for c in range(len(out)):
         low, high, steepest = np.inf, -np.inf, 0.0
         sudden = False
         for p in range(pieces[c]):
-            sudden = sudden or jump[c, p, 2] != 0.0
+            sudden = sudden or jump[c, p, which] != 0.0
             for k in range(17):
-                _at_end(poly[c, p, 2], wave[c, p, 2], part_of[c, p, LENGTH] * k / 16.0, ends)
+                _at_end(poly[c, p, which], wave[c, p, which], part_of[c, p, LENGTH] * k / 16.0, ends)
                 low, high = min(low, ends[0]), max(high, ends[0])
                 steepest = max(steepest, abs(ends[1]))
         out[c] = 0.0 if sudden else (high - low) / steepest if steepest > 0.0 else np.inf

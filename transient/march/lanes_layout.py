@@ -25,6 +25,6 @@ LANE_U, LANE_G = 9, 13  # cubics of wall speed and push
 # waves of both: real, imaginary part; their rates; turns to the middle and to the end of a step
 LANE_WAVE_U, LANE_WAVE_G, LANE_RATE_U, LANE_RATE_G = 17, 19, 21, 23
 LANE_MID_U, LANE_END_U, LANE_MID_G, LANE_END_G = 25, 27, 29, 31
-LANE_DRIVE, LANE_BODY, LANE_FLUID, LANE_FIELDS = 33, 34, 35, 36
+LANE_DRIVE, LANE_BODY, LANE_FLUID, LANE_PUSH, LANE_FIELDS = 33, 34, 35, 36, 37
 
 SHARE_OF_STAGE = SHARE / ALPHA

@@ -122,16 +122,16 @@ def set_waves(c, wave, x, h, lane):
 
 
 @part
-def enter(c, jump, storage, conductance, w, z, lane):
-    """What jumps of the inputs (3,) do to the rates of lane ``c``, and to the wall's own node."""
+def enter(c, jump, push, storage, conductance, w, z, lane):
+    """What jumps of the wall inputs (3,) and of the ``push`` do to the rates of lane ``c``, and to the wall's node."""
     last = storage.shape[0] - 1
     for side in range(2):
         l = c + side * HALF
         a = lane[LANE_A, l]
-        if jump[2] != 0.0:
+        if push != 0.0:
             for j in range(last + 1):
                 if storage[j, l] > 0.0:
-                    z[j, l] += a * jump[2] * (lane[LANE_FLUID, l] if j == 0 else 1.0)
+                    z[j, l] += a * push * (lane[LANE_FLUID, l] if j == 0 else 1.0)
         if lane[LANE_HELD, l] > 0.5:
             z[1, l] += a * conductance[0, l] * jump[side] / storage[1, l]
             w[0, l] += jump[side]

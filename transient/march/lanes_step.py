@@ -73,14 +73,13 @@ def turned(lane, wave, turn):
 
 
 @part
-def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_after):
-    """One step of all lanes: ``w`` and ``z`` move on; inputs of the two stages (wall speed, push)."""
+def first_stage(storage, pivot, lower, y, w, z, lane, share, low, push):
+    """The Crank-Nicolson stage of all lanes: ``z`` becomes the base of the next one; the stage's wall speed, push."""
     last = storage.shape[0] - 1
     a = load(lane, LANE_A)
     bound = load(lane, LANE_HELD) + a * load(lane, LANE_DRIVE)
     fluid = load(lane, LANE_FLUID)
     free = load(lane, LANE_FREE)
-    # stage one
     extra = a * push
     here = fma(load(storage, 0), fma(fluid, extra, load(z, 0)), bound * low)
     store(y, 0, here)
@@ -98,8 +97,17 @@ def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_a
     x = fma(free * load(lower, 1), x, load(pivot, 0) * load(y, 0))
     old = load(w, 0)
     store(z, 0, fma(share, x - old, old))
-    # stage two
-    extra = a * push_after
+
+
+@part
+def second_stage(storage, pivot, lower, y, w, z, lane, high, push):
+    """The stage that closes the step: ``w`` and ``z`` move on."""
+    last = storage.shape[0] - 1
+    a = load(lane, LANE_A)
+    bound = load(lane, LANE_HELD) + a * load(lane, LANE_DRIVE)
+    fluid = load(lane, LANE_FLUID)
+    free = load(lane, LANE_FREE)
+    extra = a * push
     here = fma(load(storage, 0), fma(fluid, extra, load(z, 0)), bound * high)
     store(y, 0, here)
     for j in range(1, last):
@@ -119,6 +127,57 @@ def advance(storage, pivot, lower, y, w, z, lane, share, low, push, high, push_a
     base = load(z, 0)
     store(w, 0, x)
     store(z, 0, x + x - base)
+
+
+@part
+def respond(storage, pivot, lower, y, unit, weight, lane):
+    """What one unit of push makes of a stage's velocities, into ``unit``; returns what it makes of their mean."""
+    last = storage.shape[0] - 1
+    a = load(lane, LANE_A)
+    here = load(storage, 0) * a * load(lane, LANE_FLUID)
+    store(y, 0, here)
+    for j in range(1, last):
+        here = fma(load(lower, j), here, load(storage, j) * a)
+        store(y, j, here)
+    here = fma(load(lower, last), here, load(storage, last) * a)
+    x = load(pivot, last) * (here + swapped(here))
+    store(unit, last, x)
+    for j in range(last - 1, 0, -1):
+        x = fma(load(lower, j + 1), x, load(pivot, j) * load(y, j))
+        store(unit, j, x)
+    store(unit, 0, fma(load(lane, LANE_FREE) * load(lower, 1), x, load(pivot, 0) * load(y, 0)))
+    return mean_of(unit, weight)
+
+
+@part
+def mean_of(w, weight):
+    """Mean velocity of all lanes."""
+    total = load(weight, 0) * load(w, 0)
+    for j in range(1, w.shape[0]):
+        total = fma(load(weight, j), load(w, j), total)
+    return total + swapped(total)
+
+
+@part
+def close_first(w, z, unit, weight, share, gain, wanted):
+    """Push that gives the first stage the mean velocity ``wanted``, and its part of the next base."""
+    old = mean_of(w, weight)
+    found = old + (mean_of(z, weight) - old) / share
+    push = (wanted - found) / gain
+    part_of = share * push
+    for j in range(w.shape[0]):
+        store(z, j, fma(part_of, load(unit, j), load(z, j)))
+
+
+@part
+def close_second(w, z, unit, weight, gain, wanted):
+    """The same for the step's end; returns the push."""
+    push = (wanted - mean_of(w, weight)) / gain
+    twice = push + push
+    for j in range(w.shape[0]):
+        store(w, j, fma(push, load(unit, j), load(w, j)))
+        store(z, j, fma(twice, load(unit, j), load(z, j)))
+    return push
 
 
 @part
@@ -169,7 +228,6 @@ def record(w, z, weight, steady, lever, before, after, lane, u, slope, g, out):
 
     ``u``, ``slope``: the walls' inputs and their rates; a wall with a body has its node's speed and rate.
     """
-    last = w.shape[0] - 1
     half = splat(0.5)
     body = load(lane, LANE_BODY)
     here = load(w, 0)
@@ -178,10 +236,7 @@ def record(w, z, weight, steady, lever, before, after, lane, u, slope, g, out):
     slope = where_above(body, half, (load(z, 0) - here) / load(lane, LANE_A), slope)
     flux = fma(load(lane, LANE_FLUX), beside - u, load(lane, LANE_CELL) * (g - slope))
     store(out, 0, flux * load(lane, LANE_RADIUS))
-    total = load(weight, 0) * load(w, 0)
-    for j in range(1, last + 1):
-        total = fma(load(weight, j), load(w, j), total)
-    store(out, 1, total + swapped(total))
+    store(out, 1, mean_of(w, weight))
     store(out, 2, _largest(w, steady, lever, before, after))
     store(out, 3, u)
     store(out, 4, g)

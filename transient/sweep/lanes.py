@@ -78,7 +78,8 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
     pieces = np.zeros(n, np.int64)
     part_of = np.zeros((n, most, PIECE_FIELDS))
     poly, wave = np.zeros((n, most, 3, 4)), np.zeros((n, most, 3, 4))
-    jump, layer = np.zeros((n, most, 3)), np.zeros((n, 2))
+    jump, kick, layer = np.zeros((n, most, 3)), np.zeros((n, most, 3)), np.zeros((n, 2))
+    flowing = problem.flow is not None
     before = batch.before[rows].copy()
     starts, own_poly, own_wave = _together(batch.drives, rows)
     inertia = np.zeros((n, 2))
@@ -86,11 +87,10 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
         inertia[:, batch.bodies.side] = batch.bodies.inertia[rows]
     join(
         starts, own_poly, own_wave, before, batch.until[rows], batch.time[rows], batch.scale[rows], inertia,
-        np.full(n, fine),
-        pieces, part_of, poly, wave, jump, layer,
+        np.full(n, fine), flowing, pieces, part_of, poly, wave, jump, kick, layer,
     )  # fmt: skip
     used = int(pieces.max())
-    part_of, poly, wave, jump = (array[:, :used] for array in (part_of, poly, wave, jump))
+    part_of, poly, wave, jump, kick = (array[:, :used] for array in (part_of, poly, wave, jump, kick))
     waving = bool(np.any(wave[:, :, :, :2]))
     numbers = np.zeros((n, layout.CASE_FIELDS))
     slowest = batch.slowest[rows]
@@ -113,13 +113,27 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
             grids = grids_of(batch, rows[of], cells, (2.0**-low, 2.0**-high))
             facts = facts_of(batch, rows[of], grids)
             out[of], seen[of] = _march(
-                problem, grids, numbers[of], pieces[of], part_of[of], poly[of], wave[of], jump[of],
+                problem, grids, numbers[of], pieces[of], part_of[of], poly[of], wave[of], jump[of], kick[of],
                 before[of], batch.final[rows[of]], waving, infinite[of], facts,
             )  # fmt: skip
-    rise = np.full(n, np.inf)
-    if problem.length is not None and (poly[:, :, 2].any() or wave[:, :, 2, :2].any()):
-        rise_times(pieces, part_of, poly, wave, jump, rise)
+    rise = _rises(problem, pieces, part_of, poly, wave, jump)
+    if flowing:  # a sudden motion makes the pressure infinite: left to the march of single cases
+        out[(jump != 0.0).any(axis=(1, 2))] = np.nan
     return Done(out, seen, jump, part_of[:, :, START], rise)
+
+
+def _rises(
+    problem: Problem, pieces: np.ndarray, part_of: np.ndarray, poly: np.ndarray, wave: np.ndarray, jump: np.ndarray
+) -> np.ndarray:
+    """Shortest rise (n,) of what changes the pressure, in diffusion times: of the pressure, or of a prescribed flow
+    and the walls."""
+    rise = np.full(len(pieces), np.inf)
+    for which in (2,) if problem.flow is None else (0, 1, 2):
+        if problem.length is not None and (poly[:, :, which].any() or wave[:, :, which, :2].any()):
+            one = np.empty_like(rise)
+            rise_times(which, pieces, part_of, poly, wave, jump, one)
+            rise = np.minimum(rise, one)
+    return rise
 
 
 def _most_rows(pieces: np.ndarray, growth: float) -> int:
@@ -173,8 +187,8 @@ def _cells(low: float, high: float, fine: float) -> int:
 
 def _march(
     problem: Problem, grids: Grids, numbers: np.ndarray, pieces: np.ndarray, part_of: np.ndarray,
-    poly: np.ndarray, wave: np.ndarray, jump: np.ndarray, before: np.ndarray, final: np.ndarray, waving: bool,
-    infinite: np.ndarray, facts: Facts,
+    poly: np.ndarray, wave: np.ndarray, jump: np.ndarray, kick: np.ndarray, before: np.ndarray, final: np.ndarray,
+    waving: bool, infinite: np.ndarray, facts: Facts,
 ) -> tuple[np.ndarray, np.ndarray]:  # fmt: skip
     """Headline numbers [n, QUANTITIES, NUMBERS] and [n, SEEN] of cases on grids of the same number of nodes."""
     n = len(pieces)
@@ -186,6 +200,7 @@ def _march(
         rows = np.empty((n, most, layout.FIELDS))
         march(
             table, ends, grids.of, numbers, pieces, part_of, poly, wave, jump, before, final, 2**level, waving,
+            problem.flow is not None, kick,
             rows, row_piece, row_offset, count,
         )  # fmt: skip
         levels.append(rows)

@@ -8,6 +8,7 @@ from functools import lru_cache
 import numpy as np
 
 from transient.gap.problem import Problem
+from transient.march import lanes_layout as layout
 from transient.march.lanes_grid import grid_table, unit_problem
 from transient.march.lanes_round import round_tables
 from transient.march.regime import slowest_decay
@@ -41,6 +42,7 @@ class Batch:
     alike: bool  # all in one unit gap but for their inner radii
     scale: np.ndarray  # [n, 3], lane units per SI unit of each input
     bodies: Bodies | None
+    flowing: bool  # the third input is the mean velocity, and the push a result
 
 
 def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
@@ -63,7 +65,8 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     count = np.full(rows, float(problem.count)) if count is None else count
     bodies = _bodies(form, values, geometry, count, rows)
     scale = np.ones((rows, 3))
-    scale[:, 2] = push
+    if problem.flow is None:
+        scale[:, 2] = push
     if bodies is not None:
         scale[:, bodies.side] = bodies.scale
         bad |= ~(bodies.inertia >= LIGHTEST) | ~np.isfinite(bodies.inertia * bodies.drag * bodies.scale)
@@ -89,6 +92,7 @@ def batch_of(form: Form, values: Values, rows: int) -> tuple[Batch, np.ndarray]:
     batch = Batch(
         geometry, density, viscosity, time, np.where(bad, 1.0, until), within,
         count, drives, before, final, slowest, inner, units, unit_of, alike, scale, bodies,
+        problem.flow is not None,
     )  # fmt: skip
     return batch, ~bad
 
@@ -130,7 +134,8 @@ def _unit(problem: Problem, inner: float, lower_slip: float, upper_slip: float) 
 
 def key_of(unit: Problem) -> tuple:
     """What a unit gap's grids and slowest decay depend on."""
-    return _Held(unit), unit.metric, unit.inner, *((wall.kind, wall.slip_length) for wall in unit.walls)
+    walls = ((wall.kind, wall.slip_length) for wall in unit.walls)
+    return _Held(unit), unit.flow is None, unit.metric, unit.inner, *walls
 
 
 class _Held:
@@ -185,10 +190,23 @@ class Grids:
 def grids_of(batch: Batch, rows: np.ndarray, cells: int, layers: tuple[float, float]) -> Grids:
     """The grids of some rows; ``cells`` those of the base level."""
     levels, of = _held_grids(batch, rows, cells, layers)
+    if batch.flowing:
+        return Grids([_flowing(level) for level in levels], of, levels[-1], of)
     if batch.bodies is None:
         return Grids(levels, of, levels[-1], of)
     bodies = batch.bodies.taken(rows)
     return Grids([loaded(level, of, bodies) for level in levels], np.arange(len(rows)), levels[-1], of)
+
+
+def _flowing(level: Level) -> Level:
+    """A level whose third input is the mean velocity: its steady states per unit of that instead of the push."""
+    table = level[0].copy()
+    steady = table[:, layout.STEADY :]
+    mean = (steady * table[:, layout.WEIGHT, None]).sum(axis=(2, 3))  # [G, 3]
+    steady[:, 2] /= mean[:, 2, None, None]
+    for wall in (0, 1):
+        steady[:, wall] -= mean[:, wall, None, None] * steady[:, 2]
+    return table, level[1]
 
 
 def _held_grids(

@@ -137,6 +137,8 @@ def _met(problem: Problem, done: Done) -> np.ndarray:
     for quantity in (headline.DEVIATION, headline.MEAN_FLOW, headline.LOWER, headline.UPPER):
         if quantity < 2 and problem.walls[quantity].kind != "moving":
             continue
+        if quantity == headline.MEAN_FLOW and problem.flow is not None:
+            continue  # the case's own
         ask(quantity, headline.SETTLE_ERROR, done.of(quantity, headline.SETTLE))
     largest = np.fmax(done.of(headline.LOWER, headline.LARGEST), done.of(headline.UPPER, headline.LARGEST))
     for side in (headline.LOWER, headline.UPPER):
@@ -148,6 +150,10 @@ def _met(problem: Problem, done: Done) -> np.ndarray:
         calm = done.of(side, headline.CALMED) > 0.5
         size = np.where(calm, np.fmax(final, FINAL_SHARE * peak), np.fmax(final, peak))
         ask(side, headline.END_ERROR, np.fmax(size, HARDLY * largest))
+    if problem.flow is not None:  # the pressure is the result
+        ask(headline.PRESSURE, headline.PEAK_ERROR, done.of(headline.PRESSURE, headline.LARGEST))
+        ask(headline.PRESSURE, headline.END_ERROR, done.of(headline.PRESSURE, headline.LARGEST))
+        return met
     fastest = done.of(headline.DEVIATION, headline.LARGEST)
     moving = np.fmax(np.abs(done.of(headline.MEAN_FLOW, headline.PEAK)), HARDLY * fastest)
     ask(headline.MEAN_FLOW, headline.PEAK_ERROR, moving)

@@ -42,6 +42,11 @@ def facts_of(batch: Batch, rows: np.ndarray, grids: Grids) -> Facts:
 def _speeds(batch: Batch, rows: np.ndarray, grids: Grids) -> np.ndarray:
     """Wall speeds and push in the end, [n, 3]: a body's follows from its load."""
     final = batch.final[rows]
+    if batch.flowing:
+        calm = _calm(*grids.held)[grids.held_of][:, 2]  # mean per unit of each
+        out = final.copy()
+        out[:, 2] = (final[:, 2] - calm[:, 0] * final[:, 0] - calm[:, 1] * final[:, 1]) / calm[:, 2]
+        return out
     if batch.bodies is None:
         return final
     side = batch.bodies.side

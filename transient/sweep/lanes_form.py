@@ -25,7 +25,7 @@ from transient.units import DIMENSIONS
 
 _FLUID = ("fluid.density", "fluid.viscosity", "fluid.kinematic_viscosity")
 _RUN = ("run.duration", "run.settle_within")
-_DROPS = ("drop", "drop_per_length")
+_DRIVEN = ("drop", "drop_per_length", "mean_velocity", "flow_rate")
 
 
 @dataclass(frozen=True, eq=False)
@@ -54,7 +54,9 @@ class Form:
     def fits(self) -> bool:
         """Whether the lanes can march rows of this form."""
         problem = self.problem
-        if problem.flow is not None or problem.law.code != 0 or problem.profile_times is not None:
+        if problem.law.code != 0 or problem.profile_times is not None:
+            return False
+        if problem.flow is not None and (problem.start != "rest" or self.side is not None):
             return False
         if not self._bodies_fit():
             return False
@@ -110,7 +112,7 @@ class Form:
         """The dotted key of one drive: 0, 1 the walls, 2 the pressure; None where nothing is given."""
         if which == 2:
             kind = self.base.pressure.kind
-            return f"pressure.{kind}" if kind in _DROPS else None
+            return f"pressure.{kind}" if kind in _DRIVEN else None
         if which == self.side:
             path = self._body_path + ("torque" if self.problem.rotating else "force")
             return path if any(key == path or key.startswith(path + ".") for key in self._typed) else None
@@ -265,6 +267,10 @@ class Form:
         if which == 2 and self.base.pressure.kind == "drop":
             assert geometry.length is not None
             found = found.scaled(1.0 / geometry.length)
+        if which == 2 and self.base.pressure.kind == "flow_rate":
+            count = self.number("gap.count", values, rows)
+            section = np.broadcast_to(np.asarray(geometry.section, float), (rows,))
+            found = found.scaled(1.0 / (section * (float(self.problem.count) if count is None else count)))
         return found
 
     def _varied(self, which: int, values: Values, rows: int) -> DriveRows:
