@@ -239,7 +239,7 @@ def _march_alone() -> tuple[float, int]:
     from transient.march.lanes import march
     from transient.march.lanes_grid import grid_table, unit_problem
     from transient.march.lanes_inputs import FIRST_ROW, LENGTH, PIECE_FIELDS, START
-    from transient.march.lanes_layout import CALM, CASE_FIELDS, FIELDS, GROWTH, LONGEST, ROWS
+    from transient.march.lanes_layout import CALM, CASE_FIELDS, FIELDS, GROWTH, LONGEST, ROOM, ROWS
 
     wall = {"upper": {"speed": {"kind": "step", "to": "1 m/s"}}}
     fluid = {"density": "1000 kg/m^3", "viscosity": "1 mPa*s"}
@@ -248,6 +248,7 @@ def _march_alone() -> tuple[float, int]:
     table, ends = grid_table(unit_problem(case.problem()), cells, (1.0, 1.0 / 16.0))
     numbers = np.zeros((count, CASE_FIELDS))
     numbers[:, LONGEST], numbers[:, CALM], numbers[:, GROWTH] = 0.045, 0.9, 0.5
+    numbers[:, ROOM] = 100
     parts = np.zeros((count, 2, PIECE_FIELDS))
     share = np.linspace(0.005, 0.02, count)
     parts[:, 0, LENGTH], parts[:, 1, LENGTH], parts[:, 1, START] = share, 1.0 - share, share
@@ -261,7 +262,8 @@ def _march_alone() -> tuple[float, int]:
     kept = np.zeros((count, 100), np.int64), np.zeros((count, 100)), np.zeros(count, np.int64)
     fixed = (
         table[None], ends[None], np.zeros(count, np.int64), numbers, np.full(count, 2), parts, poly, wave,
-        np.zeros((count, 2, 3)), np.zeros((count, 3)), final, every, False, rows, *kept,
+        np.zeros((count, 2, 3)), np.zeros((count, 3)), final, every, False,
+        False, np.zeros((count, 2, 3)), rows, *kept,
     )  # fmt: skip
     steps = march(*fixed)
     return _best(lambda: march(*fixed), steps * cells), ROWS * every

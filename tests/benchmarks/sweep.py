@@ -2,7 +2,7 @@
 
     python tests/benchmarks/sweep.py [cases] [sample]
 
-The model problem: gap, viscosity and ramp scattered, ramps of about 0.01 diffusion times (h^2/nu), run until settled
+The model problem: gap, viscosity and ramp varied, ramps of about 0.01 diffusion times (h^2/nu), run until settled
 and a margin, which is 1.07 diffusion times.  Whole ``transient sweep`` processes (start-up and writing included) of
 ``cases`` (default 100,000), 4,000 and 1,000 rows against general solvers on ``sample`` (default 16) of such cases.
 Each peer has finite volumes of its own and is tuned to the cheapest grid and tolerance with which every case of the
@@ -78,22 +78,21 @@ def drawn(count: int, seed: int = 1) -> Rows:
     return Rows(height, viscosity, 0.01 * duration * generator.uniform(0.5, 2.0, count), duration)
 
 
-SCATTER = """
+VARY = """
 case = "plates.toml"
-[scatter]
-samples = {count}
-seed = 1
-"gap.height" = {{ uniform = ["0.4 mm", "0.6 mm"] }}
-"fluid.viscosity" = {{ uniform = ["0.8 mPa*s", "1.25 mPa*s"] }}
-"wall.upper.speed.over" = {{ uniform = ["1.5 ms", "4 ms"] }}
+[vary]
+"gap.height" = {{ from = "0.4 mm", to = "0.6 mm", count = {0} }}
+"fluid.viscosity" = {{ from = "0.8 mPa*s", to = "1.25 mPa*s", count = {1} }}
+"wall.upper.speed.over" = {{ from = "1.5 ms", to = "4 ms", count = {2} }}
 """
 
 
-def scattered_file(folder: Path, count: int) -> Path:
-    """A sweep over random samples."""
+def grid_file(folder: Path, count: int) -> Path:
+    """A sweep over about ``count`` combinations."""
     (folder / "plates.toml").write_text(CASE.replace('duration = "1 s"', 'duration = "auto"'), encoding="utf-8")
-    path = folder / f"scatter{count}.toml"
-    path.write_text(SCATTER.format(count=count), encoding="utf-8")
+    side = round(count ** (1.0 / 3.0))
+    path = folder / f"grid{count}.toml"
+    path.write_text(VARY.format(side, side, round(count / side**2)), encoding="utf-8")
     return path
 
 
@@ -238,13 +237,14 @@ def main() -> None:
     print(f"{platform.processor() or platform.machine()}, {os.cpu_count()} cores, Python {platform.python_version()}")
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
-        whole_process(scattered_file(folder, 200), 1)  # whatever there is to compile
-        sizes = {size: scattered_file(folder, size) for size in (count, 4000, 1000)}
+        whole_process(grid_file(folder, 200), 1)  # whatever there is to compile
+        sizes = {size: grid_file(folder, size) for size in (count, 4000, 1000)}
         per_case = {}
         for size, path in sizes.items():
             runs = [whole_process(path, 1) for _ in range(3)]
             wall, per_case[size] = (min(times) / size for times in zip(*runs, strict=True))
-            print(f"{size:7d} cases: {1e6 * per_case[size]:8.1f} us per case and core ({1e6 * wall:.1f} us by the clock)")
+            clock = f"{1e6 * wall:.1f} us by the clock"
+            print(f"{size:7d} cases: {1e6 * per_case[size]:8.1f} us per case and core, {clock}")
         ours = per_case[count]
         print("peers on the sample, each tuned to 0.1 %, processor time")
         share = drawn(sample, seed=2).share

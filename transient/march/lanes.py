@@ -44,6 +44,7 @@ from transient.march.lanes_layout import (
     LANE_WAVE_U,
     LANE_X,
     LONGEST,
+    ROOM,
     ROWS,
     SHARE_OF_STAGE,
 )
@@ -88,10 +89,10 @@ def march(
     pieces, part_of, poly, wave, jump,  # (C,), [C, P, PIECE_FIELDS], [C, P, 3, 4] twice, [C, P, 3]
     before, final, every, waving,  # [C, 3] twice, steps of a row, whether any input has a wave
     flowing, kick,  # whether the third input is the mean velocity, [C, P, 3] changes of the inputs' slopes
-    rows, row_piece, row_offset, count,  # out: [C, R, FIELDS], [C, R] twice, (C,): -1 where R is too few
+    rows, row_piece, row_offset, count,  # out: [C, R, FIELDS], [C, R] twice, (C,): -1 where given up
 ):  # fmt: skip
     """March all cases; inputs are in lane units (see ``lanes_inputs``).  Returns the number of lane steps."""
-    cases, most = row_piece.shape
+    cases = row_piece.shape[0]
     n = table.shape[2]
     storage = np.ones((n, WIDTH))
     conductance = np.ones((n, WIDTH))
@@ -285,7 +286,7 @@ def march(
         # --- a case that has more rows than there is room for is given up
         for c in range(HALF):
             case = own[c]
-            if case >= 0 and row[c] + ROWS + 1 > most:
+            if case >= 0 and row[c] + ROWS + 1 > numbers[case, ROOM]:
                 count[case] = -1
                 own[c] = -1
                 done += 1

@@ -15,8 +15,7 @@ NODE_FIELDS = 9
 HELD, END, FLUX, CELL, RADIUS, DRIVE, BODY, FLUID = 0, 1, 2, 3, 4, 5, 6, 7
 END_FIELDS = 8
 # what a case says: [case, FIELD]
-LONGEST, CALM, GROWTH = 0, 1, 2
-CASE_FIELDS = 3
+LONGEST, CALM, GROWTH, ROOM, CASE_FIELDS = 0, 1, 2, 3, 4  # ROOM: rows after which it is given up
 # what a recorded row holds
 LOWER_STRESS, UPPER_STRESS, MEAN, AWAY, PUSH, LOWER_SPEED, UPPER_SPEED, FIELDS = 0, 1, 2, 3, 4, 5, 6, 7
 # rows of the lanes' own numbers [LANE_FIELDS, WIDTH]

@@ -15,12 +15,11 @@ from transient.compiled import numba
 WIDTH = 16
 HALF = WIDTH // 2
 
-_ir = __import__("llvmlite.ir", fromlist=["ir"])
+_ir = numba.core.cgutils.ir
 _types = numba.core.types
 _extending = numba.extending
 _NUMBER = _ir.DoubleType()
 _VECTOR = _ir.VectorType(_NUMBER, WIDTH)
-_MASK = _ir.VectorType(_ir.IntType(1), WIDTH)
 _PLACE = _ir.IntType(32)
 
 

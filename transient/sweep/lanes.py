@@ -30,10 +30,10 @@ from transient.sweep.lanes_form import Form
 CELLS = 0.40  # growth of the base level's cells, at accuracy 1e-3
 FEWEST = 8
 THINNEST = 14  # layers thinner than 2^-14 of the gap are left to the march of single cases
-MOST_ROWS = 8000
+MOST_ROWS = 8000  # of one case
 KEPT = 25_000  # rows kept at a time
 TOGETHER = 256  # cases whose rows are kept at a time: about what the second cache holds
-NUMBERS = 400_000  # pieces' numbers kept at a time
+PIECES = 100_000  # pieces of drives kept at a time
 REFINEMENTS = (1.0, 2.0, 4.0)
 
 
@@ -47,15 +47,12 @@ def solve(base: Case, keys: Sequence[Varied], values: Values, columns: Sequence[
     form = Form(base, keys)
     rows = len(next(iter(values.values()))) if values else 1
     out = blank(columns, rows)
-    chunk = max(WIDTH_LEAST, min(rows, NUMBERS // 24))
+    chunk = max(64, PIECES // form.pieces)
     for first in range(0, rows, chunk):
         part = slice(first, min(first + chunk, rows))
         own = {name: np.asarray(array)[part] for name, array in values.items()}
         _solve(form, own, part, out, {column.name for column in columns})
     return out
-
-
-WIDTH_LEAST = 1024
 
 
 def _solve(form: Form, values: Values, part: slice, out: Columns, names: set[str]) -> None:
@@ -98,6 +95,7 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
     numbers[:, layout.LONGEST] = FOLLOW * fine * slowest
     numbers[:, layout.CALM] = np.log(1.0 / least) * slowest
     numbers[:, layout.GROWTH] = GROWTH * fine
+    numbers[:, layout.ROOM] = _room(pieces, fine)
     infinite = infinite_stress(problem, jump)
     out = np.full((n, headline.QUANTITIES, headline.NUMBERS), np.nan)
     seen = np.zeros((n, headline.SEEN))
@@ -107,7 +105,7 @@ def _attempt(form: Form, batch: Batch, rows: np.ndarray, refine: float) -> Done:
             continue
         group = order[first:stop]
         cells = _cells(2.0**-low, 2.0**-high, fine)
-        together = int(np.clip(KEPT // _most_rows(pieces[group], GROWTH * fine), HALF, TOGETHER))
+        together = int(np.clip(KEPT // numbers[group, layout.ROOM].max(), HALF, TOGETHER))
         for begin in range(0, len(group), together):
             of = group[begin : begin + together]
             grids = grids_of(batch, rows[of], cells, (2.0**-low, 2.0**-high))
@@ -136,9 +134,9 @@ def _rises(
     return rise
 
 
-def _most_rows(pieces: np.ndarray, growth: float) -> int:
-    """Room for the rows of cases of so many pieces (n,) whose rows grow by ``growth`` of the time since a break."""
-    return int(min(MOST_ROWS, (40 + 44 * pieces.max(initial=1)) * GROWTH / growth))
+def _room(pieces: np.ndarray, fine: float) -> np.ndarray:
+    """Room for the rows (n,) of cases of so many pieces (n,)."""
+    return np.minimum(MOST_ROWS, np.ceil((40 + 44 * pieces) / fine))
 
 
 def _together(
@@ -192,7 +190,7 @@ def _march(
 ) -> tuple[np.ndarray, np.ndarray]:  # fmt: skip
     """Headline numbers [n, QUANTITIES, NUMBERS] and [n, SEEN] of cases on grids of the same number of nodes."""
     n = len(pieces)
-    most = _most_rows(pieces, float(numbers[0, layout.GROWTH]))
+    most = int(numbers[:, layout.ROOM].max())
     levels = []
     row_piece, row_offset = np.zeros((n, most), np.int64), np.zeros((n, most))
     count = np.zeros(n, np.int64)

@@ -168,6 +168,12 @@ class Form:
         return {}
 
     @property
+    def pieces(self) -> int:
+        """Pieces that the drives of a row have at most, together."""
+        shared = [self._shared(which) for which in range(3) if not self._varies(which)]
+        return 5 * (3 - len(shared)) + sum(one.starts.shape[1] for one in shared if one is not None)
+
+    @property
     def radii_vary(self) -> bool:
         """Whether the sizes of an annulus differ from row to row."""
         sizes = [name for name in self.keys if name.startswith("gap.") and name not in ("gap.count", "gap.length")]
