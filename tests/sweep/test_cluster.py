@@ -11,7 +11,7 @@ import threading
 import time
 
 import pytest
-from test_rows import same
+from test_sweep_rows import same
 
 import transient as tr
 from transient.case.model import CaseError

@@ -13,7 +13,7 @@ from pathlib import Path
 
 import pytest
 import quick
-from test_rows import same
+from test_sweep_rows import same
 
 import transient as tr
 from transient.cli import main
