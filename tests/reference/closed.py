@@ -192,6 +192,15 @@ class Plant:
         self.rates, self.modes, self.source = rates, modes, given
         self.back = np.linalg.inv(modes)
 
+    def between(self, parts: int = 48) -> np.ndarray:
+        """(m, n): from the nodes to ``parts`` points of every element; times the radius in a rotating gap."""
+        at = _lagrange(lobatto(DEGREE)[0], np.linspace(-1.0, 1.0, parts))
+        count = (len(self.r) - 1) // DEGREE
+        out = np.zeros((count * parts, len(self.r)))
+        for e in range(count):
+            out[e * parts : (e + 1) * parts, e * DEGREE : (e + 1) * DEGREE + 1] = at
+        return out * (out @ self.r)[:, None] if self.metric == 3 else out
+
     # --- time --------------------------------------------------------------------------------------------------
 
     def before(self) -> np.ndarray:
