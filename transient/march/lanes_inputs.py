@@ -59,10 +59,21 @@ def _place(poly, wave, x, time, scale, out_poly, out_wave):
 
 
 @part
-def _breaks(starts, until, slack, times):
+def _slack(at, last):
+    """How far apart two times may lie and still be one, as in ``drive.times``; ``last`` of the break times."""
+    return SAME * max(at, 1e-3 * last)
+
+
+@part
+def _breaks(starts, until, times):
     """Start times (3, P) of the drives' pieces below ``until``, merged and in order, into ``times``; how many."""
     count = 1
     times[0] = 0.0
+    last = 0.0
+    for which in range(3):
+        for p in range(starts.shape[1]):
+            if starts[which, p] < until:
+                last = max(last, starts[which, p])
     for which in range(3):
         for p in range(starts.shape[1]):
             at = starts[which, p]
@@ -71,6 +82,7 @@ def _breaks(starts, until, slack, times):
             k = count
             while k > 0 and times[k - 1] > at:
                 k -= 1
+            slack = _slack(at, last)
             if (k > 0 and at - times[k - 1] <= slack) or (k < count and times[k] - at <= slack):
                 continue
             for j in range(count, k, -1):
@@ -142,7 +154,9 @@ def _breaks_of(which, c, n, part_of, poly, wave, before, jump, kick, bends, ends
         largest = max(size, old_size)
         shorter = min(length, old_length)
         jump[c, p, which] = value - old_value
-        if abs(value - old_value) <= NOTHING * largest:
+        # round-off of the values, and of the time at which they come
+        noise = NOTHING * largest + 1e-15 * part_of[c, p, START] * (abs(slope) + abs(old_slope))
+        if abs(value - old_value) <= noise:
             jump[c, p, which] = 0.0
         kick[c, p, which] = slope - old_slope
         kink, twist = abs(slope - old_slope) * shorter, abs(curve - old_bend) * shorter * shorter
@@ -172,8 +186,7 @@ def join(
     bends = np.zeros((most, 3), np.bool_)
     for c in range(cases):
         own = c if starts.shape[0] > 1 else 0
-        slack = SAME * until[c]
-        n = _breaks(starts[own], until[c], slack, times)
+        n = _breaks(starts[own], until[c], times)
         pieces[c] = n
         for p in range(n):
             at = times[p]
@@ -185,6 +198,7 @@ def join(
             before[c, which] *= scale[c, which]
             piece = 0
             for p in range(n):
+                slack = _slack(times[p], times[n - 1])
                 for k in range(piece + 1, starts.shape[2]):
                     if starts[own, which, k] <= times[p] + slack:
                         piece = k
