@@ -40,12 +40,16 @@ MOTIONS = (slice(0, 2), slice(2, 4), slice(4, 6), slice(6, 7))  # kinds of outpu
 
 @dataclass(frozen=True, eq=False)
 class Gap:
-    """What all answers of a closed gap share: ``closing``, ``swing``, and the closing solved on contours' nodes."""
+    """What all answers of a closed gap share: ``closing``, ``swing``, and the closing solved on contours' nodes.
+
+    ``active`` (3,): the inputs that ever change.
+    """
 
     shape: GapShape
     closing: Closing
     swing: Swings
     window: float
+    active: np.ndarray
     solved: dict[int, tuple[np.ndarray, np.ndarray, float]] = field(default_factory=dict)
 
     @property
@@ -146,9 +150,13 @@ class ClosedAnswer:
         solving the closing costs in digits."""
         if (level, orders) not in self.tables:
             age = float(np.ldexp(self.gap.window, -1 - level))
-            made = early_table(self.contour(level), age, orders)
-            grown = ROUND_OFFS * ROUNDING * self.gap.level(level)[2] / TRUST
-            self.tables[level, orders] = EarlyTable(made.series, made.reach * (1.0 + grown))
+            used = self.gap.active
+            made = early_table(np.ascontiguousarray(self.contour(level)[:, used]), age, orders)
+            count = self.weight.shape[1]
+            series, reach = np.zeros((orders, 3, count, TERMS)), np.zeros((orders, 3, count))
+            series[:, used] = made.series
+            reach[:, used] = made.reach * (1.0 + ROUND_OFFS * ROUNDING * self.gap.level(level)[2] / TRUST)
+            self.tables[level, orders] = EarlyTable(series, reach)
         return self.tables[level, orders]
 
     def steady_response(self, rates: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -402,7 +410,10 @@ def solve_closed(problem: Problem, until: float) -> ClosedSolution:
             quiet[0, end] = False
     line = replace(line, poly=np.ascontiguousarray(poly), before=before, quiet=quiet)
     window = 1.01 * until / problem.diffusion_time
-    gap = Gap(shape, closing, swings(closing), window)
+    changing = poly.any(axis=(0, 2)) | line.coeff.any(axis=(0, 2)) | (before != 0.0)
+    for end, body in enumerate(bodies):
+        changing[end] |= body is not None and bool(body.initial_speed)
+    gap = Gap(shape, closing, swings(closing), window, changing)
     if problem.start == "rest":
         kick = _kick(gap, np.array([0.0 if b is None else b.initial_speed or 0.0 for b in bodies]))
     return ClosedSolution(problem, gap, line, states(line, gap.no_modes), base, place, kick, inputs.starts)

@@ -228,7 +228,8 @@ def closed_orbit(problem: Problem, cycle: Inputs, period: float) -> Orbit:
     )  # fmt: skip
     line = scaled(whole, time, 1.0 / closing.unit)
     swing = swings(closing)
-    gap = Gap(shape, closing, swing, 1.01 * (LEAD + 1) * period / time)
+    changing = cycle.poly.any(axis=(0, 2)) | cycle.coeff.any(axis=(0, 2))
+    gap = Gap(shape, closing, swing, 1.01 * (LEAD + 1) * period / time, changing)
     recent = ClosedSolution(
         problem, gap, line, states(line, gap.no_modes), np.zeros(3), np.zeros(2), np.zeros(3), whole.starts
     )
