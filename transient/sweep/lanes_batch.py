@@ -216,6 +216,9 @@ def _held_grids(
     if batch.alike:
         levels = [round_tables(batch.units[0], batch.inner[rows], cells * 2**level, layers) for level in range(LEVELS)]
         return levels, np.arange(len(rows))
+    if len(batch.units) == 1:
+        found = tables(cells, layers, *key_of(batch.units[0]))
+        return [(table[None], ends[None]) for table, ends in found], np.zeros(len(rows), int)
     places, of = np.unique(batch.unit_of[rows], return_inverse=True)
     found = [tables(cells, layers, *key_of(batch.units[i])) for i in places]
     stacked = [tuple(np.stack([one[level][part] for one in found]) for part in (0, 1)) for level in range(LEVELS)]

@@ -434,7 +434,7 @@ def read(
             unbounded = False
             for i in range(n):
                 unbounded = unbounded or skip[which, i]
-            _spread(own[which], n, abs(peak), off)
+            _spread(own[which], n, max(abs(peak), largest if which == MEAN_FLOW else 0.0), off)
             numbers[LARGEST] = abs(peak)
             numbers[CALMED] = 1.0 if abs(steady[which]) > ZERO * abs(peak) else 0.0
             numbers[END], numbers[END_ERROR] = value[n - 1], off[n - 1]
