@@ -16,6 +16,7 @@ import numpy as np
 from transient.gap.problem import Problem
 from transient.series.closing import Closing
 from transient.series.early import HALF, MIDDLE, TERMS, EarlyTable, early_table
+from transient.series.evaluation import young_levels
 from transient.series.gapshape import GapShape, SeriesError, shape_of
 from transient.series.modes import Modes
 from transient.series.oscillation import Swings, amplitudes, swings
@@ -34,6 +35,7 @@ HAIR = 3e-5
 _FAR, _FARTHEST = 1e26, 1e30
 _GROWS, _VANISHES = 0.3, -0.2
 ROUND_OFFS = 8.0
+TOGETHER = 16  # contours of velocities worked out at once: what they need stays small
 FIELD = "velocity"
 MOTIONS = (slice(0, 2), slice(2, 4), slice(4, 6), slice(6, 7))  # kinds of outputs of ``motion_of``
 
@@ -58,11 +60,20 @@ class Gap:
         none = np.empty(0)
         return Modes(self.shape, none, none, np.empty((0, 3)), np.empty((0, 2)), none, none, 0.0)
 
+    def fetch(self, levels: np.ndarray) -> None:
+        """Solve the closing on the contours of all ``levels`` that are not known yet, at once."""
+        missing = [int(level) for level in levels if int(level) not in self.solved]
+        if not missing:
+            return
+        s = NODE / np.ldexp(self.window, -1 - np.array(missing))[:, None]
+        unknown, walls, grown = self.closing.unknowns(s.ravel())
+        for k, level in enumerate(missing):
+            part = slice(k * len(NODE), (k + 1) * len(NODE))
+            self.solved[level] = unknown[part], walls[part], float(grown[part].max())
+
     def level(self, level: int) -> tuple[np.ndarray, np.ndarray, float]:
         """(unknowns, walls, growth of round-off) on the contour of a level."""
-        if level not in self.solved:
-            unknown, walls, grown = self.closing.unknowns(NODE / np.ldexp(self.window, -1 - level))
-            self.solved[level] = unknown, walls, float(grown.max())
+        self.fetch(np.array([level]))
         return self.solved[level]
 
 
@@ -137,12 +148,21 @@ class ClosedAnswer:
         unknown, walls, _ = self.gap.closing.unknowns(s)
         return self._rest(s, self.made(s, unknown, walls))
 
+    def fetch(self, levels: np.ndarray) -> None:
+        """Transfer functions on the contours of all ``levels`` that are not known yet, some at once."""
+        self.gap.fetch(levels)
+        missing = [int(level) for level in levels if int(level) not in self.contours]
+        for first in range(0, len(missing), TOGETHER):
+            some = missing[first : first + TOGETHER]
+            known = [self.gap.level(level) for level in some]
+            unknown, walls = (np.concatenate([own[i] for own in known]) for i in (0, 1))
+            s = (NODE / np.ldexp(self.gap.window, -1 - np.array(some))[:, None]).ravel()
+            value = self._rest(s, self.made(s, unknown, walls)).reshape(len(some), len(NODE), 3, -1)
+            self.contours.update(zip(some, value, strict=True))
+
     def contour(self, level: int) -> np.ndarray:
         """(NODES, 3, Q) on the contour for ages window/2^(level+1) .. window/2^level."""
-        if level not in self.contours:
-            unknown, walls, _ = self.gap.level(level)
-            s = NODE / np.ldexp(self.gap.window, -1 - level)
-            self.contours[level] = self._rest(s, self.made(s, unknown, walls))
+        self.fetch(np.array([level]))
         return self.contours[level]
 
     def table(self, level: int, orders: int) -> EarlyTable:
@@ -295,6 +315,9 @@ class ClosedSolution:
         """(n, Q) dimensionless values above a ``calm`` (Q,) from before, and their bounds."""
         p = np.atleast_1d(np.asarray(piece, dtype=np.int64))
         x = np.atleast_1d(np.asarray(offset, dtype=float)) / self.problem.diffusion_time
+        # all breaks are young: what their ages need is worked out together
+        none = np.full(len(p), -1)
+        answer.fetch(np.unique(np.maximum(young_levels(self.line.starts, p, x, none, self.gap.window), 0)))
         value, size = evaluate(self.line, self.at, answer, p, x)  # type: ignore[arg-type]
         value += calm
         size += np.abs(calm)
