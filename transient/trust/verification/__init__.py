@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 
+from transient.trust.verification.bodies import driven_bodies
 from transient.trust.verification.everykind import every_kind
 from transient.trust.verification.order import balances, orders
 from transient.trust.verification.oscillation import oscillations
@@ -22,6 +23,7 @@ FAMILIES: dict[str, Callable[[Bench], Iterator[Row]]] = {
     "every history kind": every_kind,
     "oscillation": oscillations,
     "slip and shear-free walls": other_walls,
+    "bodies and prescribed flow": driven_bodies,
     "errors from refinement": refined_alone,
     "orders of convergence": orders,
     "balances": balances,
