@@ -138,15 +138,10 @@ def _bodies(run: Run, summary: dict[str, Any], accuracy: float) -> Iterator[Dema
             error = more["speed" if kind == "speed" else "place"][later, end]
             size = float(np.abs(value).max(initial=0.0))
             yield Demand(f"{name} {kind} history", float(error.max(initial=0.0)), HISTORY_SHARE * accuracy * size)
-        acceleration = more["acceleration"][:, end]
-        if np.isnan(body.acceleration).any():
-            worst = _after_infinite(run, body.acceleration, acceleration)
-            yield Demand(f"{name} acceleration history", worst, HISTORY_SHARE * accuracy)
-        else:
-            size = float(np.abs(body.acceleration).max(initial=0.0))
-            worst = float(acceleration[later].max(initial=0.0))
-            yield Demand(f"{name} acceleration history", worst, HISTORY_SHARE * accuracy * size)
         said = summary[name]
+        if said["peak_acceleration"] is not None and said["peak_acceleration_error"] is not None:
+            allowed = accuracy * abs(said["peak_acceleration"])
+            yield Demand(f"{name} peak acceleration", said["peak_acceleration_error"], allowed)
         yield from _times(said, name, accuracy)
 
 
