@@ -26,6 +26,7 @@ FIRST_ROW = 1e-6
 THINNEST = 1e-9  # of the gap: below this, round-off of the nodes' velocities would show in the stress
 FEWEST_CELLS = 12
 MOST_CELLS = 20_000
+SETS_OUT = 0.5  # over the accuracy's root and the fastest rate: the first step of a wave
 ECHO = 0.5  # of the accuracy that an answer to an earlier break may be misread by within a first step
 ECHOES = 4  # breaks back, whose answers bound a first step
 SLOWED = 0.14  # of its speed per root of (time over that in which the film stops it), twice what a first step misses
@@ -173,7 +174,7 @@ def resolve(
     share = min(accuracy, 0.02) / refine
     layers = tuple(_layer(problem, found, end, growth, share) for end in (0, 1))
     cells = _cells(layers, growth)
-    first = _first_steps(problem, found, growth, share, layers)
+    first = _first_steps(problem, found, growth, share, layers, refine)
     first = np.min([first, *(_accelerating(problem, found, end, share) for end in (0, 1))], axis=0)
     first = np.minimum(first, _echoes(problem, found, ECHO * share / refine))
     longest, calm = _settling(inputs, found, growth * slowest, np.log(1.0 / least) * slowest)
@@ -262,9 +263,13 @@ def _after_jumps(problem: Problem, found: Features, end: int) -> float:
 
 
 def _first_steps(
-    problem: Problem, found: Features, growth: float, share: float, layers: tuple[float, float]
+    problem: Problem, found: Features, growth: float, share: float, layers: tuple[float, float], refine: float
 ) -> np.ndarray:
-    """Longest first step of each piece (P,): what the break at its start adds to the stress is below the accuracy."""
+    """Longest first step of each piece (P,): what the break at its start adds to the stress is below the accuracy.
+
+    A wave or lag sets out like the square of time, which a first step read as a parabola in the root of time misses by
+    0.17 (rate x step)^2.
+    """
     nu = problem.viscosity / problem.density
     first = np.full(len(found.length), np.inf)
     for end in (0, 1):
@@ -279,7 +284,7 @@ def _first_steps(
         first = np.minimum.reduce([first, kinked, bent, twisted, jumped])
     swiftest = found.fastest.max(initial=0.0)
     if swiftest > 0.0:
-        first = np.minimum(first, 0.05 / swiftest)
+        first = np.minimum(first, SETS_OUT * np.sqrt(share / refine) / swiftest)
     return np.minimum(first, found.length / 4.0)
 
 

@@ -62,11 +62,12 @@ def stored(problem: Problem, history: History, inputs: Inputs, stress_error: np.
     number = np.arange(len(inner)) - np.repeat(np.cumsum(parts - 1) - (parts - 1), parts - 1) + 1
     share = number / parts[inner]
     piece = history.piece[low][inner]
-    offset = history.offset[low][inner] + _pairs(history, low, high).passed(2 * inner, share)
+    passed = _pairs(history, low, high).passed(2 * inner, share)
+    offset = history.offset[low][inner] + passed
 
     def fill(value: np.ndarray, rate: np.ndarray) -> np.ndarray:
         joined = _pairs(history, low, high, value, rate)
-        return np.concatenate([value[pairs], joined.at(2 * inner, share)])
+        return np.concatenate([value[pairs], joined.at(2 * inner, joined.share_of(2 * inner, passed))])
 
     stress = np.stack([fill(history.stress[:, end], history.stress_rate[:, end]) for end in (0, 1)], axis=1)
     mean = fill(history.mean, history.mean_rate)
@@ -103,13 +104,17 @@ def _pairs(
         return np.stack([of[low], of[high]], axis=1).ravel()
 
     step = history.offset[high] - history.offset[low]
+    begins = history.offset[low]
     nothing = np.zeros(len(history.time))
+    if value is not None and rate is not None:
+        whole = Curve(history.time, value, rate, history.step, history.offset[:-1])
+        begins = np.where(high == low + 1, whole.measure[low], begins)
     return Curve(
         np.zeros(2 * len(low)),
         weave(nothing if value is None else value),
         weave(nothing if rate is None else rate),
         np.stack([step, np.zeros_like(step)], axis=1).ravel()[:-1],
-        np.stack([history.offset[low], history.offset[high]], axis=1).ravel()[:-1],
+        np.stack([begins, np.zeros_like(step)], axis=1).ravel()[:-1],
     )
 
 

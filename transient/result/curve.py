@@ -9,6 +9,8 @@ import numpy as np
 
 from transient.compiled import compiled
 
+LONG_AGO = 1e3  # steps: a cubic in the root of so long a time is one in time
+
 
 @dataclass(frozen=True, eq=False)
 class Curve:
@@ -26,11 +28,34 @@ class Curve:
     offset: np.ndarray | None = None
 
     @cached_property
+    def measure(self) -> np.ndarray | None:
+        """``offset`` as it is used: where a break leaves no trace in this quantity, its first step counts as one long
+        after a break, which makes the cubic one in time.
+
+        Which of the two it is, the next row tells: each reading over two steps is held against the row between them.
+        """
+        if self.offset is None:
+            return None
+        out = self.offset.copy()
+        i = np.flatnonzero((self.offset[:-1] == 0.0) & (self.step[:-1] > 0.0) & (self.step[1:] > 0.0))
+        if len(i):
+            first, both = self.step[i], self.step[i] + self.step[i + 1]
+            rise, end = self.value[i + 2] - self.value[i], self.rate[i + 2] * both
+            with np.errstate(invalid="ignore"):
+                s, x, begin = np.sqrt(first / both), first / both, self.rate[i] * both
+                root = (2.0 * rise - 2.0 * end) * s + (2.0 * end - rise) * s * s
+                time = x * (begin + x * (3.0 * rise - 2.0 * begin - end + x * (begin + end - 2.0 * rise)))
+                seen = self.value[i + 1] - self.value[i]
+                plain = i[np.abs(time - seen) < np.abs(root - seen)]
+            out[plain] = LONG_AGO * self.step[plain]
+        return out
+
+    @cached_property
     def _roots(self) -> tuple[np.ndarray, np.ndarray]:
         """Roots of the times since the break at both ends of each interval; plain times where no break is known."""
-        if self.offset is None:
+        if self.measure is None:
             return np.zeros_like(self.step), self.step
-        return np.sqrt(self.offset), np.sqrt(self.offset + self.step)
+        return np.sqrt(self.measure), np.sqrt(self.measure + self.step)
 
     def passed(self, interval: np.ndarray, share: np.ndarray) -> np.ndarray:
         """Time from the start of the given intervals to ``share`` of them, s."""
@@ -82,7 +107,7 @@ class Curve:
         long = np.stack([self.step[low] + self.step[inner], np.zeros(len(inner))], axis=1).ravel()[:-1]
         offset = None
         if self.offset is not None:
-            offset = np.stack([self.offset[low], np.zeros(len(inner))], axis=1).ravel()[:-1]
+            offset = np.stack([self.measure[low], np.zeros(len(inner))], axis=1).ravel()[:-1]
         ends = [np.stack([of[low], of[high]], axis=1).ravel() for of in (self.time, self.value, self.rate)]
         curve = Curve(*ends, long, offset)
         even = 2 * np.arange(len(inner))

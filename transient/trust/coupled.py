@@ -56,16 +56,17 @@ def speed_errors(problem: Problem, history: History, exact: ClosedSolution | Clo
 
 
 def _errors(history: History, look: Look, curves: list[Curve], columns: list[int]) -> np.ndarray:
-    """Errors (n, c) of ``curves``, all cubics in the root of time, against ``columns`` of the exact ``look``."""
+    """Errors (n, c) of ``curves`` against ``columns`` of the exact ``look``."""
     inside = np.flatnonzero(history.step > 0.0)
     # right after a break the cubic is a parabola, and misses most at 0.36 of the step
     half = np.where(history.offset[inside] == 0.0, 0.36, np.where(inside % 2 == 0, 0.3, 0.7))
     piece = np.concatenate([history.piece, history.piece[inside]])
-    offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
+    passed = curves[0].passed(inside, half)
+    offset = np.concatenate([history.offset, history.offset[inside] + passed])
     true, bound = look(piece, offset)
     out = []
     for curve, column in zip(curves, columns, strict=True):
-        value = np.concatenate([curve.value, curve.at(inside, half)])
+        value = np.concatenate([curve.value, curve.at(inside, curve.share_of(inside, passed))])
         error = _beside(_off(value, true[:, column], bound[:, column]), inside, len(history.time))
         out.append(np.where(np.isfinite(curve.value), error, 0.0))
     return np.stack(out, axis=1)

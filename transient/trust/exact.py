@@ -127,9 +127,11 @@ def _errors(history: History, exact: Solution) -> tuple[np.ndarray, np.ndarray]:
     inside = np.flatnonzero(history.step > 0.0)
     curves = _curves(history)
     half = _looks(inside)
+    passed = curves[0].passed(inside, half)
     piece = np.concatenate([history.piece, history.piece[inside]])
-    offset = np.concatenate([history.offset, history.offset[inside] + curves[0].passed(inside, half)])
-    value = np.stack([np.concatenate([curve.value, curve.at(inside, half)]) for curve in curves], axis=1)
+    offset = np.concatenate([history.offset, history.offset[inside] + passed])
+    there = [curve.at(inside, curve.share_of(inside, passed)) for curve in curves]
+    value = np.stack([np.concatenate([curve.value, own]) for curve, own in zip(curves, there, strict=True)], axis=1)
     own = ~_again(history, value, len(piece))
     true, bound = (found[np.cumsum(own) - 1] for found in exact.stress_and_mean(piece[own], offset[own]))
     with np.errstate(invalid="ignore"):

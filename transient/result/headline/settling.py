@@ -65,8 +65,8 @@ class Judge:
         self.size = size
         self.curve = curve
         # the deviation off by its error, to either side
-        self.higher = replace(curve, value=curve.value + error)
-        self.lower = replace(curve, value=curve.value - error)
+        self.higher = replace(curve, value=curve.value + error, offset=curve.measure)
+        self.lower = replace(curve, value=curve.value - error, offset=curve.measure)
 
     def time(self, level: float) -> float | None:
         """Settling time within ``level``, None if not by the end or if there is nothing to measure against."""
