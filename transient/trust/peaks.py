@@ -18,6 +18,7 @@ FINER = 5.0
 AROUND = np.linspace(-1.0, 1.0, 11)
 PEAK_MARGIN = 1.02  # for what is compared point by point
 SAME = 1e-12  # of a peak: closer values are the same but for round-off
+CLOSE = 65  # places around the largest speed
 MOST_PLACES = 400  # a periodic peak comes back: the highest of its copies will do
 
 
@@ -60,7 +61,12 @@ def speed_error(history: History, exact: Solution, rows: np.ndarray) -> float:
     search = _search(told.curve, places, 0, rows)
     if search is None:
         return float(np.max(rows, initial=0.0))
-    dense = history.around_largest
+    # closely where the march has it, since between places nothing is looked at
+    top = told.owner[int(np.nanargmax(told.curve.value))]
+    own = 1.0 if history.lever is None else history.lever
+    at = int(np.abs(history.profile[top] * own).argmax())
+    low, high = history.position[max(at - 1, 0)], history.position[min(at + 1, len(history.position) - 1)]
+    dense = np.union1d(history.around_largest, np.linspace(low, high, CLOSE))
     lever = 1.0 if history.lever is None else dense
 
     def look(piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
