@@ -15,7 +15,7 @@ from weakref import WeakKeyDictionary
 import numpy as np
 
 from transient.gap.problem import LOWER, UPPER, Problem
-from transient.result.history import History
+from transient.result.history import History, between
 from transient.trust.check import Check, judge
 from transient.trust.nodes import (
     ROUNDING,
@@ -30,6 +30,7 @@ from transient.trust.nodes import (
 from transient.trust.quasi_steady import lever, quasi_steady_stress, section_measure, steady_drop
 
 SOURCE = "the accuracy asked for"
+FINER = 4  # parts into which the intervals between nodes are cut for an integral over the gap
 HARDLY_FLOWS = 1e-3  # of the largest speed: a mean velocity below it is judged beside it
 
 
@@ -111,13 +112,21 @@ def _judged(problem: Problem, history: History) -> History:
     return History(**rows, **profiles, position=position, profile_row=profile_row)
 
 
+def _across(history: History, profile: np.ndarray, metric: int) -> np.ndarray:
+    """Integral over the gap (k,) of profiles (k, N) times r^m: as cubics between values added along the node's number,
+    in which a profile on graded nodes is smooth; a thin layer is too bent for cubics through the nodes alone."""
+    plain = np.zeros(len(profile), bool)
+    position = between(history.position[None, :], FINER, plain[:1])[0]
+    return between(profile, FINER, plain) @ forms(position, metric).weight
+
+
 def momentum_balance(problem: Problem, history: History) -> Closure:
     """Change of momentum of the stored profiles against the impulse of stored stresses and pressure.
 
     Largest residual over the kept profiles, relative to the gross impulse of the run.
     """
     history = judged(problem, history)
-    momentum = problem.density * history.profile @ forms(history.position, problem.metric).weight
+    momentum = problem.density * _across(history, history.profile, problem.metric)
     reach, section = lever(problem), section_measure(problem)
     parts = [
         -reach[end] * increments(history.piece, history.offset, history.stress[:, end], history.stress_rate[:, end])
@@ -250,7 +259,7 @@ def flow_difference(problem: Problem, history: History) -> Closure:
     if largest == 0.0:
         return Closure(0.0, 0.0)
     over, area = (1, problem.gap) if problem.rotating else (problem.metric, section_measure(problem))
-    mean = history.profile[known] @ forms(history.position, over).weight / area
+    mean = _across(history, history.profile[known], over) / area
     return Closure(float(np.abs(mean - history.mean[row]).max()) / largest, ROUNDING * problem.outer / problem.gap)
 
 
