@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
 
-from transient.answer import SolveError, run
 from transient.case.model import Case, CaseError
 from transient.result.result import Result
 from transient.sweep.columns import FAILED, REFUSED, Column, Columns, blank, put_summary
@@ -37,6 +36,8 @@ def solve(
 
 def _one(base: Case, keys: Sequence[Varied], values: Values, row: int, out: Columns) -> Result | None:
     """The row's result; None where there is none and ``out`` says why."""
+    from transient.answer import SolveError, run  # takes a while to load, and a batch has its own solver
+
     try:
         return run(base.replace(changes(keys, values, row)))
     except CaseError as error:
