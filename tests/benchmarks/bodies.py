@@ -91,7 +91,7 @@ class Course:
             if body.get("initial_speed"):
                 liquid = self.plant.gap.rho * (self.plant.gap.ro - self.plant.gap.ri) / body["factor"]
                 liquid *= self.plant.r[-1] ** self.plant.metric
-                self.sure = max(self.sure, NODE * liquid / body["mass"])
+                self.sure = max(self.sure, NODE * liquid / body["mass"]) if body["mass"] else self.sure
 
     def peak(self, read: Callable[[dict[str, np.ndarray]], np.ndarray]) -> float:
         """Signed largest magnitude: samples narrowed around the best of them."""
@@ -189,7 +189,7 @@ def _body(course: Course, end: int, said: dict[str, Any], final: dict[str, np.nd
         Verdict("final position", said["final_position"], said["final_position_error"], float(final["place"][end, 0]),
                 course.sure * far),
     ]  # fmt: skip
-    if said["peak_acceleration"] is not None and not _sudden(course):
+    if said["peak_acceleration"] is not None and course.plant.bodies[end]["mass"] > 0.0 and not _sudden(course):
         read = partial(_acceleration, end=end)
         peak = tied(course, read, said["peak_acceleration"], said["peak_acceleration_error"])
         if not course.plant.flow:
@@ -214,8 +214,9 @@ def _acceleration(values: dict[str, np.ndarray], end: int) -> np.ndarray:
 def _pressure(course: Course, said: dict[str, Any], final: float) -> list[Verdict]:
     size = float(np.abs(course.values["gradient"]).max())
     calm = float(np.median(np.abs(course.values["gradient"])))
-    out = [Verdict("final pressure drop", said["final_drop_per_length"], said["final_drop_per_length_error"], final,
-                   course.sure * calm)]  # fmt: skip
+    floor = course.sure * max(calm, abs(final))
+    error = said["final_drop_per_length_error"]
+    out = [Verdict("final pressure drop", said["final_drop_per_length"], error, final, floor)]
     if not said["unbounded"] and not _sudden(course):
         error = said["peak_drop_per_length_error"]
         peak = tied(course, lambda v: v["gradient"], said["peak_drop_per_length"], error)

@@ -78,6 +78,8 @@ def plan(rng: np.random.Generator, case: dict[str, Any], kind: str, name: str) -
     liquid = case["density"] * gap * area * lever**2
     film = case["viscosity"] / gap * area * lever**2
     mass = liquid * 10 ** rng.uniform(-4, 6)
+    if np.random.default_rng([int(1e6 * mass / liquid) % 2**31, 5]).random() < 0.06:  # some weigh nothing
+        mass = 0.0
     out = {"mass": mass, "area": area, "film": film, "time": mass / film, "swings": False}
     out["damping"] = film * 10 ** rng.uniform(-2, 2) if rng.random() < 0.3 else 0.0
     out["stiffness"] = 0.0
@@ -97,6 +99,9 @@ def body(rng: np.random.Generator, own: dict[str, Any], drive_time: float, diffu
     size = own["film"] + own["damping"] + own["mass"] / max(drive_time, own["time"])
     out: dict[str, Any] = {"mass": own["mass"], "area": own["area"]}
     out |= {key: own[key] for key in ("damping", "stiffness") if own[key]}
+    if own["mass"] == 0.0:
+        out["force"] = once(rng, size, drive_time)
+        return out
     if rng.random() < 0.85:
         out["force"] = once(rng, size, drive_time)
     if rng.random() < 0.3 or "force" not in out:

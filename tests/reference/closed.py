@@ -342,12 +342,8 @@ class Run:
         state = (plant.modes @ amplitude).real
         size = plant.space.shape[1]
         z = plant.space @ state[:size] + plant.lift @ u
-        force = plant.load @ u - plant.stiff @ z - plant.spring @ state[size:]
         gradient = np.zeros(len(x))
         stress = np.zeros((2, len(x)))
-        if plant.flow:
-            free = plant.constraint.T @ np.linalg.solve(plant.mass, force)
-            gradient = (plant.grip @ (slope[plant.prescribed] - free))[-1]
         if not plant.flow and plant.metric != 3:
             gradient = u[-1]
         # what the steady flow of this instant would exert, less what its liquid takes up (the momentum equation times
@@ -355,6 +351,11 @@ class Run:
         moving = (plant.modes @ (plant.rates[:, None] * amplitude + plant.source @ u)).real[:size]
         moving = plant.space @ moving + plant.lift @ slope
         calm = steady(plant.gap, np.maximum(plant.r, 1e-12 * plant.gap.ro))
+        if plant.flow:  # the same with the profile of a unit pressure drop
+            still = calm[2, 3:]
+            taken = (still @ plant.liquid) @ moving + plant.volume @ z
+            pulled = (calm[2, :2] * plant.scale) @ z[[0, -1]]
+            gradient = (taken - pulled) / (still @ plant.volume)
         for end, scale in enumerate(plant.scale):
             if scale > 0.0 or plant.gap.kind != "pipe":
                 taken = (calm[end, 3:] @ plant.liquid) @ moving / scale
