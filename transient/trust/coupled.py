@@ -17,7 +17,7 @@ from transient.series.orbit import ClosedDeviation
 Look = Callable[[np.ndarray, np.ndarray], tuple[np.ndarray, np.ndarray]]
 
 ROUNDING = 1e-13  # of the largest value
-BETWEEN_MARGIN = 1.6  # where the march only interpolates: the looks are not where it errs most
+BETWEEN_MARGIN = 1.25  # where the march only interpolates: the looks are not quite where it errs most
 _COLUMN = {"speed": 0, "acceleration": 2, "place": 4, "gradient": 6}  # of ``ClosedSolution.motion``, the lower wall's
 
 
@@ -59,14 +59,14 @@ def _errors(history: History, look: Look, curves: list[Curve], columns: list[int
     """Errors (n, c) of ``curves`` against ``columns`` of the exact ``look``."""
     inside = np.flatnonzero(history.step > 0.0)
     # right after a break the cubic is a parabola, and misses most at 0.36 of the step
-    half = np.where(history.offset[inside] == 0.0, 0.36, np.where(inside % 2 == 0, 0.3, 0.7))
-    piece = np.concatenate([history.piece, history.piece[inside]])
-    passed = curves[0].passed(inside, half)
-    offset = np.concatenate([history.offset, history.offset[inside] + passed])
-    true, bound = look(piece, offset)
+    first = history.offset[inside] == 0.0
+    looks = [np.where(first, early, share) for early, share in ((0.15, 0.25), (0.36, 0.5), (0.7, 0.75))]
+    piece = np.concatenate([history.piece, *(history.piece[inside] for _ in looks)])
+    passed = [history.offset[inside] + curves[0].passed(inside, share) for share in looks]
+    true, bound = look(piece, np.concatenate([history.offset, *passed]))
     out = []
     for curve, column in zip(curves, columns, strict=True):
-        value = np.concatenate([curve.value, curve.at(inside, curve.share_of(inside, passed))])
+        value = np.concatenate([curve.value, *(curve.at(inside, share) for share in looks)])
         error = _beside(_off(value, true[:, column], bound[:, column]), inside, len(history.time))
         out.append(np.where(np.isfinite(curve.value), error, 0.0))
     return np.stack(out, axis=1)
@@ -84,7 +84,7 @@ def _off(value: np.ndarray, true: np.ndarray, bound: np.ndarray) -> np.ndarray:
 
 def _beside(off: np.ndarray, inside: np.ndarray, rows: int) -> np.ndarray:
     """Errors at the rows (n,), each at least those towards its neighbours; ``off`` holds rows, then looks."""
-    out, between = off[:rows].copy(), BETWEEN_MARGIN * off[rows:]
+    out, between = off[:rows].copy(), BETWEEN_MARGIN * off[rows:].reshape(-1, len(inside)).max(axis=0, initial=0.0)
     out[inside] = np.maximum(out[inside], between)
     out[inside + 1] = np.maximum(out[inside + 1], between)
     return out
