@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.compiled import compiled
+from transient.compiled import compiled, part
 
 
-@compiled
+@part
 def power_integrals(y, decay, loss, out):  # type: ignore[no-untyped-def]
     """out[p] = integral of u^p exp(-y (1 - u)) over 0 < u < 1, p = 0, 1, 2, for y >= 0; ``decay`` = exp(-y)."""
     if y > 1.0:
@@ -35,7 +35,7 @@ def divided_exponential(d):  # type: ignore[no-untyped-def]
     return (np.exp(d) - 1.0) / d
 
 
-@compiled
+@part
 def fill_turns(coeff, exponent, x, turn):  # type: ignore[no-untyped-def]
     """turn[k] = exp(exponent[k] x) of the exponentials that one input has."""
     for k in range(len(coeff)):
@@ -43,7 +43,7 @@ def fill_turns(coeff, exponent, x, turn):  # type: ignore[no-untyped-def]
             turn[k] = np.exp(exponent[k] * x)
 
 
-@compiled
+@part
 def forced(rate, decay, loss, poly, coeff, exponent, turn, x, scratch):  # type: ignore[no-untyped-def]
     """Integral of exp(-rate (x - xi)) u'(xi) over 0 < xi < x for one input u = cubic + exponentials.
 
@@ -67,7 +67,7 @@ def forced(rate, decay, loss, poly, coeff, exponent, turn, x, scratch):  # type:
     return total
 
 
-@compiled
+@part
 def moving(poly, coeff):  # type: ignore[no-untyped-def]
     """Whether an input changes within its piece."""
     if poly[1] != 0.0 or poly[2] != 0.0 or poly[3] != 0.0:
@@ -78,14 +78,14 @@ def moving(poly, coeff):  # type: ignore[no-untyped-def]
     return found
 
 
-@compiled
+@part
 def decay_and_loss(y):  # type: ignore[no-untyped-def]
     """exp(-y) and 1 - exp(-y), both to all digits, y >= 0."""
     decay = np.exp(-y)
     return decay, -np.expm1(-y) if y < 0.7 else 1.0 - decay
 
 
-@compiled
+@part
 def input_value(poly, coeff, exponent, x, order):  # type: ignore[no-untyped-def]
     """Value (order 0) or derivative of one input at local time x."""
     if order == 0:

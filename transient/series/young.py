@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from transient.compiled import compiled
+from transient.compiled import compiled, part
 from transient.series.early import HALF, MIDDLE
 from transient.series.evaluation import SHORT
 
@@ -22,7 +22,7 @@ for _count in (3, 4, 5):
     _W[_count] *= 0.5
 
 
-@compiled
+@part
 def difference(poly, coeff, exponent, left, j, base, offset, cubic, terms, rates, owners):  # type: ignore[no-untyped-def]
     """Piece j less the base continued to it: ``cubic`` (3, 4), ``terms``, ``rates`` (3, 2K), ``owners`` (3, 2K).
 
@@ -60,7 +60,7 @@ def difference(poly, coeff, exponent, left, j, base, offset, cubic, terms, rates
                     owners[i, width + k] = base
 
 
-@compiled
+@part
 def _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order):  # type: ignore[no-untyped-def]
     """Sum of the magnitudes that the ``order``-th derivative's jump at piece j is the difference of.
 
@@ -87,7 +87,7 @@ def _terms(poly, coeff, exponent, left, j, base, offset, scale, i, order):  # ty
     return size
 
 
-@compiled
+@part
 def clean(poly, coeff, exponent, left, j, base, offset, scale, late, i, order, jump):  # type: ignore[no-untyped-def]
     """The jump of the ``order``-th derivative of input i, exactly 0 where it is the round-off of its terms, or of the
     time ``late`` at which piece j begins."""
@@ -96,13 +96,13 @@ def clean(poly, coeff, exponent, left, j, base, offset, scale, late, i, order, j
     return jump if abs(jump) > noise else 0.0
 
 
-@compiled
+@part
 def _held(rate):  # type: ignore[no-untyped-def]
     """Whether the contour holds this pole inside, whatever its size."""
     return rate.real < 0.0 and abs(rate.imag) <= 1e-3 * abs(rate.real)
 
 
-@compiled
+@part
 def chebyshev(x, out):  # type: ignore[no-untyped-def]
     """out[n] = T_n(x)."""
     out[0] = 1.0
@@ -111,7 +111,7 @@ def chebyshev(x, out):  # type: ignore[no-untyped-def]
         out[n] = 2.0 * x * out[n - 1] - out[n - 2]
 
 
-@compiled
+@part
 def add_table(amount, series, reach, turn, out, size):  # type: ignore[no-untyped-def]
     """Add ``amount`` times the tabulated answers ``series`` (Q, TERMS) at the place ``turn`` (TERMS)."""
     for q in range(len(out)):
@@ -122,7 +122,7 @@ def add_table(amount, series, reach, turn, out, size):  # type: ignore[no-untype
         size[q] += abs(amount) * reach[q]
 
 
-@compiled
+@part
 def _add_instant(poly, coeff, exponent, left, j, base, offset, late, cubic, terms, sudden, out):  # type: ignore[no-untyped-def]
     """Add the answer at the very instant of break ``j``: only a jump of value is felt at once."""
     for i in range(3):
@@ -135,7 +135,7 @@ def _add_instant(poly, coeff, exponent, left, j, base, offset, late, cubic, term
                 out[q] += sudden[i, q] * jump
 
 
-@compiled
+@part
 def _jump(cubic, terms, rates, scale, order):  # type: ignore[no-untyped-def]
     """Jump of the ``order``-th derivative of an input, fast exponentials left out."""
     jump = 0.0
@@ -150,7 +150,7 @@ def _jump(cubic, terms, rates, scale, order):  # type: ignore[no-untyped-def]
     return jump
 
 
-@compiled
+@part
 def _add_jumps(jumps, terms, rates, scale, series, reach, turn, out, size):  # type: ignore[no-untyped-def]
     """Add the answers to the ``jumps`` (4,) of value, slope ... and to the higher ones of slow exponentials."""
     for d in range(series.shape[0] - 1):
@@ -228,7 +228,7 @@ def add_young(
             reference = j
 
 
-@compiled
+@part
 def _add_pulse(length, age, scale, cubic, terms, rates, series, reach, turn, out, size):  # type: ignore[no-untyped-def]
     """Add the answer to a piece over and done with: its shape against the answer to a unit pulse."""
     moving = cubic[0] != 0.0 or cubic[1] != 0.0 or cubic[2] != 0.0 or cubic[3] != 0.0
@@ -257,7 +257,7 @@ def _add_pulse(length, age, scale, cubic, terms, rates, series, reach, turn, out
             add_table(value * _W[points, g] * step, series, reach, turn, out, size)
 
 
-@compiled
+@part
 def _add_fast(term, rate, age, scale, contour, whole, node, node_weight, lost, out, size):  # type: ignore[no-untyped-def]
     """Add the answer to Re(term exp(rate t)) begun ``age`` ago, by the contour; poles outside it by their residue."""
     outputs = len(out)
