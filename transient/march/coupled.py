@@ -228,7 +228,7 @@ def _curves(problem: Problem, speeds: np.ndarray) -> tuple[np.ndarray, np.ndarra
         if wall.body is None or not wall.body.curve[0]:
             continue
         at, values = (np.array(part) for part in wall.body.curve)
-        closure.curve_load(at, values, 0, len(at), float(speeds[end]), out)
+        closure.curve_load.py_func(at, values, 0, len(at), float(speeds[end]), out)  # a part has no door of its own
         slopes[end] = out[1]
         loads[end] = out[0] - out[1] * speeds[end]
     return loads, slopes
