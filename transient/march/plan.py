@@ -30,7 +30,7 @@ SETS_OUT = 0.5  # over the accuracy's root and the fastest rate: the first step 
 ECHO = 0.5  # of the accuracy that an answer to an earlier break may be misread by within a first step
 ECHOES = 4  # breaks back, whose answers bound a first step
 SLOWED = 0.14  # of its speed per root of (time over that in which the film stops it), twice what a first step misses
-MISSED = 0.03  # of a root-like growth within a first step, what lies between its rows included, by computation
+MISSED = 0.015  # of a root-like growth within a first step, by computation
 
 
 @dataclass(frozen=True, eq=False)
