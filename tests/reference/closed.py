@@ -192,7 +192,7 @@ class Plant:
         self.rates, self.modes, self.source = rates, modes, given
         self.back = np.linalg.inv(modes)
 
-    def between(self, parts: int = 48) -> np.ndarray:
+    def between(self, parts: int = 300) -> np.ndarray:
         """(m, n): from the nodes to ``parts`` points of every element; times the radius in a rotating gap."""
         at = _lagrange(lobatto(DEGREE)[0], np.linspace(-1.0, 1.0, parts))
         count = (len(self.r) - 1) // DEGREE
