@@ -147,7 +147,9 @@ class Judge:
             return 0.0, 0.0
         radius = (self.gap.ri, self.gap.ro)[end] if self.gap.kind == "rotating" else 1.0
         jumps = self.signals[end].jumps(self.until, self.before[end])
-        size, at = max(((abs(j), -t) for t, j in jumps), default=(0.0, 0.0))
+        size = max((abs(j) for _, j in jumps), default=0.0)
+        # of equal jumps, which a repeat makes but for round-off, the first
+        at = -min((t for t, j in jumps if abs(j) >= (1.0 - 1e-9) * size), default=0.0)
         return float(radius * size * np.sqrt(self.gap.rho * self.gap.mu / np.pi)), -at
 
     def peak(self, channel: int) -> tuple[float, float]:

@@ -15,6 +15,7 @@ from transient.result.driven import body_speed
 from transient.result.history import History, largest
 from transient.result.run import BodyFacts, Errors, Regime, Run, WallFacts
 
+SAME = 1e-9  # of a jump: a difference below it is round-off
 DENSE = 8  # times the nodes of the finest level, where the largest steady velocity is looked for
 
 
@@ -140,7 +141,8 @@ def infinite_stress(problem: Problem, ladder: Ladder) -> tuple[np.ndarray, np.nd
     coefficient, when = np.zeros(2), np.zeros(2)
     jumps = np.abs(sudden_motion(problem, inputs, ladder.speed_before)) * lever
     for end in (0, 1):
-        largest_jump = int(jumps[:, end].argmax())
+        # of equal jumps, which a repeat makes but for round-off, the first
+        largest_jump = int(np.flatnonzero(jumps[:, end] >= (1.0 - SAME) * jumps[:, end].max())[0])
         coefficient[end] = factor * jumps[largest_jump, end]
         when[end] = inputs.starts[largest_jump] if coefficient[end] > 0.0 else 0.0
     return coefficient, when

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import Any
 
 import numpy as np
 
@@ -184,24 +183,9 @@ def _mix(coarse: Histories, fine: Histories) -> Histories:
 
     flow = pair("flow")
     assert flow is not None
-    away = pair("deviation") if fine.steady_velocity is None else None
-    if fine.steady_velocity is not None:
-        assert coarse.steady_velocity is not None
-        fine = replace(
-            fine,
-            steady_velocity=_third(coarse.steady_velocity, fine.steady_velocity),
-            steady_mean=_third(coarse.steady_mean, fine.steady_mean),
-            steady_stress=_third(coarse.steady_stress, fine.steady_stress),
-            steady_speeds=_third(coarse.steady_speeds, fine.steady_speeds),
-            steady_gradient=_third(coarse.steady_gradient, fine.steady_gradient),
-        )
-        away = _less_steady(flow, fine)
+    # a steady end is the same on every grid, but for round-off
+    away = pair("deviation") if fine.steady_velocity is None else _less_steady(flow, fine)
     return replace(fine, flow=flow, deviation=away, orbit=pair("orbit"))
-
-
-def _third(coarse: Any, fine: Any) -> Any:
-    """Richardson's extrapolation of two levels."""
-    return fine + (fine - coarse) / 3.0
 
 
 def _less_steady(flow: History, end: Histories) -> History:

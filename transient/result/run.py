@@ -67,7 +67,8 @@ class Errors:
     of the deviation's rows ``level_stress`` (m, 2), ``level_mean`` (m,), ``level_profile`` (j,).
     ``peak`` (2,) of each wall's largest |stress|, ``mean_peak``.  ``more`` by name, where bodies or a prescribed flow
     make them results: on the history's rows "gradient" (n,), "speed", "acceleration", "place" (n, 2); on the
-    deviation's rows "level_speed" (m, 2).
+    deviation's rows "level_speed" (m, 2).  ``sizes`` (4,): of the largest speed, mean and stresses of a periodic
+    regime, or of the run where nothing is left in the end; 0 where they are judged otherwise.
     """
 
     kind: str
@@ -79,6 +80,7 @@ class Errors:
     peak: np.ndarray
     mean_peak: float
     more: dict[str, np.ndarray] = field(default_factory=dict)
+    sizes: np.ndarray = field(default_factory=lambda: np.zeros(4))
 
 
 @dataclass(frozen=True, eq=False)

@@ -9,14 +9,17 @@ from __future__ import annotations
 import numpy as np
 
 from transient.march.levels import Ladder
+from transient.march.readings import with_rates
 from transient.result.curve import Curve
-from transient.result.run import Errors
+from transient.result.run import ZERO, Errors
 
 # The coarser extrapolation errs more than the finer one by a factor of 16 in smooth flow and of 2 beside kinks: the
 # difference alone covers both, the margin the luck of two errors of one sign.  Measured, see the experiment.
 MARGIN = 2.0
 ROUNDING = 2e-13
-DOUBLED = 5.0
+# A cubic over two steps errs 16 times as much as over one where both follow the flow, but no more than it where slopes
+# are wrong, as where a wide step passes a quick decay.
+DOUBLED = 1.5
 AROUND = 2  # rows to either side whose differences count too: where two levels' errors cross, one row says nothing
 
 
@@ -45,9 +48,38 @@ def estimate(ladder: Ladder) -> Errors:
         level_profile = level_profile + _between([away.largest_curve()])[:, 0]
     peak = np.array([_peak(flow.stress_curve(end), other.flow.stress_curve(end), stress[:, end]) for end in (0, 1)])
     mean_peak = _peak(flow.mean_curve(), other.flow.mean_curve(), mean)
+    sizes = np.array([float(level_profile.max(initial=0.0)), mean_peak, *peak])
+    sizes = np.where(_vanishing(ladder), sizes, 0.0) if best.orbit is None else _orbit_sizes(ladder)
     return Errors(
-        "estimate", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak, _more(ladder)
+        "estimate", stress, mean, level_stress, level_mean, level_profile, peak, mean_peak, _more(ladder), sizes
     )  # fmt: skip
+
+
+def _vanishing(ladder: Ladder) -> np.ndarray:
+    """Which of largest speed, mean and stresses (4,) end in nothing, so that the run's own peaks are their size."""
+    best = ladder.best
+    if best.steady_velocity is None:
+        return np.zeros(4, bool)
+    flow = best.flow
+    end = np.array([np.abs(best.steady_velocity).max(), abs(best.steady_mean), *np.abs(best.steady_stress)])
+    stress = np.nanmax(np.abs(flow.stress), axis=0, initial=0.0)
+    return end <= ZERO * np.array([np.abs(flow.profile).max(), np.abs(flow.mean).max(), *stress])
+
+
+def _orbit_sizes(ladder: Ladder) -> np.ndarray:
+    """Errors (4,) of the largest speed, mean and stresses over a period."""
+    best, other = ladder.best.orbit, ladder.next_best.orbit
+    assert best is not None
+    assert other is not None
+    other = with_rates(other)
+    pairs = [(best.mean_curve(), other.mean_curve())]
+    pairs += [(best.stress_curve(end), other.stress_curve(end)) for end in (0, 1)]
+    out = [MARGIN * abs(best.largest_curve().magnitude()[0] - other.largest_curve().magnitude()[0])]
+    out[0] += float(_between([best.largest_curve()]).max(initial=0.0))
+    for curve, rival in pairs:
+        rows = spread(curve.value[:, None], rival.value[:, None])[:, 0] + _between([curve])[:, 0]
+        out.append(_peak(curve, rival, rows))
+    return np.array(out)
 
 
 def _more(ladder: Ladder) -> dict[str, np.ndarray]:
@@ -61,8 +93,7 @@ def _more(ladder: Ladder) -> dict[str, np.ndarray]:
 
 
 def _between(curves: list[Curve]) -> np.ndarray:
-    """Bound (n, columns) of the cubics' error beside each row: a cubic over two steps errs 16 times as much as over
-    one in smooth flow, and 4 times beside a break."""
+    """Bound (n, columns) of the cubics' error beside each row, from what cubics over two steps miss."""
     off = np.stack([curve.without() for curve in curves], axis=1) / DOUBLED
     beside = off.copy()
     beside[1:] = np.maximum(beside[1:], off[:-1])
@@ -87,5 +118,5 @@ def _peak(best, other, rows: np.ndarray) -> float:
     value, at = best.magnitude()
     if not np.isfinite(value):
         return 0.0
-    beside = np.clip(np.searchsorted(best.time, at) + np.arange(-1, 2), 0, len(rows) - 1)
+    beside = np.clip(np.searchsorted(best.time, at) + np.arange(-AROUND, AROUND + 1), 0, len(rows) - 1)
     return float(max(MARGIN * abs(abs(value) - abs(other.magnitude()[0])), rows[beside].max()))

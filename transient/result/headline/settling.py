@@ -59,10 +59,12 @@ def label(level: float) -> str:
 
 
 class Judge:
-    """One quantity's deviation as a curve, its error at the rows, and the size it is measured against."""
+    """One quantity's deviation as a curve, its error at the rows, and the size it is measured against, which may be
+    ``unsure`` itself."""
 
-    def __init__(self, curve: Curve, error: np.ndarray, size: float):
+    def __init__(self, curve: Curve, error: np.ndarray, size: float, unsure: float = 0.0):
         self.size = size
+        self.unsure = min(unsure, size)
         self.curve = curve
         # the deviation off by its error, to either side
         self.higher = replace(curve, value=curve.value + error, offset=curve.measure)
@@ -82,9 +84,9 @@ class Judge:
         if self.size == 0.0:
             return 0.0
         end = float(self.curve.time[-1])
-        band = level * self.size
-        late = _later(self.higher.last_over(band, 1.0), self.lower.last_over(band, -1.0), end)
-        early = _later(self.lower.last_over(band, 1.0), self.higher.last_over(band, -1.0), end)
+        low, high = level * (self.size - self.unsure), level * (self.size + self.unsure)
+        late = _later(self.higher.last_over(low, 1.0), self.lower.last_over(low, -1.0), end)
+        early = _later(self.lower.last_over(high, 1.0), self.higher.last_over(high, -1.0), end)
         return max(late - time, time - early, 4e-16 * time, 0.0)
 
     def grazes(self, level: float, time: float | None, spread: float | None) -> bool:
@@ -127,8 +129,8 @@ def _judges(run: Run) -> dict[str, Any]:
         mean = 0.0
     stress = {wall.name: _stress_judge(run, wall.end, wall.shear_free) for wall in run.walls}
     return {
-        "velocity": Judge(away.largest_curve(), errors.level_profile, velocity),
-        "flow": Judge(away.mean_curve(), errors.level_mean, mean),
+        "velocity": Judge(away.largest_curve(), errors.level_profile, velocity, errors.sizes[0]),
+        "flow": Judge(away.mean_curve(), errors.level_mean, mean, errors.sizes[1]),
         "stress": stress,
     }
 
@@ -145,7 +147,7 @@ def _stress_judge(run: Run, end: int, shear_free: bool) -> Judge:
         size = np.inf if infinite else peak
     if shear_free:
         size = np.inf
-    return Judge(away.stress_curve(end), run.errors.level_stress[:, end], size)
+    return Judge(away.stress_curve(end), run.errors.level_stress[:, end], size, run.errors.sizes[2 + end])
 
 
 def _times(judges: dict[str, Any], level: float, names: list[str]) -> dict[str, Any]:
