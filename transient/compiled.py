@@ -45,4 +45,4 @@ def compiled(function: Callable[..., Any]) -> Callable[..., Any]:
 
 # For functions that compiled ones call: left to the compiler back end to merge, since merging by hand (numba's own
 # inlining) makes compilation several times longer.
-part = numba.njit(no_cpython_wrapper=True, no_cfunc_wrapper=True, **OPTIONS)
+part = numba.njit(**OPTIONS)
