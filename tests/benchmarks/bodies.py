@@ -148,7 +148,9 @@ def verdicts(case: dict[str, Any], summary: dict[str, Any]) -> list[Verdict]:
             floor = course.sure * scale
             out.append(Verdict("peak stress", said["peak_stress"], said["peak_stress_error"], peak, floor))
         exact = float(final["stress"][end, 0])
-        floor = course.sure * max(calm, abs(exact))
+        # the largest value itself where a sudden motion has made no more of it than the elements can follow
+        largest = calm if said["unbounded"] or _sudden(course) else scale
+        floor = course.sure * max(largest, abs(exact))
         out.append(Verdict("final stress", said["final_stress"], said["final_stress_error"], exact, floor))
     for name, said in summary.get("bodies", {}).items():
         out += _body(course, names.index(name), said, final)

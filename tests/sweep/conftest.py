@@ -10,20 +10,7 @@ import pytest
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-CASE = """
-title = "Two plates"
-[gap]
-shape = "plates"
-height = "0.80 mm"
-length = "60 mm"
-[fluid]
-density = "998 kg/m^3"
-viscosity = "1.002 mPa*s"
-[wall.upper]
-speed = { kind = "ramp", to = "0.30 m/s", over = "50 ms" }
-[run]
-accuracy = "1 %"
-"""
+from two_plates import CASE
 
 
 @pytest.fixture

@@ -39,7 +39,7 @@ def same(one, other):
 def mixed(tmp_path_factory):
     """A table with solved and refused rows, settled and unsettled ones, and histories; its case and its file."""
     folder = tmp_path_factory.mktemp("mixed")
-    from conftest import CASE
+    from two_plates import CASE
 
     from transient.cli import main
 
