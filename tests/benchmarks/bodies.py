@@ -150,7 +150,11 @@ def verdicts(case: dict[str, Any], summary: dict[str, Any]) -> list[Verdict]:
         exact = float(final["stress"][end, 0])
         # the largest value itself where a sudden motion has made no more of it than the elements can follow
         largest = calm if said["unbounded"] or _sudden(course) else scale
-        floor = course.sure * max(largest, abs(exact))
+        # a stress is the difference of speeds, which are sure to their own size
+        fast = float(np.abs(course.values["speed"]).max(initial=0.0))
+        gap = course.plant.gap
+        shear = gap.mu * fast / (1.0 if gap.kind == "rotating" else gap.ro - gap.ri)
+        floor = course.sure * max(largest, abs(exact), shear)
         out.append(Verdict("final stress", said["final_stress"], said["final_stress_error"], exact, floor))
     for name, said in summary.get("bodies", {}).items():
         out += _body(course, names.index(name), said, final)
