@@ -14,8 +14,7 @@ import signal
 import sys
 import time
 import traceback
-from collections.abc import Callable, Iterator
-from concurrent.futures import ProcessPoolExecutor
+from collections.abc import Callable
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -25,7 +24,7 @@ import numpy as np
 sys.path[:0] = [str(Path(__file__).resolve().parent), str(Path(__file__).resolve().parents[1])]
 
 from draw_bodies import draw, draw_nonlinear  # noqa: E402
-from experiment import Outcome, Verdict, _too_long, table  # noqa: E402
+from experiment import Outcome, Verdict, _too_long, experiment, table  # noqa: E402
 from reference.cases import tree_of  # noqa: E402
 from reference.closed import Plant, Run, last_above  # noqa: E402
 from reference.sliding import Sliding  # noqa: E402
@@ -282,28 +281,6 @@ def sliding_verdicts(case: dict[str, Any], summary: dict[str, Any]) -> list[Verd
     return out
 
 
-def experiment(
-    cases: int, seed: int, workers: int = 1, how: str = "series", minutes: float = np.inf, first: int = 0
-) -> list[Outcome]:
-    """Judge ``cases`` cases of ``seed`` from ``first`` on; after ``minutes`` no further outcome is waited for."""
-    jobs = [(seed, number, how) for number in range(first, first + cases)]
-    if workers == 1:
-        return _until(map(judge_case, jobs), minutes)
-    with ProcessPoolExecutor(workers) as pool:
-        outcomes = _until(pool.map(judge_case, jobs, chunksize=2), minutes)
-        pool.shutdown(wait=False, cancel_futures=True)
-    return outcomes
-
-
-def _until(outcomes: Iterator[Outcome], minutes: float) -> list[Outcome]:
-    end, out = time.monotonic() + 60.0 * minutes, []
-    for outcome in outcomes:
-        out.append(outcome)
-        if time.monotonic() > end:
-            break
-    return out
-
-
 def main() -> None:
     """Command line."""
     parser = argparse.ArgumentParser(description=__doc__)
@@ -326,7 +303,7 @@ def main() -> None:
         print(outcome.trouble, f"{outcome.seconds:.2f} s, met {outcome.met}")
         return
     began = time.perf_counter()
-    outcomes = experiment(options.cases, options.seed, options.workers, how, options.minutes, options.first)
+    outcomes = experiment(options.cases, options.seed, options.workers, how, options.minutes, options.first, judge_case)
     print(table(outcomes))
     exact = sum(o.kind == "exact" for o in outcomes)
     print(f"seed {options.seed}, judged by {how} ({exact} by the series), {time.perf_counter() - began:.0f} s in all")

@@ -13,7 +13,7 @@ import signal
 import sys
 import time
 import traceback
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -167,14 +167,15 @@ def _settling(judge: Judge, said: dict[str, Any]) -> list[Verdict]:
 
 
 def experiment(
-    cases: int, seed: int, workers: int = 1, how: str = "series", minutes: float = np.inf, first: int = 0
-) -> list[Outcome]:
-    """Judge ``cases`` cases of ``seed`` from ``first`` on; after ``minutes`` no further outcome is waited for."""
+    cases: int, seed: int, workers: int = 1, how: str = "series", minutes: float = np.inf, first: int = 0,
+    judge: Callable[[tuple[int, int, str]], Outcome] = judge_case,
+) -> list[Outcome]:  # fmt: skip
+    """``judge`` ``cases`` cases of ``seed`` from ``first`` on; after ``minutes`` no further outcome is waited for."""
     jobs = [(seed, number, how) for number in range(first, first + cases)]
     if workers == 1:
-        return _until(map(judge_case, jobs), minutes)
+        return _until(map(judge, jobs), minutes)
     with ProcessPoolExecutor(workers) as pool:
-        outcomes = _until(pool.map(judge_case, jobs, chunksize=2), minutes)
+        outcomes = _until(pool.map(judge, jobs, chunksize=2), minutes)
         pool.shutdown(wait=False, cancel_futures=True)
     return outcomes
 

@@ -18,6 +18,7 @@ from transient.series.closing import Closing
 from transient.series.early import HALF, MIDDLE, TERMS, EarlyTable, early_table
 from transient.series.evaluation import young_levels
 from transient.series.gapshape import GapShape, SeriesError, shape_of
+from transient.series.located import Located
 from transient.series.modes import Modes
 from transient.series.oscillation import Swings, amplitudes, swings
 from transient.series.slow import velocity_response
@@ -207,7 +208,7 @@ def _at_once(gap: Gap, made: Made, order: int) -> np.ndarray:
 
 
 @dataclass(frozen=True, eq=False)
-class ClosedSolution:
+class ClosedSolution(Located):
     """An exact solution with bodies or prescribed flow; instants are (piece, offset s) arrays (n,), as in ``Solution``.
 
     ``base`` (3,) the steady state before t = 0 (speeds, pressure drop times gap^2 / viscosity); ``place`` (2,) of the
@@ -228,12 +229,6 @@ class ClosedSolution:
     def shape(self) -> GapShape:
         """The dimensionless gap."""
         return self.gap.shape
-
-    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        """(piece, offset) of absolute times ``t`` (n,) >= 0; at a break the later piece."""
-        t = np.asarray(t, dtype=float)
-        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
-        return piece, t - self.starts[piece]
 
     def stress_and_mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 3) stresses on both walls, Pa, and mean velocity, m/s, and their bounds (n, 3)."""

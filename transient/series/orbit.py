@@ -16,6 +16,7 @@ from transient.gap.problem import Inputs, Problem
 from transient.series.closing import Closing
 from transient.series.coupled import FIELD, ClosedAnswer, ClosedSolution, Gap, Made, velocities_of, walls_of
 from transient.series.gapshape import GapShape, SeriesError, shape_of
+from transient.series.located import Located
 from transient.series.oscillation import cycle_transform, swings
 from transient.series.steady import steady_flow
 from transient.series.timeline import Timeline, scaled, states
@@ -35,7 +36,7 @@ def speeds_of(s: np.ndarray, unknown: np.ndarray, walls: np.ndarray) -> np.ndarr
 
 
 @dataclass(frozen=True, eq=False)
-class Orbit:
+class Orbit(Located):
     """The periodic end on [0, one period): instants are (piece of the cycle, offset s).
 
     ``recent`` answers the last ``LEAD`` cycles before t = 0 and the present one; ``transform`` (NODES, 3) is that of a
@@ -58,12 +59,6 @@ class Orbit:
     def shape(self) -> GapShape:
         """The dimensionless gap."""
         return self.recent.shape
-
-    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        """(piece, offset) of times ``t`` (n,) within the period."""
-        t = np.asarray(t, dtype=float)
-        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
-        return piece, t - self.starts[piece]
 
     def stress_and_mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 3) stresses on both walls, Pa, and mean velocity, m/s, and their bounds (n, 3)."""
@@ -142,7 +137,7 @@ class Orbit:
 
 
 @dataclass(frozen=True, eq=False)
-class ClosedDeviation:
+class ClosedDeviation(Located):
     """``flow`` less ``orbit``; instants are (piece, offset s) of the pieces that begin at ``starts`` (P,) s."""
 
     flow: ClosedSolution
@@ -153,12 +148,6 @@ class ClosedDeviation:
     def shape(self) -> GapShape:
         """The dimensionless gap."""
         return self.flow.shape
-
-    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        """(piece, offset) of absolute times ``t`` (n,) >= 0; at a break the later piece."""
-        t = np.asarray(t, dtype=float)
-        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
-        return piece, t - self.starts[piece]
 
     def stress_and_mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 3) stresses on both walls, Pa, and mean velocity, m/s, and their bounds (n, 3)."""

@@ -10,6 +10,7 @@ from transient.gap.problem import Problem
 from transient.series.answers import Answer, mode_count, velocity_answer, wall_answer
 from transient.series.coupled import ClosedSolution, solve_closed
 from transient.series.gapshape import GapShape, SeriesError, shape_of
+from transient.series.located import Located
 from transient.series.modes import modes
 from transient.series.timeline import States, Timeline, evaluate, states, timeline
 from transient.series.uniform import UniformFlow
@@ -22,7 +23,7 @@ HAIR = 3e-5
 
 
 @dataclass(frozen=True, eq=False)
-class Solution:
+class Solution(Located):
     """An exact solution.  Instants are (piece, offset s) arrays (n,); its pieces begin at ``starts`` (P,) s.
 
     (p, 0) is the limit from the right at break p, (p, length of p) that from the left at the next.
@@ -36,12 +37,6 @@ class Solution:
     window: float
     starts: np.ndarray
     lead: int = 0
-
-    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        """(piece, offset) of absolute times ``t`` (n,) >= 0; at a break the later piece."""
-        t = np.asarray(t, dtype=float)
-        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
-        return piece, t - self.starts[piece]
 
     def stress_and_mean(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 3) stresses on both walls, Pa, and mean velocity, m/s, in one go, and their bounds (n, 3)."""

@@ -8,6 +8,7 @@ import numpy as np
 
 from transient.gap.problem import PRESSURE, Inputs, Problem
 from transient.series.gapshape import SeriesError
+from transient.series.located import Located
 from transient.series.recursion import divided_exponential
 
 # Round-off of the sums over pieces, relative to their terms.
@@ -15,7 +16,7 @@ _TRUST = 1e-14
 
 
 @dataclass(frozen=True, eq=False)
-class UniformFlow:
+class UniformFlow(Located):
     """density dw/dt = G(t): the same questions as a ``Solution`` answers, from rest."""
 
     problem: Problem
@@ -33,12 +34,6 @@ class UniformFlow:
         steps, sizes = _impulse(inputs, pieces, np.diff(inputs.starts))
         gained, reach = (np.concatenate([[0.0], np.cumsum(part)]) for part in (steps, sizes))
         return cls(problem, inputs, inputs.starts, gained, reach)
-
-    def locate(self, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-        """(piece, offset) of absolute times ``t`` (n,) >= 0."""
-        t = np.asarray(t, dtype=float)
-        piece = np.clip(np.searchsorted(self.starts, t, side="right") - 1, 0, None)
-        return piece, t - self.starts[piece]
 
     def stress(self, piece: np.ndarray, offset: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """(n, 2) zeros, exactly."""
