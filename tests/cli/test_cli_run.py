@@ -137,7 +137,7 @@ class TestOutputFolder:
         monkeypatch.setattr(tempfile, "TemporaryFile", refused)
         said = call("run", CELL, "--out", tmp_path)
         assert said.status == 2
-        assert said.err == f"{tmp_path}: cannot be written (Permission denied); name another folder with --out\n"
+        assert said.err == f"{tmp_path}: cannot be written (Permission denied); name another with --out\n"
 
     def test_two_cases_that_would_share_a_file(self, call, tmp_path):
         said = call("run", CELL, tmp_path / "flow_cell.toml", "--out", tmp_path)

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-import tempfile
 from pathlib import Path
 
 from transient.cli.words import Stop
+from transient.result.place import unwritable
 
 
 def result_paths(cases: list[str], folder: Path) -> list[Path]:
@@ -28,14 +28,6 @@ def _no_two_alike(cases: list[str], paths: list[Path]) -> None:
 
 
 def _writable(folder: Path) -> None:
-    """Try the folder, or the nearest one above it that exists, with a file that vanishes again."""
-    place = folder
-    while not place.exists() and place.parent != place:
-        place = place.parent
-    if not place.is_dir():
-        raise Stop(f"{folder}: results go into a folder, and {place} is a file; name another with --out")
-    try:
-        with tempfile.TemporaryFile(dir=place):
-            pass
-    except OSError as error:
-        raise Stop(f"{folder}: cannot be written ({error.strerror}); name another folder with --out") from None
+    reason = unwritable(folder)
+    if reason is not None:
+        raise Stop(f"{folder}: {reason}; name another with --out")

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import json
 import shutil
-import tempfile
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
 from transient.case.model import CaseError
+from transient.result.place import nearest, unwritable
 from transient.result.result import ResultError
 from transient.sweep.cases import Plan
 from transient.sweep.pieces import Folder, identity
@@ -110,21 +110,14 @@ def _short(value: Any) -> str:
 
 def _refuse_too_large(plan: Plan, path: Path) -> None:
     """Nothing is begun that could not be finished for want of disk."""
-    place = path.parent
-    while not place.exists() and place.parent != place:
-        place = place.parent
-    if not place.is_dir():
-        raise CaseError(f"{path}: results go into a folder, and {place} is a file; name another with --out")
-    try:
-        with tempfile.TemporaryFile(dir=place):
-            pass
-    except OSError as error:
-        raise CaseError(f"{path}: cannot be written ({error.strerror}); name another with --out") from None
+    reason = unwritable(path.parent)
+    if reason is not None:
+        raise CaseError(f"{path}: {reason}; name another with --out")
     numbers = 2 * len(plan.frame.columns) + len(plan.frame.keys) + 1
     if plan.frame.histories:
         numbers += 2 * HISTORY_ROWS * (1 + len(plan.frame.walls))
     needed = plan.rows * (8 * numbers + TEXT_BYTES)
-    free = shutil.disk_usage(place).free
+    free = shutil.disk_usage(nearest(path.parent)).free
     if needed > free:
         raise CaseError(
             f"{path}: {plan.rows:,} cases need about {needed / 1e9:.3g} GB on that disk, which has {free / 1e9:.3g} GB "
